@@ -1,0 +1,1 @@
+"""Tests, in folders that mirror the package; helpers shared between folders are imported as tests.NAME."""
