@@ -32,7 +32,7 @@ _EXACT = Context(prec=700)
 _LEVEL = Context(prec=40)
 _ZERO_CELSIUS = Decimal("273.15")
 _NUMBER = re.compile(r"(?P<digits>[+-]?(?:[0-9]+(?:\.[0-9]*)?|\.[0-9]+))(?:[eE](?P<power>[+-]?[0-9]+))?")
-_LONGEST_POWER = 6
+_LONGEST_POWER = 5
 _LARGEST_LEVEL = 6000.0
 _KINDS = {bool: "true or false", list: "a list", dict: "a table", type(None): "nothing"}
 _SLIPS = {"K": "k", "meg": "M", "Meg": "M", "MEG": "M"}
@@ -224,14 +224,16 @@ def _scaled(value: str, parts: _Parts, unit: Unit | None, expected: str) -> floa
     """Number times unit, rounded once from the exact decimal value."""
     power = parts.power + (unit.decade if unit else 0)
     number = f"{parts.digits}e{power}"
-    if unit and unit.kind == "celsius" and abs(power) <= LONGEST_TEXT:
+    lost = False
+    if unit and unit.kind == "celsius":
         result = float(_EXACT.add(Decimal(number), _ZERO_CELSIUS))
     elif unit and unit.kind == "decibel":
         within = abs(float(number)) <= _LARGEST_LEVEL
         result = float(_LEVEL.power(10, _LEVEL.divide(Decimal(number), 20))) if within else math.inf
     else:
         result = float(number)
-    if math.isinf(result) or (result == 0.0 and re.search("[1-9]", parts.digits)):
+        lost = result == 0.0 and re.search("[1-9]", parts.digits) is not None
+    if math.isinf(result) or lost:
         raise QuantityError("the number is out of range", _found(value), expected)
     return result + 0.0
 
