@@ -12,7 +12,7 @@ import re
 from decimal import Context, Decimal
 from typing import NamedTuple
 
-from worksheet.model.dimension import DIMENSIONS, TEMPERATURE, Dimension
+from worksheet.model.dimension import DIMENSIONS, NUMBER, TEMPERATURE, Dimension
 from worksheet.model.text import clean
 from worksheet.model.units import (
     PREFIXES,
@@ -191,8 +191,10 @@ def _fitting_unit(value: str, parts: _Parts, dimension: Dimension, expected: str
         return None
     is_length = dimension.unit == "m"
     if parts.unit == "m" and not is_length:
-        milli = f'"m{dimension.unit}"' if dimension.unit and not starts_squared(dimension.unit) else '"e-3"'
-        raise QuantityError(f'"m" could be milli or metre here; for milli write {milli}', _found(value), expected)
+        hint = "write the number with e-3" if dimension == NUMBER else "write the whole unit"
+        if dimension.unit and not starts_squared(dimension.unit):
+            hint = f'for milli write "m{dimension.unit}"'
+        raise QuantityError(f'"m" could be milli or metre here; {hint}', _found(value), expected)
     if is_bare_prefix(parts.unit):
         if dimension == TEMPERATURE or starts_squared(dimension.unit):
             raise QuantityError("a prefix alone is ambiguous here; write the whole unit", _found(value), expected)
