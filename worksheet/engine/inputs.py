@@ -1,0 +1,65 @@
+"""What the numeric engine is given: one circuit and its numbers, over conditions.
+
+Every number is a scalar or an array whose last axis runs over conditions, the nominal one first; further axes in
+front (samples, trial points, sheets of the same circuit) broadcast.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+from dataclasses import dataclass
+
+import numpy as np
+
+from worksheet.device.arrays import Array, Number
+from worksheet.device.constants import thermal_voltage
+from worksheet.device.parameters import Parameters
+from worksheet.stages.circuit import Circuit
+
+
+@dataclass(frozen=True, eq=False)
+class Inputs:
+    """Numbers of one circuit.
+
+    Attributes:
+        circuit: The stage with its options.
+        temperature, supply: [K], [V]
+        current: Bias current at this temperature. [A]
+        devices: Parameters by device name, "bias" among them where the current source is a transistor.
+        load_capacitance: [F]
+        ideal_conductance, ideal_capacitance: Of an ideal current source. [S], [F]
+        drive_resistance: [ohm]; read only where the circuit is driven through one.
+        well_capacitance: [F]; read only with the bulk on the source.
+        bias_overhead, saturation_margin, settling_tolerance, noise_from: [-], [V], [-], [Hz]
+        step_size: Step at the input, None for small steps. [V]
+        input_level, output_level: From ground, None where not assumed. [V]
+    """
+
+    circuit: Circuit
+    temperature: Number
+    supply: Number
+    current: Number
+    devices: Mapping[str, Parameters]
+    load_capacitance: Number
+    ideal_conductance: Number = 0.0
+    ideal_capacitance: Number = 0.0
+    drive_resistance: Number = 0.0
+    well_capacitance: Number = 0.0
+    bias_overhead: Number = 0.0
+    saturation_margin: Number = 0.0
+    settling_tolerance: Number = 1e-3
+    noise_from: Number = 1.0
+    step_size: Number | None = None
+    input_level: Number | None = None
+    output_level: Number | None = None
+
+    @property
+    def thermal(self) -> Number:
+        """U_T. [V]"""
+        return thermal_voltage(self.temperature)
+
+
+def nominal(value: Number) -> Array:
+    """The nominal condition's entry of a value over conditions, kept as an axis of length one."""
+    array = np.asarray(value)
+    return array if array.ndim == 0 else array[..., :1]

@@ -1,0 +1,206 @@
+"""Polynomials in s (or in omega squared) whose coefficients are arrays over conditions, lowest power first.
+
+A determinant of G + sC is expanded by minors into such a polynomial; nodes are few. Minors cancel where elements
+differ by more than 1e7, so a test compares them with a numeric solve.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+
+import numpy as np
+
+from worksheet.device.arrays import Array, Number
+
+Poly = list[Number]
+"""Coefficients, lowest power first; an empty list is zero."""
+
+Matrix = list[list[Poly]]
+
+
+def add(a: Sequence[Number], b: Sequence[Number]) -> Poly:
+    """a + b."""
+    if len(a) < len(b):
+        a, b = b, a
+    return [x + b[k] if k < len(b) else x for k, x in enumerate(a)]
+
+
+def scale(a: Sequence[Number], factor: Number) -> Poly:
+    """factor times a."""
+    return [factor * x for x in a]
+
+
+def multiply(a: Sequence[Number], b: Sequence[Number]) -> Poly:
+    """a times b."""
+    if not a or not b:
+        return []
+    product: Poly = [0.0] * (len(a) + len(b) - 1)
+    for i, x in enumerate(a):
+        for j, y in enumerate(b):
+            product[i + j] = product[i + j] + x * y
+    return product
+
+
+def determinant(matrix: Matrix) -> Poly:
+    """Determinant of a square matrix of polynomials, by minors of its first column."""
+    if not matrix:
+        return [1.0]
+    total: Poly = []
+    for i, row in enumerate(matrix):
+        if row[0]:
+            minor = [other[1:] for k, other in enumerate(matrix) if k != i]
+            total = add(total, scale(multiply(row[0], determinant(minor)), -1.0 if i % 2 else 1.0))
+    return total
+
+
+def column_cofactors(matrix: Matrix, column: int) -> list[Poly]:
+    """Cofactors of one column: with them Cramer's rule gives that unknown for any right-hand side."""
+    cofactors = []
+    for i in range(len(matrix)):
+        minor = [[p for j, p in enumerate(row) if j != column] for k, row in enumerate(matrix) if k != i]
+        cofactors.append(scale(determinant(minor), -1.0 if (i + column) % 2 else 1.0))
+    return cofactors
+
+
+def padded(a: Sequence[Number], length: int) -> Poly:
+    """a with zeros added up to `length` coefficients."""
+    return [*a, *([0.0] * (length - len(a)))]
+
+
+def squared_magnitude(a: Sequence[Number]) -> Poly:
+    """Coefficients in x = omega^2 of abs(a(j omega))^2."""
+    n = len(a)
+    result: Poly = []
+    for k in range(n):
+        total: Number = 0.0
+        for i in range(max(0, 2 * k - n + 1), min(n, 2 * k + 1)):
+            sign = -1.0 if (k - i) % 2 else 1.0
+            total = total + sign * (a[i] * a[2 * k - i])
+        result.append(total)
+    return result
+
+
+def evaluate(a: Sequence[Number], x: Number) -> Array:
+    """Value of the polynomial at x (Horner)."""
+    total: Number = 0.0
+    for coefficient in reversed(a):
+        total = total * x + coefficient
+    return np.asarray(total)
+
+
+def lowest_positive_root(a: Sequence[Number]) -> Array:
+    """Smallest real root above zero, NaN where there is none.
+
+    Args:
+        a: Coefficients, arrays that broadcast; a[0] is not zero.
+    Returns: array of the broadcast shape
+    """
+    roots = positive_roots(a)
+    lowest = np.min(np.where(np.isnan(roots), np.inf, roots), axis=0)
+    return np.where(np.isinf(lowest), np.nan, lowest)
+
+
+def positive_roots(a: Sequence[Number]) -> Array:
+    """All real roots above zero along a new first axis, NaN where a root is none of these."""
+    with np.errstate(all="ignore"):
+        ratio = np.stack(np.broadcast_arrays(*[np.asarray(c / np.asarray(a[0])) for c in a[1:]])) if len(a) > 1 else np.zeros((0,))
+        if len(a) == 2:
+            inverse = -ratio
+        elif len(a) == 3:
+            inverse = np.stack(_quadratic_inverse(ratio[0], ratio[1]))
+        else:
+            inverse = _companion(ratio)
+            inverse = np.where(np.abs(inverse.imag) <= 1e-7 * np.abs(inverse), inverse.real, np.nan)
+        roots = np.where(inverse > 0, 1.0 / inverse, np.nan)
+        return roots if len(a) <= 3 else _polished(a, roots)
+
+
+def inverse_roots(a: Sequence[Number]) -> Array:
+    """-1/root of every root along a new first axis, complex; 0 where the degree is lower (a root at infinity).
+
+    For a denominator these are the time constants of its poles. [s]
+    """
+    with np.errstate(all="ignore"):
+        ratio = np.stack(np.broadcast_arrays(*[np.asarray(c / np.asarray(a[0])) for c in a[1:]]))
+        if len(a) == 2:
+            return ratio.astype(np.complex128)
+        if len(a) == 3:
+            half = ratio[0] / 2.0
+            inside = half * half - ratio[1]
+            root = np.sqrt(inside.astype(np.complex128))
+            large = half + root
+            small = np.where(inside >= 0, np.where(large == 0, 0.0, ratio[1] / np.where(large == 0, 1.0, large)), half - root)
+            return np.stack([large, small])
+        return -_companion(ratio)
+
+
+def _quadratic_inverse(b: Array, c: Array) -> tuple[Array, Array]:
+    """Both y with y^2 + b y + c = 0 (y = 1/x for 1 + b x + c x^2), NaN where complex, without cancellation."""
+    half = -b / 2.0
+    inside = half * half - c
+    root = np.sqrt(np.where(inside >= 0, inside, np.nan))
+    far = np.where(half >= 0, half + root, half - root)
+    near = np.where(far == 0, 0.0, c / np.where(far == 0, 1.0, far))
+    return far, near
+
+
+def _companion(ratio: Array) -> Array:
+    """All y = 1/x with 1 + r_1 x + ... + r_n x^n = 0, along the first axis, after scaling to order one."""
+    degree = ratio.shape[0]
+    powers = np.arange(1, degree + 1).reshape((-1,) + (1,) * (ratio.ndim - 1))
+    size = np.max(np.abs(ratio) ** (1.0 / powers), axis=0)
+    size = np.where((size > 0) & np.isfinite(size), size, 1.0)
+    scaled = np.where(np.isfinite(ratio), ratio, 0.0) / size**powers
+    matrix = np.zeros((*ratio.shape[1:], degree, degree))
+    matrix[..., 0, :] = -np.moveaxis(scaled, 0, -1)
+    for k in range(1, degree):
+        matrix[..., k, k - 1] = 1.0
+    return np.moveaxis(np.linalg.eigvals(matrix), -1, 0) * size
+
+
+def _polished(a: Sequence[Number], roots: Array) -> Array:
+    slope = [k * c for k, c in enumerate(a)][1:]
+    for _ in range(3):
+        step = evaluate(a, roots) / evaluate(slope, roots)
+        roots = np.where(np.abs(step) < 0.1 * roots, roots - step, roots)
+    return roots
+
+
+def noise_integral(numerator: Sequence[Number], denominator: Sequence[Number]) -> Array:
+    """(1/2 pi j) times the integral of abs(numerator/denominator)^2 along the imaginary axis, exact.
+
+    Args:
+        numerator: Of lower degree than the denominator.
+        denominator: With all roots in the left half-plane.
+    Returns: array; inf where the integral diverges
+    Source: James, Nichols and Phillips, Theory of Servomechanisms, 1947 (table of integrals), in the general form
+        c(s) c(-s) = d(s) q(-s) + d(-s) q(s), integral q_(n-1)/d_n.
+    """
+    n = len(denominator) - 1
+    c, d = padded(list(numerator)[: n], n), denominator
+    with np.errstate(all="ignore"):
+        if n == 1:
+            return np.asarray(c[0] ** 2 / (2.0 * d[0] * d[1]))
+        if n == 2:
+            fast = np.where(np.asarray(c[1]) == 0, 0.0, np.asarray(c[1]) ** 2 / (2.0 * d[1] * np.asarray(d[2])))
+            return fast + c[0] ** 2 / (2.0 * d[0] * d[1])
+        return _noise_integral_general(c, d)
+
+
+def _noise_integral_general(c: Poly, d: Sequence[Number]) -> Array:
+    n = len(d) - 1
+    static = np.asarray(d[0])
+    rate = np.abs(static / d[n]) ** (1.0 / n)
+    d = [np.asarray(x * rate**k / static) for k, x in enumerate(d)]
+    c = [np.asarray(x * rate**k) for k, x in enumerate(c)]
+    square = squared_magnitude(c)
+    right = np.stack(np.broadcast_arrays(*[(-1.0 if k % 2 else 1.0) * np.asarray(square[k]) for k in range(n)]), axis=-1)
+    matrix = np.zeros((*np.broadcast_shapes(right.shape[:-1], *[x.shape for x in d]), n, n))
+    for k in range(n):
+        for j in range(n):
+            i = 2 * k - j
+            if 0 <= i <= n:
+                matrix[..., k, j] = 2.0 * (-1.0 if j % 2 else 1.0) * d[i]
+    right = np.broadcast_to(right, matrix.shape[:-1])
+    q = np.linalg.solve(matrix, right[..., None])[..., 0]
+    return np.asarray(q[..., n - 1] / d[n] * rate / static**2)

@@ -1,0 +1,168 @@
+"""Settling: linear from the exact step response, and large steps at a source or a drain output."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+
+import numpy as np
+
+from worksheet.device import charge
+from worksheet.device.arrays import Array, Number
+from worksheet.engine import polynomial as poly
+
+_BISECTIONS = 60
+_GRID = 1200
+_APART = 1e-7
+
+
+def linear(numerator: Sequence[Number], denominator: Sequence[Number], tolerance: Number) -> Array:
+    """Time from a small step until the output stays within the tolerance of its final change.
+
+    Args:
+        numerator, denominator: H(s), coefficients lowest first.
+        tolerance: Share of the final change. [-]
+    Returns: [s], 0 where the output starts within it; NaN where the response does not settle
+    Source: exact partial fractions; one pole: tau ln(abs(1 - h)/tolerance). JEDEC JESD99B: until the band is entered for
+        the last time.
+    """
+    with np.errstate(all="ignore"):
+        constants = poly.inverse_roots(denominator)
+        if len(constants) == 1:
+            tau = constants[0].real
+            start = np.abs(1.0 - numerator[1] / np.asarray(numerator[0]) / tau)
+            settled = tau * np.log(np.where(start > 0, start, tolerance) / tolerance)
+            return np.where(np.isfinite(tau) & (tau >= 0), np.maximum(settled, 0.0), np.nan)
+        constants = _apart(constants)
+        return _last_crossing(_residues(numerator, constants), constants, np.asarray(tolerance))
+
+
+def _apart(constants: Array) -> Array:
+    """Move two equal time constants apart by a relative 1e-7, whose effect is of second order."""
+    constants = constants.copy()
+    for i in range(len(constants)):
+        for j in range(i):
+            near = np.abs(constants[i] - constants[j]) < _APART * np.abs(constants[i])
+            constants[i] = np.where(near, constants[i] * (1.0 + _APART), constants[i])
+            constants[j] = np.where(near, constants[j] * (1.0 - _APART), constants[j])
+    return constants
+
+
+def _residues(numerator: Sequence[Number], constants: Array) -> Array:
+    """Weights c_k of the error sum c_k exp(-t/tau_k), relative to the final change."""
+    relative = [np.asarray(x / np.asarray(numerator[0])) for x in numerator]
+    weights = []
+    for k, tau in enumerate(constants):
+        inverse = np.where(tau == 0, 0.0, -1.0 / np.where(tau == 0, 1.0, tau))
+        weight = -poly.evaluate([x.astype(np.complex128) for x in relative], inverse)
+        for j, other in enumerate(constants):
+            if j != k:
+                weight = weight / (1.0 - other / np.where(tau == 0, 1.0, tau))
+        weights.append(np.where(tau == 0, 0.0, weight))
+    return np.stack(np.broadcast_arrays(*weights))
+
+
+def _last_crossing(weights: Array, constants: Array, tolerance: Array) -> Array:
+    shape = np.broadcast_shapes(weights.shape[1:], constants.shape[1:], tolerance.shape)
+    weights = np.broadcast_to(weights, (len(weights), *shape)).reshape(len(weights), -1)
+    constants = np.broadcast_to(constants, (len(constants), *shape)).reshape(len(constants), -1)
+    tolerance = np.broadcast_to(tolerance, shape).reshape(-1)
+    rates = np.where(constants == 0, np.inf, 1.0 / np.where(constants == 0, 1.0, constants))
+    fine = np.all((rates.real > 0) & np.isfinite(weights), axis=0)
+    rates, weights = np.where(fine, rates, 1.0), np.where(fine, weights, 1.0)
+    finite = np.where(np.isfinite(rates.real), rates, 1.0)
+
+    def excess(times: Array) -> Array:
+        """abs(error) - tolerance at times of shape (points, cases)."""
+        total = np.sum(weights[:, None, :] * np.exp(-times[None] * finite[:, None, :]), axis=0)
+        return np.asarray(np.abs(total.real) - tolerance)
+
+    slowest = np.max(np.where(weights == 0, 0.0, 1.0 / finite.real), axis=0)
+    bound = slowest * np.maximum(np.log(np.sum(np.abs(weights), axis=0) / tolerance), 0.0) * 1.0001 + 1e-300
+    times = np.concatenate([bound * 10.0 ** np.linspace(-12, 0, _GRID // 2)[:, None], bound * np.linspace(0, 1, _GRID)[:, None]])
+    if len(weights) == 2:
+        times = np.concatenate([times, _extrema(weights, finite, bound)])
+    times = np.sort(times, axis=0)
+    above = excess(times) > 0
+    last = times.shape[0] - 1 - np.argmax(above[::-1], axis=0)
+    columns = np.arange(times.shape[1])
+    never = ~np.any(above, axis=0)
+    low, high = times[last, columns], times[np.minimum(last + 1, times.shape[0] - 1), columns]
+    for _ in range(_BISECTIONS):
+        middle = 0.5 * (low + high)
+        outside = excess(middle[None])[0] > 0
+        low, high = np.where(outside, middle, low), np.where(outside, high, middle)
+    settled = np.where(never, 0.0, 0.5 * (low + high))
+    return np.where(fine, settled, np.nan).reshape(shape)
+
+
+def _extrema(weights: Array, rates: Array, bound: Array) -> Array:
+    """Times of the extrema of a two-pole error: one for real poles, a regular sequence for a complex pair."""
+    turn = rates[0].imag
+    real = np.log((-weights[1] * rates[1] / (weights[0] * rates[0])).real) / (rates[1] - rates[0]).real
+    angle = np.angle(-weights[0] * rates[0])
+    period = np.pi / np.where(turn == 0, 1.0, np.abs(turn))
+    first = np.mod((angle + np.sign(turn) * np.pi / 2.0) / np.where(turn == 0, 1.0, turn), period)
+    count = int(np.clip(np.max(np.where(turn == 0, 1.0, bound / period)), 1, 4000)) + 1
+    sequence = first + np.arange(count)[:, None] * period
+    times = np.where(turn == 0, real, sequence)
+    return np.where(np.isfinite(times), np.clip(times, 0.0, bound), 0.0)
+
+
+def source_step(
+    step: Number, inversion: Number, specific: Number, capacitance: Number, thermal: Number, tolerance: Number
+) -> Array:
+    """Settling of a source output after a step of its drive, in every region of inversion.
+
+    Args:
+        step: Change of the drive kappa dV_G (or sigma dV_D), signed. [V]
+        inversion: I_bias/I_spec. [-]
+        specific: I_spec. [A]
+        capacitance: C_o, over kappa + sigma with the bulk on the source. [F]
+        thermal: U_T. [V]
+        tolerance: Share of the final change. [-]
+    Returns: [s]
+    Source: integral of C_o dV_S/dt = I_D - I_bias with the charge equation; agrees with numerical integration.
+    Valid: long channel, saturation; feed-through and the current source's conductance neglected, C_o held.
+    """
+    settled = charge.charge_from_inversion(inversion)
+    drive = charge.drive_from_charge(settled)
+    start = _antiderivative(drive + step / thermal, settled)
+    end = _antiderivative(drive + tolerance * step / thermal, settled)
+    return np.asarray(capacitance * thermal / specific * (start - end))
+
+
+def _antiderivative(u: Array, settled: Array) -> Array:
+    """-ln q/i_b + ln abs(q - q_b)/q_b - ln(q + q_b + 1)/(q_b + 1), grouped so that weak inversion loses no digits."""
+    q, log_q = charge.charge_from_drive(u), charge.log_charge_from_drive(u)
+    distance = np.abs(_charge_difference(u, q, settled))
+    share = np.log(distance) - log_q
+    return np.asarray(share / settled + (log_q - np.log(q + settled + 1.0)) / (settled + 1.0))
+
+
+def _charge_difference(u: Array, q: Array, settled: Array) -> Array:
+    """q - q_b, from the drives where the two are close."""
+    du = u - charge.drive_from_charge(settled)
+    near = np.abs(du) < 1e-3
+    slope = settled / (1.0 + 2.0 * settled)
+    curve = settled / (1.0 + 2.0 * settled) ** 3
+    third = settled * (1.0 - 4.0 * settled) / (1.0 + 2.0 * settled) ** 5
+    series = du * (slope + du * (curve / 2.0 + du * third / 6.0))
+    return np.asarray(np.where(near, series, q - settled))
+
+
+def drain_step(step: Number, gain: Number, slew_rate: Number, tau: Number, tolerance: Number) -> Array:
+    """Settling of a drain output after a step at the input: slewing, then linear.
+
+    Args:
+        step: At the input. [V]
+        gain: abs(H(0)). [V/V]
+        slew_rate: I_bias/C_o. [V/s]
+        tau: 1/(2 pi pole_frequency). [s]
+        tolerance: Share of the final change. [-]
+    Returns: [s]
+    Source: common practice, the two-phase rule.
+    """
+    change, linear_part = np.asarray(gain * step), np.asarray(slew_rate * tau)
+    with np.errstate(all="ignore"):
+        slewing = (change - linear_part) / slew_rate + tau * np.log(linear_part / (tolerance * change))
+        return np.where(change <= linear_part, tau * np.log(1.0 / np.asarray(tolerance)), slewing)

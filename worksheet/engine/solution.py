@@ -1,0 +1,336 @@
+"""A solved stage in numbers: what the rules of model.metrics ask of it, over all conditions at once.
+
+Everything is computed when it is first asked for and kept, so that a caller pays for the metrics it wants.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from dataclasses import dataclass
+from functools import cached_property
+
+import numpy as np
+
+from worksheet.device.arrays import Array, Number
+from worksheet.device.constants import BOLTZMANN
+from worksheet.engine import polynomial as poly
+from worksheet.engine import settling
+from worksheet.engine.inputs import Inputs
+from worksheet.engine.levels import Levels
+from worksheet.engine.measured import Measured, missing_where
+from worksheet.engine.nodal import Network
+from worksheet.engine.operating import Operating, operating_points
+from worksheet.model import metrics
+from worksheet.model.metrics import Reason
+
+_TWO_PI = 2.0 * np.pi
+
+
+@dataclass(frozen=True, eq=False, slots=True)
+class Source:
+    """A source of noise current.
+
+    Attributes:
+        owner: Name of the device, or "drive_resistor".
+        numerator: Transfer to the output, over the network's denominator. [ohm det]
+        white: [A^2/Hz]
+        flicker: At 1 Hz. [A^2/Hz]
+        exponent: alpha_F. [-]
+        referred: abs(Z(0)/H(0))^2.
+    """
+
+    owner: str
+    numerator: poly.Poly
+    white: Number
+    flicker: Number
+    exponent: Number
+    referred: Array
+
+
+class NumericSolution:
+    """One circuit solved over its conditions; indexing by a metric's key gives its values (NaN where missing)."""
+
+    def __init__(self, inputs: Inputs) -> None:
+        """Take the numbers; nothing is computed yet."""
+        self.inputs = inputs
+        self.levels = Levels(inputs)
+        self.devices = operating_points(inputs, self.levels)
+        self.network = Network(inputs, self.devices)
+        self._measured: dict[str, Measured] = {}
+        self._asked: list[list[Measured]] = []
+
+    def measure(self, key: str) -> Measured:
+        """One metric with the reasons where it does not exist. KeyError for an unknown metric."""
+        if key not in self._measured:
+            metric = metrics.find(key)
+            if metric is None:
+                raise KeyError(key)
+            self._asked.append([])
+            with np.errstate(all="ignore"):
+                result = metric.rule(self)
+            parts = self._asked.pop()
+            self._measured[key] = result if isinstance(result, Measured) else _with_reasons_of(result, parts)
+        if self._asked:
+            self._asked[-1].append(self._measured[key])
+        return self._measured[key]
+
+    def __getitem__(self, key: str) -> Array:
+        return self.measure(key).values
+
+    def sqrt(self, value: Number) -> Array:
+        """Square root, elementwise."""
+        return np.asarray(np.sqrt(value))
+
+    @property
+    def current(self) -> Number:
+        """Bias current. [A]"""
+        return self.inputs.current
+
+    @property
+    def supply(self) -> Number:
+        """[V]"""
+        return self.inputs.supply
+
+    @property
+    def bias_overhead(self) -> Number:
+        """[-]"""
+        return self.inputs.bias_overhead
+
+    @property
+    def transistors(self) -> Sequence[Operating]:
+        """All transistors, the current source's last."""
+        return tuple(self.devices.values())
+
+    @property
+    def output_capacitance(self) -> Number:
+        """C_o. [F]"""
+        return self.network.output_capacitance
+
+    @cached_property
+    def output_low(self) -> Array:
+        """From ground. [V]"""
+        return self._lower_end(self.levels.output_low, self.levels.output_high)
+
+    @cached_property
+    def output_high(self) -> Array:
+        """From ground. [V]"""
+        return self._lower_end(self.levels.output_high, self.levels.output_low)
+
+    @cached_property
+    def input_low(self) -> Array:
+        """From ground. [V]"""
+        return self._lower_end(self.levels.input_low, self.levels.input_high)
+
+    @cached_property
+    def input_high(self) -> Array:
+        """From ground. [V]"""
+        return self._lower_end(self.levels.input_high, self.levels.input_low)
+
+    def _lower_end(self, end: Array | None, mirrored: Array | None) -> Array:
+        """An end of a range from ground: in a p-channel stage the two ends change places."""
+        chosen = end if self.inputs.circuit.polarity == "n" else mirrored
+        return np.full((), np.nan) if chosen is None else self.levels.turn(chosen)
+
+    @cached_property
+    def _static(self) -> tuple[Array, Array]:
+        """Numerator and denominator of H(0)."""
+        return np.asarray(self.network.transfer[0]), np.asarray(self.network.denominator[0])
+
+    def dc_gain(self) -> Measured:
+        """abs(H(0))."""
+        top, bottom = self._static
+        return missing_where(np.abs(top / bottom), (bottom == 0, Reason.UNLIMITED))
+
+    def signed_gain(self) -> Array:
+        """H(0) with its sign; not finite where the output conductance is 0."""
+        top, bottom = self._static
+        return np.asarray(top / bottom)
+
+    def output_resistance(self) -> Measured:
+        """Z_o(0). [ohm]"""
+        bottom = self._static[1]
+        return missing_where(self.network.impedance[0] / bottom, (bottom == 0, Reason.UNLIMITED))
+
+    @cached_property
+    def _squares(self) -> tuple[poly.Poly, poly.Poly]:
+        """abs(N)^2 and abs(D)^2 as polynomials in omega^2."""
+        return poly.squared_magnitude(self.network.transfer), poly.squared_magnitude(self.network.denominator)
+
+    def bandwidth(self) -> Measured:
+        """Lowest frequency of -3 dB. [Hz]"""
+        (top, bottom), (n2, d2) = self._static, self._squares
+        fallen = [2.0 * bottom**2 * n - top**2 * d for n, d in zip(n2, d2, strict=True)]
+        root = np.sqrt(poly.lowest_positive_root(fallen)) / _TWO_PI
+        unlimited = (bottom == 0) | (np.asarray(self.output_capacitance) == 0)
+        return missing_where(root, (unlimited, Reason.UNLIMITED), (top == 0, Reason.NO_GAIN), (np.isnan(root), Reason.FEED_THROUGH))
+
+    @cached_property
+    def time_constants(self) -> Array:
+        """-1/pole of every pole along a first axis, complex. [s]"""
+        return poly.inverse_roots(self.network.denominator)
+
+    def pole_frequency(self) -> Measured:
+        """Lowest pole. [Hz]"""
+        slowest = np.max(np.abs(self.time_constants), axis=0)
+        return missing_where(1.0 / (_TWO_PI * slowest))
+
+    def unity_gain_frequency(self) -> Measured:
+        """Lowest frequency of unit magnitude. [Hz]"""
+        (top, bottom), (n2, d2) = self._static, self._squares
+        root = np.sqrt(poly.lowest_positive_root([n - d for n, d in zip(n2, d2, strict=True)])) / _TWO_PI
+        return missing_where(root, (np.abs(top) <= np.abs(bottom), Reason.GAIN_BELOW_1), (np.isnan(root), Reason.FEED_THROUGH))
+
+    def peaking(self) -> Measured:
+        """Greatest magnitude over the DC magnitude; the limit at high frequency counts."""
+        (top, bottom), (n2, d2) = self._static, self._squares
+        relative_n, relative_d = [n / top**2 for n in n2], [d / bottom**2 for d in d2]
+        peak = np.maximum(1.0, _limit_ratio(relative_n, relative_d))
+        turning = _turning_points(relative_n, relative_d)
+        if len(turning) > 1 or turning.ndim > 1:
+            ratio = poly.evaluate(relative_n, turning) / poly.evaluate(relative_d, turning)
+            peak = np.maximum(peak, np.nanmax(np.where(np.isnan(ratio), 1.0, ratio), axis=0))
+        return missing_where(np.sqrt(peak), (top == 0, Reason.NO_GAIN))
+
+    def input_capacitance(self) -> Measured:
+        """[F]"""
+        return missing_where(self.network.input_capacitance, (~np.isfinite(np.asarray(self.network.input_capacitance)), Reason.UNLIMITED))
+
+    def supply_rejection(self) -> Measured:
+        """abs(A_in/A_supply)."""
+        path = np.asarray(self.network.supply_transfer)
+        return missing_where(np.abs(self._static[0] / path), (path == 0, Reason.UNLIMITED))
+
+    def settling_time(self) -> Measured:
+        """[s]"""
+        step = self.inputs.step_size
+        if step is None:
+            return missing_where(settling.linear(self.network.transfer, self.network.denominator, self.inputs.settling_tolerance))
+        if not self.inputs.circuit.stage.source_output:
+            return missing_where(
+                settling.drain_step(
+                    step, self["dc_gain"], self["slew_rate"], 1.0 / (_TWO_PI * self["pole_frequency"]), self.inputs.settling_tolerance
+                )
+            )
+        return self._source_settling(step)
+
+    def _source_settling(self, step: Number) -> Measured:
+        main, circuit = self.transistors[0], self.inputs.circuit
+        p = main.parameters
+        drive = (main.kappa if circuit.stage.drive == "gate" else p.drain_coupling) * step
+        share = main.kappa + p.drain_coupling if circuit.bulk == "source" else 1.0
+        times = [
+            settling.source_step(
+                sign * drive,
+                main.inversion_coefficient,
+                main.specific_current,
+                self.output_capacitance / share,
+                self.inputs.thermal,
+                self.inputs.settling_tolerance,
+            )
+            for sign in (1.0, -1.0)
+        ]
+        return missing_where(np.maximum(*times), (np.asarray(p.velocity) > 0, Reason.LONG_CHANNEL_ONLY))
+
+    @cached_property
+    def noise_sources(self) -> Sequence[Source]:
+        """Every source of noise current: all transistors, and the drive resistance."""
+        sources = [
+            self._source(d.name, self.network.channel_transfer(d.device), d.white_density, d.flicker_density, d.parameters.flicker_exponent)
+            for d in self.transistors
+        ]
+        if self.inputs.circuit.driven_through_resistance:
+            white = 4.0 * BOLTZMANN * self.inputs.temperature / self.inputs.drive_resistance
+            sources.append(self._source("drive_resistor", self.network.drive_transfer(), white, 0.0, 1.0))
+        return tuple(sources)
+
+    def _source(self, owner: str, numerator: poly.Poly, white: Number, flicker: Number, exponent: Number) -> Source:
+        with np.errstate(all="ignore"):
+            referred = np.asarray((numerator[0] / self._static[0]) ** 2)
+        return Source(owner, numerator, white, flicker, exponent, referred)
+
+    def referred_to_input(self, device: Operating) -> Array:
+        """abs(Z(0)/H(0))^2 of a transistor's current. [V^2/A^2]"""
+        return next(source.referred for source in self.noise_sources if source.owner == device.name)
+
+    @cached_property
+    def white_noise_power(self) -> Number:
+        """White noise at the output, over all frequency. [V^2]"""
+        total: Number = 0.0
+        for source in self.noise_sources:
+            total = total + source.white / 2.0 * poly.noise_integral(source.numerator, self.network.denominator)
+        return total
+
+    @cached_property
+    def flicker_noise_power(self) -> Number:
+        """Flicker noise at the output, from noise_from to the pole frequency. [V^2]"""
+        start, stop = self.inputs.noise_from, self["pole_frequency"]
+        total: Number = 0.0
+        for source in self.noise_sources:
+            at_dc = (source.numerator[0] / self._static[1]) ** 2
+            total = total + at_dc * source.flicker * _flicker_span(start, np.maximum(stop, start), source.exponent)
+        return total
+
+    def noise_corner(self) -> Measured:
+        """Frequency where flicker equals white. [Hz]"""
+        white = sum((s.referred * s.white for s in self.noise_sources), np.zeros(()))
+        flicker = [(s.referred * s.flicker, np.asarray(s.exponent)) for s in self.noise_sources if np.any(s.flicker)]
+        if not flicker:
+            return missing_where(0.0 * np.asarray(white))
+        return missing_where(_corner(white, flicker))
+
+    @cached_property
+    def shape(self) -> tuple[int, ...]:
+        """Shape of the conditions, samples included."""
+        values = [self.inputs.temperature, self.inputs.supply, self.inputs.current, self.inputs.load_capacitance]
+        values += [p.specific for p in self.inputs.devices.values()]
+        return np.broadcast_shapes(*[np.shape(v) for v in values])
+
+
+def _with_reasons_of(values: Number, parts: Sequence[Measured]) -> Measured:
+    """A rule's plain result; where it is missing, the reason of the first part that is missing there."""
+    rules = [(part.reasons == reason, reason) for part in parts if part.reasons is not None for reason in Reason if reason]
+    return missing_where(values, *rules)
+
+
+def _limit_ratio(numerator: Sequence[Number], denominator: Sequence[Number]) -> Array:
+    """Limit of the ratio of two polynomials at infinity, by the highest power that either has."""
+    limit = np.ones(())
+    for n, d in zip(numerator, denominator, strict=True):
+        n, d = np.asarray(n), np.asarray(d)
+        limit = np.where(d != 0, n / np.where(d != 0, d, 1.0), np.where(n != 0, np.inf, limit))
+    return limit
+
+
+def _turning_points(numerator: Sequence[Number], denominator: Sequence[Number]) -> Array:
+    """Places x > 0 where numerator/denominator has no slope, along a first axis; NaN where there is none."""
+    if len(numerator) <= 2:
+        return np.full((1,), np.nan)
+    slope_n = [k * c for k, c in enumerate(numerator)][1:]
+    slope_d = [k * c for k, c in enumerate(denominator)][1:]
+    difference = poly.add(poly.multiply(slope_n, denominator), poly.scale(poly.multiply(numerator, slope_d), -1.0))
+    return poly.positive_roots(difference[: 2 * len(numerator) - 3])
+
+
+def _flicker_span(start: Number, stop: Number, exponent: Number) -> Array:
+    """Integral of f^-alpha from start to stop, exact also near alpha = 1. [Hz^(1-alpha)]"""
+    rest = 1.0 - np.asarray(exponent)
+    ratio = np.log(stop / start)
+    near = np.abs(rest * ratio) < 1e-9
+    grown = np.expm1(rest * ratio) / np.where(rest == 0, 1.0, rest)
+    return np.asarray(start**rest * np.where(near, ratio * (1.0 + rest * ratio / 2.0), grown))
+
+
+def _corner(white: Array, flicker: Sequence[tuple[Array, Array]]) -> Array:
+    """f with sum of a f^-alpha = white: closed form for one exponent, else Newton's iteration in ln f."""
+    total = sum((a for a, _ in flicker), np.zeros(()))
+    exponent = flicker[0][1]
+    f = (total / white) ** (1.0 / exponent)
+    if all(np.array_equal(exponent, other) for _, other in flicker):
+        return np.where(total == 0, 0.0, f)
+    x = np.log(f)
+    for _ in range(60):
+        parts = [a * np.exp(-alpha * x) for a, alpha in flicker]
+        level = sum(parts, np.zeros(()))
+        slope = sum((alpha * part for (_, alpha), part in zip(flicker, parts, strict=True)), np.zeros(()))
+        x = x + np.clip(np.log(level / white) * level / slope, -50.0, 50.0)
+    return np.where(total == 0, 0.0, np.exp(x))

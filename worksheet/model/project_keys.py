@@ -1,0 +1,105 @@
+"""Every key of biasbook.toml, once."""
+
+from __future__ import annotations
+
+from worksheet.model import dimension as dim
+from worksheet.model.keys import Key, Kind, Table
+
+PROCESS_CORNER = Key(
+    "process",
+    "Corner",
+    'A corner of the process file; "typical" always exists.',
+    Kind.NAME,
+    listed=True,
+    required=True,
+    example="typical",
+)
+TEMPERATURE = Key(
+    "temperature",
+    "Temperature",
+    "Junction temperature of the chip.",
+    dimension=dim.TEMPERATURE,
+    symbol="T",
+    low_open=True,
+    listed=True,
+    required=True,
+    example="27 °C",
+)
+SUPPLY = Key(
+    "supply",
+    "Supply voltage",
+    "Supply of the block, from ground. Stay within the device rating; the foundry's reliability rules have the last word.",
+    dimension=dim.VOLTAGE,
+    symbol="V_DD",
+    low_open=True,
+    listed=True,
+    required=True,
+    example="1.8 V",
+)
+
+CONDITION = Table("at", "One condition.", keys=(PROCESS_CORNER, TEMPERATURE, SUPPLY))
+"""One condition as an inline table (nominal, evidence at, ...); each key holds one value there."""
+
+PROJECT = Table(
+    "",
+    "A project: a folder of sheets over one process.",
+    keys=(
+        Key(
+            "schema",
+            "Schema",
+            "Version of the file format.",
+            Kind.WHOLE,
+            low=1.0,
+            high=1.0,
+            required=True,
+            example="1",
+            moves_results=False,
+        ),
+        Key(
+            "title",
+            "Title",
+            "What the project is, for people.",
+            Kind.TEXT,
+            moves_results=False,
+            example="Tide gauge readout",
+        ),
+        Key("owner", "Owner", "Who answers for the project.", Kind.TEXT, moves_results=False),
+        Key(
+            "process",
+            "Process file",
+            "Name of the process file: process/NAME.toml.",
+            Kind.NAME,
+            required=True,
+            example="example_180",
+        ),
+    ),
+    tables=(
+        Table(
+            "conditions",
+            "Every combination of these is reviewed, and the nominal with it.",
+            keys=(
+                PROCESS_CORNER,
+                TEMPERATURE,
+                SUPPLY,
+                Key(
+                    "nominal",
+                    "Nominal",
+                    "The condition at which nominal values are stated.",
+                    Kind.CONDITION,
+                    required=True,
+                    example='{ process = "typical", temperature = "27 °C", supply = "1.8 V" }',
+                ),
+            ),
+            required=True,
+        ),
+        Table(
+            "budget",
+            "Sums over all sheets, each times its count.",
+            entry=Key(
+                "budget", "Budget", "The most that all sheets together may take.", Kind.LIMIT, moves_results=False
+            ),
+            names="a metric that adds up over sheets",
+        ),
+    ),
+)
+"""The whole project file."""

@@ -1,0 +1,205 @@
+"""A sheet, a process and a project as plain frozen data, after reading and before anything is computed."""
+
+from __future__ import annotations
+
+import datetime
+from collections.abc import Mapping
+from dataclasses import dataclass, field
+from types import MappingProxyType
+
+from worksheet.model.formula import Formula
+
+_NOTHING: Mapping[str, "Value"] = MappingProxyType({})
+
+
+@dataclass(frozen=True, slots=True)
+class Value:
+    """A number as the user stated it.
+
+    Attributes:
+        number: SI value; None where a formula or the solver gives it. [unit of the key]
+        formula: Expression that gives the number.
+        propose: Left to the solver ("propose").
+        numbers: All values of a listed key; one for an ordinary one.
+        low, high: Range it may turn out to have. [unit of the key]
+        standard_error: One standard deviation. [unit of the key]
+        source, trust, note: What the user said about it; "" where nothing.
+        unit: Unit as written; matters for own names only.
+        text: The value as typed.
+        line: Line in its file, counted from 1.
+    """
+
+    number: float | None = None
+    formula: Formula | None = None
+    propose: bool = False
+    numbers: tuple[float, ...] = ()
+    low: float | None = None
+    high: float | None = None
+    standard_error: float | None = None
+    source: str = ""
+    trust: str = ""
+    note: str = ""
+    unit: str = ""
+    text: str = ""
+    line: int | None = field(default=None, compare=False)
+
+
+@dataclass(frozen=True, slots=True, order=True)
+class Condition:
+    """One process corner, junction temperature [K] and supply [V]."""
+
+    process: str
+    temperature: float
+    supply: float
+
+
+@dataclass(frozen=True, slots=True)
+class Target:
+    """What is wanted of one metric, or of a figure of the user's own (formula).
+
+    `minimum` and `maximum` are SI values [unit of the metric]; `yield_fraction` is a share of parts [-].
+    """
+
+    name: str
+    minimum: float | None = None
+    maximum: float | None = None
+    at: str = "all"
+    guard: float = 0.0
+    yield_fraction: float | None = None
+    formula: Formula | None = None
+    unit: str = ""
+    id: str = ""
+    source: str = ""
+    why: str = ""
+    line: int | None = field(default=None, compare=False)
+
+
+@dataclass(frozen=True, slots=True)
+class Evidence:
+    """What a simulation, an extraction or a bench found for one metric. Numbers in SI units of the metric."""
+
+    metric: str
+    value: float
+    found_by: str
+    low: float | None = None
+    high: float | None = None
+    spread: float | None = None
+    samples: int | None = None
+    dated: datetime.date | None = None
+    basis: str = ""
+    at: Condition | None = None
+    by: str = ""
+    reference: str = ""
+    note: str = ""
+    line: int | None = field(default=None, compare=False)
+
+
+@dataclass(frozen=True, slots=True)
+class Waiver:
+    """A miss that was accepted. `value` in SI units of the metric: anything worse is missed again."""
+
+    target: str
+    by: str
+    reason: str
+    value: float | None = None
+    dated: datetime.date | None = None
+    until: datetime.date | None = None
+    line: int | None = field(default=None, compare=False)
+
+
+@dataclass(frozen=True, slots=True)
+class Bias:
+    """The current source: "ideal" with its conductance [S] and capacitance [F], or a device by name."""
+
+    device: str = "ideal"
+    values: Mapping[str, Value] = _NOTHING
+
+    @property
+    def ideal(self) -> bool:
+        """Whether no transistor stands behind it."""
+        return self.device == "ideal"
+
+
+@dataclass(frozen=True, slots=True)
+class Solve:
+    """How bounds and proposals are found; see sheet_keys.SOLVE_KEYS."""
+
+    keep: str = "geometry"
+    inversion_coefficient: float | None = None
+    over: str = "all"
+    current_allowance: float = 0.05
+
+
+@dataclass(frozen=True, slots=True)
+class Sheet:
+    """One circuit block as its file states it.
+
+    `assume`, `own` and `choose` map a key to its Value. `choose` holds design variables only; `fingers` maps a
+    device's name ("main", "bias", "cascode") to a whole number. `lines` gives the line of any dotted key.
+    """
+
+    name: str
+    file: str
+    stage: str
+    device: str
+    title: str = ""
+    bulk: str = "rail"
+    count: int = 1
+    owner: str = ""
+    state: str = "draft"
+    notes: str = ""
+    bias: Bias = Bias()
+    assume: Mapping[str, Value] = _NOTHING
+    own: Mapping[str, Value] = _NOTHING
+    choose: Mapping[str, Value] = _NOTHING
+    fingers: Mapping[str, int] = MappingProxyType({})
+    solve: Solve = Solve()
+    targets: Mapping[str, Target] = MappingProxyType({})
+    evidence: tuple[Evidence, ...] = ()
+    waivers: tuple[Waiver, ...] = ()
+    lines: Mapping[str, int] = field(default=MappingProxyType({}), compare=False)
+
+
+@dataclass(frozen=True, slots=True)
+class DeviceModel:
+    """One transistor type of a process file: `values` maps a parameter of process_keys to its Value."""
+
+    name: str
+    polarity: str
+    own_well: bool
+    values: Mapping[str, Value]
+
+    def number(self, parameter: str) -> float:
+        """The parameter's SI value at the reference temperature. [unit of the key]"""
+        number = self.values[parameter].number
+        assert number is not None  # the reader refuses formulas in a process file
+        return number
+
+
+@dataclass(frozen=True, slots=True)
+class Process:
+    """A process file. `corners[corner][device][change]` is an SI value; "typical" has none."""
+
+    name: str
+    file: str
+    title: str
+    reference_temperature: float
+    devices: Mapping[str, DeviceModel]
+    corners: Mapping[str, Mapping[str, Mapping[str, float]]]
+    lines: Mapping[str, int] = field(default=MappingProxyType({}), compare=False)
+
+
+@dataclass(frozen=True, slots=True)
+class ProjectFile:
+    """biasbook.toml: `processes`, `temperatures` [K] and `supplies` [V] span the conditions; `budgets` in SI units."""
+
+    file: str
+    title: str
+    owner: str
+    process: str
+    processes: tuple[str, ...]
+    temperatures: tuple[float, ...]
+    supplies: tuple[float, ...]
+    nominal: Condition
+    budgets: Mapping[str, float]
+    lines: Mapping[str, int] = field(default=MappingProxyType({}), compare=False)

@@ -1,0 +1,502 @@
+"""Every key of sheets/NAME.toml, once. What one stage takes of it is decided by the stage's own table."""
+
+from __future__ import annotations
+
+from worksheet.model import dimension as dim
+from worksheet.model.keys import Key, Kind, Table
+from worksheet.model.project_keys import CONDITION, SUPPLY, TEMPERATURE
+
+DESIGN = (
+    Key(
+        "bias_current",
+        "Bias current",
+        "Current that the current source sets in the stage, at the nominal temperature.",
+        dimension=dim.CURRENT,
+        symbol="I",
+        low_open=True,
+        annotated=True,
+        formula=True,
+        example="4 uA",
+    ),
+    Key(
+        "width",
+        "Width",
+        "Total channel width, all fingers together.",
+        dimension=dim.LENGTH,
+        symbol="W",
+        low_open=True,
+        annotated=True,
+        formula=True,
+        example="20 um",
+    ),
+    Key(
+        "length",
+        "Length",
+        "Channel length.",
+        dimension=dim.LENGTH,
+        symbol="L",
+        low_open=True,
+        annotated=True,
+        formula=True,
+        example="0.5 um",
+    ),
+    Key(
+        "load_capacitance",
+        "Load capacitance",
+        "Capacitance that the block's output drives, wiring included.",
+        dimension=dim.CAPACITANCE,
+        symbol="C_L",
+        annotated=True,
+        formula=True,
+        example="1.2 pF",
+    ),
+)
+"""Design variables of every stage. Further devices of a stage carry their name before width, length and fingers."""
+
+GEOMETRY = ("width", "length")
+"""The design variables that each device has of its own."""
+
+FINGERS = Key(
+    "fingers",
+    "Fingers",
+    "Parallel units of the device; width is their total.",
+    Kind.WHOLE,
+    low=1.0,
+    default=1.0,
+    example="4",
+    moves_results=False,
+)
+
+ASSUMPTIONS = (
+    Key(
+        "input_level",
+        "Input level",
+        "Voltage from ground at which the input stands.",
+        dimension=dim.VOLTAGE,
+        symbol="V_in",
+        annotated=True,
+        formula=True,
+        example="0.9 V",
+    ),
+    Key(
+        "output_level",
+        "Output level",
+        "Voltage from ground at which the output stands.",
+        dimension=dim.VOLTAGE,
+        symbol="V_out",
+        annotated=True,
+        formula=True,
+        example="0.6 V",
+    ),
+    Key(
+        "step_size",
+        "Step size",
+        "Step at the input for which settling is reckoned, rising and falling. Left out: small steps.",
+        dimension=dim.VOLTAGE,
+        symbol="dV_in",
+        low_open=True,
+        annotated=True,
+        formula=True,
+        example="200 mV",
+    ),
+    Key(
+        "settling_tolerance",
+        "Settling tolerance",
+        "Share of the final change within which the output counts as settled.",
+        dimension=dim.NUMBER,
+        symbol="eps",
+        low_open=True,
+        high=0.5,
+        high_open=True,
+        default=1e-3,
+        annotated=True,
+        formula=True,
+        example="0.1 %",
+    ),
+    Key(
+        "noise_from",
+        "Noise from",
+        "Lowest frequency from which flicker noise is counted.",
+        dimension=dim.FREQUENCY,
+        symbol="f_n",
+        low_open=True,
+        default=1.0,
+        annotated=True,
+        formula=True,
+        example="1 Hz",
+    ),
+    Key(
+        "drive_resistance",
+        "Drive resistance",
+        "Resistance in series with the input, with its own thermal noise.",
+        dimension=dim.RESISTANCE,
+        symbol="R_s",
+        default=0.0,
+        annotated=True,
+        formula=True,
+        example="10 kohm",
+    ),
+    Key(
+        "well_capacitance",
+        "Well capacitance",
+        "Capacitance of a device's own well, from its source to ground; only with the bulk on the source.",
+        dimension=dim.CAPACITANCE,
+        symbol="C_w",
+        default=0.0,
+        annotated=True,
+        formula=True,
+        example="50 fF",
+    ),
+    Key(
+        "bias_overhead",
+        "Bias overhead",
+        "Extra supply current for the bias branch, as a fraction of the bias current.",
+        dimension=dim.NUMBER,
+        symbol="k_b",
+        default=0.0,
+        annotated=True,
+        formula=True,
+        example="0.1",
+    ),
+    Key(
+        "bias_temperature_exponent",
+        "Bias temperature exponent",
+        "e in I(T) = I (T/T_nominal)^e: 0 constant, 1 proportional to absolute temperature.",
+        dimension=dim.NUMBER,
+        symbol="e",
+        default=0.0,
+        annotated=True,
+        formula=True,
+        example="1",
+    ),
+    Key(
+        "saturation_margin",
+        "Saturation margin",
+        "Drain-source voltage wanted beyond the saturation voltage, in every range and headroom.",
+        dimension=dim.VOLTAGE,
+        symbol="V_m",
+        default=0.0,
+        annotated=True,
+        formula=True,
+        example="50 mV",
+    ),
+)
+"""What may be assumed besides the design variables."""
+
+OWN_CONDITIONS = (
+    Key(
+        "supply",
+        "Supply of this sheet",
+        "Replaces the project's supplies for this sheet, which is then on its own regulator.",
+        dimension=SUPPLY.dimension,
+        symbol=SUPPLY.symbol,
+        low_open=True,
+        annotated=True,
+        listed=True,
+        example="1.2 V",
+    ),
+    Key(
+        "temperature",
+        "Temperature of this sheet",
+        "Replaces the project's temperatures for this sheet.",
+        dimension=TEMPERATURE.dimension,
+        symbol=TEMPERATURE.symbol,
+        low_open=True,
+        annotated=True,
+        listed=True,
+        example="37 °C",
+    ),
+)
+"""Conditions that a sheet may state for itself, in [assume]."""
+
+OWN = Key(
+    "own",
+    "Own name",
+    "A value of your own for formulas; its unit is kept as written.",
+    low=None,
+    annotated=True,
+    formula=True,
+    example="40 kHz",
+)
+"""What an entry of [own] is."""
+
+PROPOSE = "propose"
+"""Written instead of a value in [choose] to leave it to the solver."""
+
+BIAS_KEYS = (
+    Key(
+        "device",
+        "Bias device",
+        '"ideal", or a device: of the other polarity on a drain output, of the same on a source output.',
+        Kind.NAME,
+        default="ideal",
+        example="ideal",
+    ),
+    Key(
+        "output_conductance",
+        "Output conductance",
+        "Conductance of an ideal current source.",
+        dimension=dim.CONDUCTANCE,
+        symbol="g_L",
+        default=0.0,
+        annotated=True,
+        formula=True,
+        example="0 S",
+    ),
+    Key(
+        "capacitance",
+        "Capacitance",
+        "Capacitance of an ideal current source.",
+        dimension=dim.CAPACITANCE,
+        symbol="C_b",
+        default=0.0,
+        annotated=True,
+        formula=True,
+        example="0 F",
+    ),
+)
+
+SOLVE_KEYS = (
+    Key(
+        "keep",
+        "Keep",
+        "What stays while the bias current is back-computed: the geometry, or the inversion coefficient.",
+        Kind.CHOICE,
+        choices=("geometry", "inversion"),
+        default="geometry",
+        example="geometry",
+    ),
+    Key(
+        "inversion_coefficient",
+        "Inversion coefficient",
+        "The inversion coefficient to keep; left out: that of the present point.",
+        dimension=dim.NUMBER,
+        symbol="IC",
+        low_open=True,
+        example="1.0",
+    ),
+    Key(
+        "over",
+        "Over",
+        "The conditions in which a bound or proposal must hold.",
+        Kind.CHOICE,
+        choices=("all", "nominal"),
+        default="all",
+        example="all",
+    ),
+    Key(
+        "current_allowance",
+        "Current allowance",
+        "How far the compact point's current may lie above the recommended one, as a fraction.",
+        dimension=dim.NUMBER,
+        default=0.05,
+        example="0.05",
+    ),
+)
+
+AT = Key(
+    "at",
+    "At",
+    '"nominal", or every condition where left out.',
+    Kind.CHOICE,
+    choices=("all", "nominal"),
+    default="all",
+    moves_results=False,
+)
+
+TARGET_KEYS = (
+    Key("min", "At least", "The least value that is acceptable.", low=None, moves_results=False),
+    Key("max", "At most", "The greatest value that is acceptable.", low=None, moves_results=False),
+    AT,
+    Key(
+        "guard",
+        "Guard",
+        "Wanted beyond the limit, as a fraction of it.",
+        dimension=dim.NUMBER,
+        default=0.0,
+        example="0.1",
+        moves_results=False,
+    ),
+    Key(
+        "yield",
+        "Yield",
+        "Share of parts within the limit; for offset_limit.",
+        dimension=dim.NUMBER,
+        low_open=True,
+        high=1.0,
+        high_open=True,
+        default=0.9973,
+        moves_results=False,
+    ),
+    Key(
+        "formula",
+        "Formula",
+        "A figure of your own over this sheet's names and metrics.",
+        Kind.FORMULA,
+        moves_results=False,
+    ),
+    Key("unit", "Unit", "Unit of a figure of your own; text without a prefix.", Kind.TEXT, moves_results=False),
+    Key("id", "Requirement", "Number of the requirement in the specification.", Kind.TEXT, moves_results=False),
+    Key("source", "Source", "Where the target came from.", Kind.TEXT, moves_results=False),
+    Key("why", "Why", "What the target is for.", Kind.TEXT, moves_results=False),
+)
+"""What a target may say. min and max take the dimension of the metric."""
+
+EVIDENCE = Table(
+    "evidence",
+    "What a simulation or a bench found.",
+    keys=(
+        Key("metric", "Metric", "The metric or target that was found.", Kind.NAME, required=True, moves_results=False),
+        Key("value", "Value", "What was found.", low=None, required=True, moves_results=False),
+        Key("low", "Low", "Least of what was found.", low=None, moves_results=False),
+        Key("high", "High", "Greatest of what was found.", low=None, moves_results=False),
+        Key("spread", "Spread", "One standard deviation of what was found.", moves_results=False),
+        Key("samples", "Samples", "How many were simulated or measured.", Kind.WHOLE, low=1.0, moves_results=False),
+        Key(
+            "found_by",
+            "Found by",
+            "simulation, extraction or measurement.",
+            Kind.CHOICE,
+            choices=("simulation", "extraction", "measurement"),
+            required=True,
+            moves_results=False,
+        ),
+        Key("dated", "Dated", "The day it was found.", Kind.DATE, moves_results=False),
+        Key(
+            "basis",
+            "Basis",
+            "The sheet's digest then; a different one now makes the evidence stale.",
+            Kind.TEXT,
+            moves_results=False,
+        ),
+        Key(
+            "at",
+            "At",
+            "The condition at which it was found; left out: the nominal one.",
+            Kind.CONDITION,
+            moves_results=False,
+        ),
+        Key("by", "By", "Who found it.", Kind.TEXT, moves_results=False),
+        Key("reference", "Reference", "Run, netlist or bench log.", Kind.TEXT, moves_results=False),
+        Key("note", "Note", "Anything a reader of this evidence should know.", Kind.TEXT, moves_results=False),
+    ),
+    repeated=True,
+)
+
+WAIVER = Table(
+    "waiver",
+    "A miss that was accepted, by whom and why.",
+    keys=(
+        Key("target", "Target", "The target whose miss is accepted.", Kind.NAME, required=True, moves_results=False),
+        Key("by", "By", "Who accepted it.", Kind.TEXT, required=True, moves_results=False),
+        Key("reason", "Reason", "Why it was accepted.", Kind.TEXT, required=True, moves_results=False),
+        Key(
+            "value",
+            "Value",
+            "The value that was accepted: anything worse is missed again.",
+            low=None,
+            moves_results=False,
+        ),
+        Key("dated", "Dated", "The day it was accepted.", Kind.DATE, moves_results=False),
+        Key("until", "Until", "The last day on which the waiver holds.", Kind.DATE, moves_results=False),
+    ),
+    repeated=True,
+)
+
+SHEET = Table(
+    "",
+    "One circuit block.",
+    keys=(
+        Key(
+            "schema",
+            "Schema",
+            "Version of the file format.",
+            Kind.WHOLE,
+            low=1.0,
+            high=1.0,
+            required=True,
+            example="1",
+            moves_results=False,
+        ),
+        Key("title", "Title", "What the block is, for people.", Kind.TEXT, moves_results=False),
+        Key(
+            "stage",
+            "Stage",
+            "The circuit: one of the stages that the program knows.",
+            Kind.NAME,
+            required=True,
+            example="source-follower",
+        ),
+        Key(
+            "device",
+            "Device",
+            "The transistor type of the stage, from the process file.",
+            Kind.NAME,
+            required=True,
+            example="nfet",
+        ),
+        Key(
+            "bulk",
+            "Bulk",
+            "Where the stage's bulks are tied: the rail, or each to its own source (needs own_well).",
+            Kind.CHOICE,
+            choices=("rail", "source"),
+            default="rail",
+        ),
+        Key(
+            "count",
+            "Count",
+            "How many of this block the chip has; for budgets.",
+            Kind.WHOLE,
+            low=1.0,
+            default=1.0,
+            example="1",
+            moves_results=False,
+        ),
+        Key("owner", "Owner", "Who answers for the block.", Kind.TEXT, moves_results=False),
+        Key(
+            "state",
+            "State",
+            "How far the block is.",
+            Kind.CHOICE,
+            choices=("draft", "for-review", "accepted"),
+            default="draft",
+            moves_results=False,
+        ),
+        Key("notes", "Notes", "Anything else, as text.", Kind.TEXT, moves_results=False),
+    ),
+    tables=(
+        Table("bias", "The current source.", keys=BIAS_KEYS),
+        Table("assume", "What is imposed on the block, and where it came from.", keys=ASSUMPTIONS + OWN_CONDITIONS),
+        Table("own", "Names of your own, for formulas.", entry=OWN, names="a name of your own"),
+        Table("choose", "The designer's decisions.", keys=DESIGN),
+        Table("solve", "How bounds and proposals are found.", keys=SOLVE_KEYS),
+        Table(
+            "target",
+            "What is wanted, by metric.",
+            entry=Table("", "A target.", keys=TARGET_KEYS),
+            names="a metric, or a name of your own with a formula",
+        ),
+        EVIDENCE,
+        WAIVER,
+    ),
+)
+"""The whole sheet. In [assume] and [choose] the stage adds its design variables (stages.stage.Stage.design_keys)."""
+
+__all__ = [
+    "ASSUMPTIONS",
+    "AT",
+    "BIAS_KEYS",
+    "CONDITION",
+    "DESIGN",
+    "EVIDENCE",
+    "FINGERS",
+    "GEOMETRY",
+    "OWN",
+    "OWN_CONDITIONS",
+    "PROPOSE",
+    "SHEET",
+    "SOLVE_KEYS",
+    "TARGET_KEYS",
+    "WAIVER",
+]

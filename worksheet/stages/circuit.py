@@ -1,0 +1,159 @@
+"""A stage with its options, and the small-signal network that follows from it, as data for both engines.
+
+The network is a list of terms. A term says: the current that leaves node `row` contains `sign` times the element
+`element` (a conductance or a capacitance) times the voltage of node `column`. The numeric engine fills arrays
+with it, the symbolic one sympy matrices.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from functools import cached_property
+
+from worksheet.stages.stage import GROUND, IN, LINE, OUT, SUPPLY, Stage, Transistor
+
+DRIVE = "drive"
+"""The driven terminal where a drive resistance stands between it and the input."""
+
+LOAD, IDEAL, WELL, RESISTOR = "load", "ideal_bias", "well", "drive_resistor"
+"""Names of the elements that are no transistor."""
+
+CONDUCTANCES = (("transconductance", 1, "gate"), ("drain_conductance", 1, "drain"), ("bulk_conductance", 1, "bulk"), ("source_conductance", -1, "source"))
+"""i_d = g_m v_g + g_d v_d + g_b v_b - g_s v_s: operating value, sign, controlling terminal."""
+
+CAPACITANCES = (
+    ("gate_source_capacitance", "gate", "source"),
+    ("gate_drain_capacitance", "gate", "drain"),
+    ("gate_bulk_capacitance", "gate", "bulk"),
+    ("source_bulk_capacitance", "source", "bulk"),
+    ("drain_bulk_capacitance", "drain", "bulk"),
+)
+"""A transistor's capacitances: operating value and the two terminals that it lies between."""
+
+
+@dataclass(frozen=True, slots=True)
+class Term:
+    """One term of the nodal equations. `element` is (owner, value), e.g. ("main", "transconductance")."""
+
+    row: str
+    column: str
+    sign: int
+    element: tuple[str, str]
+    dynamic: bool
+
+
+@dataclass(frozen=True)
+class Circuit:
+    """A stage, its polarity, where its bulks are tied, its current source and whether its drive has a resistance.
+
+    Two sheets with equal circuits differ in numbers only, so they are solved in one batch.
+    """
+
+    stage: Stage
+    polarity: str = "n"
+    bulk: str = "rail"
+    ideal_bias: bool = True
+    driven_through_resistance: bool = False
+
+    @cached_property
+    def devices(self) -> tuple[Transistor, ...]:
+        """All transistors, the current source's last where it is not ideal."""
+        return self.stage.devices(self.ideal_bias)
+
+    @cached_property
+    def terminal(self) -> str:
+        """The node that the input drives: IN, or DRIVE behind a drive resistance."""
+        return DRIVE if self.driven_through_resistance else IN
+
+    @cached_property
+    def unknown(self) -> tuple[str, ...]:
+        """Nodes whose voltages are solved for; the output last."""
+        driven = (DRIVE,) if self.driven_through_resistance else ()
+        return (*driven, *self.stage.internal_nodes, OUT)
+
+    def bulk_node(self, device: Transistor) -> str:
+        """The node of a device's bulk."""
+        if self.bulk == "source" and device in self.stage.transistors:
+            return device.source
+        return SUPPLY if device.upside_down else GROUND
+
+    def node(self, device: Transistor, terminal: str) -> str:
+        """The network node of a device's terminal ("gate", "drain", "source", "bulk"); lines are told apart by device."""
+        name = self.bulk_node(device) if terminal == "bulk" else getattr(device, terminal)
+        if name == LINE:
+            return f"{LINE}:{device.name}"
+        return self.terminal if name == IN else str(name)
+
+    def line_rail(self, device: Transistor) -> str:
+        """The rail that a held gate moves with: that of its source, or of its bulk where the source stands on none."""
+        if device.source in (GROUND, SUPPLY):
+            return device.source
+        return SUPPLY if device.upside_down else GROUND
+
+    @cached_property
+    def moving_with_supply(self) -> frozenset[str]:
+        """Known nodes that move when the supply does; in a p-channel stage's mirror image that is the ground node."""
+        rail = SUPPLY if self.polarity == "n" else GROUND
+        lines = {f"{LINE}:{d.name}" for d in self.devices if d.gate == LINE and self.line_rail(d) == rail}
+        return frozenset({rail} | lines)
+
+    @cached_property
+    def terms(self) -> tuple[Term, ...]:
+        """All terms of the nodal equations."""
+        terms: list[Term] = []
+        for device in self.devices:
+            terms += self._transistor(device)
+        terms += _between((LOAD, "capacitance"), OUT, GROUND, dynamic=True)
+        if self.ideal_bias:
+            rail = self.stage.bias.source
+            terms += _between((IDEAL, "conductance"), OUT, rail, dynamic=False)
+            terms += _between((IDEAL, "capacitance"), OUT, rail, dynamic=True)
+        if self.bulk == "source":
+            for device in self.stage.transistors:
+                terms += _between((WELL, "capacitance"), self.node(device, "source"), GROUND, dynamic=True)
+        if self.driven_through_resistance:
+            terms += _between((RESISTOR, "conductance"), DRIVE, IN, dynamic=False)
+        return tuple(t for t in terms if t.row not in (GROUND, SUPPLY))
+
+    def _transistor(self, device: Transistor) -> list[Term]:
+        drain, source = self.node(device, "drain"), self.node(device, "source")
+        terms = []
+        for value, sign, terminal in CONDUCTANCES:
+            column = self.node(device, terminal)
+            terms += [Term(drain, column, sign, (device.name, value), False), Term(source, column, -sign, (device.name, value), False)]
+        for value, first, second in CAPACITANCES:
+            terms += _between((device.name, value), self.node(device, first), self.node(device, second), dynamic=True)
+        return terms
+
+    def stack_below(self, node: str) -> tuple[str, tuple[Transistor, ...]]:
+        """Follow the channels from a node towards ground: the fixed node where that ends, and the devices passed."""
+        return self._stack(node, "upper", "lower")
+
+    def stack_above(self, node: str) -> tuple[str, tuple[Transistor, ...]]:
+        """Follow the channels from a node towards the supply: the fixed node where that ends, and the devices passed."""
+        return self._stack(node, "lower", "upper")
+
+    def _stack(self, node: str, near: str, far: str) -> tuple[str, tuple[Transistor, ...]]:
+        devices: list[Transistor] = []
+        while node not in (IN, GROUND, SUPPLY):
+            device = next((d for d in self._channels if getattr(d, near) == node), None)
+            if device is None or device in devices:
+                raise ValueError(f"stage {self.stage.key}: no channel leads on from node {node!r}")
+            devices.append(device)
+            node = getattr(device, far)
+        return node, tuple(devices)
+
+    @cached_property
+    def _channels(self) -> tuple[Transistor, ...]:
+        return (*self.stage.transistors, self.stage.bias)
+
+
+def _between(element: tuple[str, str], first: str, second: str, dynamic: bool) -> list[Term]:
+    if first == second:
+        return []
+    return [
+        Term(first, first, 1, element, dynamic),
+        Term(first, second, -1, element, dynamic),
+        Term(second, second, 1, element, dynamic),
+        Term(second, first, -1, element, dynamic),
+    ]
