@@ -50,6 +50,7 @@ MOST_NODES = 300
 DEEPEST = 40
 LARGEST_EXPONENT = 64
 LARGEST_MAGNITUDE = 1e60
+SMALLEST_MAGNITUDE = 1e-60
 
 _TOKEN = re.compile(
     r"(?P<space>[ \t\r\n]+)"
@@ -343,7 +344,7 @@ class _Reader:
 
 
 def _within(constant: float) -> bool:
-    return 1.0 / LARGEST_MAGNITUDE <= abs(constant) <= LARGEST_MAGNITUDE
+    return SMALLEST_MAGNITUDE <= abs(constant) <= LARGEST_MAGNITUDE
 
 
 def _vanished(node: Node, inner: list[_Part], written: str) -> bool:

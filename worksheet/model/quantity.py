@@ -31,6 +31,7 @@ LONGEST_TEXT = 200
 _EXACT = Context(prec=700)
 _LEVEL = Context(prec=40)
 _ZERO_CELSIUS = Decimal("273.15")
+_CELSIUS_SPAN = (1.0, 1e6)  # [K]; below, a rounded text would fall under absolute zero; beyond, the shift is lost
 _NUMBER = re.compile(r"(?P<digits>[+-]?(?:[0-9]+(?:\.[0-9]*)?|\.[0-9]+))(?:[eE](?P<power>[+-]?[0-9]+))?")
 _LONGEST_POWER = 5
 _LARGEST_LEVEL = 6000.0
@@ -130,10 +131,9 @@ def format_quantity(value: float | None, dimension: Dimension, digits: int = 4, 
     if not math.isfinite(value):
         raise ValueError(f"not a finite {dimension.name}: {value}")
     exact = Decimal(repr(float(value)))
-    if dimension == TEMPERATURE:
+    if dimension == TEMPERATURE and _CELSIUS_SPAN[0] <= value < _CELSIUS_SPAN[1]:
         celsius = _EXACT.subtract(exact, _ZERO_CELSIUS)
-        places = max(0, digits - 3)
-        text = _signed(f"{_plain(round(celsius, places))} °C")
+        text = f"{_plain(celsius.quantize(Decimal(1).scaleb(-max(0, digits - 3)), context=_EXACT))} °C"
     else:
         text = _engineering(Context(prec=digits).plus(exact), dimension)
     return _ascii(text) if ascii else _typographic(text)
@@ -152,7 +152,8 @@ def format_input(value: float, dimension: Dimension) -> str:
         raise ValueError(f"not a finite {dimension.name}: {value}")
     exact = Decimal(repr(float(value)))
     if dimension == TEMPERATURE:
-        return _signed(f"{_plain(_EXACT.subtract(exact, _ZERO_CELSIUS))} °C")
+        celsius, kelvin = f"{_plain(_EXACT.subtract(exact, _ZERO_CELSIUS))} °C", f"{_plain(exact)} K"
+        return celsius if len(celsius) <= len(kelvin) + 1 else kelvin
     return _engineering(exact, dimension)
 
 
@@ -341,11 +342,6 @@ def _plain(number: Decimal) -> str:
         return format(number, "f")
     mantissa = number.scaleb(-number.adjusted(), _EXACT)
     return f"{mantissa:f}e{number.adjusted()}"
-
-
-def _signed(text: str) -> str:
-    """A rounded zero carries no sign."""
-    return text.removeprefix("-") if text.startswith("-0 ") else text
 
 
 def _typographic(text: str) -> str:
