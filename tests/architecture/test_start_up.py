@@ -33,11 +33,12 @@ def _loaded(code: str, *arguments: str) -> tuple[int, set[str]]:
         [sys.executable, "-c", code, *arguments],
         capture_output=True,
         text=True,
-        check=True,
+        check=False,
         stdin=subprocess.DEVNULL,
         cwd=TOP,
         env={**os.environ, "NO_COLOR": "1"},
     )
+    assert done.returncode == 0, done.stderr
     status, names = json.loads(done.stderr.strip().splitlines()[-1])
     return status, set(names)
 

@@ -89,9 +89,9 @@ OPERATING_POINT = (
         dim.NUMBER,
         "By how much the drain conductance is understated so near the edge of saturation.",
     ),
-    OperatingValue("gate_voltage", "Gate voltage", "V_G", dim.VOLTAGE, "From ground."),
-    OperatingValue("source_voltage", "Source voltage", "V_S", dim.VOLTAGE, "From ground."),
-    OperatingValue("drain_voltage", "Drain voltage", "V_D", dim.VOLTAGE, "From ground."),
+    OperatingValue("gate_voltage", "Gate voltage", "V_G", dim.VOLTAGE, "Voltage of the gate, from ground."),
+    OperatingValue("source_voltage", "Source voltage", "V_S", dim.VOLTAGE, "Voltage of the source, from ground."),
+    OperatingValue("drain_voltage", "Drain voltage", "V_D", dim.VOLTAGE, "Voltage of the drain, from ground."),
     OperatingValue(
         "gate_source_voltage",
         "Gate-source voltage",

@@ -1,4 +1,7 @@
-"""Every key of process/NAME.toml, once: device parameters and what a corner does to them."""
+"""Every key of process/NAME.toml, once: device parameters and what a corner does to them.
+
+Length: one entry a key, read as a table; a second file would only hide half of it.
+"""
 
 from __future__ import annotations
 

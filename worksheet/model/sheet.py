@@ -5,11 +5,8 @@ from __future__ import annotations
 import datetime
 from collections.abc import Mapping
 from dataclasses import dataclass, field
-from types import MappingProxyType
 
 from worksheet.model.formula import Formula
-
-_NOTHING: Mapping[str, "Value"] = MappingProxyType({})
 
 
 @dataclass(frozen=True, slots=True)
@@ -112,7 +109,7 @@ class Bias:
     """The current source: "ideal" with its conductance [S] and capacitance [F], or a device by name."""
 
     device: str = "ideal"
-    values: Mapping[str, Value] = _NOTHING
+    values: Mapping[str, Value] = field(default_factory=dict)
 
     @property
     def ideal(self) -> bool:
@@ -149,15 +146,15 @@ class Sheet:
     state: str = "draft"
     notes: str = ""
     bias: Bias = Bias()
-    assume: Mapping[str, Value] = _NOTHING
-    own: Mapping[str, Value] = _NOTHING
-    choose: Mapping[str, Value] = _NOTHING
-    fingers: Mapping[str, int] = MappingProxyType({})
+    assume: Mapping[str, Value] = field(default_factory=dict)
+    own: Mapping[str, Value] = field(default_factory=dict)
+    choose: Mapping[str, Value] = field(default_factory=dict)
+    fingers: Mapping[str, int] = field(default_factory=dict)
     solve: Solve = Solve()
-    targets: Mapping[str, Target] = MappingProxyType({})
+    targets: Mapping[str, Target] = field(default_factory=dict)
     evidence: tuple[Evidence, ...] = ()
     waivers: tuple[Waiver, ...] = ()
-    lines: Mapping[str, int] = field(default=MappingProxyType({}), compare=False)
+    lines: Mapping[str, int] = field(default_factory=dict, compare=False)
 
 
 @dataclass(frozen=True, slots=True)
@@ -186,7 +183,7 @@ class Process:
     reference_temperature: float
     devices: Mapping[str, DeviceModel]
     corners: Mapping[str, Mapping[str, Mapping[str, float]]]
-    lines: Mapping[str, int] = field(default=MappingProxyType({}), compare=False)
+    lines: Mapping[str, int] = field(default_factory=dict, compare=False)
 
 
 @dataclass(frozen=True, slots=True)
@@ -202,4 +199,4 @@ class ProjectFile:
     supplies: tuple[float, ...]
     nominal: Condition
     budgets: Mapping[str, float]
-    lines: Mapping[str, int] = field(default=MappingProxyType({}), compare=False)
+    lines: Mapping[str, int] = field(default_factory=dict, compare=False)

@@ -1,4 +1,7 @@
-"""Every key of sheets/NAME.toml, once. What one stage takes of it is decided by the stage's own table."""
+"""Every key of sheets/NAME.toml, once. What one stage takes of it is decided by the stage's own table.
+
+Length: one entry a key, read as a table; a second file would only hide half of it.
+"""
 
 from __future__ import annotations
 
