@@ -84,6 +84,21 @@ def test_an_area_stays_between_a_hundredth_and_ten_thousand(value: float, digits
     assert 0.01 <= mantissa < 10_000.0
 
 
+PIECES = st.sampled_from(["V", "mV", "um^2", "nm^3", "V^-1", "sqrt(Hz)", "%", "ohm", "kHz", "K"])
+
+
+@given(value=ORDINARY, above=PIECES | st.just("1"), below=PIECES, first=st.booleans())
+def test_a_kind_of_the_users_own_is_written_so_that_it_reads_back(
+    value: float, above: str, below: str, first: bool
+) -> None:
+    known = parse_unit(f"{above}/{below}" if first or above == "1" else above)
+    kind = Dimension("figure", known.base, known.exponents, plain=not known.base, example="1")
+    assert parse(format_input(value, kind), kind) == value
+    for ascii_only in (False, True):
+        text = format_quantity(value, kind, ascii=ascii_only)
+        assert parse(text, kind) == pytest.approx(value, rel=0.51e-3)
+
+
 def _outcome(read: Callable[[], object]) -> tuple[object, str]:
     """What was read, or the message of the refusal; any other exception is a failure."""
     try:

@@ -19,9 +19,9 @@ from worksheet.model.units import (
     Unit,
     UnitError,
     is_bare_prefix,
+    leading_power,
     parse_unit,
     plain_spaces,
-    starts_squared,
 )
 
 __all__ = ["LONGEST_TEXT", "QuantityError", "format_input", "format_quantity", "parse", "parse_free"]
@@ -193,11 +193,11 @@ def _fitting_unit(value: str, parts: _Parts, dimension: Dimension, expected: str
     is_length = dimension.unit == "m"
     if parts.unit == "m" and not is_length:
         hint = "write the number with e-3" if dimension == NUMBER else "write the whole unit"
-        if dimension.unit and not starts_squared(dimension.unit):
+        if leading_power(dimension.unit) == 1:
             hint = f'for milli write "m{dimension.unit}"'
         raise QuantityError(f'"m" could be milli or metre here; {hint}', _found(value), expected)
     if is_bare_prefix(parts.unit):
-        if dimension == TEMPERATURE or starts_squared(dimension.unit):
+        if dimension == TEMPERATURE or (dimension.unit and leading_power(dimension.unit) != 1):
             raise QuantityError("a prefix alone is ambiguous here; write the whole unit", _found(value), expected)
         decade = _prefixed(parts).power - parts.power
         return Unit(dimension.exponents, decade, dimension.unit)
@@ -289,10 +289,10 @@ def _meant(unit: str, dimension: Dimension) -> str:
     """A hint for units that differ from a fitting one in case, or are usual slips."""
     if dimension == TEMPERATURE and unit in {"C", "c", "k", "degrees", "deg", "°", "° K", "°K"}:
         return '; write "°C" or "K"'
-    if unit in _SLIPS and not starts_squared(dimension.unit):
+    if unit in _SLIPS and leading_power(dimension.unit) == 1:
         return f'; did you mean "{_SLIPS[unit]}{dimension.unit}"?'
     wanted = dimension.shown or dimension.unit
-    if starts_squared(wanted) or not wanted:
+    if leading_power(wanted) != 1:
         return ""
     folded = unit.replace("µ", "u").replace("μ", "u").casefold()
     candidates = (prefix + wanted for prefix in ("", "f", "p", "n", "u", "m", "k", "M", "G"))
@@ -310,9 +310,10 @@ def _engineering(exact: Decimal, dimension: Dimension) -> str:
     shown = dimension.shown or dimension.unit
     below = parse_unit(shown).decade if shown else 0
     scaled = exact.scaleb(-below, _EXACT)
-    if not dimension.prefixed:
+    power = leading_power(shown)
+    if not dimension.prefixed or dimension.plain or power not in {1, 2}:
         return f"{_plain(scaled)} {shown}".rstrip(" ").replace(" 1/", " /")
-    squared = starts_squared(shown)
+    squared = power == 2
     decades, prefix = _step(scaled, squared)
     text = _plain(scaled.scaleb(-decades, _EXACT))
     return f"{text} {prefix}{shown}"
@@ -346,8 +347,8 @@ def _plain(number: Decimal) -> str:
 
 def _typographic(text: str) -> str:
     """The signs of the SI brochure for the spellings of the table."""
-    text = text.replace("rtHz", "√Hz").replace("^2", "²")
-    return re.sub("ohm$", "Ω", re.sub(r"\bu(?=[A-Za-z])", "µ", text))
+    text = text.replace("rtHz", "√Hz").replace("sqrt(Hz)", "√Hz").replace("^2", "²").replace("ohm", "Ω")
+    return re.sub(r"\bu(?=[A-Za-zΩ])", "µ", text)
 
 
 def _ascii(text: str) -> str:

@@ -15,7 +15,7 @@ from typing import Literal
 from worksheet.model.dimension import Exponents
 from worksheet.model.text import clean
 
-__all__ = ["PREFIXES", "SYMBOLS", "Unit", "UnitError", "is_bare_prefix", "parse_unit", "plain_spaces", "starts_squared"]
+__all__ = ["PREFIXES", "SYMBOLS", "Unit", "UnitError", "is_bare_prefix", "leading_power", "parse_unit", "plain_spaces"]
 
 PREFIXES: dict[str, int] = {
     "Q": 30,
@@ -136,9 +136,10 @@ def is_bare_prefix(text: str) -> bool:
     return text != "m" and PREFIXES.get(text, 1) % 3 == 0
 
 
-def starts_squared(unit: str) -> bool:
-    """Whether a bare prefix before this unit would be ambiguous, because its first symbol is squared or inverted."""
-    return unit.startswith("1/") or bool(re.match(r"[A-Za-z]+\^", unit))
+def leading_power(unit: str) -> int:
+    """The power that a prefix before this unit would take: 1 for "F/m^2", 2 for "m^2"; 0 where none can stand there."""
+    first = re.match(r"([A-Za-z]+)(?:\^(-?[0-9]))?", unit)
+    return int(first[2] or 1) if first and first[1] in SYMBOLS else 0
 
 
 @lru_cache(maxsize=1024)
