@@ -88,4 +88,6 @@ def own_well_source_voltage(parameters: Parameters, u: Number, gate: Number, dra
     Source: as gate_voltage with V_SB = 0: kappa (V_G - V_S - V_T0) + sigma (V_D - V_S) = U_T u.
     """
     p = parameters
-    return np.asarray((p.kappa * (gate - p.threshold) + p.drain_coupling * drain - thermal * u) / (p.kappa + p.drain_coupling))
+    return np.asarray(
+        (p.kappa * (gate - p.threshold) + p.drain_coupling * drain - thermal * u) / (p.kappa + p.drain_coupling)
+    )

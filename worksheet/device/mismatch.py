@@ -26,4 +26,4 @@ def threshold_deviation(coefficient: Number, width: Number, length: Number) -> A
 
 def single_deviation(coefficient: Number, width: Number, length: Number) -> Array:
     """Standard deviation of one device against its intended value: 1/sqrt(2) of a pair's. [V] or [-]; see pair_deviation."""
-    return pair_deviation(coefficient, width, length) / np.sqrt(2.0)
+    return np.asarray(pair_deviation(coefficient, width, length) / np.sqrt(2.0))

@@ -73,12 +73,18 @@ def at_condition(
     Source: Tsividis and McAndrew 2011 for the temperature laws; sigma(L) = sigma_ref (L_ref/L)^m.
     """
     factor = changes.get("capacitance_factor", 1.0)
-    coupling = process["drain_coupling"] * np.power(process["drain_coupling_length"] / length, process["drain_coupling_exponent"])
+    coupling = process["drain_coupling"] * np.power(
+        process["drain_coupling_length"] / length, process["drain_coupling_exponent"]
+    )
     warmth = temperature / reference_temperature
     return Parameters(
         kappa=process["kappa"] + changes.get("kappa_shift", 0.0),
-        threshold=process["threshold"] + changes.get("threshold_shift", 0.0) - process["threshold_drift"] * (temperature - reference_temperature),
-        specific_current=process["specific_current"] * changes.get("specific_current_factor", 1.0) * np.power(warmth, 2.0 - process["mobility_exponent"]),
+        threshold=process["threshold"]
+        + changes.get("threshold_shift", 0.0)
+        - process["threshold_drift"] * (temperature - reference_temperature),
+        specific_current=process["specific_current"]
+        * changes.get("specific_current_factor", 1.0)
+        * np.power(warmth, 2.0 - process["mobility_exponent"]),
         drain_coupling=coupling * changes.get("drain_coupling_factor", 1.0),
         length_modulation=process["length_modulation"],
         surface_potential=process["surface_potential"],
@@ -94,5 +100,3 @@ def at_condition(
         width=width,
         length=length,
     )
-
-

@@ -89,7 +89,9 @@ def drain_current(parameters: Parameters, gate: Number, source: Number, drain: N
     return np.asarray(p.specific * (charge.inversion_from_charge(forward) - charge.inversion_from_charge(reverse)))
 
 
-def triode_conductances(parameters: Parameters, forward: Number, reverse: Number, thermal: Number) -> tuple[Array, Array, Array]:
+def triode_conductances(
+    parameters: Parameters, forward: Number, reverse: Number, thermal: Number
+) -> tuple[Array, Array, Array]:
     """g_m, g_s and g_d out of saturation, from the charges at both ends.
 
     Args:
@@ -102,4 +104,8 @@ def triode_conductances(parameters: Parameters, forward: Number, reverse: Number
     p = parameters
     unit = p.specific / thermal
     g_m = p.kappa * unit * (forward - reverse)
-    return np.asarray(g_m), np.asarray(unit * (forward + p.drain_coupling * reverse)), np.asarray(unit * (p.drain_coupling * forward + reverse))
+    return (
+        np.asarray(g_m),
+        np.asarray(unit * (forward + p.drain_coupling * reverse)),
+        np.asarray(unit * (p.drain_coupling * forward + reverse)),
+    )

@@ -49,7 +49,10 @@ class Levels:
     @cached_property
     def saturation(self) -> dict[str, Array]:
         """V_DSsat of each transistor, by name. [V]"""
-        return {name: saturation_voltage(self._in.current / p.specific, self._in.thermal) for name, p in self._in.devices.items()}
+        return {
+            name: saturation_voltage(self._in.current / p.specific, self._in.thermal)
+            for name, p in self._in.devices.items()
+        }
 
     def wanted(self, device: Transistor) -> Array:
         """Drain-source voltage wanted of a device: V_DSsat and the margin; 0 of an ideal source. [V]"""
@@ -79,7 +82,9 @@ class Levels:
     @cached_property
     def _source_input_room(self) -> Array:
         """Highest level of a source-driven input for the output that is given, or else for any output. [V]"""
-        highest = self.assumed_output if self.assumed_output is not None else self._in.supply - self._stack(self._above[1])
+        highest = (
+            self.assumed_output if self.assumed_output is not None else self._in.supply - self._stack(self._above[1])
+        )
         return np.asarray(highest - self._stack(self._below[1]))
 
     def _fixed(self, node: str) -> Array:
@@ -127,7 +132,9 @@ class Levels:
         if level is not None:
             return level
         if self._circuit.stage.holds_input:
-            wanted = self.assumed_output if self.assumed_output is not None else (self.output_low + self.output_high) / 2.0
+            wanted = (
+                self.assumed_output if self.assumed_output is not None else (self.output_low + self.output_high) / 2.0
+            )
             return self._held(self.gate_for_output(wanted))
         return self.gates[self._circuit.stage.transistors[0].name]
 
@@ -252,5 +259,3 @@ class Terminals:
         for voltage in stack[1:]:
             highest, lowest = np.maximum(highest, voltage), np.minimum(lowest, voltage)
         return np.asarray(highest - lowest)
-
-

@@ -5,7 +5,7 @@ from __future__ import annotations
 from dataclasses import dataclass
 
 import numpy as np
-from numpy.typing import NDArray
+from numpy.typing import ArrayLike, NDArray
 
 from worksheet.device.arrays import Array, Number
 from worksheet.model.metrics import Reason
@@ -35,7 +35,7 @@ class Measured:
         return Reason(int(np.broadcast_to(self.reasons, self.values.shape)[index]))
 
 
-def missing_where(values: Number, *rules: tuple[Array | bool, Reason]) -> Measured:
+def missing_where(values: Number, *rules: tuple[ArrayLike, Reason]) -> Measured:
     """Measured with values taken out where a rule's mask holds; earlier rules win, the rest of what is not finite last.
 
     Args:

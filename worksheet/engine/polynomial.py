@@ -103,15 +103,19 @@ def lowest_positive_root(a: Sequence[Number]) -> Array:
 def positive_roots(a: Sequence[Number]) -> Array:
     """All real roots above zero along a new first axis, NaN where a root is none of these."""
     with np.errstate(all="ignore"):
-        ratio = np.stack(np.broadcast_arrays(*[np.asarray(c / np.asarray(a[0])) for c in a[1:]])) if len(a) > 1 else np.zeros((0,))
+        ratio = (
+            np.stack(np.broadcast_arrays(*[np.asarray(c / np.asarray(a[0])) for c in a[1:]]))
+            if len(a) > 1
+            else np.zeros((0,))
+        )
         if len(a) == 2:
             inverse = -ratio
         elif len(a) == 3:
             inverse = np.stack(_quadratic_inverse(ratio[0], ratio[1]))
         else:
-            inverse = _companion(ratio)
-            inverse = np.where(np.abs(inverse.imag) <= 1e-7 * np.abs(inverse), inverse.real, np.nan)
-        roots = np.where(inverse > 0, 1.0 / inverse, np.nan)
+            every = _companion(ratio)
+            inverse = np.where(np.abs(every.imag) <= 1e-7 * np.abs(every), every.real, np.nan)
+        roots: Array = np.asarray(np.where(inverse > 0, 1.0 / inverse, np.nan), dtype=np.float64)
         return roots if len(a) <= 3 else _polished(a, roots)
 
 
@@ -129,7 +133,9 @@ def inverse_roots(a: Sequence[Number]) -> Array:
             inside = half * half - ratio[1]
             root = np.sqrt(inside.astype(np.complex128))
             large = half + root
-            small = np.where(inside >= 0, np.where(large == 0, 0.0, ratio[1] / np.where(large == 0, 1.0, large)), half - root)
+            small = np.where(
+                inside >= 0, np.where(large == 0, 0.0, ratio[1] / np.where(large == 0, 1.0, large)), half - root
+            )
             return np.stack([large, small])
         return -_companion(ratio)
 
@@ -177,7 +183,7 @@ def noise_integral(numerator: Sequence[Number], denominator: Sequence[Number]) -
         c(s) c(-s) = d(s) q(-s) + d(-s) q(s), integral q_(n-1)/d_n.
     """
     n = len(denominator) - 1
-    c, d = padded(list(numerator)[: n], n), denominator
+    c, d = padded(list(numerator)[:n], n), denominator
     with np.errstate(all="ignore"):
         if n == 1:
             return np.asarray(c[0] ** 2 / (2.0 * d[0] * d[1]))
@@ -191,16 +197,17 @@ def _noise_integral_general(c: Poly, d: Sequence[Number]) -> Array:
     n = len(d) - 1
     static = np.asarray(d[0])
     rate = np.abs(static / d[n]) ** (1.0 / n)
-    d = [np.asarray(x * rate**k / static) for k, x in enumerate(d)]
-    c = [np.asarray(x * rate**k) for k, x in enumerate(c)]
-    square = squared_magnitude(c)
-    right = np.stack(np.broadcast_arrays(*[(-1.0 if k % 2 else 1.0) * np.asarray(square[k]) for k in range(n)]), axis=-1)
-    matrix = np.zeros((*np.broadcast_shapes(right.shape[:-1], *[x.shape for x in d]), n, n))
+    scaled = [np.asarray(x * rate**k / static) for k, x in enumerate(d)]
+    square = squared_magnitude([np.asarray(x * rate**k) for k, x in enumerate(c)])
+    right = np.stack(
+        np.broadcast_arrays(*[(-1.0 if k % 2 else 1.0) * np.asarray(square[k]) for k in range(n)]), axis=-1
+    )
+    matrix = np.zeros((*np.broadcast_shapes(right.shape[:-1], *[x.shape for x in scaled]), n, n))
     for k in range(n):
         for j in range(n):
             i = 2 * k - j
             if 0 <= i <= n:
-                matrix[..., k, j] = 2.0 * (-1.0 if j % 2 else 1.0) * d[i]
+                matrix[..., k, j] = 2.0 * (-1.0 if j % 2 else 1.0) * scaled[i]
     right = np.broadcast_to(right, matrix.shape[:-1])
     q = np.linalg.solve(matrix, right[..., None])[..., 0]
-    return np.asarray(q[..., n - 1] / d[n] * rate / static**2)
+    return np.asarray(q[..., n - 1] / scaled[n] * rate / static**2)

@@ -78,7 +78,9 @@ def _last_crossing(weights: Array, constants: Array, tolerance: Array) -> Array:
 
     slowest = np.max(np.where(weights == 0, 0.0, 1.0 / finite.real), axis=0)
     bound = slowest * np.maximum(np.log(np.sum(np.abs(weights), axis=0) / tolerance), 0.0) * 1.0001 + 1e-300
-    times = np.concatenate([bound * 10.0 ** np.linspace(-12, 0, _GRID // 2)[:, None], bound * np.linspace(0, 1, _GRID)[:, None]])
+    times = np.concatenate(
+        [bound * 10.0 ** np.linspace(-12, 0, _GRID // 2)[:, None], bound * np.linspace(0, 1, _GRID)[:, None]]
+    )
     if len(weights) == 2:
         times = np.concatenate([times, _extrema(weights, finite, bound)])
     times = np.sort(times, axis=0)

@@ -162,7 +162,9 @@ class NumericSolution:
         fallen = [2.0 * bottom**2 * n - top**2 * d for n, d in zip(n2, d2, strict=True)]
         root = np.sqrt(poly.lowest_positive_root(fallen)) / _TWO_PI
         unlimited = (bottom == 0) | (np.asarray(self.output_capacitance) == 0)
-        return missing_where(root, (unlimited, Reason.UNLIMITED), (top == 0, Reason.NO_GAIN), (np.isnan(root), Reason.FEED_THROUGH))
+        return missing_where(
+            root, (unlimited, Reason.UNLIMITED), (top == 0, Reason.NO_GAIN), (np.isnan(root), Reason.FEED_THROUGH)
+        )
 
     @cached_property
     def time_constants(self) -> Array:
@@ -178,7 +180,9 @@ class NumericSolution:
         """Lowest frequency of unit magnitude. [Hz]"""
         (top, bottom), (n2, d2) = self._static, self._squares
         root = np.sqrt(poly.lowest_positive_root([n - d for n, d in zip(n2, d2, strict=True)])) / _TWO_PI
-        return missing_where(root, (np.abs(top) <= np.abs(bottom), Reason.GAIN_BELOW_1), (np.isnan(root), Reason.FEED_THROUGH))
+        return missing_where(
+            root, (np.abs(top) <= np.abs(bottom), Reason.GAIN_BELOW_1), (np.isnan(root), Reason.FEED_THROUGH)
+        )
 
     def peaking(self) -> Measured:
         """Greatest magnitude over the DC magnitude; the limit at high frequency counts."""
@@ -193,7 +197,9 @@ class NumericSolution:
 
     def input_capacitance(self) -> Measured:
         """[F]"""
-        return missing_where(self.network.input_capacitance, (~np.isfinite(np.asarray(self.network.input_capacitance)), Reason.UNLIMITED))
+        return missing_where(
+            self.network.input_capacitance, (~np.isfinite(np.asarray(self.network.input_capacitance)), Reason.UNLIMITED)
+        )
 
     def supply_rejection(self) -> Measured:
         """abs(A_in/A_supply)."""
@@ -204,11 +210,17 @@ class NumericSolution:
         """[s]"""
         step = self.inputs.step_size
         if step is None:
-            return missing_where(settling.linear(self.network.transfer, self.network.denominator, self.inputs.settling_tolerance))
+            return missing_where(
+                settling.linear(self.network.transfer, self.network.denominator, self.inputs.settling_tolerance)
+            )
         if not self.inputs.circuit.stage.source_output:
             return missing_where(
                 settling.drain_step(
-                    step, self["dc_gain"], self["slew_rate"], 1.0 / (_TWO_PI * self["pole_frequency"]), self.inputs.settling_tolerance
+                    step,
+                    self["dc_gain"],
+                    self["slew_rate"],
+                    1.0 / (_TWO_PI * self["pole_frequency"]),
+                    self.inputs.settling_tolerance,
                 )
             )
         return self._source_settling(step)
@@ -235,7 +247,13 @@ class NumericSolution:
     def noise_sources(self) -> Sequence[Source]:
         """Every source of noise current: all transistors, and the drive resistance."""
         sources = [
-            self._source(d.name, self.network.channel_transfer(d.device), d.white_density, d.flicker_density, d.parameters.flicker_exponent)
+            self._source(
+                d.name,
+                self.network.channel_transfer(d.device),
+                d.white_density,
+                d.flicker_density,
+                d.parameters.flicker_exponent,
+            )
             for d in self.transistors
         ]
         if self.inputs.circuit.driven_through_resistance:
@@ -288,7 +306,9 @@ class NumericSolution:
 
 def _with_reasons_of(values: Number, parts: Sequence[Measured]) -> Measured:
     """A rule's plain result; where it is missing, the reason of the first part that is missing there."""
-    rules = [(part.reasons == reason, reason) for part in parts if part.reasons is not None for reason in Reason if reason]
+    rules = [
+        (part.reasons == reason, reason) for part in parts if part.reasons is not None for reason in Reason if reason
+    ]
     return missing_where(values, *rules)
 
 

@@ -75,7 +75,9 @@ def _output(solution: NumericSolution) -> Array:
     for sign in (1.0, -1.0):
         low_moves, high_moves = levels.range_moves(sign * step)
         moved = _output_after(solution, sign * step)
-        worst = np.maximum(worst, _outside(moved, levels.output_low + low_moves, levels.output_high + high_moves, 0.0, 0.0))
+        worst = np.maximum(
+            worst, _outside(moved, levels.output_low + low_moves, levels.output_high + high_moves, 0.0, 0.0)
+        )
     return worst
 
 

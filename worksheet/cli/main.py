@@ -1,0 +1,76 @@
+"""The command line: arguments read, the command run, its exit status handed back."""
+
+from __future__ import annotations
+
+import argparse
+import sys
+from collections.abc import Sequence
+from importlib import import_module
+from typing import NoReturn
+
+from worksheet.cli.diagnostics import Status, say, tell
+from worksheet.cli.output import Output, close_quietly
+from worksheet.model.problem import Problem
+
+COMMANDS = ("review",)
+"""Modules of worksheet.cli.commands, in the order of the help."""
+
+
+class _Usage(Exception):
+    """The arguments are off."""
+
+
+class _Parser(argparse.ArgumentParser):
+    def error(self, message: str) -> NoReturn:
+        raise _Usage(f"{message} (see {self.prog} --help)")
+
+
+def _parser() -> argparse.ArgumentParser:
+    parser = _Parser(
+        prog="biasbook",
+        description="Calculation sheets for analog stages: what is needed, what is achieved, what binds.",
+    )
+    parser.set_defaults(command=None)
+    subparsers = parser.add_subparsers(title="commands", metavar="COMMAND", parser_class=_Parser)
+    for name in COMMANDS:
+        import_module(f"worksheet.cli.commands.{name}").add(subparsers)
+    return parser
+
+
+def main(argv: Sequence[str] | None = None) -> int:
+    """Run one command.
+
+    Args:
+        argv: Arguments without the program's name; those of the process where None.
+    Returns: exit status, see diagnostics.Status
+    """
+    arguments = list(sys.argv[1:] if argv is None else argv)
+    output = Output("--json" in arguments)
+    try:
+        parsed = _parser().parse_args(arguments)
+        if parsed.command is None:
+            raise _Usage("no command given (see biasbook --help)")
+        status: int = parsed.command(parsed, output)
+    except _Usage as usage:
+        return _bad_usage(str(usage), output)
+    except BrokenPipeError:
+        close_quietly()
+        return Status.FINE
+    except KeyboardInterrupt:
+        say("biasbook: interrupted")
+        return 130
+    return status
+
+
+def _bad_usage(message: str, output: Output) -> int:
+    problem = Problem("command line", None, "", message)
+    tell([problem])
+    if output.as_json:
+        item = {"file": problem.file, "line": problem.line, "key": problem.key, "message": problem.message}
+        output.document({"schema": 1, "problems": [item]})
+    return Status.BAD_INPUT
+
+
+def entry() -> int:
+    """What the installed command calls."""
+    return main()

@@ -1,0 +1,314 @@
+"""One sheet over conditions, its values resolved to numbers: the way from what a file states to the engine's inputs.
+
+Any value may be moved: the solver, fragility, ranges of assumptions, samples and variants all ask the same case
+for inputs with some values replaced by arrays, and formulas follow.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Callable, Mapping
+from dataclasses import dataclass, field
+from functools import cached_property
+from typing import Any
+
+import numpy as np
+
+from worksheet.device.arrays import Array, Number
+from worksheet.device.parameters import Parameters, at_condition
+from worksheet.engine.inputs import Inputs
+from worksheet.engine.solution import NumericSolution
+from worksheet.model import formula as formulas
+from worksheet.model import metrics
+from worksheet.model.formula import Formula, FormulaError
+from worksheet.model.keys import Key
+from worksheet.model.problem import Problem
+from worksheet.model.process_keys import DEVICE_PARAMETERS
+from worksheet.model.sheet import DeviceModel, Sheet, Target, Value
+from worksheet.model.sheet_keys import ASSUMPTIONS, BIAS_KEYS
+from worksheet.project.conditions import ConditionSet
+from worksheet.stages import catalogue
+from worksheet.stages.circuit import Circuit
+from worksheet.stages.stage import BIAS, Stage, Transistor
+
+Moves = Mapping[str, Number]
+"""Values that replace a sheet's own: a sheet name ("width", an own name), "bias.KEY" or "process.DEVICE.PARAMETER"."""
+
+External = Callable[[str, str], Array]
+"""Gives SHEET.NAME of another sheet at a case's conditions."""
+
+_NUMBERS = {key.name for key in DEVICE_PARAMETERS if key.dimension is not None}
+_DEFAULTS: dict[str, Key] = {key.name: key for key in ASSUMPTIONS}
+_BIAS = {key.name: key for key in BIAS_KEYS}
+
+FUNCTIONS: Mapping[str, Callable[..., Any]] = {
+    "sqrt": np.sqrt,
+    "log": np.log,
+    "exp": np.exp,
+    "abs": np.abs,
+    "min": lambda *parts: _reduced(np.minimum, parts),
+    "max": lambda *parts: _reduced(np.maximum, parts),
+}
+"""The functions of a formula, over arrays."""
+
+
+def _reduced(law: Callable[[Any, Any], Any], parts: tuple[Any, ...]) -> Any:
+    total = parts[0]
+    for part in parts[1:]:
+        total = law(total, part)
+    return total
+
+
+class CaseError(Exception):
+    """A value of a sheet that does not resolve to a number in its range; carries the problem."""
+
+    def __init__(self, problem: Problem) -> None:
+        """Keep the problem."""
+        super().__init__(str(problem))
+        self.problem = problem
+
+
+@dataclass(frozen=True, eq=False)
+class Case:
+    """One sheet over a set of conditions.
+
+    Attributes:
+        sheet: What its file states.
+        conditions: The conditions, the nominal one first.
+        external: Values of other sheets at these conditions.
+        filled: Numbers for what the sheet leaves open (the solver's proposals), by key. [unit of the key]
+        moves: Values that replace the sheet's own.
+    """
+
+    sheet: Sheet
+    conditions: ConditionSet
+    external: External
+    filled: Mapping[str, float] = field(default_factory=dict)
+    moves: Moves = field(default_factory=dict)
+
+    def moved(self, moves: Moves) -> Case:
+        """The same case with further values replaced."""
+        return Case(self.sheet, self.conditions, self.external, self.filled, {**self.moves, **moves})
+
+    def with_filled(self, filled: Mapping[str, float]) -> Case:
+        """The same case with further open values filled in."""
+        return Case(self.sheet, self.conditions, self.external, {**self.filled, **filled}, self.moves)
+
+    @property
+    def stage(self) -> Stage:
+        """The sheet's stage."""
+        stage = catalogue.find(self.sheet.stage)
+        assert stage is not None  # the reader refuses unknown stages
+        return stage
+
+    @cached_property
+    def circuit(self) -> Circuit:
+        """The stage with this sheet's options."""
+        main = self.model(self.stage.transistors[0])
+        return Circuit(
+            self.stage,
+            main.polarity,
+            self.sheet.bulk,
+            self.sheet.bias.ideal,
+            bool(np.any(np.asarray(self.value("drive_resistance")) > 0)),
+        )
+
+    def model(self, device: Transistor) -> DeviceModel:
+        """The process file's device behind one of the circuit's transistors."""
+        name = self.sheet.bias.device if device.name == BIAS else self.sheet.device
+        return self.conditions.process.devices[name]
+
+    @cached_property
+    def open_keys(self) -> tuple[str, ...]:
+        """Design variables that the sheet leaves to the solver, filled or not."""
+        names = [k.name for k in self.stage.design_keys(self.sheet.bias.ideal) if k.dimension is not None]
+        return tuple(
+            n
+            for n in names
+            if n not in self.sheet.assume and (n not in self.sheet.choose or self.sheet.choose[n].propose)
+        )
+
+    @property
+    def unfilled(self) -> tuple[str, ...]:
+        """Design variables that have no number yet."""
+        return tuple(n for n in self.open_keys if n not in self.filled and n not in self.moves)
+
+    @cached_property
+    def _known(self) -> dict[str, Number]:
+        return {}
+
+    def stated(self, name: str) -> Value | None:
+        """What the sheet states under a name: assumption, choice or own name."""
+        sheet = self.sheet
+        return sheet.assume.get(name) or sheet.choose.get(name) or sheet.own.get(name)
+
+    def value(self, name: str) -> Number:
+        """A value of this sheet by name. [unit of the key], scalar or over conditions
+
+        Raises: CaseError where a formula fails or leaves its range; KeyError where there is no such name or it is open.
+        """
+        if name in self.moves:
+            return self.moves[name]
+        if name not in self._known:
+            self._known[name] = self._resolve(name)
+        return self._known[name]
+
+    def _resolve(self, name: str) -> Number:
+        if name == "supply":
+            return self.conditions.supply
+        if name == "temperature":
+            return self.conditions.temperature
+        stated = self.stated(name)
+        if stated is not None and stated.formula is not None:
+            return self._checked(name, stated, stated.formula)
+        if stated is not None and stated.number is not None:
+            return stated.number
+        if name in self.filled:
+            return self.filled[name]
+        default = _DEFAULTS[name].default
+        if default is None:
+            raise KeyError(name)
+        return float(default)
+
+    def _checked(self, name: str, stated: Value, formula: Formula) -> Number:
+        result = self.evaluate(formula)
+        key = self._key(name)
+        wrong = np.atleast_1d(
+            ~np.isfinite(result) | np.vectorize(lambda x: key is not None and key.outside(float(x)) is not None)(result)
+        )
+        if wrong.any() and not self.moves:
+            at = self.conditions.conditions[int(np.argmax(np.broadcast_to(wrong, (len(self.conditions),))))]
+            found = float(np.broadcast_to(result, (len(self.conditions),))[np.argmax(wrong)])
+            wanted = key.range_text() if key is not None else "a number"
+            what = f"gives {found:g}" if np.isfinite(found) else "gives no number"
+            raise CaseError(
+                self.problem(
+                    name,
+                    stated,
+                    f"the formula {formula.text!r} {what} at {at.process}, {at.temperature:g} K, {at.supply:g} V; expected {wanted}",
+                )
+            )
+        return np.asarray(result)
+
+    def problem(self, name: str, stated: Value | None, message: str) -> Problem:
+        """A problem with one of this sheet's values."""
+        sheet = self.sheet
+        table = next(
+            (
+                t
+                for t, values in (("assume", sheet.assume), ("choose", sheet.choose), ("own", sheet.own))
+                if name in values
+            ),
+            "",
+        )
+        key = f"{table}.{name}" if table else name
+        return Problem(sheet.file, sheet.lines.get(key, stated.line if stated is not None else None), key, message)
+
+    def _key(self, name: str) -> Key | None:
+        known = {key.name: key for key in self.stage.design_keys(self.sheet.bias.ideal)} | _DEFAULTS
+        return known.get(name)
+
+    def evaluate(self, formula: Formula, extra: Callable[[str], Number | None] | None = None) -> Array:
+        """A formula over this case. [SI], over conditions
+
+        Args:
+            formula: What to evaluate.
+            extra: Further names (a target's metrics); None for a name that it does not know.
+        Raises: CaseError where the formula cannot be evaluated.
+        """
+
+        def lookup(name: str) -> Number:
+            if "." in name:
+                return self.external(*name.split(".", 1))
+            found = extra(name) if extra is not None else None
+            return self.value(name) if found is None else found
+
+        with np.errstate(all="ignore"):
+            try:
+                return np.asarray(formulas.evaluate(formula, lookup, FUNCTIONS, number=np.float64), dtype=np.float64)
+            except FormulaError as error:
+                raise CaseError(Problem(self.sheet.file, None, "formula", f"{formula.text!r}: {error}")) from error
+
+    def _bias(self, name: str) -> Number:
+        moved = self.moves.get(f"bias.{name}")
+        if moved is not None:
+            return moved
+        stated = self.sheet.bias.values.get(name)
+        if stated is None:
+            return float(_BIAS[name].default or 0.0)
+        if stated.formula is not None:
+            return self.evaluate(stated.formula)
+        return stated.number or 0.0
+
+    def _process(self, model: DeviceModel) -> dict[str, Number]:
+        prefix = f"process.{model.name}."
+        return {
+            name: self.moves.get(prefix + name, value.number or 0.0)
+            for name, value in model.values.items()
+            if name in _NUMBERS
+        }
+
+    @cached_property
+    def current(self) -> Number:
+        """Bias current over conditions, with its temperature law. [A]"""
+        exponent = self.value("bias_temperature_exponent")
+        current = self.value("bias_current")
+        if not np.any(exponent):
+            return current
+        temperature = np.asarray(self.value("temperature"))
+        nominal = temperature if temperature.ndim == 0 else temperature[..., :1]
+        return np.asarray(current * (temperature / nominal) ** exponent)
+
+    def parameters(self, device: Transistor) -> Parameters:
+        """One transistor's parameters over the conditions."""
+        model = self.model(device)
+        changes = self.conditions.changes(model.name)
+        return at_condition(
+            self._process(model),
+            changes,
+            self.value("temperature"),
+            self.conditions.process.reference_temperature,
+            self.value(device.key("width")),
+            self.value(device.key("length")),
+        )
+
+    def _optional(self, name: str) -> Number | None:
+        return self.value(name) if name in self.moves or self.stated(name) is not None else None
+
+    @cached_property
+    def inputs(self) -> Inputs:
+        """The engine's inputs. KeyError where something is left open and not filled."""
+        return Inputs(
+            circuit=self.circuit,
+            temperature=self.value("temperature"),
+            supply=self.value("supply"),
+            current=self.current,
+            devices={device.name: self.parameters(device) for device in self.circuit.devices},
+            load_capacitance=self.value("load_capacitance"),
+            ideal_conductance=self._bias("output_conductance"),
+            ideal_capacitance=self._bias("capacitance"),
+            **{name: self.value(name) for name in _PLAIN},
+            step_size=self._optional("step_size"),
+            input_level=self._optional("input_level"),
+            output_level=self._optional("output_level"),
+        )
+
+    @cached_property
+    def solution(self) -> NumericSolution:
+        """The solved stage."""
+        return NumericSolution(self.inputs)
+
+    def figure(self, target: Target, solution: NumericSolution | None = None) -> Array:
+        """Values of a target that has a formula, over conditions; NaN where a metric in it is missing. [its own unit]"""
+        assert target.formula is not None
+        solved = solution or self.solution
+        return self.evaluate(target.formula, lambda name: solved[name] if metrics.find(name) is not None else None)
+
+
+_PLAIN = (
+    "drive_resistance",
+    "well_capacitance",
+    "bias_overhead",
+    "saturation_margin",
+    "settling_tolerance",
+    "noise_from",
+)

@@ -1,0 +1,93 @@
+"""The conditions of a sheet: every combination that its project states, the nominal one first."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+from dataclasses import dataclass
+from functools import cached_property
+from itertools import product
+
+import numpy as np
+
+from worksheet.device.arrays import Array
+from worksheet.model.process_keys import CORNER_CHANGES
+from worksheet.model.sheet import Condition, Process, ProjectFile, Sheet
+
+
+@dataclass(frozen=True, eq=False)
+class ConditionSet:
+    """Conditions as arrays, the nominal one at index 0; the last axis of every result runs over them."""
+
+    process: Process
+    conditions: tuple[Condition, ...]
+
+    def __len__(self) -> int:
+        return len(self.conditions)
+
+    @property
+    def nominal(self) -> Condition:
+        """The condition at which nominal values are stated."""
+        return self.conditions[0]
+
+    @cached_property
+    def temperature(self) -> Array:
+        """[K], shape (conditions,)"""
+        return np.array([c.temperature for c in self.conditions])
+
+    @cached_property
+    def supply(self) -> Array:
+        """[V], shape (conditions,)"""
+        return np.array([c.supply for c in self.conditions])
+
+    @cached_property
+    def _changes(self) -> dict[str, dict[str, Array]]:
+        return {}
+
+    def changes(self, device: str) -> Mapping[str, Array]:
+        """What the corners do to a device: changes of CORNER_CHANGES that any corner makes, each (conditions,)."""
+        if device not in self._changes:
+            corners = [self.process.corners.get(c.process, {}).get(device, {}) for c in self.conditions]
+            self._changes[device] = {
+                key.name: np.array([corner.get(key.name, key.default) for corner in corners], dtype=np.float64)
+                for key in CORNER_CHANGES
+                if any(key.name in corner for corner in corners)
+            }
+        return self._changes[device]
+
+    def only_nominal(self) -> ConditionSet:
+        """The nominal condition alone."""
+        return ConditionSet(self.process, self.conditions[:1])
+
+
+def of_sheet(sheet: Sheet, project: ProjectFile, process: Process) -> ConditionSet:
+    """The conditions that a sheet is reviewed in: the project's, with the sheet's own supply or temperature in their place."""
+    temperature, supply = sheet.assume.get("temperature"), sheet.assume.get("supply")
+    temperatures = temperature.numbers if temperature is not None else project.temperatures
+    supplies = supply.numbers if supply is not None else project.supplies
+    nominal = Condition(
+        project.nominal.process,
+        _nominal(project.nominal.temperature, temperatures),
+        _nominal(project.nominal.supply, supplies),
+    )
+    every = (Condition(*parts) for parts in product(project.processes, temperatures, supplies))
+    return ConditionSet(process, (nominal, *(c for c in dict.fromkeys(every) if c != nominal)))
+
+
+def _nominal(stated: float, values: tuple[float, ...]) -> float:
+    """The project's nominal where it is among a sheet's own values, or where they are the project's; else their middle one."""
+    ordered = sorted(values)
+    return stated if stated in values or not ordered else ordered[(len(ordered) - 1) // 2]
+
+
+def linked(wanted: ConditionSet, owner: ConditionSet, own_supply: bool) -> ConditionSet:
+    """The conditions in which a sheet that is linked to is evaluated for another sheet's conditions.
+
+    Args:
+        wanted: Conditions of the sheet that asks.
+        owner: Conditions of the sheet that is asked.
+        own_supply: Whether either of the two is on its own regulator: then the asked sheet's nominal supply is taken.
+    Returns: the asked sheet's nominal condition, then one for each wanted one
+    """
+    supply = owner.nominal.supply
+    mapped = tuple(Condition(c.process, c.temperature, supply if own_supply else c.supply) for c in wanted.conditions)
+    return ConditionSet(owner.process, (owner.nominal, *mapped))

@@ -1,0 +1,146 @@
+"""Find a project's files in its folder and read them; nothing outside the folder is reached."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+from dataclasses import dataclass, field
+from pathlib import Path
+from types import MappingProxyType
+
+from worksheet.model.problem import Problem
+from worksheet.model.sheet import Process, ProjectFile, Sheet
+from worksheet.project import check, links
+from worksheet.sheetfile.paths import inside
+from worksheet.sheetfile.read import read_process, read_project, read_sheet
+
+PROJECT_FILE = "biasbook.toml"
+SHEETS, PROCESSES, EVIDENCE = "sheets", "process", "evidence"
+
+
+@dataclass(frozen=True, eq=False)
+class Project:
+    """A project as its files state it.
+
+    Attributes:
+        root: Its folder.
+        file: biasbook.toml, None where it cannot be read.
+        process: The process file, None where it cannot be read.
+        sheets: Sheets without problems, by name.
+        bad: Names of sheets with problems.
+        problems: Everything that is wrong.
+    """
+
+    root: Path
+    file: ProjectFile | None
+    process: Process | None
+    sheets: Mapping[str, Sheet] = field(default_factory=dict)
+    bad: tuple[str, ...] = ()
+    problems: tuple[Problem, ...] = ()
+
+
+def load(root: Path) -> Project:
+    """Read a project folder.
+
+    Args:
+        root: The folder that holds biasbook.toml.
+    Returns: the project with every problem found; sheets without problems are there in any case
+    """
+    missing = _not_a_project(root)
+    if missing is not None:
+        return Project(root, None, None, problems=(missing,))
+    refused = _leads_out(root, root / PROJECT_FILE, PROJECT_FILE)
+    if refused is not None:
+        return Project(root, None, None, problems=(refused,))
+    file, problems = read_project(root / PROJECT_FILE, shown=PROJECT_FILE)
+    process: Process | None = None
+    if file is not None:
+        process, found = _process(root, file)
+        problems = [*problems, *found]
+    sheets: dict[str, Sheet] = {}
+    bad: list[str] = []
+    for path in _sheet_files(root):
+        shown = f"{SHEETS}/{path.name}"
+        refused = _leads_out(root, path, shown)
+        sheet, found = (None, [refused]) if refused is not None else read_sheet(path, shown=shown)
+        problems = [*problems, *found]
+        if sheet is None:
+            bad.append(path.stem)
+        else:
+            sheets[sheet.name] = sheet
+    if file is None or process is None:
+        return Project(root, file, process, bad=(*bad, *sheets), problems=tuple(problems))
+    return checked(Project(root, file, process, MappingProxyType(sheets), tuple(bad), tuple(problems)))
+
+
+def checked(project: Project) -> Project:
+    """Check what single files cannot show: devices, sizes, corners, links; sheets with problems move to `bad`."""
+    assert project.file is not None and project.process is not None
+    problems = list(check.project_problems(project.file, project.process))
+    sheets = dict(project.sheets)
+    for sheet in project.sheets.values():
+        found = [*check.sheet_problems(sheet, project.process), *links.name_problems(sheet, project.sheets)]
+        if found:
+            problems += found
+            del sheets[sheet.name]
+    looped = links.loop_problems(project.sheets)
+    problems += looped
+    for loop in links.loops(project.sheets):
+        for name, _ in loop:
+            sheets.pop(name, None)
+    _drop_dependents(sheets, project, problems)
+    bad = (*project.bad, *(name for name in project.sheets if name not in sheets))
+    return Project(
+        project.root, project.file, project.process, MappingProxyType(sheets), bad, (*project.problems, *problems)
+    )
+
+
+def _drop_dependents(sheets: dict[str, Sheet], project: Project, problems: list[Problem]) -> None:
+    """Take out sheets that need a sheet that is bad, each with a problem that says which."""
+    dropped = True
+    while dropped:
+        dropped = False
+        for sheet in list(sheets.values()):
+            missing = [n for n in links.sheets_needed(sheet) if n in project.sheets and n not in sheets]
+            if missing:
+                message = f"this sheet takes values from {missing[0]!r}, which has problems of its own"
+                problems.append(Problem(sheet.file, None, "", message))
+                del sheets[sheet.name]
+                dropped = True
+
+
+def _not_a_project(root: Path) -> Problem | None:
+    if not root.is_dir():
+        return Problem(str(root), None, "", "found no such folder; expected a project folder that holds biasbook.toml")
+    if not (root / PROJECT_FILE).exists():
+        message = "found a folder without biasbook.toml; expected a project (`biasbook start DIR` makes one)"
+        return Problem(str(root), None, "", message)
+    return None
+
+
+def _process(root: Path, file: ProjectFile) -> tuple[Process | None, list[Problem]]:
+    path = root / PROCESSES / f"{file.process}.toml"
+    shown = f"{PROCESSES}/{path.name}"
+    if not path.exists():
+        known = sorted(p.stem for p in (root / PROCESSES).glob("*.toml")) if (root / PROCESSES).is_dir() else []
+        there = f"; there is {', '.join(known)}" if known else ""
+        return None, [
+            Problem(
+                file.file,
+                file.lines.get("process"),
+                "process",
+                f"found {file.process!r}, expected a file {shown}{there}",
+            )
+        ]
+    refused = _leads_out(root, path, shown)
+    return (None, [refused]) if refused is not None else read_process(path, shown=shown)
+
+
+def _sheet_files(root: Path) -> list[Path]:
+    folder = root / SHEETS
+    return sorted(folder.glob("*.toml")) if folder.is_dir() and inside(root, folder) else []
+
+
+def _leads_out(root: Path, path: Path, shown: str) -> Problem | None:
+    if inside(root, path):
+        return None
+    return Problem(shown, None, "", "found a link that leads out of the project; expected a file inside it")

@@ -1,0 +1,98 @@
+"""A project evaluated: every sheet's values resolved, links followed at the same condition, proposals found once."""
+
+from __future__ import annotations
+
+from collections.abc import Callable, Mapping
+
+import numpy as np
+
+from worksheet.device.arrays import Array
+from worksheet.engine.inputs import Inputs
+from worksheet.model import metrics
+from worksheet.model.problem import Problem
+from worksheet.project import conditions as sets
+from worksheet.project.case import Case, CaseError
+from worksheet.project.conditions import ConditionSet
+from worksheet.project.discover import Project
+
+Proposer = Callable[[Case], Mapping[str, float]]
+"""Finds numbers for what a case leaves open; raises CaseError where it cannot."""
+
+
+class Evaluator:
+    """Cases of all sheets of a project, each built once; links are followed through it.
+
+    Results are kept for the life of the evaluator; a changed project gets a new one.
+    """
+
+    def __init__(self, project: Project, propose: Proposer) -> None:
+        """Take the project and the way to find proposals."""
+        assert project.file is not None and project.process is not None
+        self.project = project
+        self._file, self._process = project.file, project.process
+        self._propose = propose
+        self._cases: dict[str, Case] = {}
+        self._filled: dict[str, Mapping[str, float]] = {}
+        self._linked: dict[tuple[str, ConditionSet], Case] = {}
+        self._sets: dict[str, ConditionSet] = {}
+
+    def conditions(self, name: str) -> ConditionSet:
+        """The conditions of a sheet, nominal first; sheets without their own share one set."""
+        sheet = self.project.sheets[name]
+        own = tuple(sheet.assume[key].numbers if key in sheet.assume else None for key in ("temperature", "supply"))
+        return self._sets.setdefault(str(own), sets.of_sheet(sheet, self._file, self._process))
+
+    def bare(self, name: str) -> Case:
+        """A sheet's case with nothing proposed."""
+        conditions = self.conditions(name)
+        return Case(
+            self.project.sheets[name], conditions, lambda sheet, key: self._external(name, conditions, sheet, key)
+        )
+
+    def case(self, name: str) -> Case:
+        """A sheet's case over its own conditions, with what it leaves open proposed.
+
+        Raises: CaseError where a value does not resolve or a proposal cannot be found.
+        """
+        if name not in self._cases:
+            self._cases[name] = self.bare(name).with_filled(self.filled(name))
+        return self._cases[name]
+
+    def filled(self, name: str) -> Mapping[str, float]:
+        """Proposals for what a sheet leaves open, found once. [unit of the key]"""
+        if name not in self._filled:
+            case = self.bare(name)
+            self._filled[name] = self._propose(case) if case.open_keys else {}
+        return self._filled[name]
+
+    def _external(self, asking: str, wanted: ConditionSet, name: str, key: str) -> Array:
+        """SHEET.NAME at another sheet's conditions. [SI], over those conditions"""
+        sheet = self.project.sheets.get(name)
+        if sheet is None:
+            raise CaseError(
+                Problem(
+                    self.project.sheets[asking].file,
+                    None,
+                    "",
+                    f"there is no sheet {name!r}, or it has problems of its own",
+                )
+            )
+        own_supply = any("supply" in self.project.sheets[n].assume for n in (asking, name))
+        case = self._linked_case(name, wanted, own_supply)
+        if metrics.find(key) is not None:
+            values: Array = np.asarray(case.solution[key])
+        else:
+            values = np.asarray(case.value(key))
+        return values if values.ndim == 0 else values[..., 1:]
+
+    def _linked_case(self, name: str, wanted: ConditionSet, own_supply: bool) -> Case:
+        key = (f"{name}:{own_supply}", wanted)
+        if key not in self._linked:
+            mapped = sets.linked(wanted, self.conditions(name), own_supply)
+            external: Callable[[str, str], Array] = lambda sheet, part: self._external(name, mapped, sheet, part)
+            self._linked[key] = Case(self.project.sheets[name], mapped, external, self.filled(name))
+        return self._linked[key]
+
+    def inputs(self, name: str) -> Inputs:
+        """The engine's inputs of a sheet. CaseError where a value does not resolve."""
+        return self.case(name).inputs

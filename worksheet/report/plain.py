@@ -1,0 +1,107 @@
+"""Results as plain JSON-ready data, by the contract's shapes: SI base units, None with a reason where no number is."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from typing import Any
+
+from worksheet.model.problem import Problem
+from worksheet.model.sheet import Condition
+from worksheet.review.results import BudgetReview, Review, SheetReview, TargetReview
+
+SCHEMA = 1
+Plain = dict[str, Any]
+
+
+def problems(found: Sequence[Problem]) -> list[Plain]:
+    """Problems as data."""
+    return [{"file": p.file, "line": p.line, "key": p.key, "message": p.message} for p in found]
+
+
+def condition(at: Condition | None) -> Plain | None:
+    """A condition as data."""
+    return None if at is None else {"process": at.process, "temperature": at.temperature, "supply": at.supply}
+
+
+def review(result: Review) -> Plain:
+    """A whole review as data."""
+    return {
+        "schema": SCHEMA,
+        "project": result.title,
+        "met": result.met,
+        "sheets": [sheet(s) for s in result.sheets],
+        "budget": [budget(b) for b in result.budgets],
+        "problems": problems(result.problems),
+    }
+
+
+def sheet(result: SheetReview) -> Plain:
+    """One sheet's review as data."""
+    return {
+        "sheet": result.sheet.name,
+        "title": result.sheet.title,
+        "stage": result.sheet.stage,
+        "state": result.sheet.state,
+        "count": result.sheet.count,
+        "basis": result.basis,
+        "choose": {k: {"value": c.value, "unit": c.unit, "origin": c.origin} for k, c in result.choices.items()},
+        "own": {k: {"value": v.number, "unit": v.unit} for k, v in result.sheet.own.items() if v.number is not None},
+        "operating_point": {device: dict(values) for device, values in result.operating_point.items()},
+        "metrics": {k: _number(n.value, n.unit, n.reason) for k, n in result.metrics.items()},
+        "validity": [
+            {"device": v.device, "what": v.what, "short_by": v.short_by, "unit": v.unit, "at": condition(v.at)}
+            for v in result.validity
+        ],
+        "targets": [target(t) for t in result.targets],
+        "notes": [{"about": n.about, "text": n.text} for n in result.notes],
+    }
+
+
+def _number(value: float | None, unit: str, reason: str | None) -> Plain:
+    plain: Plain = {"value": value, "unit": unit}
+    if value is None:
+        plain["reason"] = reason
+    return plain
+
+
+def target(result: TargetReview) -> Plain:
+    """One target's review as data."""
+    wanted = result.target
+    return {
+        "metric": wanted.name,
+        "unit": result.unit,
+        "min": wanted.minimum,
+        "max": wanted.maximum,
+        "at": wanted.at,
+        "guard": wanted.guard,
+        "id": wanted.id,
+        "source": wanted.source,
+        "nominal": result.nominal,
+        "worst": result.worst,
+        "worst_at": condition(result.worst_at),
+        "worst_with": dict(result.worst_with),
+        "invalid": result.invalid,
+        "margin": result.margin,
+        "verdict": result.verdict,
+        "reason": result.reason,
+        "evidence": [
+            {"value": e.value, "found_by": e.found_by, "stale": e.stale, "verdict": e.verdict} for e in result.evidence
+        ],
+    }
+
+
+def budget(result: BudgetReview) -> Plain:
+    """One budget's review as data."""
+    return {
+        "metric": result.metric,
+        "unit": result.unit,
+        "max": result.maximum,
+        "nominal": result.nominal,
+        "worst": result.worst,
+        "verdict": result.verdict,
+    }
+
+
+def only_problems(found: Sequence[Problem], **rest: Any) -> Plain:
+    """The document of a command that could do nothing but say what is wrong."""
+    return {"schema": SCHEMA, **rest, "problems": problems(found)}

@@ -1,0 +1,120 @@
+"""A review as a designer reads it in a terminal of 80 columns."""
+
+from __future__ import annotations
+
+from collections.abc import Iterator
+
+from worksheet.model.text import clean
+from worksheet.report import wording
+from worksheet.report.table import Column, Table, lines, wrapped
+from worksheet.review.results import MISSED, UNKNOWN, Review, SheetReview, TargetReview
+from worksheet.stages import catalogue
+
+_TARGETS = (
+    Column("target", flexible=True),
+    Column("wanted"),
+    Column("nominal", right=True),
+    Column("worst", right=True),
+    Column("where", flexible=True),
+    Column("margin", right=True),
+    Column("verdict"),
+)
+
+
+def text(result: Review, width: int) -> Iterator[str]:
+    """Lines of a review, no wider than `width` columns where words allow it."""
+    yield from wrapped(f"{result.title or 'Project'}: {_counted(result)}", width)
+    if result.nominal is not None:
+        yield f"{result.conditions} conditions; nominal {wording.condition(result.nominal)}"
+    for sheet in result.sheets:
+        yield ""
+        yield from _sheet(sheet, width)
+    if result.budgets:
+        yield ""
+        yield "Budgets, all blocks times their count"
+        yield from lines(_budgets(result), width, "  ")
+    yield ""
+    if any(v.what == "max_voltage" for sheet in result.sheets for v in sheet.validity):
+        yield from wrapped(wording.CAUTION, width)
+    yield from wrapped(wording.STANDING, width)
+
+
+def _counted(result: Review) -> str:
+    missed = sum(s.count(MISSED) for s in result.sheets)
+    unknown = sum(s.count(UNKNOWN) for s in result.sheets)
+    every = sum(len(s.targets) for s in result.sheets)
+    blocks = f"{len(result.sheets)} block{'s' if len(result.sheets) != 1 else ''}"
+    bad = f", {len(result.bad)} that cannot be read" if result.bad else ""
+    return f"{blocks}{bad}; {every} targets, {missed} missed, {unknown} unknown"
+
+
+def _sheet(sheet: SheetReview, width: int) -> Iterator[str]:
+    stage = catalogue.find(sheet.sheet.stage)
+    kind = stage.title.lower() if stage is not None else sheet.sheet.stage
+    count = f", {sheet.sheet.count} of it" if sheet.sheet.count != 1 else ""
+    title = f": {clean(sheet.sheet.title)}" if sheet.sheet.title else ""
+    yield from wrapped(f"{sheet.sheet.name}{title} ({kind}, {sheet.sheet.state}{count})", width)
+    if sheet.targets:
+        yield from lines(Table(_TARGETS, tuple(_row(t) for t in sheet.targets)), width, "  ")
+    else:
+        yield "  no targets"
+    for target in sheet.targets:
+        if target.reason and target.verdict != "met":
+            yield from wrapped(f"{target.target.name}: {target.reason}", width, "  ")
+    yield from _validity(sheet, width)
+    for note in sheet.notes:
+        yield from wrapped(f"{note.about}: {note.text}", width, "  ")
+
+
+def _row(result: TargetReview) -> tuple[str, ...]:
+    target = result.target
+    stale = sum(e.stale for e in result.evidence)
+    mark = f" ({stale} stale)" if stale else ""
+    return (
+        target.name,
+        wording.limits(target, result.unit),
+        wording.metric_number(target.name, result.nominal, result.unit),
+        wording.metric_number(target.name, result.worst, result.unit),
+        wording.condition(result.worst_at),
+        wording.margin(result.margin),
+        (result.verdict.upper() if result.verdict in (MISSED, UNKNOWN) else result.verdict) + mark,
+    )
+
+
+def _validity(sheet: SheetReview, width: int) -> Iterator[str]:
+    kinds = dict.fromkeys((v.device, v.what) for v in sheet.validity)
+    for device, what in kinds:
+        entries = [v for v in sheet.validity if (v.device, v.what) == (device, what)]
+        worst = max(entries, key=lambda v: v.short_by)
+        said = {
+            "saturation": "short of saturation",
+            "max_voltage": "past its voltage rating",
+            "range": "outside its range",
+        }[what]
+        yield from wrapped(
+            f"not valid: {device} {said} by {wording.number(worst.short_by, worst.unit)} at {wording.condition(worst.at)}"
+            + (f", and at {len(entries) - 1} more conditions" if len(entries) > 1 else ""),
+            width,
+            "  ",
+        )
+
+
+def _budgets(result: Review) -> Table:
+    columns = (
+        Column("budget"),
+        Column("limit", right=True),
+        Column("nominal", right=True),
+        Column("worst", right=True),
+        Column("verdict"),
+    )
+    rows = tuple(
+        (
+            b.metric,
+            wording.metric_number(b.metric, b.maximum, b.unit),
+            wording.metric_number(b.metric, b.nominal, b.unit),
+            wording.metric_number(b.metric, b.worst, b.unit),
+            b.verdict.upper() if b.verdict in (MISSED, UNKNOWN) else b.verdict,
+        )
+        for b in result.budgets
+    )
+    return Table(columns, rows)

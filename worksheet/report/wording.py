@@ -1,0 +1,58 @@
+"""How numbers, limits, conditions and verdicts are worded, the same in every format."""
+
+from __future__ import annotations
+
+from worksheet.model import metrics
+from worksheet.model.dimension import DIMENSIONS, TEMPERATURE, VOLTAGE, Dimension
+from worksheet.model.quantity import format_quantity
+from worksheet.model.sheet import Condition, Target
+
+STANDING = (
+    "First-order hand calculation, to be confirmed with the foundry's qualified models and the design's own sign-off."
+)
+"""What every report says of its numbers."""
+
+CAUTION = "A voltage past max_voltage endangers the device: the foundry's reliability rules, local codes and licensed practice have the last word."
+"""Said wherever a rating is passed."""
+
+
+def number(value: float | None, unit: str, reason: str | None = None, digits: int = 4) -> str:
+    """A number with its unit in engineering notation, or why there is none."""
+    if value is None:
+        return reason or "-"
+    dimension = _dimension(unit)
+    if dimension is not None:
+        return format_quantity(value, dimension, digits)
+    return f"{value:.{digits}g} {unit}".rstrip()
+
+
+def _dimension(unit: str) -> Dimension | None:
+    return next((d for d in DIMENSIONS if d.unit == unit), None)
+
+
+def metric_number(key: str, value: float | None, unit: str, reason: str | None = None, digits: int = 4) -> str:
+    """As number, with the dimension that the metric is described with."""
+    metric = metrics.find(key)
+    if value is None or metric is None:
+        return number(value, unit, reason, digits)
+    return format_quantity(value, metric.dimension, digits)
+
+
+def limits(target: Target, unit: str) -> str:
+    """What a target wants: "≥ 5 MHz", "0.65 to 1 V/V", with its guard band."""
+    low = None if target.minimum is None else metric_number(target.name, target.minimum, unit)
+    high = None if target.maximum is None else metric_number(target.name, target.maximum, unit)
+    text = f"{low} to {high}" if low and high else f"≥ {low}" if low else f"≤ {high}"
+    return f"{text} +{target.guard:.0%}" if target.guard else text
+
+
+def condition(at: Condition | None) -> str:
+    """A condition: "slow 125 °C 1.62 V"."""
+    if at is None:
+        return "-"
+    return f"{at.process} {format_quantity(at.temperature, TEMPERATURE)} {format_quantity(at.supply, VOLTAGE)}"
+
+
+def margin(value: float | None) -> str:
+    """A relative margin with its sign."""
+    return "-" if value is None else f"{value:+.1%}" if abs(value) < 10 else f"{value:+.0f}x"

@@ -1,0 +1,156 @@
+"""What a review says, as frozen data: one type a thing, always whole, for every front end and format."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+from dataclasses import dataclass, field
+
+from worksheet.model.problem import Problem
+from worksheet.model.sheet import Condition, Sheet, Target
+
+MET, MISSED, UNKNOWN, WAIVED = "met", "missed", "unknown", "waived"
+"""Verdicts."""
+
+
+@dataclass(frozen=True, slots=True)
+class Number:
+    """A number with its unit, or the reason why there is none. `value` in SI units."""
+
+    value: float | None
+    unit: str
+    reason: str | None = None
+
+
+@dataclass(frozen=True, slots=True)
+class Choice:
+    """A design variable: its number and whether it was "chosen", "assumed" or "proposed". SI units."""
+
+    value: float
+    unit: str
+    origin: str
+
+
+@dataclass(frozen=True, slots=True)
+class Invalid:
+    """A device or level that does not hold at one condition. `short_by` in `unit`."""
+
+    device: str
+    what: str
+    short_by: float
+    unit: str
+    at: Condition
+
+
+@dataclass(frozen=True, slots=True)
+class Note:
+    """A remark of the program beside a number: what it is about, and what to know."""
+
+    about: str
+    text: str
+
+
+@dataclass(frozen=True, slots=True)
+class EvidenceVerdict:
+    """One piece of evidence against its target. Numbers in SI units of the metric."""
+
+    value: float
+    found_by: str
+    stale: bool
+    verdict: str
+
+
+@dataclass(frozen=True, slots=True)
+class TargetReview:
+    """One target against what is achieved. Numbers in SI units of the metric.
+
+    Attributes:
+        target: What is wanted.
+        unit: Unit of its numbers.
+        nominal: At the nominal condition, None where it does not exist.
+        worst: Over the valid conditions that the target covers, None where it does not exist.
+        worst_at: Where that is.
+        worst_with: Assumptions at an end of their range there, by name. [unit of the key]
+        invalid: How many conditions (with ranges: points) are not valid.
+        margin: (worst - min)/abs(min) or (max - worst)/abs(max), the smaller; None for a limit of 0.
+        verdict: MET, MISSED, UNKNOWN or WAIVED.
+        reason: Why a number is missing or a verdict is what it is, None where it speaks for itself.
+        judged: The verdict before any waiver.
+        evidence: What simulations and benches found.
+    """
+
+    target: Target
+    unit: str
+    nominal: float | None
+    worst: float | None
+    worst_at: Condition | None
+    worst_with: Mapping[str, float]
+    invalid: int
+    margin: float | None
+    verdict: str
+    reason: str | None
+    judged: str
+    evidence: tuple[EvidenceVerdict, ...] = ()
+
+
+@dataclass(frozen=True)
+class SheetReview:
+    """One sheet against its targets.
+
+    Attributes:
+        sheet: What its file states.
+        basis: Digest of everything that can change its results.
+        choices: Design variables by key.
+        operating_point: By device, by key of model.operating; "region" too is there, as text.
+        metrics: Nominal, by key.
+        validity: What does not hold, and where.
+        targets: In the order of the file.
+        notes: Remarks of the program.
+    """
+
+    sheet: Sheet
+    basis: str
+    choices: Mapping[str, Choice]
+    operating_point: Mapping[str, Mapping[str, float | str | None]]
+    metrics: Mapping[str, Number]
+    validity: tuple[Invalid, ...]
+    targets: tuple[TargetReview, ...]
+    notes: tuple[Note, ...]
+
+    @property
+    def met(self) -> bool:
+        """Whether every target is met or waived."""
+        return all(t.verdict in (MET, WAIVED) for t in self.targets)
+
+    def count(self, verdict: str) -> int:
+        """How many targets have a verdict."""
+        return sum(t.verdict == verdict for t in self.targets)
+
+
+@dataclass(frozen=True, slots=True)
+class BudgetReview:
+    """A sum over all sheets against its limit. SI units of the metric."""
+
+    metric: str
+    unit: str
+    maximum: float
+    nominal: float | None
+    worst: float | None
+    verdict: str
+
+
+@dataclass(frozen=True)
+class Review:
+    """A whole project against its targets and budgets."""
+
+    title: str
+    sheets: tuple[SheetReview, ...] = ()
+    budgets: tuple[BudgetReview, ...] = ()
+    problems: tuple[Problem, ...] = ()
+    conditions: int = 0
+    nominal: Condition | None = None
+    bad: tuple[str, ...] = field(default=())
+
+    @property
+    def met(self) -> bool:
+        """Whether every target is met or waived, every budget met and nothing wrong."""
+        return not self.problems and all(s.met for s in self.sheets) and all(b.verdict == MET for b in self.budgets)
