@@ -69,45 +69,68 @@ def _last_crossing(weights: Array, constants: Array, tolerance: Array) -> Array:
     rates = np.where(constants == 0, np.inf, 1.0 / np.where(constants == 0, 1.0, constants))
     fine = np.all((rates.real > 0) & np.isfinite(weights), axis=0)
     rates, weights = np.where(fine, rates, 1.0), np.where(fine, weights, 1.0)
-    finite = np.where(np.isfinite(rates.real), rates, 1.0)
-
-    def excess(times: Array) -> Array:
-        """abs(error) - tolerance at times of shape (points, cases)."""
-        total = np.sum(weights[:, None, :] * np.exp(-times[None] * finite[:, None, :]), axis=0)
-        return np.asarray(np.abs(total.real) - tolerance)
-
-    slowest = np.max(np.where(weights == 0, 0.0, 1.0 / finite.real), axis=0)
-    bound = slowest * np.maximum(np.log(np.sum(np.abs(weights), axis=0) / tolerance), 0.0) * 1.0001 + 1e-300
-    times = np.concatenate(
-        [bound * 10.0 ** np.linspace(-12, 0, _GRID // 2)[:, None], bound * np.linspace(0, 1, _GRID)[:, None]]
-    )
-    if len(weights) == 2:
-        times = np.concatenate([times, _extrema(weights, finite, bound)])
-    times = np.sort(times, axis=0)
-    above = excess(times) > 0
-    last = times.shape[0] - 1 - np.argmax(above[::-1], axis=0)
-    columns = np.arange(times.shape[1])
-    never = ~np.any(above, axis=0)
-    low, high = times[last, columns], times[np.minimum(last + 1, times.shape[0] - 1), columns]
+    error = _Error(weights, np.where(np.isfinite(rates.real), rates, 1.0), tolerance)
+    low, high, never = error.bracket_of_two() if len(weights) == 2 else error.bracket_by_scan()
     for _ in range(_BISECTIONS):
         middle = 0.5 * (low + high)
-        outside = excess(middle[None])[0] > 0
+        outside = error.excess(middle[None])[0] > 0
         low, high = np.where(outside, middle, low), np.where(outside, high, middle)
     settled = np.where(never, 0.0, 0.5 * (low + high))
     return np.where(fine, settled, np.nan).reshape(shape)
 
 
-def _extrema(weights: Array, rates: Array, bound: Array) -> Array:
-    """Times of the extrema of a two-pole error: one for real poles, a regular sequence for a complex pair."""
-    turn = rates[0].imag
-    real = np.log((-weights[1] * rates[1] / (weights[0] * rates[0])).real) / (rates[1] - rates[0]).real
-    angle = np.angle(-weights[0] * rates[0])
-    period = np.pi / np.where(turn == 0, 1.0, np.abs(turn))
-    first = np.mod((angle + np.sign(turn) * np.pi / 2.0) / np.where(turn == 0, 1.0, turn), period)
-    count = int(np.clip(np.max(np.where(turn == 0, 1.0, bound / period)), 1, 4000)) + 1
-    sequence = first + np.arange(count)[:, None] * period
-    times = np.where(turn == 0, real, sequence)
-    return np.where(np.isfinite(times), np.clip(times, 0.0, bound), 0.0)
+class _Error:
+    """The error sum w_k exp(-r_k t) of a step response, relative to its final change, for many cases at once."""
+
+    def __init__(self, weights: Array, rates: Array, tolerance: Array) -> None:
+        self._weights, self._rates, self._tolerance = weights, rates, tolerance
+        slowest = np.max(np.where(weights == 0, 0.0, 1.0 / rates.real), axis=0)
+        envelope = np.sum(np.abs(weights), axis=0) / tolerance
+        self._bound = slowest * np.maximum(np.log(envelope), 0.0) * 1.0001 + 1e-300
+
+    def excess(self, times: Array) -> Array:
+        """abs(error) - tolerance at times of shape (points, cases)."""
+        total = np.zeros(times.shape)
+        for weight, rate in zip(self._weights, self._rates, strict=True):
+            total += (weight * np.exp(-times * rate)).real
+        return np.asarray(np.abs(total) - self._tolerance)
+
+    def bracket_of_two(self) -> tuple[Array, Array, Array]:
+        """Times before and after the last crossing of two poles, from the extrema in closed form."""
+        first, period = self._extrema()
+        zero, bound = np.zeros(first.shape), self._bound
+        height = self.excess(first[None])[0] + self._tolerance
+        decay = np.abs(self._rates[0].real) * period
+        with np.errstate(all="ignore"):
+            turns = np.where(np.isfinite(period), np.floor(np.log(height / self._tolerance) / decay), 0.0)
+        turns = np.where(np.isfinite(turns), np.maximum(turns, 0.0), 0.0)
+        step = np.where(np.isfinite(period), period, 0.0)
+        last = np.clip(first + turns * step, 0.0, bound)
+        following = np.where(np.isfinite(period), np.minimum(last + step, bound), bound)
+        beyond = self.excess(last[None])[0] > 0
+        low, high = np.where(beyond, last, zero), np.where(beyond, following, last)
+        return low, high, ~beyond & (self.excess(zero[None])[0] <= 0)
+
+    def _extrema(self) -> tuple[Array, Array]:
+        """First extremum at or after 0, and the time between extrema (not finite for real poles: there is one at most)."""
+        (w0, w1), (r0, r1) = self._weights, self._rates
+        turn = r0.imag
+        complex_pair = turn != 0
+        with np.errstate(all="ignore"):
+            single = np.log((-w1 * r1 / (w0 * r0)).real) / (r1 - r0).real
+            period = np.where(complex_pair, np.pi / np.abs(turn), np.inf)
+            regular = np.mod((np.angle(w0 * r0) + np.pi / 2.0) / turn, np.pi / np.abs(turn))
+        first = np.where(complex_pair, regular, single)
+        return np.where(np.isfinite(first), np.clip(first, 0.0, self._bound), 0.0), period
+
+    def bracket_by_scan(self) -> tuple[Array, Array, Array]:
+        """Times before and after the last crossing of more poles, from a grid with even and with logarithmic steps."""
+        logarithmic = self._bound * 10.0 ** np.linspace(-12, 0, _GRID // 2)[:, None]
+        times = np.sort(np.concatenate([logarithmic, self._bound * np.linspace(0, 1, _GRID)[:, None]]), axis=0)
+        above = self.excess(times) > 0
+        last = times.shape[0] - 1 - np.argmax(above[::-1], axis=0)
+        columns = np.arange(times.shape[1])
+        return times[last, columns], times[np.minimum(last + 1, times.shape[0] - 1), columns], ~np.any(above, axis=0)
 
 
 def source_step(

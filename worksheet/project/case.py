@@ -203,6 +203,10 @@ class Case:
         key = f"{table}.{name}" if table else name
         return Problem(sheet.file, sheet.lines.get(key, stated.line if stated is not None else None), key, message)
 
+    def fail(self, key: str, message: str) -> CaseError:
+        """The error that one of this sheet's values cannot be had, to be raised by whoever finds out."""
+        return CaseError(self.problem(key, self.stated(key), message))
+
     def _key(self, name: str) -> Key | None:
         known = {key.name: key for key in self.stage.design_keys(self.sheet.bias.ideal)} | _DEFAULTS
         return known.get(name)

@@ -7,9 +7,9 @@ from collections.abc import Mapping, Sequence
 import numpy as np
 
 from worksheet.model import metrics
-from worksheet.review.judge import TOLERANCE
 from worksheet.review.results import MET, MISSED, UNKNOWN, BudgetReview
 from worksheet.review.sheet_review import Points
+from worksheet.solver.goals import TOLERANCE
 
 
 def review_budgets(budgets: Mapping[str, float], sheets: Sequence[Points], complete: bool) -> tuple[BudgetReview, ...]:

@@ -15,9 +15,7 @@ from worksheet.engine.measured import Measured
 from worksheet.model.metrics import Reason
 from worksheet.model.sheet import Target
 from worksheet.review.results import MET, MISSED, UNKNOWN
-
-TOLERANCE = 1e-9
-"""Of the limit; a limit of 0 is exact."""
+from worksheet.solver.goals import TOLERANCE, limits
 
 Mask = NDArray[np.bool_]
 
@@ -37,13 +35,6 @@ class Judgement:
     worst: int | None
     invalid: int
     reason: str | None
-
-
-def limits(target: Target) -> tuple[float | None, float | None]:
-    """Least and greatest value that meets a target, its guard band counted. [unit of the metric]"""
-    low = None if target.minimum is None else target.minimum + target.guard * abs(target.minimum)
-    high = None if target.maximum is None else target.maximum - target.guard * abs(target.maximum)
-    return low, high
 
 
 def missed_by_value(target: Target, values: Array) -> Mask:

@@ -10,18 +10,19 @@ from functools import cached_property
 import numpy as np
 
 from worksheet.device.arrays import Array
-from worksheet.engine.measured import Measured, missing_where
+from worksheet.engine.measured import Measured
 from worksheet.engine.solution import NumericSolution
 from worksheet.engine.validity import Shortfall, shortfalls
 from worksheet.model import metrics, operating
 from worksheet.model.problem import Problem
 from worksheet.model.sheet import Condition, Target
 from worksheet.project.case import Case
-from worksheet.review import digest, judge, notes, ranges
+from worksheet.review import digest, judge, notes
 from worksheet.review.evidence import evidence_verdicts
 from worksheet.review.judge import Mask
 from worksheet.review.results import Choice, Invalid, Number, SheetReview, TargetReview
 from worksheet.review.waivers import waived
+from worksheet.solver import goals, ranges
 
 
 @dataclass(frozen=True, eq=False)
@@ -75,13 +76,7 @@ class Points:
 
     def target(self, target: Target) -> Measured:
         """What a target is about, over points."""
-        metric = metrics.find(target.name)
-        if target.formula is not None or metric is None:
-            return self.measured(missing_where(self.case.moved(self.moves).figure(target, self.solution)))
-        if metric.of_yield and target.yield_fraction is not None:
-            base = self.solution.measure(metric.of_yield)
-            return self.measured(Measured(base.values * metrics.deviations(target.yield_fraction), base.reasons))
-        return self.measured(self.solution.measure(target.name))
+        return self.measured(goals.measure(self.case.moved(self.moves), target, self.solution))
 
 
 def points_of(case: Case, extra: Mapping[str, Array] | None = None) -> Points:

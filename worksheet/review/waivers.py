@@ -6,8 +6,8 @@ import datetime
 from collections.abc import Sequence
 
 from worksheet.model.sheet import Target, Waiver
-from worksheet.review.judge import TOLERANCE
 from worksheet.review.results import MISSED, UNKNOWN, WAIVED
+from worksheet.solver.goals import TOLERANCE
 
 
 def waived(

@@ -1,11 +1,265 @@
-"""Numbers for what a sheet leaves open."""
+"""Proposals: the recommended and the compact point, and numbers for what a sheet leaves open."""
 
 from __future__ import annotations
 
 from collections.abc import Mapping
-from typing import Any
+from dataclasses import dataclass
+
+import numpy as np
+
+from worksheet.device.arrays import Array
+from worksheet.solver import bias_size, ranges
+from worksheet.solver.results import Point
+from worksheet.solver.search import Found, Search, Space
+from worksheet.solver.subject import Subject, scalar
+from worksheet.solver.trials import Trials
+from worksheet.solver.variables import Variable, inversion, square_current, variables
+from worksheet.stages.stage import BIAS
+
+INVERSION_RANGE = (0.01, 100.0)
+"""Inversion coefficients over which a recommended point is looked for."""
+
+_ROUNDS, _SETTLED = 6, 1e-5
+"""A current source whose size is left out is sized anew for each current that a search comes to, until it settles."""
+
+_CURRENT_RANGE = (1e-15, 1.0)
+_CAPACITANCE_RANGE = (1e-18, 1e-6)
 
 
-def propose(case: Any) -> Mapping[str, float]:
-    """Proposals for the open keys of a case. [unit of the key]"""
-    raise NotImplementedError(case)
+@dataclass(frozen=True, eq=False)
+class Free:
+    """What a search may move, and how its coordinates turn into values.
+
+    The first coordinate is what is to be least: the bias current, else the gate area, else the load capacitance.
+    """
+
+    subject: Subject
+    variables: Mapping[str, Variable]
+    names: tuple[str, ...]
+
+    @property
+    def followers(self) -> Mapping[str, str]:
+        """Open sizes of stacked devices that go with a free size of the main device."""
+        return {k: v for k, v in bias_size.followers(self.subject).items() if v in self.names}
+
+    @property
+    def by_inversion(self) -> bool:
+        """Whether current and width are both free: then the inversion coefficient is a coordinate."""
+        return "bias_current" in self.names and "width" in self.names
+
+    @property
+    def by_area(self) -> bool:
+        """Whether current is held and width and length are both free: then gate area and aspect ratio are coordinates."""
+        return "bias_current" not in self.names and "width" in self.names and "length" in self.names
+
+    def space(self) -> Space:
+        """The search space of these freedoms."""
+        return Space(self._first(), self._rest(), self.moves, self.room)
+
+    def _span(self, name: str) -> tuple[float, float]:
+        if name == "bias_current":
+            return float(np.log(_CURRENT_RANGE[0])), float(np.log(_CURRENT_RANGE[1]))
+        if name == "load_capacitance":
+            return float(np.log(_CAPACITANCE_RANGE[0])), float(np.log(_CAPACITANCE_RANGE[1]))
+        variable = self.variables[name]
+        return float(np.log(variable.low)), float(np.log(variable.high))
+
+    def _first(self) -> tuple[float, float]:
+        if self.by_inversion:
+            width, length = self.variables["width"], self._length_span()
+            squares = square_current(self.subject)
+            low = squares * width.low / np.exp(length[1]) * INVERSION_RANGE[0]
+            high = squares * width.high / np.exp(length[0]) * INVERSION_RANGE[1]
+            return float(np.log(low)), float(np.log(high))
+        if self.by_area:
+            (w0, w1), (l0, l1) = self._span("width"), self._span("length")
+            return w0 + l0, w1 + l1
+        return self._span(self.names[0])
+
+    def _length_span(self) -> tuple[float, float]:
+        if "length" in self.names:
+            return self._span("length")
+        present = float(np.log(scalar(self.subject.value("length"))))
+        return present, present
+
+    def _rest(self) -> tuple[tuple[float, float], ...]:
+        rest: list[tuple[float, float]] = []
+        if self.by_inversion:
+            rest.append((float(np.log(INVERSION_RANGE[0])), float(np.log(INVERSION_RANGE[1]))))
+        if self.by_area:
+            (w0, w1), (l0, l1) = self._span("width"), self._span("length")
+            rest.append((w0 - l1, w1 - l0))
+        rest += [self._span(name) for name in self._others()]
+        return tuple(rest)
+
+    def _others(self) -> list[str]:
+        """Free variables that are coordinates of their own, after the first and the inversion or aspect ratio."""
+        taken = (
+            {"bias_current", "width"} if self.by_inversion else {"width", "length"} if self.by_area else {self.names[0]}
+        )
+        return [name for name in self.names if name not in taken]
+
+    def moves(self, first: Array, rest: Array) -> dict[str, Array]:
+        """Values of the free variables for coordinates. [unit of each key]"""
+        own = 1 if self.by_inversion or self.by_area else 0
+        moved = {name: np.exp(rest[:, own + k]) for k, name in enumerate(self._others())}
+        if self.by_inversion:
+            current, ic = np.exp(first), np.exp(rest[:, 0])
+            length = moved.get("length", np.full(len(first), scalar(self.subject.value("length"))))
+            moved["bias_current"] = current
+            moved["width"] = current * length / (square_current(self.subject) * ic)
+        elif self.by_area:
+            moved["width"], moved["length"] = np.exp((first + rest[:, 0]) / 2.0), np.exp((first - rest[:, 0]) / 2.0)
+        else:
+            moved[self.names[0]] = np.exp(first)
+        return {**moved, **{name: moved[leader] for name, leader in self.followers.items()}}
+
+    def room(self, first: Array, rest: Array) -> Array:
+        """Slack of the process limits. [-]"""
+        total = np.full(len(first), np.inf)
+        for name, values in self.moves(first, rest).items():
+            variable = self.variables[name]
+            if variable.bounded:
+                total = np.minimum(total, np.minimum(np.log(values / variable.low), np.log(variable.high / values)))
+        return total
+
+    def place(self, found: Found) -> dict[str, float]:
+        """Values of the free variables at a place."""
+        moved = self.moves(found.place[:1], found.place[None, 1:])
+        return {name: float(values[0]) for name, values in moved.items()}
+
+
+def freedoms(subject: Subject) -> tuple[str, ...]:
+    """What the recommended point is free in: current and width, length and load where they are open, less what is assumed."""
+    wanted = ["bias_current", "width"]
+    wanted += [name for name in ("length", "load_capacitance") if name in subject.open_keys]
+    return tuple(name for name in wanted if name not in subject.sheet.assume)
+
+
+def gate_area(subject: Subject, values: Mapping[str, Array]) -> Array:
+    """Sum of W L over all transistors for moved values. [m^2], shape (trials,)"""
+    total = np.zeros(())
+    for device in subject.circuit.devices:
+        width, length = (values.get(device.key(n), scalar(subject.value(device.key(n)))) for n in ("width", "length"))
+        total = total + np.asarray(width) * length
+    return total
+
+
+def point(subject: Subject, values: Mapping[str, float]) -> Point:
+    """A point with everything that a designer reads off it."""
+    moved = subject.moved(values)
+    every = {name: scalar(moved.value(name)) for name in ("bias_current", "width", "length", "load_capacitance")}
+    area = float(np.ravel(gate_area(moved, {}))[0])
+    return Point({**every, **values}, inversion(moved), area)
+
+
+@dataclass(frozen=True, eq=False)
+class Optimum:
+    """What the search for the recommended point came to: the two points, or why there are none."""
+
+    recommended: Point | None
+    compact: Point | None
+    reason: str | None
+    best_effort: Mapping[str, float]
+    free: Free
+
+
+NOTHING_FREE = "bias current and width are both assumed"
+NO_BOUND = "no target bounds the bias current from below"
+
+
+def optimum(subject: Subject, trials: Trials) -> Optimum:
+    """The recommended and the compact point of a sheet that has a number for everything."""
+    free = Free(subject, variables(subject), freedoms(subject))
+    if not free.names:
+        return Optimum(None, None, NOTHING_FREE, {}, free)
+    search = Search(trials, free.space())
+    found = search.least()
+    place = free.place(found)
+    if not found.feasible:
+        return Optimum(None, None, "no point meets every target", place, free)
+    if "bias_current" in free.names and not _bounded_below(free, trials, found):
+        return Optimum(None, None, NO_BOUND, place, free)
+    if free.by_inversion:
+        tied = _compact(free, search, found, 1e-6)
+        place = tied if tied is not None else place
+        smallest = _compact(free, search, found, subject.sheet.solve.current_allowance)
+    else:
+        smallest = None
+    recommended = point(subject, place)
+    return Optimum(recommended, point(subject, smallest) if smallest is not None else recommended, None, place, free)
+
+
+def _compact(free: Free, search: Search, least: Found, allowance: float) -> dict[str, float] | None:
+    """The smallest gate area whose current is within the allowance of the least one."""
+    cap = least.place[0] + np.log1p(allowance)
+
+    def score(first: Array, rest: Array) -> Array:
+        area = np.log(gate_area(free.subject, free.moves(first, rest)))
+        return np.where(first <= cap + 1e-9, area, np.inf)
+
+    found = search.least(score)
+    return free.place(found) if found.feasible and found.place[0] <= cap + 1e-6 else None
+
+
+def _bounded_below(free: Free, trials: Trials, found: Found) -> bool:
+    """Whether some target is missed at a current far below the least one, the other coordinates held."""
+    low = np.array([found.place[0] - np.log(1e6)])
+    slack = trials.clear(free.moves(low, found.place[None, 1:]), range(trials.target_count)).slack
+    return bool(len(slack)) and bool((slack < 0).any())
+
+
+def propose(subject: Subject) -> Mapping[str, float]:
+    """Numbers for what a sheet leaves open, found over the conditions of its own `over`.
+
+    Args:
+        subject: The sheet, with nothing filled in.
+    Returns: values by key. [unit of the key]
+    Raises: the subject's error where nothing bounds an open value
+    """
+    following = bias_size.followers(subject)
+    searched = tuple(
+        n for n in subject.open_keys if n not in following and not n.startswith(f"{BIAS}_") or n == "bias_current"
+    )
+    filled = bias_size.starting_values(subject, searched)
+    for _ in range(_ROUNDS):
+        filled = {**filled, **{name: _led(subject, filled, leader) for name, leader in following.items()}}
+        sized = bias_size.sizes(subject.with_filled(filled))
+        settled = all(abs(sized[n] - filled.get(n, np.inf)) <= _SETTLED * sized[n] for n in sized)
+        filled = {**filled, **sized}
+        if not searched or (settled and sized):
+            break
+        filled = {**filled, **_fill(subject.with_filled(filled), searched)}
+        if not sized:
+            break
+    return {name: value for name, value in filled.items() if name in subject.open_keys}
+
+
+def _led(subject: Subject, filled: Mapping[str, float], leader: str) -> float:
+    return filled[leader] if leader in filled else scalar(subject.value(leader))
+
+
+def _fill(subject: Subject, names: tuple[str, ...]) -> dict[str, float]:
+    trials = Trials(
+        subject, subject.sheet.solve.over, ranges.vertices(subject.sheet), ranges.waived_targets(subject.sheet)
+    )
+    order = [n for n in ("bias_current", "width", "length", "load_capacitance") if n in names]
+    order += [n for n in names if n not in order]
+    free = Free(subject, variables(subject), tuple(order))
+    search = Search(trials, free.space())
+    found = search.least()
+    if not found.feasible:
+        return free.place(found)
+    if not _bound_by_target(free, trials, found):
+        message = f"{names[0]} is left open and no target bounds it from below; choose it, or add a target that does"
+        raise subject.fail(names[0], message)
+    if free.by_inversion:
+        tied = _compact(free, search, found, 1e-6)
+        return tied if tied is not None else free.place(found)
+    return free.place(found)
+
+
+def _bound_by_target(free: Free, trials: Trials, found: Found) -> bool:
+    if free.names[0] in ("bias_current", "load_capacitance"):
+        return _bounded_below(free, trials, found)
+    return trials.target_count > 0

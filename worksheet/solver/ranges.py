@@ -71,3 +71,8 @@ def _stated(sheet: Sheet, name: str) -> float:
 def _columns(names: list[str], points: list[tuple[float, ...]]) -> dict[str, Array]:
     table = np.array(points, dtype=np.float64)
     return {name: table[:, k : k + 1] for k, name in enumerate(names)}
+
+
+def waived_targets(sheet: Sheet) -> tuple[str, ...]:
+    """Targets with a waiver: they are judged, but bind nothing that is proposed."""
+    return tuple(dict.fromkeys(w.target for w in sheet.waivers))

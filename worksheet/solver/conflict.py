@@ -1,0 +1,104 @@
+"""Conflicts: the target that cannot be met, or the targets that exclude each other, and how much each must give way."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+
+import numpy as np
+
+from worksheet.solver import goals
+from worksheet.solver.propose import Free
+from worksheet.solver.results import Conflict
+from worksheet.solver.search import Search
+from worksheet.solver.subject import scalar
+from worksheet.solver.trials import Trials, holds
+from worksheet.solver.variables import variables
+
+_HELPERS = ("length", "load_capacitance", "bias_current", "width")
+
+
+def conflict(trials: Trials, free: Free) -> Conflict:
+    """Find what excludes what over the free variables of the recommended point.
+
+    Args:
+        trials: The sheet's constraints; no point meets them all.
+        free: What may move.
+    Returns: Conflict
+    """
+    limits = list(range(trials.target_count, len(trials.constraints)))
+    targets = list(range(trials.target_count))
+    names = [c.name for c in trials.constraints]
+    alone = [k for k in targets if not _possible(trials, free, [k, *limits])]
+    excluding = alone[:1] if alone else _minimal(trials, free, targets, limits)
+    involved = tuple(dict.fromkeys(names[k] for k in excluding))
+    gives = {name: _best(trials, free, name, [k for k in targets if names[k] != name], limits) for name in involved}
+    return Conflict(
+        variable="bias_current" if free.by_inversion or not free.names else free.names[0],
+        targets=involved,
+        gives_way=gives,
+        reachable_with=_reachable(trials, free),
+        explain=_explain(involved, bool(alone)),
+    )
+
+
+def at_present(trials: Trials, free: Free) -> Conflict:
+    """What the sheet as it stands misses, where there is no recommended point to look for."""
+    current = np.array([scalar(trials.subject.value("bias_current"))])
+    met = holds(trials.constraints, trials.clear({"bias_current": current}).slack)[:, 0]
+    missed = tuple(dict.fromkeys(c.name for c, good in zip(trials.constraints, met, strict=True) if not good))
+    targets = tuple(name for name in missed if name in trials.subject.sheet.targets)
+    explain = f"the present point misses {', '.join(missed)}"
+    return Conflict("bias_current", targets, dict.fromkeys(targets), _reachable(trials, free), explain)
+
+
+def _possible(trials: Trials, free: Free, wanted: Sequence[int]) -> bool:
+    return Search(trials, free.space(), wanted).least().feasible
+
+
+def _minimal(trials: Trials, free: Free, targets: list[int], limits: list[int]) -> list[int]:
+    """Targets of which none can be left out without the rest becoming possible."""
+    kept = list(targets)
+    for k in targets:
+        fewer = [other for other in kept if other != k]
+        if fewer and not _possible(trials, free, [*fewer, *limits]):
+            kept = fewer
+    return kept
+
+
+def _best(trials: Trials, free: Free, name: str, others: list[int], limits: list[int]) -> float | None:
+    """Best reachable value of a target with all others held, None where those exclude each other. [its unit]"""
+    own = next(k for k, c in enumerate(trials.constraints) if c.name == name)
+    place = Search(trials, free.space(), [*others, *limits]).greatest(own)
+    if place is None:
+        return None
+    moves = free.moves(place[:1], place[None, 1:])
+    constraint = trials.constraints[own]
+    target = constraint.target
+    assert target is not None  # only targets are asked to give way
+    moved, solution = trials.solve(moves)
+    values = np.broadcast_to(goals.measure(moved, target, solution).values, (1, *trials.points())).reshape(-1)
+    if trials.over == "nominal" or target.at == "nominal":
+        values = values[:1]
+    worst = np.min(values) if constraint.side == "low" else np.max(values)
+    return float(worst) if np.isfinite(worst) else None
+
+
+def _reachable(trials: Trials, free: Free) -> dict[str, float]:
+    """A value of one further variable, nearest to where it stands, with which everything becomes possible."""
+    every = variables(free.subject)
+    for name in _HELPERS:
+        if name in free.names or name not in every or name in free.subject.sheet.assume:
+            continue
+        wider = Free(free.subject, every, (*free.names, name))
+        found = Search(trials, wider.space()).least()
+        if found.feasible:
+            return {name: wider.place(found)[name]}
+    return {}
+
+
+def _explain(names: tuple[str, ...], alone: bool) -> str:
+    if alone:
+        return f"{names[0]} cannot be met at any current and width that the process allows"
+    if len(names) > 1:
+        return f"{', '.join(names[:-1])} and {names[-1]} exclude each other"
+    return f"{', '.join(names)} is not met together with saturation and ratings" if names else "no point is saturated"

@@ -1,0 +1,72 @@
+"""A target as numbers: what it measures, its limits, and by how much a value clears them."""
+
+from __future__ import annotations
+
+import numpy as np
+
+from worksheet.device.arrays import Array
+from worksheet.engine.measured import Measured, missing_where
+from worksheet.engine.solution import NumericSolution
+from worksheet.model import metrics
+from worksheet.model.metrics import Reason
+from worksheet.model.sheet import Target
+from worksheet.solver.subject import Subject
+
+FAR = 1e3
+"""Slack that stands for a number that does not exist but counts as met; its negative for missed or unknown."""
+
+TOLERANCE = 1e-9
+"""Of the limit: nearer than this counts as met; a limit of 0 is exact."""
+
+SIDES = ("low", "high")
+
+
+def measure(subject: Subject, target: Target, solution: NumericSolution) -> Measured:
+    """What a target is about, over the solution's points: a metric, a bound at a yield, or a figure. [unit of the target]"""
+    metric = metrics.find(target.name)
+    if target.formula is not None or metric is None:
+        return missing_where(subject.figure(target, solution))
+    if metric.of_yield and target.yield_fraction is not None:
+        base = solution.measure(metric.of_yield)
+        return Measured(base.values * metrics.deviations(target.yield_fraction), base.reasons)
+    return solution.measure(target.name)
+
+
+def limits(target: Target) -> tuple[float | None, float | None]:
+    """Least and greatest value that meets a target, its guard band counted. [unit of the target]"""
+    low = None if target.minimum is None else target.minimum + target.guard * abs(target.minimum)
+    high = None if target.maximum is None else target.maximum - target.guard * abs(target.maximum)
+    return low, high
+
+
+def slack(measured: Measured, limit: float, side: str) -> Array:
+    """By how much values clear one limit: positive where met.
+
+    Args:
+        measured: Values over points.
+        limit: The limit, guard band counted. [unit of the target]
+        side: "low" for a minimum, "high" for a maximum.
+    Returns: ln(value/limit) where both are positive, else the relative (limit 0: plain) distance; +-FAR where there is
+        no number. [-]
+    """
+    values = measured.values
+    with np.errstate(all="ignore"):
+        plain = (values - limit) / (abs(limit) or 1.0)
+        ratio = np.log(values / limit) if limit > 0 else plain
+        room = np.where((values > 0) & (limit > 0), ratio, plain)
+        room = room if side == "low" else -room
+    absent = ~np.isfinite(values)
+    if absent.any():
+        room = np.where(absent, _absent(measured, side), room)
+    return np.clip(room, -FAR, FAR)
+
+
+def _absent(measured: Measured, side: str) -> Array:
+    reasons = np.broadcast_to(
+        Reason.NOT_A_NUMBER if measured.reasons is None else measured.reasons, measured.values.shape
+    )
+    means = np.full(len(Reason), -FAR)
+    for reason in Reason:
+        if reason.verdict("min" if side == "low" else "max") == "met":
+            means[reason] = FAR
+    return np.asarray(means[reasons])

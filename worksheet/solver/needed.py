@@ -1,0 +1,92 @@
+"""Everything that solve says of one sheet: windows, recommended and compact point, conflict."""
+
+from __future__ import annotations
+
+from collections.abc import Callable, Mapping
+
+import numpy as np
+
+from worksheet.device.arrays import Array
+from worksheet.solver import conflict, propose, ranges
+from worksheet.solver.results import Conflict, Solved, Window
+from worksheet.solver.subject import Subject, scalar
+from worksheet.solver.trials import Trials, holds
+from worksheet.solver.variables import Variable, inversion, square_current, variables
+from worksheet.solver.windows import window
+
+
+def trials_of(subject: Subject, over: str | None = None) -> Trials:
+    """The constraints of a sheet over the conditions of its `over`, or of the one given."""
+    sheet = subject.sheet
+    return Trials(subject, over or sheet.solve.over, ranges.vertices(sheet), ranges.waived_targets(sheet))
+
+
+def solve(subject: Subject, over: str | None = None) -> Solved:
+    """What is needed of one sheet.
+
+    Args:
+        subject: The sheet, with a number for everything it leaves open.
+        over: "all" or "nominal"; the sheet's own where None.
+    Returns: Solved
+    """
+    trials = trials_of(subject, over)
+    best = propose.optimum(subject, trials)
+    present = _present_meets(trials)
+    none_to_find = best.recommended is None and best.reason in (propose.NO_BOUND, propose.NOTHING_FREE)
+    feasible = best.recommended is not None or (none_to_find and present)
+    found: Conflict | None = None
+    if not feasible and not none_to_find:
+        found = conflict.conflict(trials, best.free)
+    elif not feasible:
+        found = conflict.at_present(trials, best.free)
+    return Solved(
+        sheet=subject.sheet.name,
+        over=trials.over,
+        feasible=feasible,
+        reason=best.reason,
+        needed=windows(trials),
+        recommended=best.recommended,
+        compact=best.compact,
+        conflict=found,
+        proposed={name: scalar(subject.value(name)) for name in subject.open_keys},
+    )
+
+
+def windows(trials: Trials) -> Mapping[str, Window]:
+    """The window of every design variable that some target bounds, with the others held."""
+    found = {}
+    for name, variable in variables(trials.subject).items():
+        line, ends, keep = line_of(trials.subject, variable)
+        region = window(trials, variable, line, ends, keep)
+        if region is not None:
+            found[name] = region
+    return found
+
+
+def line_of(
+    subject: Subject, variable: Variable
+) -> tuple[Callable[[Array], Mapping[str, Array]], tuple[float, float], str]:
+    """The moves along a variable's axis, how far it goes, and for the bias current what is kept."""
+
+    def alone(values: Array) -> Mapping[str, Array]:
+        return {variable.name: values}
+
+    if variable.name != "bias_current":
+        return alone, (variable.low, variable.high), ""
+    if subject.sheet.solve.keep != "inversion":
+        return alone, (variable.low, variable.high), "geometry"
+    kept = subject.sheet.solve.inversion_coefficient or inversion(subject)
+    per_width = scalar(subject.value("length")) / (square_current(subject) * kept)
+
+    def with_width(values: Array) -> Mapping[str, Array]:
+        return {"bias_current": values, "width": values * per_width}
+
+    width = variables(subject)["width"]
+    return with_width, (width.low / per_width, width.high / per_width), "inversion"
+
+
+def _present_meets(trials: Trials) -> bool:
+    """Whether the sheet as it stands meets everything."""
+    name = "bias_current"
+    cleared = trials.clear({name: np.array([scalar(trials.subject.value(name))])})
+    return bool(holds(trials.constraints, cleared.slack).all())

@@ -1,0 +1,96 @@
+"""The design variables of a sheet: what each stands at, and how far the process lets it go."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+from worksheet.model.keys import Key
+from worksheet.model.sheet import DeviceModel
+from worksheet.model.sheet_keys import GEOMETRY
+from worksheet.solver.subject import Subject, scalar
+
+_CURRENT_SPAN = (1e-6, 1e6)
+_CAPACITANCE_SPAN = (1e-6, 1e6)
+_LEAST_CAPACITANCE = 1e-15
+
+
+@dataclass(frozen=True, slots=True)
+class Variable:
+    """One design variable.
+
+    Attributes:
+        key: Its description; Key.name names it.
+        present: Where it stands. [unit of the key]
+        low, high: How far it is looked at. [unit of the key]
+        bounded: Whether low and high are limits of the process.
+        grid: Layout grid, None where it has none. [m]
+    """
+
+    key: Key
+    present: float
+    low: float
+    high: float
+    bounded: bool
+    grid: float | None = None
+
+    @property
+    def name(self) -> str:
+        """Its key's name."""
+        return self.key.name
+
+
+def variables(subject: Subject) -> dict[str, Variable]:
+    """All design variables of a sheet that has a number for each, by name."""
+    found = {}
+    devices = {device.key(name): (device, name) for device in subject.circuit.devices for name in GEOMETRY}
+    for key in subject.stage.design_keys(subject.sheet.bias.ideal):
+        if key.dimension is None:
+            continue
+        present = scalar(subject.value(key.name))
+        if key.name in devices:
+            device, name = devices[key.name]
+            model = subject.model(device)
+            ends = model.number(f"min_{name}"), model.number(f"max_{name}")
+            if name == "length":
+                ends = max(ends[0], shortest_coupled(subject, model)), ends[1]
+            found[key.name] = Variable(key, present, *ends, bounded=True, grid=model.number("grid"))
+        elif key.name == "bias_current":
+            specific = specific_current(subject)
+            low, high = (min(present, specific) * _CURRENT_SPAN[0], max(present, specific) * _CURRENT_SPAN[1])
+            found[key.name] = Variable(key, present, low, high, bounded=False)
+        else:
+            size = present if present > 0 else _LEAST_CAPACITANCE
+            found[key.name] = Variable(
+                key, present, size * _CAPACITANCE_SPAN[0], size * _CAPACITANCE_SPAN[1], bounded=False
+            )
+    return found
+
+
+def shortest_coupled(subject: Subject, model: DeviceModel) -> float:
+    """Least length at which kappa + drain coupling is at most 1 in every corner. [m]"""
+    shortest = 0.0
+    sigma, reference = model.number("drain_coupling"), model.number("drain_coupling_length")
+    exponent = model.number("drain_coupling_exponent")
+    for changes in ({}, *(devices.get(model.name, {}) for devices in subject.conditions.process.corners.values())):
+        room = 1.0 - model.number("kappa") - changes.get("kappa_shift", 0.0)
+        coupling = sigma * changes.get("drain_coupling_factor", 1.0)
+        if exponent > 0 and 0 < room and coupling > 0:
+            shortest = max(shortest, reference * (coupling / room) ** (1.0 / exponent))
+    return shortest
+
+
+def specific_current(subject: Subject) -> float:
+    """I_spec of the main device at the nominal condition. [A]"""
+    main = subject.stage.transistors[0].name
+    return scalar(subject.inputs.devices[main].specific)
+
+
+def square_current(subject: Subject) -> float:
+    """I_sq of the main device at the nominal condition. [A]"""
+    main = subject.stage.transistors[0].name
+    return scalar(subject.inputs.devices[main].specific_current)
+
+
+def inversion(subject: Subject) -> float:
+    """Inversion coefficient of the main device at the nominal condition. [-]"""
+    return scalar(subject.value("bias_current")) / specific_current(subject)
