@@ -224,7 +224,7 @@ def add_dynamics(rng: random.Random, process: Document, sheet: Document, nominal
         metrics = evaluate(process, sheet, nominal, [nominal])[0].metrics
         pole, entry = float(metrics["pole_frequency"][0]), float(metrics["input_capacitance"][0])
         gain, swing = float(metrics["dc_gain"][0]), float(metrics["output_swing"][0])
-    except (ValueError, ZeroDivisionError, TypeError):
+    except (ArithmeticError, TypeError, ValueError):
         return
     if want_drive:
         sheet["assume"]["drive_resistance"] = rounded(spread(rng, 0.03, 30.0) / (6.28 * pole * entry))

@@ -107,7 +107,8 @@ def measures(b: Bench, at: Levels, devices: dict[str, Point], sheet: dict[str, A
     if b.stage != "drain-follower":
         result["supply_rejection"] = quotient(abs(forward[0]), abs(circuit.from_supply()[0]))
     output_capacitance = circuit.network.c["out", "out"]
-    result["slew_rate"] = quotient(b.current, output_capacitance)
+    bare = output_capacitance == 0
+    result["slew_rate"] = (None, "no capacitance") if bare else (b.current / output_capacitance, None)
     result.update(noise(b, circuit, devices, shape))
     result["settling_time"] = settling_time(b, devices["main"], shape, output_capacitance)
     result.update(static(b, at, devices))
@@ -152,11 +153,11 @@ class Shape:
         return max([mpf(1), *(mp.sqrt(height) / self.gain for height in heights)])
 
     def metrics(self) -> dict[str, Metric]:
-        result: dict[str, Metric] = {}
-        if not self.poles:
-            result["bandwidth"] = (None, "unlimited")
-        else:
+        result: dict[str, Metric] = {"peaking": (mpf(1), None)}
+        if self.poles:
             result["pole_frequency"] = (self.pole_frequency, None)
+        if self.gain is None or not self.poles:
+            result["bandwidth"] = (None, "unlimited")
         if self.gain is None:
             result["dc_gain"] = (None, "unlimited")
             result["unity_gain_frequency"] = self._named(self.crossing(mpf(1)))
@@ -186,7 +187,7 @@ def input_capacitance(b: Bench, devices: dict[str, Point], sheet: dict[str, Any]
         return own, None
     ground = net.denominator()[0]
     if ground == 0:
-        return None, "unlimited"
+        return None, "no gain that ends"
     moved = {node: net.numerator(node, held={"in": mpf(1)}, injected={})[0] / ground for node in net.unknown}
     return own + sum(net.c["in", node] * voltage for node, voltage in moved.items()), None
 
@@ -210,7 +211,7 @@ def noise(b: Bench, circuit: Circuit, devices: dict[str, Point], shape: Shape) -
         thermal = 4 * mpf(BOLTZMANN) * b.temperature / circuit.resistance
         sources.append((circuit.from_node("terminal"), thermal, mpf(0), mpf(1)))
     white = sum(path[0] ** 2 * density for path, density, _, _ in sources)
-    flickers = [(path[0] ** 2 * density, exponent) for path, _, density, exponent in sources if density > 0]
+    flickers = [(path[0] ** 2 * density, exponent) for path, _, density, exponent in sources if path[0] * density]
     offset = sum(circuit.from_device(name)[0] ** 2 * point.mismatch for name, point in devices.items())
     result: dict[str, Metric] = {"noise_corner": (corner_frequency(white, flickers), None)}
     driving = abs(shape.numerator[0])
@@ -254,8 +255,10 @@ def settling_time(b: Bench, main: Point, shape: Shape, output_capacitance: Real)
     tolerance = mpf(b.assume.get("settling_tolerance", 1e-3))
     if "step_size" in b.assume and b.stage in SOURCE_OUTPUTS:
         return source_output_settling(b, main, output_capacitance, tolerance)
-    if not shape.gain or not shape.poles:
+    if not shape.gain:
         return None, "no final value"
+    if not shape.poles:
+        return mpf(0), None
     if "step_size" not in b.assume:
         return settling.linear(shape.numerator, shape.denominator, shape.poles, tolerance), None
     change, slew_rate = shape.gain * mpf(b.assume["step_size"]), b.current / output_capacitance

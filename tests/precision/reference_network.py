@@ -57,6 +57,8 @@ def determinant(matrix: list[list[Polynomial]]) -> Polynomial:
 
 def trimmed(a: Polynomial, rate: Real) -> Polynomial:
     """Without leading coefficients that a cancellation left as rounding; `rate` is a typical angular frequency."""
+    if rate == 0:
+        return list(a)
     sizes = [abs(value) * rate**k for k, value in enumerate(a)]
     result = list(a)
     while len(result) > 1 and sizes[len(result) - 1] <= max(sizes) * mpf(10) ** -48:
