@@ -130,8 +130,8 @@ def test_a_folder_may_take_the_place_of_a_file_and_a_file_that_of_a_folder(tmp_p
 
 
 def test_strange_names_and_bytes_come_through(tmp_path: Path) -> None:
-    project = make_project(make_repository(tmp_path / "chip") / "spaß \"dir\"")
-    names = ['tab\there', "line\nbreak", 'quo"te', "back\\slash", "*?[a]", ":(top)x", "-n", os.fsdecode(b"latin-\xe9")]
+    project = make_project(make_repository(tmp_path / "chip") / 'spaß "dir"')
+    names = ["tab\there", "line\nbreak", 'quo"te', "back\\slash", "*?[a]", ":(top)x", "-n", os.fsdecode(b"latin-\xe9")]
     for name in names:
         (project / "evidence" / name).write_bytes(b"\0\r\n\xff" + os.fsencode(name))
     made = save(project, "-n: \N{GREEK SMALL LETTER MU} and \udce9")
@@ -295,7 +295,7 @@ def test_a_branch_that_moves_meanwhile_is_built_upon(tmp_path: Path, monkeypatch
     top = make_repository(tmp_path / "chip")
     project = make_project(top / "p")
     original = repository.Repository.move_head
-    moved = []
+    moved: list[str] = []
 
     def late(self: repository.Repository, new: str, *arguments: object, **others: object) -> None:
         if not moved:

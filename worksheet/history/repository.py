@@ -244,7 +244,9 @@ class Repository:
 
     def ignored(self, paths: Iterable[str]) -> set[str]:
         """Those files of the project that git is told to ignore and does not hold yet."""
-        place = f"./{self.prefix}"  # check-ignore takes no literal paths, and reads a colon in front as more than a name
+        place = (
+            f"./{self.prefix}"  # check-ignore takes no literal paths, and reads a colon in front as more than a name
+        )
         stdin = b"".join(os.fsencode(place + path) + b"\0" for path in paths)
         output = self.run("--no-literal-pathspecs", "check-ignore", "-z", "--stdin", stdin=stdin, also_fails=(1,))
         return {os.fsdecode(path).removeprefix(place) for path in output.split(b"\0") if path}

@@ -24,7 +24,7 @@ LARGEST_TEXT = 2_000_000
 LARGEST_WHOLE = 500_000_000
 """Most that is read from one revision. [bytes]"""
 
-_LAYOUT = "%x00%H%x00%aI%x00%cI%x00%an%x00%B%x00"
+_LAYOUT = "%x00%H%x00%aI%x00%cI%x00%an%x00%B"
 _FIELDS = 5
 _BATCH = 100  # revisions whose files are read at once
 
