@@ -1,4 +1,5 @@
-"""Device parameters from current-voltage data: reading curves, fitting, judging the fit.
+"""Device parameters from tables of drain current: reading, screening, fit, judgement, and curves the other way.
 
-The only home of scipy, imported inside functions, since only this command needs an optimiser.
+The one layer that needs an optimiser; scipy is imported inside the functions that minimise, so that a command which
+fits nothing never pays for it. The public way in is `extraction.extract_parameters`.
 """
