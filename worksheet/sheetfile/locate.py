@@ -18,11 +18,11 @@ DEEPEST = 32
 
 _MOST_ENTRIES = 1000  # of one list whose lines are kept; a list of a million numbers is an attack, not a sheet
 
-_BASIC = r'"(?:[^"\\\n]|\\[^\n])*+"'
-_LITERAL = r"'[^'\n]*+'"
-_PART = rf"(?:[A-Za-z0-9_-]++|{_BASIC}|{_LITERAL})"
-_DOTTED = rf"{_PART}(?:[ \t]*+\.[ \t]*+{_PART})*+"
-_SCALAR = rf"""(?:{_BASIC}(?!")|{_LITERAL}(?!')|[^\s"'\[\]{{}},=\#]++)"""
+BASIC = r'"(?:[^"\\\n]|\\[^\n])*+"'
+LITERAL = r"'[^'\n]*+'"
+_PART = rf"(?:[A-Za-z0-9_-]++|{BASIC}|{LITERAL})"
+DOTTED = rf"{_PART}(?:[ \t]*+\.[ \t]*+{_PART})*+"
+_SCALAR = rf"""(?:{BASIC}(?!")|{LITERAL}(?!')|[^\s"'\[\]{{}},=\#]++)"""
 _FLAT = rf"[ \t]*+[A-Za-z0-9_-]++[ \t]*+=[ \t]*+{_SCALAR}[ \t]*+"
 _END = r"[ \t]*+(?:\#[^\n]*+)?(?:\n|\Z)"
 _BARE = re.compile(r"[A-Za-z0-9_-]+")
@@ -30,10 +30,10 @@ _PARTS = re.compile(_PART)
 _STATEMENT = re.compile(
     rf"""[ \t]*+(?:
         (?P<blank>(?:\#[^\n]*+)?\n)
-      | (?P<name>[A-Za-z0-9_-]++)[ \t]*+=[ \t]*+(?:{_BASIC}(?!")|{_LITERAL}(?!')|[^\s"'\[{{\#][^\n\#]*+){_END}
+      | (?P<name>[A-Za-z0-9_-]++)[ \t]*+=[ \t]*+(?:{BASIC}(?!")|{LITERAL}(?!')|[^\s"'\[{{\#][^\n\#]*+){_END}
       | (?P<flat>[A-Za-z0-9_-]++)[ \t]*+=[ \t]*+\{{{_FLAT}(?:,{_FLAT})*+\}}{_END}
-      | \[(?P<array>\[)?[ \t]*+(?P<header>{_DOTTED})[ \t]*+\](?(array)\]){_END}
-      | (?P<key>{_DOTTED})[ \t]*+=
+      | \[(?P<array>\[)?[ \t]*+(?P<header>{DOTTED})[ \t]*+\](?(array)\]){_END}
+      | (?P<key>{DOTTED})[ \t]*+=
     )""",
     re.VERBOSE,
 )
@@ -46,7 +46,7 @@ _TOKEN = re.compile(
     re.VERBOSE,
 )
 _FLAT_NAMES = re.compile(rf"([A-Za-z0-9_-]++)[ \t]*+=[ \t]*+{_SCALAR}")
-_INLINE_KEY = re.compile(rf"[ \t]*+(?P<key>{_DOTTED})[ \t]*+=")
+_INLINE_KEY = re.compile(rf"[ \t]*+(?P<key>{DOTTED})[ \t]*+=")
 
 
 class NestedTooDeeplyError(ValueError):
@@ -58,16 +58,22 @@ class NestedTooDeeplyError(ValueError):
         self.key = key
 
 
+Statement = tuple[int, int, str, str]
+"""First line, last line, dotted key of the table it stands in, own dotted key; "" for the header of that table."""
+
+
 @dataclass(slots=True)
 class Places:
     """Where things stand in one text.
 
     Attributes:
+        statements: Headers and keys with their values, in the order of the text.
         lines: Dotted key to line, counted from 1. An entry of a list counts as a part ("evidence.0.value").
         repeated: Keys that are stated again: (dotted key, line, line of the first).
         stopped: Line at which the scan no longer understood the text, None where it reached the end.
     """
 
+    statements: list[Statement] = field(default_factory=list)
     lines: dict[str, int] = field(default_factory=dict)
     repeated: list[tuple[str, int, int]] = field(default_factory=list)
     stopped: int | None = None
@@ -114,39 +120,41 @@ def locate(text: str) -> Places:
     if "\r" in text:
         text = text.replace("\r\n", "\n")
     scan = _Scan(text)
-    match, lines, repeated = _STATEMENT.match, scan.places.lines, scan.places.repeated
+    places = scan.places
+    match, lines, statements = _STATEMENT.match, places.lines, places.statements
     table, place, end = "", 0, len(text)
     while place < end:
         found = match(text, place)
         if found is None:
             if text[place:].strip():
-                scan.places.stopped = scan.line
+                places.stopped = scan.line
             break
         kind = found.lastgroup
-        if kind == "blank":
-            place = found.end()
-            scan.line += 1
-        elif kind in {"name", "flat"}:
+        line = scan.line
+        if kind in {"name", "flat"}:
             name = found[kind]
             key = f"{table}.{name}" if table else name
+            statements.append((line, line, table, key))
             if key in lines:
-                repeated.append((key, scan.line, lines[key]))
+                places.repeated.append((key, line, lines[key]))
             else:
-                lines[key] = scan.line
+                lines[key] = line
                 if kind == "flat":
                     scan.flat(key, found.end(kind), found.end())
-            place = found.end()
-            scan.line += 1
         elif kind == "header":
             table = scan.header(found["header"], array=found["array"] is not None)
-            place = found.end()
-            scan.line += 1
-        else:
-            place = scan.value(found.end(), scan.enter(table, found["key"]))
+            statements.append((line, line, table, ""))
+        elif kind == "key":
+            key = scan.enter(table, found["key"])
+            place = scan.value(found.end(), key)
+            statements.append((line, scan.line - 1, table, key))
             if place < 0:
-                scan.places.stopped = scan.line
+                places.stopped = scan.line
                 break
-    return scan.places
+            continue
+        place = found.end()
+        scan.line += 1
+    return places
 
 
 class _Scan:
@@ -172,7 +180,7 @@ class _Scan:
 
     def header(self, written: str, *, array: bool) -> str:
         """Enter a table header; the dotted key of the table, with the number of the entry in an array of tables."""
-        parts = _split(written)
+        parts = split(written)
         if len(parts) > DEEPEST:
             raise NestedTooDeeplyError(self.line, dotted(parts[:2]))
         lines, key = self.places.lines, ""
@@ -195,7 +203,7 @@ class _Scan:
 
     def enter(self, table: str, written: str) -> str:
         """Enter a dotted key below a table; its own dotted key."""
-        parts = _split(written)
+        parts = split(written)
         if len(parts) + table.count(".") > DEEPEST:
             raise NestedTooDeeplyError(self.line, below(table, parts[0]))
         lines, key = self.places.lines, table
@@ -228,7 +236,10 @@ class _Scan:
                     self.line += found[0].count("\n")
             if place < 0:
                 return place
-        return -1 if holders or place < len(text) else place
+        if holders or place < len(text):
+            return -1
+        self.line += 1  # the last line has no line feed
+        return place
 
     def begin(self, holders: list[_Holder]) -> str | None:
         """A value begins: enter it where it is an entry of a list; its dotted key there."""
@@ -246,7 +257,7 @@ class _Scan:
             if holders:
                 key = self.begin(holders) or holders[-1].inner
             if len(holders) + key.count(".") > DEEPEST:
-                raise NestedTooDeeplyError(self.line, _split(key)[0])
+                raise NestedTooDeeplyError(self.line, split(key)[0])
             holders.append(_Holder(key, mark == "["))
             return self.inner(holders[-1], place)
         if not holders or (mark != "," and (mark == "]") != holders[-1].is_list):
@@ -276,7 +287,7 @@ class _Holder:
     inner: str = ""
 
 
-def _split(key: str) -> list[str]:
+def split(key: str) -> list[str]:
     """The parts of a dotted key as written, without their quotes."""
     if _BARE.fullmatch(key):
         return [key]
