@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+import numpy as np
+
 from worksheet.device.arrays import Array, Number
 from worksheet.device.constants import BOLTZMANN
 from worksheet.device.parameters import Parameters
@@ -34,4 +36,6 @@ def flicker_density(parameters: Parameters, transconductance: Array) -> Number:
     It falls as (f/1 Hz)^-alpha_F. Source: Tsividis and McAndrew 2011.
     """
     p = parameters
+    if not np.any(p.flicker):
+        return 0.0
     return transconductance**2 * p.flicker / (p.gate_capacitance * p.width * p.length)

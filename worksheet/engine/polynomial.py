@@ -109,7 +109,7 @@ def positive_roots(a: Sequence[Number]) -> Array:
             else np.zeros((0,))
         )
         if len(a) == 2:
-            inverse = -ratio
+            inverse: Array = -ratio
         elif len(a) == 3:
             inverse = np.stack(_quadratic_inverse(ratio[0], ratio[1]))
         else:

@@ -66,17 +66,16 @@ def of_sheet(sheet: Sheet, project: ProjectFile, process: Process) -> ConditionS
     supplies = supply.numbers if supply is not None else project.supplies
     nominal = Condition(
         project.nominal.process,
-        _nominal(project.nominal.temperature, temperatures),
-        _nominal(project.nominal.supply, supplies),
+        project.nominal.temperature if temperature is None else _nominal(project.nominal.temperature, temperatures),
+        project.nominal.supply if supply is None else _nominal(project.nominal.supply, supplies),
     )
     every = (Condition(*parts) for parts in product(project.processes, temperatures, supplies))
     return ConditionSet(process, (nominal, *(c for c in dict.fromkeys(every) if c != nominal)))
 
 
 def _nominal(stated: float, values: tuple[float, ...]) -> float:
-    """The project's nominal where it is among a sheet's own values, or where they are the project's; else their middle one."""
-    ordered = sorted(values)
-    return stated if stated in values or not ordered else ordered[(len(ordered) - 1) // 2]
+    """The project's nominal where it is among a sheet's own values, else the middle one of those."""
+    return stated if stated in values else sorted(values)[(len(values) - 1) // 2]
 
 
 def linked(wanted: ConditionSet, owner: ConditionSet, own_supply: bool) -> ConditionSet:

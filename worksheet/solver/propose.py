@@ -219,7 +219,7 @@ def propose(subject: Subject) -> Mapping[str, float]:
     """
     following = bias_size.followers(subject)
     searched = tuple(
-        n for n in subject.open_keys if n not in following and not n.startswith(f"{BIAS}_") or n == "bias_current"
+        n for n in subject.open_keys if (n not in following and not n.startswith(f"{BIAS}_")) or n == "bias_current"
     )
     filled = bias_size.starting_values(subject, searched)
     for _ in range(_ROUNDS):
@@ -243,7 +243,7 @@ def _fill(subject: Subject, names: tuple[str, ...]) -> dict[str, float]:
     trials = Trials(
         subject, subject.sheet.solve.over, ranges.vertices(subject.sheet), ranges.waived_targets(subject.sheet)
     )
-    order = [n for n in ("bias_current", "width", "length", "load_capacitance") if n in names]
+    order: list[str] = [n for n in ("bias_current", "width", "length", "load_capacitance") if n in names]
     order += [n for n in names if n not in order]
     free = Free(subject, variables(subject), tuple(order))
     search = Search(trials, free.space())

@@ -10,6 +10,7 @@ from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
 
 import numpy as np
+from numpy.typing import NDArray
 
 from worksheet.device.arrays import Array
 from worksheet.engine.solution import NumericSolution
@@ -21,6 +22,8 @@ from worksheet.solver.subject import Subject
 
 SATURATION, MAX_VOLTAGE, PROCESS = "saturation", "max_voltage", "process"
 """What sets an end of a window besides a target."""
+
+Mask = NDArray[np.bool_]
 
 _VALIDITY = {"saturation": SATURATION, "range": SATURATION, "max_voltage": MAX_VOLTAGE}
 
@@ -143,10 +146,10 @@ class Trials:
         return (values[:, :1, :1] if nominal_only else values).reshape(count, -1)
 
 
-def holds(constraints: Sequence[Constraint], slack: Array) -> Array:
+def holds(constraints: Sequence[Constraint], slack: Array) -> Mask:
     """Where constraints count as met: within the verdict's tolerance, exactly for a limit of 0. Shape of `slack`."""
     tolerances = np.array([_tolerance(c) for c in constraints])
-    return np.asarray(slack >= -tolerances.reshape(-1, *([1] * (slack.ndim - 1))))
+    return np.asarray(slack >= -tolerances.reshape(-1, *([1] * (slack.ndim - 1))), dtype=np.bool_)
 
 
 def _tolerance(constraint: Constraint) -> float:

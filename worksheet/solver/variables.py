@@ -74,7 +74,7 @@ def shortest_coupled(subject: Subject, model: DeviceModel) -> float:
     for changes in ({}, *(devices.get(model.name, {}) for devices in subject.conditions.process.corners.values())):
         room = 1.0 - model.number("kappa") - changes.get("kappa_shift", 0.0)
         coupling = sigma * changes.get("drain_coupling_factor", 1.0)
-        if exponent > 0 and 0 < room and coupling > 0:
+        if exponent > 0 and room > 0 and coupling > 0:
             shortest = max(shortest, reference * (coupling / room) ** (1.0 / exponent))
     return shortest
 

@@ -6,15 +6,13 @@ from collections.abc import Callable, Mapping
 from dataclasses import dataclass
 
 import numpy as np
-from numpy.typing import NDArray
 
 from worksheet.device.arrays import Array
 from worksheet.solver import goals
 from worksheet.solver.results import Bound, Region, Window
-from worksheet.solver.trials import PROCESS, Constraint, Trials, holds
+from worksheet.solver.trials import PROCESS, Mask, Trials, holds
 from worksheet.solver.variables import Variable
 
-Mask = NDArray[np.bool_]
 Line = Callable[[Array], Mapping[str, Array]]
 """Gives all moves (the variable and what goes with it) for values of the variable."""
 
@@ -54,7 +52,7 @@ def window(trials: Trials, variable: Variable, line: Line, ends: tuple[float, fl
     )
     if not bounds:
         return None
-    reachable = met.any(axis=1)
+    reachable: Mask = np.asarray(met.any(axis=1))
     helped = [k for k in range(len(trials.constraints)) if reachable[k]]
     never = [k for k in range(trials.target_count) if not reachable[k]]
     regions = _regions(trials, variable, xs, met, helped, crossings, ends)
