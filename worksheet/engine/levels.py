@@ -132,19 +132,18 @@ class Levels:
         if level is not None:
             return level
         if self._circuit.stage.holds_input:
-            wanted = (
-                self.assumed_output if self.assumed_output is not None else (self.output_low + self.output_high) / 2.0
-            )
-            return self._held(self.gate_for_output(wanted))
+            if self.assumed_output is not None:
+                return self.gate_for_output(self.assumed_output)
+            return self._held(self.gate_for_output((self.output_low + self.output_high) / 2.0))
         return self.gates[self._circuit.stage.transistors[0].name]
 
     @cached_property
     def output(self) -> Array:
         """Output level in the frame. [V]"""
-        if self._circuit.stage.holds_input:
-            return self.output_for_gate(self.input)
         if self.assumed_output is not None:
             return self.assumed_output
+        if self._circuit.stage.holds_input:
+            return self.output_for_gate(self.input)
         return self._held((self.output_low + self.output_high) / 2.0)
 
     @cached_property
