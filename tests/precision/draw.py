@@ -2,10 +2,9 @@
 
 from __future__ import annotations
 
-import json
 import random
-from typing import Any
 
+from tests.documents import Document
 from tests.precision.reference import evaluate
 
 STAGES = ("source-follower", "common-source", "common-gate", "drain-follower", "cascode")
@@ -14,29 +13,6 @@ NOMINAL_TEMPERATURE = 300.15
 
 CAPACITANCES = ("gate_capacitance", "overlap_capacitance", "junction_capacitance", "flicker")
 """What to put to 0 for a device without capacitance; flicker is referred to the gate capacitance."""
-
-Document = dict[str, Any]
-
-
-def to_toml(document: Document) -> str:
-    """Nested dicts as TOML; two levels of tables, shortest reprs."""
-    lines: list[str] = []
-
-    def section(title: str, table: Document) -> None:
-        scalars = {key: value for key, value in table.items() if not isinstance(value, dict)}
-        if title and (scalars or not table):
-            lines.append(f"\n[{title}]")
-        lines.extend(f"{key} = {json.dumps(value, ensure_ascii=False)}" for key, value in scalars.items())
-        for key, value in table.items():
-            if isinstance(value, dict):
-                section(f"{title}.{key}" if title else key, value)
-
-    section("", document)
-    return "\n".join(lines) + "\n"
-
-
-def project_text(project: Document) -> str:
-    return to_toml(project)
 
 
 def rounded(value: float) -> float:

@@ -16,8 +16,9 @@ from typing import Any
 
 from mpmath import mp, mpf
 
+from tests.documents import to_toml
 from tests.precision import reference_device as device
-from tests.precision.draw import STAGES, draw, edge_cases, project_text, to_toml
+from tests.precision.draw import STAGES, draw, edge_cases
 from tests.precision.reference import Answer, evaluate, solve
 
 HERE = Path(__file__).parent
@@ -124,7 +125,7 @@ def make_cases() -> dict[str, Any]:
         "cases": [
             {
                 "name": name,
-                "project": project_text(project),
+                "project": to_toml(project),
                 "process": to_toml(process),
                 "sheet": to_toml(sheet),
                 "expected": [expected(answer, point_keys, metric_keys) for answer in group],

@@ -15,7 +15,7 @@ from typing import Any
 
 import pytest
 
-from tests.precision.draw import to_toml
+from tests.documents import to_toml
 from tests.support import only_sheet, review
 
 STORED = json.loads((Path(__file__).parent / "cases.json").read_text(encoding="utf-8"))
