@@ -12,13 +12,14 @@ from worksheet.device.arrays import Array
 from worksheet.extract import judge
 from worksheet.extract.choose import distinct, ratios
 from worksheet.extract.data import ByLength, Estimate, Extraction, Mask, Reading, Rows, Span
-from worksheet.extract.estimates import OFFSETS, correlations, estimates
+from worksheet.extract.estimates import correlations, estimates
 from worksheet.extract.fit import starting
 from worksheet.extract.hand import hand_values
 from worksheet.extract.header import Stated
 from worksheet.extract.law import Reference, forward_inversion, log_current
 from worksheet.extract.lengths import each_alone, exponent
 from worksheet.extract.orient import falling, orient
+from worksheet.extract.reservations import reservations
 from worksheet.extract.screen import (
     DEFECTS,
     FITTED_RANGE,
@@ -40,7 +41,6 @@ LEAST_ROWS = 12
 ROOM = 300.15
 """Of several temperatures the one nearest to this is the reference, unless one is stated. [K]"""
 
-_CLOSE = 0.97
 _SIZES = {"width": "w", "length": "l", "temperature": "temperature"}
 
 
@@ -295,7 +295,8 @@ def _judged(rows: Rows, screened: Screened, fit: _Fit, request: Request, reading
         limits=judge.limits(found, velocity=velocity),
         poor=rms > GOOD_OVER_ALL or (core is not None and core > GOOD_OVER_ALL),
     )
-    return replace(result, warnings=_warnings(result, fit, screened, request))
+    said = reservations(result, fit.found, fit.warnings, capped=screened.capped, most=request.most_left_out)
+    return replace(result, warnings=said)
 
 
 def _noise(rows: Rows, used: Mask, error: Array) -> float:
@@ -315,77 +316,6 @@ def _reasons(rows: Rows, screened: Screened, fit: _Fit, level: Array, fitted: Ar
     reached = rows.source <= fit.found.highest_source + 1e-3
     reason[beyond & (level > fit.found.high) & behind & reached] = code(SERIES_RESISTANCE)
     return Screened(reason, screened.capped)
-
-
-def _warnings(result: Extraction, fit: _Fit, screened: Screened, request: Request) -> tuple[str, ...]:
-    """Everything a user should know before he uses the numbers."""
-    said = [f"{one.file}: {note}" for one in result.readings for note in one.notes]
-    said += [
-        f"{one.file}: of {one.rows} rows {one.kept}, drawn at random, were kept for the fit."
-        for one in result.readings
-        if one.kept < one.rows
-    ]
-    said += [
-        f"{one.file}: columns were guessed from their headers; confirm them or state them: {' '.join(one.mapping)}."
-        for one in result.readings
-        if one.guessed
-    ]
-    said += list(fit.warnings)
-    for name, one in result.estimates.items():
-        if one.reason and not (name in OFFSETS and one.value is None):
-            said.append(f"{name}: {one.reason}.")
-    if result.estimates["drain_coupling"].value is None and result.estimates["threshold"].value is not None:
-        said.append("threshold: it holds at the table's drain voltage, drain coupling included.")
-    if not result.rows.sized:
-        said.append("specific_current: it is that of the whole device, since width and length are not known.")
-    said += [
-        f"{name}: the sizes in a sheet are drawn ones; a device of this kind is {_offset(name, one)}."
-        for name in OFFSETS
-        if (one := result.estimates[name]).fitted
-    ]
-    said += [
-        f"{first} and {second}: their errors are correlated by {value:.3f}; change them together or not at all."
-        for (first, second), value in result.correlations.items()
-        if abs(value) > _CLOSE
-    ]
-    said += _about_range(result, fit)
-    if screened.capped:
-        said.append(
-            f"{screened.capped} more rows look like {', '.join(DEFECTS[:3])}; they stay, since at most "
-            f"{100 * request.most_left_out:.0f} % may be left out."
-        )
-    if result.poor:
-        said.append(f"The fit is poor: the current is off by {100 * result.rms_log_error:.0f} % rms.")
-    return (*said, *result.limits)
-
-
-def _about_range(result: Extraction, fit: _Fit) -> list[str]:
-    """What rows outside the fitted range mean."""
-    said = []
-    left = {one.reason: one for one in result.left_out}
-    if fit.found.highest_source < float(result.rows.source.max()) - 1e-3:
-        said.append(
-            f"One set of parameters does not follow the source voltage: fitted up to {fit.found.highest_source:.3g} V "
-            f"of {float(result.rows.source.max()):.3g} V."
-        )
-    if fit.found.anchor > 1.0:
-        said.append(
-            "One set of parameters follows the source voltage only roughly; rows at zero source voltage, where the "
-            f"parameters are stated, count {fit.found.anchor:.0f} times in the residual."
-        )
-    if SERIES_RESISTANCE in left or FITTED_RANGE in left:
-        span_ = result.inversion_span
-        said.append(f"Fitted over inversion {span_.low:.2g} to {span_.high:.2g}; beyond, the law misses the table.")
-    return said
-
-
-def _offset(name: str, one: Estimate) -> str:
-    """An offset in words."""
-    value = abs(one.value or 0.0)
-    longer = (one.value or 0.0) < 0.0
-    if name == "length_offset":
-        return f"{value:.3g} m {'longer' if longer else 'shorter'} than drawn"
-    return f"{value:.3g} m {'narrower' if longer else 'wider'} than drawn"
 
 
 REASONS_BY_OPTION = {name.replace(" ", "-"): name for name in REASONS}

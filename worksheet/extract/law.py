@@ -62,9 +62,10 @@ class Reference:
 
 @dataclass(frozen=True, eq=False, slots=True)
 class _End:
-    """Drive of one end of the channel and its slopes."""
+    """Drive of one end of the channel and its slopes; `own` is against the voltage of that end."""
 
     drive: Array
+    own: Array
     kappa: Array
     threshold: Array
     coupling: Array
@@ -141,6 +142,32 @@ def log_current_and_slopes(values: Array, rows: Rows, reference: Reference) -> t
     return np.asarray(result), slopes
 
 
+def bias_slopes(values: Array, rows: Rows, reference: Reference) -> tuple[Array, Array, Array]:
+    """Slopes of ln(I_D) against gate, source and drain voltage. [1/V], shape (rows,) each
+
+    Args:
+        values: Parameters in the order of NAMES. [see NAMES]
+        rows: The points; V_D above V_S.
+        reference: Where the parameters are stated.
+    """
+    _, length = sizes(rows)
+    sigma = values[AT["drain_coupling"]] * np.power(reference.length / length, values[AT["drain_coupling_exponent"]])
+    velocity = np.maximum(values[AT["velocity_length"]] / length, 0.0)
+    threshold = values[AT["threshold"]] - values[AT["threshold_drift"]] * (rows.temperature - reference.temperature)
+    source = _end(values, rows, threshold, sigma, at=rows.source, other=rows.drain)
+    drain = _end(values, rows, threshold, sigma, at=rows.drain, other=rows.source)
+    forward, forward_slope, _ = _normalised(source.drive, velocity)
+    reverse, reverse_slope, _ = _normalised(drain.drive, velocity)
+    net = np.maximum(forward - reverse, _LEAST)
+    across = sigma / rows.thermal
+    stretch = values[AT["length_modulation"]] / length
+    stretch = stretch / np.maximum(1.0 + stretch * rows.across, 1e-3)
+    by_gate = -(forward_slope * source.threshold - reverse_slope * drain.threshold) / net
+    by_source = (forward_slope * source.own - reverse_slope * across) / net - stretch
+    by_drain = (forward_slope * across - reverse_slope * drain.own) / net + stretch
+    return np.asarray(by_gate), np.asarray(by_source), np.asarray(by_drain)
+
+
 def forward_inversion(values: Array, rows: Rows, reference: Reference) -> Array:
     """i(q_s), the inversion at the source end: I_D/I_spec of the same device in saturation. [-], shape (rows,)
 
@@ -184,8 +211,11 @@ def _end(values: Array, rows: Rows, threshold: Array, sigma: Array, *, at: Array
     by_excess = (-2.0 * at / (1.0 + bend) - above / (factor * bend)) * unit
     bend_slope = at / (2.0 * bend)
     by_potential = excess * bend_slope * (2.0 * at / (1.0 + bend) ** 2 + above / (factor * bend**2)) * unit
+    turning = values[AT["inverse_potential"]] / (2.0 * bend)
+    above_slope = -1.0 - 2.0 * excess / (1.0 + bend) + 2.0 * excess * at * turning / (1.0 + bend) ** 2
     return _End(
         drive=np.asarray(above * unit + sigma * other / thermal),
+        own=np.asarray((above_slope + above * excess * turning / (factor * bend**2)) * unit),
         kappa=np.asarray(-by_excess / kappa**2),
         threshold=-unit,
         coupling=np.asarray(other / thermal),

@@ -6,6 +6,7 @@ Length: one entry a key, read as a table; a second file would only hide half of 
 from __future__ import annotations
 
 from worksheet.model import dimension as dim
+from worksheet.model.fitted_keys import FITTED
 from worksheet.model.keys import Key, Kind, Table
 
 DEVICE_PARAMETERS = (
@@ -404,6 +405,7 @@ PROCESS = Table(
             entry=Table("", "A corner.", entry=CORNER, names="a device"),
             names="a corner",
         ),
+        Table("fitted", FITTED.help, entry=FITTED, names="a device"),
     ),
 )
 """The whole process file."""

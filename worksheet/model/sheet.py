@@ -5,6 +5,7 @@ from __future__ import annotations
 import datetime
 from collections.abc import Mapping
 from dataclasses import dataclass, field
+from typing import Any
 
 from worksheet.model.formula import Formula
 
@@ -175,7 +176,10 @@ class DeviceModel:
 
 @dataclass(frozen=True, slots=True)
 class Process:
-    """A process file. `corners[corner][device][change]` is an SI value; "typical" has none."""
+    """A process file. `corners[corner][device][change]` is an SI value; "typical" has none.
+
+    `fitted[device]` maps a key of fitted_keys.FITTED to its SI value, text or date, for devices that were fitted.
+    """
 
     name: str
     file: str
@@ -183,6 +187,7 @@ class Process:
     reference_temperature: float
     devices: Mapping[str, DeviceModel]
     corners: Mapping[str, Mapping[str, Mapping[str, float]]]
+    fitted: Mapping[str, Mapping[str, Any]] = field(default_factory=dict)
     lines: Mapping[str, int] = field(default_factory=dict, compare=False)
 
 

@@ -13,6 +13,7 @@ from worksheet.model import dimension as dim
 from worksheet.model.quantity import format_quantity
 from worksheet.model.sheet_keys import GEOMETRY
 from worksheet.project.case import Case
+from worksheet.review.fitted_range import outside_fit
 from worksheet.review.results import Note
 
 _FAR_BEYOND_POLE = 2.0
@@ -29,6 +30,7 @@ def of_points(solution: NumericSolution, case: Case, spread: Callable[[Array], A
     yield from _reverse_shares(solution, case, spread)
     yield from _feed_through(solution, spread)
     yield from _off_grid(case)
+    yield from outside_fit(solution, case, spread)
     if solution.inputs.circuit.driven_through_resistance and solution.inputs.step_size is not None:
         yield Note(
             "settling_time",

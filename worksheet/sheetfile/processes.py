@@ -6,6 +6,7 @@ from collections.abc import Mapping
 from types import MappingProxyType
 from typing import Any
 
+from worksheet.model.fitted_keys import FITTED
 from worksheet.model.keys import Key, Table
 from worksheet.model.process_keys import CORNER, DEVICE, PROCESS
 from worksheet.model.sheet import DeviceModel, Process, Value
@@ -30,6 +31,7 @@ def build(reader: Reader, source: Source, name: str) -> Process | None:
     fields = table(reader, PROCESS, data, "")
     devices = _devices(reader, data)
     corners = _corners(reader, data, devices)
+    fitted = _fitted(reader, data, devices)
     if reader.problems:
         return None
     return Process(
@@ -39,6 +41,7 @@ def build(reader: Reader, source: Source, name: str) -> Process | None:
         reference_temperature=fields["reference_temperature"],
         devices=MappingProxyType(devices),
         corners=MappingProxyType({TYPICAL: MappingProxyType({}), **corners}),
+        fitted=MappingProxyType(fitted),
         lines=MappingProxyType(source.places.lines),
     )
 
@@ -135,10 +138,27 @@ def _corners(reader: Reader, data: Mapping[str, Any], devices: Mapping[str, Devi
         for device, change in changes.items():
             place = below(where, device)
             if device not in devices:
-                near = nearest(device, devices)
-                hint = f"did you mean {near}?" if near else f"expected one of {', '.join(devices) or 'the devices'}."
-                reader.report(place, f"Found the device {found(device)}, which has no table [device.…]; {hint}")
+                _no_device(reader, place, device, devices)
                 continue
             moved[device] = MappingProxyType(table(reader, CORNER, subtable(reader, change, place), place))
         corners[name] = MappingProxyType(moved)
     return corners
+
+
+def _fitted(reader: Reader, data: Mapping[str, Any], devices: Mapping[str, DeviceModel]) -> dict[str, Any]:
+    """Every [fitted.DEVICE]."""
+    fitted = {}
+    for device, raw in subtable(reader, data.get(FITTED.name, {}), FITTED.name).items():
+        place = below(FITTED.name, device)
+        if device not in devices:
+            _no_device(reader, place, device, devices)
+        else:
+            fitted[device] = MappingProxyType(table(reader, FITTED, subtable(reader, raw, place), place))
+    return fitted
+
+
+def _no_device(reader: Reader, place: str, device: str, devices: Mapping[str, DeviceModel]) -> None:
+    """Say that a table speaks of a device that is not there."""
+    near = nearest(device, devices)
+    hint = f"did you mean {near}?" if near else f"expected one of {', '.join(devices) or 'the devices'}."
+    reader.report(place, f"Found the device {found(device)}, which has no table [device.…]; {hint}")
