@@ -102,8 +102,9 @@ def dotted(parts: Iterable[str | int]) -> str:
 
 def below(key: str, part: str | int) -> str:
     """The dotted key of something inside `key` ("" for the document)."""
-    name = part if isinstance(part, str) and _BARE.fullmatch(part) else _quoted(part)
-    return f"{key}.{name}" if key else name
+    plain = isinstance(part, str) and ((part.isascii() and part.isidentifier()) or _BARE.fullmatch(part))
+    name = part if plain else _quoted(part)
+    return f"{key}.{name}" if key else str(name)
 
 
 def parent(key: str) -> str:

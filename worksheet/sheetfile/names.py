@@ -20,6 +20,7 @@ from worksheet.stages.stage import Stage
 _LABEL = re.compile(r"[^\W_]\w*(?:[-.]\w+)*|_\w+")
 _OWN = re.compile(r"[A-Za-z_][A-Za-z0-9_]*")
 _NUMBERS = ("bias", "assume", "choose", "solve")  # tables whose keys a formula reads, or looks as if it read
+_FIXED = frozenset(key.name for table in SHEET.tables if table.name in _NUMBERS for key in table.keys)
 _LONGEST = 100
 
 
@@ -46,15 +47,9 @@ def own_name_problem(name: str) -> str | None:
         return "it shadows the metric of that name"
     if not _OWN.fullmatch(name) or not is_identifier(name) or len(name) > _LONGEST:
         return "expected letters, digits and underscores, not beginning with a digit, no Python keyword"
-    if name in number_keys():
+    if name in _FIXED or any(name in keys for keys in stage_keys().values()):
         return "it shadows the key of that name"
     return None
-
-
-def number_keys() -> frozenset[str]:
-    """Every key that stands for a number of a sheet, the design variables of every stage included."""
-    fixed = (key.name for table in SHEET.tables if table.name in _NUMBERS for key in table.keys)
-    return frozenset(fixed).union(*stage_keys().values())
 
 
 def stage_keys() -> Mapping[str, frozenset[str]]:

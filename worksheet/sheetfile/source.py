@@ -103,11 +103,6 @@ def decode(content: bytes, shown: str) -> str | Problem:
             return Problem(shown, 1, "", "Found UTF-16, expected UTF-8: save the file as UTF-8.")
         found = f"the byte 0x{content[error.start]:02x}"
         return Problem(shown, line, "", f"Found {found}, expected UTF-8 text: save the file as UTF-8.")
-    zero = text.find("\0")
-    if zero >= 0:
-        return Problem(
-            shown, text.count("\n", 0, zero) + 1, "", "Found a zero byte, expected text: is this a TOML file?"
-        )
     return text
 
 
@@ -121,6 +116,10 @@ def parse(text: str, shown: str) -> Source | list[Problem]:
     text = text.removeprefix(BYTE_ORDER_MARK)
     if len(text) > LARGEST:
         return [_too_large(shown, len(text))]
+    zero = text.find("\0")
+    if zero >= 0:
+        line = text.count("\n", 0, zero) + 1
+        return [Problem(shown, line, "", "Found a zero byte, expected text: is this a TOML file?")]
     conflicts = _conflicts(text, shown)
     if conflicts:
         return conflicts

@@ -161,8 +161,8 @@ def read_evidence(
 ) -> tuple[Evidence, ...]:
     """Every [[evidence]]."""
     evidence = []
+    known = {**{metric.key: metric.dimension for metric in metrics.all_metrics()}, **targets}
     for entry, where in _entries(reader, EVIDENCE, data):
-        known = {**{metric.key: metric.dimension for metric in metrics.all_metrics()}, **targets}
         subject = entry.get("metric")
         reason = stage.absent_metric(subject) if stage and isinstance(subject, str) and subject not in targets else None
         if reason:
