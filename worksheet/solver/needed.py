@@ -11,7 +11,7 @@ from worksheet.solver import conflict, propose, ranges
 from worksheet.solver.results import Conflict, Solved, Window
 from worksheet.solver.subject import Subject, scalar
 from worksheet.solver.trials import Trials, holds
-from worksheet.solver.variables import Variable, inversion, square_current, variables
+from worksheet.solver.variables import INVERSION, Variable, inversion, on_request, square_current, variables
 from worksheet.solver.windows import window
 
 
@@ -71,6 +71,8 @@ def line_of(
     def alone(values: Array) -> Mapping[str, Array]:
         return {variable.name: values}
 
+    if variable.name == INVERSION.name:
+        return _by_inversion(subject)
     if variable.name != "bias_current":
         return alone, (variable.low, variable.high), ""
     if subject.sheet.solve.keep != "inversion":
@@ -83,6 +85,29 @@ def line_of(
 
     width = variables(subject)["width"]
     return with_width, (width.low / per_width, width.high / per_width), "inversion"
+
+
+def _by_inversion(subject: Subject) -> tuple[Callable[[Array], Mapping[str, Array]], tuple[float, float], str]:
+    """The axis of the inversion coefficient: current and length held, the width follows."""
+    times = scalar(subject.value("bias_current")) * scalar(subject.value("length")) / square_current(subject)
+
+    def with_width(values: Array) -> Mapping[str, Array]:
+        return {"width": times / values}
+
+    width = variables(subject)["width"]
+    return with_width, (times / width.high, times / width.low), ""
+
+
+def window_of(trials: Trials, name: str) -> Window | None:
+    """The window of one design variable, or on request of the inversion coefficient, an assumption or an own name.
+
+    Raises: KeyError where the sheet has nothing of that name.
+    """
+    variable = variables(trials.subject).get(name) or on_request(trials.subject, name)
+    if variable is None:
+        raise KeyError(name)
+    line, ends, keep = line_of(trials.subject, variable)
+    return window(trials, variable, line, ends, keep)
 
 
 def _present_meets(trials: Trials) -> bool:

@@ -72,7 +72,8 @@ class Trials:
         """
         self.subject = subject
         self.over = over
-        self._vertices = dict(vertices) if over == "all" else {}
+        self.vertices = dict(vertices) if over == "all" else {}
+        self.waived = tuple(waived)
         targets = [t for t in subject.sheet.targets.values() if t.name not in waived]
         self.constraints: tuple[Constraint, ...] = (
             *(
@@ -92,7 +93,7 @@ class Trials:
 
     def points(self) -> tuple[int, int]:
         """(ends of ranges, conditions) that are solved for one trial."""
-        return max((len(v) for v in self._vertices.values()), default=1), len(self.subject.conditions)
+        return max((len(v) for v in self.vertices.values()), default=1), len(self.subject.conditions)
 
     def condition(self, point: int) -> Condition:
         """The condition of a point."""
@@ -105,7 +106,7 @@ class Trials:
             moves: Values by name, each of shape (trials,).
         """
         shaped = {name: np.asarray(v)[:, None, None] for name, v in moves.items()}
-        moved = self.subject.moved({**self._vertices, **shaped})
+        moved = self.subject.moved({**self.vertices, **shaped})
         return moved, moved.solution
 
     def clear(self, moves: Mapping[str, Array], only: Sequence[int] | None = None) -> Cleared:

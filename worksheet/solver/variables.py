@@ -2,16 +2,20 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 from worksheet.model.keys import Key
 from worksheet.model.sheet import DeviceModel
-from worksheet.model.sheet_keys import GEOMETRY
+from worksheet.model.quantity import parse
+from worksheet.model.sheet_keys import GEOMETRY, OWN, SOLVE_KEYS
 from worksheet.solver.subject import Subject, scalar
 
 _CURRENT_SPAN = (1e-6, 1e6)
 _CAPACITANCE_SPAN = (1e-6, 1e6)
 _LEAST_CAPACITANCE = 1e-15
+
+INVERSION = next(key for key in SOLVE_KEYS if key.name == "inversion_coefficient")
+"""The main device's inversion coefficient as a variable: the current is held and the width follows."""
 
 
 @dataclass(frozen=True, slots=True)
@@ -64,6 +68,36 @@ def variables(subject: Subject) -> dict[str, Variable]:
                 key, present, size * _CAPACITANCE_SPAN[0], size * _CAPACITANCE_SPAN[1], bounded=False
             )
     return found
+
+
+def on_request(subject: Subject, name: str) -> Variable | None:
+    """The inversion coefficient, an assumption or an own name as a variable; None where there is none of that name.
+
+    An assumption that stands at 0 has no decades around it and is looked at from far below to its usual size.
+    """
+    if name == INVERSION.name:
+        present = inversion(subject)
+        return Variable(INVERSION, present, present * 1e-6, present * 1e6, bounded=False)
+    key = next((k for k in subject.stage.assumption_keys(subject.sheet.bulk) if k.name == name and not k.listed), None)
+    if key is None and name in subject.sheet.own:
+        key = replace(OWN, name=name, title=name, symbol=name)
+    if key is None or (subject.stated(name) is None and key.default is None):
+        return None
+    present = scalar(subject.value(name))
+    size = abs(present) or _typical(key)
+    low = max(size * 1e-6, (key.low or 0.0) * (1 + 1e-12))
+    high = size * 1e6 if key.high is None else min(size * 1e6, key.high * (1 - 1e-12))
+    return Variable(key, present, low, high, bounded=False)
+
+
+def _typical(key: Key) -> float:
+    """The size of the example that the key is described with. [unit of the key]"""
+    if key.dimension is None or not key.example:
+        return 1.0
+    try:
+        return abs(parse(float(key.example) if key.dimension.plain else key.example, key.dimension)) or 1.0
+    except ValueError:
+        return 1.0
 
 
 def shortest_coupled(subject: Subject, model: DeviceModel) -> float:
