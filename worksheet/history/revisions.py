@@ -9,6 +9,7 @@ from __future__ import annotations
 
 import datetime
 import os
+import re
 from collections.abc import Iterator, Mapping, Sequence
 from dataclasses import dataclass
 from types import MappingProxyType
@@ -26,6 +27,7 @@ LARGEST_WHOLE = 500_000_000
 
 _LAYOUT = "%x00%H%x00%aI%x00%cI%x00%an%x00%B"
 _FIELDS = 5
+_ID = re.compile(rb"[0-9a-f]{40}(?:[0-9a-f]{24})?")
 _BATCH = 100  # revisions whose files are read at once
 
 
@@ -164,20 +166,27 @@ def _unknown(name: str) -> Refused:
 def _commits(output: bytes) -> Iterator[tuple[list[str], list[str]]]:
     """Take the output of the log apart: the fields and the changed paths of each commit.
 
-    Every field ends with a zero byte and no path is empty, so whatever a message holds, nothing can be mistaken.
+    The fields have a fixed number and end with zero bytes. What separates the paths differs between merges and other
+    commits, but no path below a part of a project could be an id: so whatever a message holds, nothing is mistaken.
     """
     parts = output.split(b"\0")
+    fields: list[str] = []
+    names: list[str] = []
     place, end = 0, len(parts)
     while place < end:
-        if not parts[place]:
-            place += 1
+        if _ID.fullmatch(parts[place]):
+            if fields:
+                yield fields, names
+            fields = [part.decode("utf-8", "replace") for part in parts[place : place + _FIELDS]]
+            names = []
+            place += _FIELDS
+            if place < end:
+                parts[place] = parts[place].removeprefix(b"\n")
             continue
-        fields = [part.decode("utf-8", "replace") for part in parts[place : place + _FIELDS]]
-        place += _FIELDS
-        names = []
-        while place < end and parts[place]:
-            names.append(os.fsdecode(parts[place].removeprefix(b"\n")))
-            place += 1
+        if parts[place]:
+            names.append(os.fsdecode(parts[place]))
+        place += 1
+    if fields:
         yield fields, names
 
 
