@@ -8,11 +8,12 @@ import numpy as np
 
 from worksheet.device.arrays import Array
 from worksheet.solver import conflict, propose, ranges
+from worksheet.solver import windows as window
 from worksheet.solver.results import Conflict, Solved, Window
 from worksheet.solver.subject import Subject, scalar
 from worksheet.solver.trials import Trials, holds
 from worksheet.solver.variables import INVERSION, Variable, inversion, on_request, square_current, variables
-from worksheet.solver.windows import window
+from worksheet.solver.windows import Axis
 
 
 def trials_of(subject: Subject, over: str | None = None) -> Trials:
@@ -54,13 +55,23 @@ def solve(subject: Subject, over: str | None = None) -> Solved:
 
 def windows(trials: Trials) -> Mapping[str, Window]:
     """The window of every design variable that some target bounds, with the others held."""
-    found = {}
-    for name, variable in variables(trials.subject).items():
-        line, ends, keep = line_of(trials.subject, variable)
-        region = window(trials, variable, line, ends, keep)
-        if region is not None:
-            found[name] = region
-    return found
+    axes = [axis_of(trials.subject, variable) for variable in variables(trials.subject).values()]
+    followed = [axis for axis in axes if _follows(trials.subject, axis.variable.name)]
+    plain = [axis for axis in axes if axis not in followed]
+    batches = [plain, *([axis] for axis in followed)] if plain else [[axis] for axis in followed]
+    found = {w.name: w for batch in batches for w in window.windows(trials, batch) if w is not None}
+    return {axis.variable.name: found[axis.variable.name] for axis in axes if axis.variable.name in found}
+
+
+def _follows(subject: Subject, name: str) -> bool:
+    """Whether a variable's value is a formula, which others moving would change."""
+    stated = subject.stated(name)
+    return stated is not None and stated.formula is not None
+
+
+def axis_of(subject: Subject, variable: Variable) -> Axis:
+    """A variable's axis: what moves along it, how far it goes, and for the bias current what is kept."""
+    return Axis(variable, *line_of(subject, variable))
 
 
 def line_of(
@@ -106,8 +117,7 @@ def window_of(trials: Trials, name: str) -> Window | None:
     variable = variables(trials.subject).get(name) or on_request(trials.subject, name)
     if variable is None:
         raise KeyError(name)
-    line, ends, keep = line_of(trials.subject, variable)
-    return window(trials, variable, line, ends, keep)
+    return window.windows(trials, [axis_of(trials.subject, variable)])[0]
 
 
 def _present_meets(trials: Trials) -> bool:

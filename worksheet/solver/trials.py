@@ -24,6 +24,7 @@ SATURATION, MAX_VOLTAGE, PROCESS = "saturation", "max_voltage", "process"
 """What sets an end of a window besides a target."""
 
 Mask = NDArray[np.bool_]
+Index = NDArray[np.intp]
 
 _VALIDITY = {"saturation": SATURATION, "range": SATURATION, "max_voltage": MAX_VOLTAGE}
 
@@ -50,7 +51,7 @@ class Cleared:
     """
 
     slack: Array
-    worst: Array
+    worst: Index
 
     @property
     def least(self) -> Array:
@@ -149,8 +150,13 @@ class Trials:
 
 def holds(constraints: Sequence[Constraint], slack: Array) -> Mask:
     """Where constraints count as met: within the verdict's tolerance, exactly for a limit of 0. Shape of `slack`."""
-    tolerances = np.array([_tolerance(c) for c in constraints])
-    return np.asarray(slack >= -tolerances.reshape(-1, *([1] * (slack.ndim - 1))), dtype=np.bool_)
+    allowed = tolerances(constraints).reshape(-1, *([1] * (slack.ndim - 1)))
+    return np.asarray(slack >= -allowed, dtype=np.bool_)
+
+
+def tolerances(constraints: Sequence[Constraint]) -> Array:
+    """How far below zero the slack of each constraint may be. [-]"""
+    return np.array([_tolerance(c) for c in constraints])
 
 
 def _tolerance(constraint: Constraint) -> float:

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable, Mapping
+from collections.abc import Callable, Mapping, Sequence
 from dataclasses import dataclass
 
 import numpy as np
@@ -10,7 +10,8 @@ import numpy as np
 from worksheet.device.arrays import Array
 from worksheet.solver import goals
 from worksheet.solver.results import Bound, Region, Window
-from worksheet.solver.trials import PROCESS, Mask, Trials, holds
+from worksheet.solver.subject import scalar
+from worksheet.solver.trials import PROCESS, Index, Mask, Trials, holds, tolerances
 from worksheet.solver.variables import Variable
 
 Line = Callable[[Array], Mapping[str, Array]]
@@ -18,8 +19,36 @@ Line = Callable[[Array], Mapping[str, Array]]
 
 _A_DECADE = 12
 _LEAST, _MOST = 40, 120
-_ROUNDS = 60
-_CLOSE = 1e-13
+_ROUNDS = 80
+_CLOSE = 2e-13
+_MET_BY = 2e-9
+_PROBE = 1e-8
+
+
+@dataclass(frozen=True, eq=False, slots=True)
+class Axis:
+    """One variable's axis.
+
+    Attributes:
+        variable: The variable.
+        line: The moves that go with its values.
+        ends: How far it can go. [unit of the variable]
+        keep: For the bias current, what is kept; "" else.
+    """
+
+    variable: Variable
+    line: Line
+    ends: tuple[float, float]
+    keep: str = ""
+
+    def places(self) -> Array:
+        """Values to look at: even in the logarithm, the present one among them."""
+        low, high = self.ends
+        count = int(np.clip(_A_DECADE * np.log10(high / low), _LEAST, _MOST))
+        xs = np.geomspace(low, high, count)
+        if low < self.variable.present < high:
+            xs = np.unique(np.append(xs, self.variable.present))
+        return xs
 
 
 @dataclass(frozen=True, eq=False, slots=True)
@@ -33,31 +62,49 @@ class Crossing:
     edge: bool
 
 
-def window(trials: Trials, variable: Variable, line: Line, ends: tuple[float, float], keep: str = "") -> Window | None:
-    """The window of one variable with the others held.
+def windows(trials: Trials, axes: Sequence[Axis]) -> list[Window | None]:
+    """The windows of several variables, each with the others held, looked for in one batch.
 
     Args:
         trials: The sheet's constraints.
-        variable: The variable.
-        line: The moves that go with its values.
-        ends: How far it can go, in its own unit.
-        keep: For the bias current, what is kept.
-    Returns: Window, None where no target bounds this variable
+        axes: The variables. Where there are several, none of them may follow a formula.
+    Returns: a Window each, None where no target bounds the variable
     """
-    xs = _axis(variable, ends)
-    met = holds(trials.constraints, trials.clear(line(xs)).slack)
-    crossings = _crossings(trials, line, xs, met)
-    bounds = tuple(
-        _bound(trials, variable, line, c) for c in crossings if trials.constraints[c.constraint].target is not None
-    )
+    line = _Lines(trials, axes)
+    places = [axis.places() for axis in axes]
+    owner = np.repeat(np.arange(len(axes)), [len(xs) for xs in places])
+    met = holds(trials.constraints, trials.clear(line(owner, np.concatenate(places))).slack)
+    parts = [np.asarray(met[:, owner == k]) for k in range(len(axes))]
+    crossings = _crossings(trials, line, places, parts)
+    return [_window(trials, axis, mask, found) for axis, mask, found in zip(axes, parts, crossings, strict=True)]
+
+
+class _Lines:
+    """Moves for places on several axes: what one axis moves stands still on the others."""
+
+    def __init__(self, trials: Trials, axes: Sequence[Axis]) -> None:
+        self._axes = axes
+        names = dict.fromkeys(name for axis in axes for name in axis.line(np.array([axis.ends[0]])))
+        self._still = {name: scalar(trials.subject.value(name)) for name in names} if len(axes) > 1 else {}
+
+    def __call__(self, owner: Index, values: Array) -> dict[str, Array]:
+        moves = {name: np.full(len(values), present) for name, present in self._still.items()}
+        for k, axis in enumerate(self._axes):
+            mine = owner == k
+            for name, moved in axis.line(values[mine]).items():
+                moves.setdefault(name, np.zeros(len(values)))[mine] = moved
+        return moves
+
+
+def _window(trials: Trials, axis: Axis, met: Mask, crossings: list[Crossing]) -> Window | None:
+    variable = axis.variable
+    bounds = tuple(_bound(trials, axis, c) for c in crossings if trials.constraints[c.constraint].target is not None)
     if not bounds:
         return None
     reachable: Mask = np.asarray(met.any(axis=1))
-    helped = [k for k in range(len(trials.constraints)) if reachable[k]]
     never = [k for k in range(trials.target_count) if not reachable[k]]
-    regions = _regions(trials, variable, xs, met, helped, crossings, ends)
-    if not all(reachable[trials.target_count :]):
-        regions = []
+    helped = [k for k in range(len(trials.constraints)) if reachable[k]]
+    regions = _regions(trials, axis, met, helped, crossings) if reachable[trials.target_count :].all() else []
     nearest = min(regions, key=lambda r: _distance(r, variable.present), default=None)
     return Window(
         name=variable.name,
@@ -67,73 +114,78 @@ def window(trials: Trials, variable: Variable, line: Line, ends: tuple[float, fl
         also=tuple(r for r in regions if r is not nearest),
         bounds=bounds,
         cannot_help=tuple(dict.fromkeys(trials.constraints[k].name for k in never)),
-        keep=keep,
+        keep=axis.keep,
     )
 
 
-def _axis(variable: Variable, ends: tuple[float, float]) -> Array:
-    """Values to look at: even in the logarithm, the present one among them."""
-    low, high = ends
-    count = int(np.clip(_A_DECADE * np.log10(high / low), _LEAST, _MOST))
-    xs = np.geomspace(low, high, count)
-    if low < variable.present < high:
-        xs = np.unique(np.append(xs, variable.present))
-    return xs
-
-
-def _crossings(trials: Trials, line: Line, xs: Array, met: Mask) -> list[Crossing]:
-    """Every change of every constraint along the axis, refined all at once by bisection in the logarithm."""
-    rows, places = np.nonzero(met[:, 1:] != met[:, :-1])
-    if not len(rows):
-        return []
-    low, high = np.log(xs[places]), np.log(xs[places + 1])
-    met_high = met[rows, places + 1]
+def _crossings(trials: Trials, line: _Lines, places: Sequence[Array], met: Sequence[Mask]) -> list[list[Crossing]]:
+    """Every change of every constraint along every axis, refined all at once."""
+    changes = [np.nonzero(mask[:, 1:] != mask[:, :-1]) for mask in met]
+    owner = np.repeat(np.arange(len(met)), [len(rows) for rows, _ in changes])
+    found: list[list[Crossing]] = [[] for _ in met]
+    if not len(owner):
+        return found
+    rows = np.concatenate([rows for rows, _ in changes])
+    low = np.log(np.concatenate([xs[at] for xs, (_, at) in zip(places, changes, strict=True)]))
+    high = np.log(np.concatenate([xs[at + 1] for xs, (_, at) in zip(places, changes, strict=True)]))
+    rising: Mask = np.concatenate([mask[which, at + 1] for mask, (which, at) in zip(met, changes, strict=True)])
     needed = sorted(set(rows.tolist()))
     index = np.searchsorted(needed, rows)
-    pick = [trials.constraints[k] for k in needed]
+    allowed = tolerances(trials.constraints)[rows]
 
-    def look(x: Array) -> tuple[Array, Mask, Array]:
-        cleared = trials.clear(line(np.exp(x)), needed)
+    def look(x: Array) -> tuple[Array, Index]:
+        cleared = trials.clear(line(owner, np.exp(x)), needed)
         at = np.arange(len(x))
-        return cleared.slack[index, at], holds(pick, cleared.slack)[index, at], cleared.worst[index, at]
+        return cleared.slack[index, at] + allowed, np.asarray(cleared.worst[index, at])
 
-    ends = _refined(look, low, high, met_high)
-    value = np.where(met_high, np.exp(ends[1]), np.exp(ends[0]))
-    slack, _, point = look(np.log(value))
-    edge = np.abs(np.where(met_high, look(ends[0])[0], look(ends[1])[0])) >= goals.FAR
-    edge |= np.abs(slack) >= goals.FAR
-    return [
-        Crossing(int(rows[k]), float(value[k]), int(point[k]), bool(met_high[k]), bool(edge[k]))
-        for k in range(len(rows))
-    ]
+    low, high, gap_low, gap_high = _refined(look, low, high, rising)
+    chosen = np.where(rising, high, low)
+    _, point = look(chosen)
+    edge = np.maximum(np.abs(gap_low), np.abs(gap_high)) >= 0.5 * goals.FAR
+    for k, axis in enumerate(owner):
+        item = Crossing(int(rows[k]), float(np.exp(chosen[k])), int(point[k]), bool(rising[k]), bool(edge[k]))
+        found[int(axis)].append(item)
+    return found
 
 
 def _refined(
-    look: Callable[[Array], tuple[Array, Mask, Array]], low: Array, high: Array, met_high: Mask
-) -> tuple[Array, Array]:
-    """Both ends of every bracket drawn together: false position on the slack (Illinois), bisection where it stalls."""
-    f_low, f_high = look(low)[0], look(high)[0]
+    look: Callable[[Array], tuple[Array, Index]], low: Array, high: Array, rising: Mask
+) -> tuple[Array, Array, Array, Array]:
+    """Both ends of every bracket drawn together by false position on the slack (Illinois), bisection where it stalls.
+
+    Returns: low, high, and the slack at both
+    """
+    gap_low, gap_high = look(low)[0], look(high)[0]
+    plain_low, plain_high = gap_low, gap_high
     last = np.zeros(len(low))
     for k in range(_ROUNDS):
-        if np.all(high - low <= _CLOSE * np.maximum(1.0, np.abs(low))):
+        met_end, met_gap = np.where(rising, high, low), np.where(rising, gap_high, gap_low)
+        width = high - low
+        near = np.abs(met_gap) <= _MET_BY
+        done = (near & (width <= 2 * _PROBE)) | (width <= _CLOSE * np.maximum(1.0, np.abs(low)))
+        if done.all():
             break
         with np.errstate(all="ignore"):
-            middle = (low * f_high - high * f_low) / (f_high - f_low)
-        plain = ~np.isfinite(middle) | (middle <= low) | (middle >= high) | (k % 4 == 3)
-        plain |= (np.abs(f_low) >= goals.FAR) | (np.abs(f_high) >= goals.FAR)
-        middle = np.where(plain, 0.5 * (low + high), middle)
-        slack, met, _ = look(middle)
-        above = met == met_high
-        f_low = np.where(above, np.where(last > 0, f_low / 2, f_low), slack)
-        f_high = np.where(above, slack, np.where(last < 0, f_high / 2, f_high))
-        low, high = np.where(above, low, middle), np.where(above, middle, high)
-        last = np.where(above, 1.0, -1.0)
-    return low, high
+            middle = (low * plain_high - high * plain_low) / (plain_high - plain_low)
+        middle = np.where(near, met_end + np.where(rising, -_PROBE, _PROBE), middle)
+        stuck = ~np.isfinite(middle) | (middle <= low) | (middle >= high) | (k % 5 == 4)
+        stuck |= np.maximum(np.abs(gap_low), np.abs(gap_high)) >= 0.5 * goals.FAR
+        middle = np.where(done, met_end, np.where(stuck, 0.5 * (low + high), middle))
+        gap = look(middle)[0]
+        above = (gap >= 0) == rising
+        to_high, to_low = above & ~done, ~above & ~done
+        plain_low = np.where(to_low, gap, np.where(to_high & (last > 0), plain_low / 2, plain_low))
+        plain_high = np.where(to_high, gap, np.where(to_low & (last < 0), plain_high / 2, plain_high))
+        low, gap_low = np.where(to_low, middle, low), np.where(to_low, gap, gap_low)
+        high, gap_high = np.where(to_high, middle, high), np.where(to_high, gap, gap_high)
+        last = np.where(done, last, np.where(above, 1.0, -1.0))
+    return low, high, gap_low, gap_high
 
 
-def _bound(trials: Trials, variable: Variable, line: Line, crossing: Crossing) -> Bound:
+def _bound(trials: Trials, axis: Axis, crossing: Crossing) -> Bound:
     constraint = trials.constraints[crossing.constraint]
-    moves = {name: float(v[0]) for name, v in line(np.array([crossing.value])).items() if name != variable.name}
+    moved = axis.line(np.array([crossing.value]))
+    moves = {name: float(v[0]) for name, v in moved.items() if name != axis.variable.name}
     return Bound(
         target=constraint.name,
         side="low" if crossing.met_above else "high",
@@ -146,16 +198,9 @@ def _bound(trials: Trials, variable: Variable, line: Line, crossing: Crossing) -
     )
 
 
-def _regions(
-    trials: Trials,
-    variable: Variable,
-    xs: Array,
-    met: Mask,
-    helped: list[int],
-    crossings: list[Crossing],
-    ends: tuple[float, float],
-) -> list[Region]:
+def _regions(trials: Trials, axis: Axis, met: Mask, helped: list[int], crossings: list[Crossing]) -> list[Region]:
     """Intervals where all of `helped` hold, built from the refined crossings."""
+    variable, ends = axis.variable, axis.ends
     changes = sorted((c for c in crossings if c.constraint in helped), key=lambda c: c.value)
     unmet = {k for k in helped if not met[k, 0]}
     process = PROCESS if variable.bounded or ends != (variable.low, variable.high) else None
