@@ -1,0 +1,75 @@
+"""A bound put back into the sheet makes its target just met in the worst condition, whatever stage, metric and unknown."""
+
+from __future__ import annotations
+
+import random
+from copy import deepcopy
+from pathlib import Path
+
+import numpy as np
+import pytest
+
+from tests.documents import Document
+from tests.precision.draw import draw
+from tests.solver.drawn import KINDS, case_of, with_targets
+from worksheet.solver import needed
+from worksheet.solver.results import Bound
+
+JUST_MET = 1e-6
+
+
+def put_back(sheet: Document, name: str, bound: Bound) -> Document:
+    """The sheet as a user would edit it: the variable at its bound, and what moves with it."""
+    moved = deepcopy(sheet)
+    for key, value in {name: bound.value, **bound.moves_with}.items():
+        table = "assume" if key in moved["assume"] else "choose"
+        moved[table][key] = value
+    return moved
+
+
+def check(seed: int, kind: tuple[str, str, str], folder: Path, keep: str) -> int:
+    rng = random.Random(seed)
+    documents = draw(rng, *kind, want_invalid=False)
+    sheet = with_targets(rng, folder, documents)
+    if sheet is None:
+        return 0
+    sheet["solve"] = {"keep": keep}
+    case = case_of(folder, (documents[0], documents[1], sheet))
+    assert case is not None
+    checked = 0
+    for name, window in needed.windows(needed.trials_of(case)).items():
+        for bound in window.bounds:
+            again = case_of(folder, (documents[0], documents[1], put_back(sheet, name, bound)))
+            if again is None:  # the bound's end lies a rounding beyond a process limit
+                continue
+            trials = needed.trials_of(again)
+            index = next(
+                k
+                for k, c in enumerate(trials.constraints)
+                if c.name == bound.target and c.side == ("low" if bound.limit == "min" else "high")
+            )
+            slack = trials.clear({"load_capacitance": np.array([float(np.ravel(again.value("load_capacitance"))[0])])}).slack
+            if bound.edge:
+                assert slack[index, 0] >= -JUST_MET, (name, bound)
+            else:
+                assert abs(slack[index, 0]) <= JUST_MET, (name, bound, slack[index, 0])
+            checked += 1
+    return checked
+
+
+@pytest.mark.parametrize("kind", KINDS, ids="-".join)
+def test_bounds_put_back(kind: tuple[str, str, str], tmp_path: Path) -> None:
+    checked = sum(check(seed, kind, tmp_path / str(seed), "geometry") for seed in range(2))
+    assert checked >= 2
+
+
+@pytest.mark.parametrize("kind", KINDS[::4], ids="-".join)
+def test_bounds_put_back_with_the_inversion_kept(kind: tuple[str, str, str], tmp_path: Path) -> None:
+    assert sum(check(seed, kind, tmp_path / str(seed), "inversion") for seed in (11, 12)) >= 2
+
+
+@pytest.mark.full
+@pytest.mark.parametrize("seed", range(100, 112))
+@pytest.mark.parametrize("kind", KINDS, ids="-".join)
+def test_bounds_put_back_at_length(kind: tuple[str, str, str], seed: int, tmp_path: Path) -> None:
+    check(seed, kind, tmp_path, random.Random(seed).choice(("geometry", "inversion")))
