@@ -156,10 +156,11 @@ def _changes(
     held = _own(repository.tree(head.commit, PARTS)) if head.commit else {}
     refused = {path: "it is none of the project's own files" for path in (*files, *deleted) if not is_own(path)}
     changed: dict[str, bytes] = {}
+    folder = repository.folder
     for path in dict.fromkeys(files):
         if path in refused:
             continue
-        content = read_own(repository.folder, path)
+        content = read_own(folder, path)
         if isinstance(content, str):
             refused[path] = content
         elif path not in held or held[path].id != _id(repository, content) or held[path].mode == "120000":

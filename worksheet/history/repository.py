@@ -218,7 +218,6 @@ class Repository:
 
         Raises: RefusedError, where git does not know.
         """
-        self.run("var", "GIT_AUTHOR_IDENT")
         name, _, rest = self.run("var", "GIT_COMMITTER_IDENT").decode("utf-8", "replace").partition(" <")
         return Person(name, rest.partition(">")[0])
 
