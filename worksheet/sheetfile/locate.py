@@ -29,7 +29,7 @@ _BARE = re.compile(r"[A-Za-z0-9_-]+")
 _PARTS = re.compile(_PART)
 _STATEMENT = re.compile(
     rf"""[ \t]*+(?:
-        (?P<blank>(?:\#[^\n]*+)?\n)
+        (?P<blank>(?:\#[^\n]*+)?(?:\n|\Z))
       | (?P<name>[A-Za-z0-9_-]++)[ \t]*+=[ \t]*+(?:{BASIC}(?!")|{LITERAL}(?!')|[^\s"'\[{{\#][^\n\#]*+){_END}
       | (?P<flat>[A-Za-z0-9_-]++)[ \t]*+=[ \t]*+\{{{_FLAT}(?:,{_FLAT})*+\}}{_END}
       | \[(?P<array>\[)?[ \t]*+(?P<header>{DOTTED})[ \t]*+\](?(array)\]){_END}
@@ -257,6 +257,8 @@ class _Scan:
         if mark in "[{":
             if holders:
                 key = self.begin(holders) or holders[-1].inner
+            if not key:
+                return -1
             if len(holders) + key.count(".") > DEEPEST:
                 raise NestedTooDeeplyError(self.line, split(key)[0])
             holders.append(_Holder(key, mark == "["))
@@ -273,6 +275,7 @@ class _Scan:
         """Enter the next key of an inline table; where its value begins."""
         found = _INLINE_KEY.match(self.text, place) if not holder.is_list else None
         if found is None:
+            holder.inner = ""
             return place
         holder.inner = self.enter(holder.key, found["key"])
         return found.end()

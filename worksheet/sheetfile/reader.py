@@ -5,7 +5,7 @@ A message has one form throughout: what was found, what was expected, and the ne
 
 from __future__ import annotations
 
-from collections.abc import Iterable
+from collections.abc import Callable, Iterable
 
 from worksheet.model.problem import Problem
 from worksheet.model.text import clean, nearest
@@ -51,17 +51,21 @@ class Reader:
         """Add a problem of the form found and expected."""
         self.report(key, f"Found {found(raw)}, expected {expected}.")
 
-    def unknown(self, where: str, name: str, known: Iterable[str], reason: str = "") -> None:
+    def unknown(self, where: str, name: str, known: Iterable[str], explain: Callable[[str], str] | None = None) -> None:
         """Add a problem about a key that does not exist there, with the nearest one that does.
 
         Args:
             where: Dotted key of the table.
             name: What was found.
             known: What would have been right.
-            reason: A sentence that explains instead of a suggestion.
+            explain: Gives a clause that stands instead of a suggestion, or "".
         """
         key = below(where, name)
-        if len(self.problems) >= MOST_PROBLEMS or reason:
+        if len(self.problems) >= MOST_PROBLEMS:
+            self.unreported += 1
+            return
+        reason = explain(name) if explain else ""
+        if reason:
             self.report(key, f"Found the key {clean(name)}, which is not taken here: {reason}.")
             return
         names = list(known)

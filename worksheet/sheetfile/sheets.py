@@ -87,10 +87,11 @@ def build(reader: Reader, source: Source, name: str) -> Sheet | None:
 
 def _top(reader: Reader, data: Mapping[str, Any]) -> dict[str, Any]:
     """The keys before the first table."""
-    strays = [key for key in data if SHEET.key(key) is None and key not in PARTS]
-    for stray in strays:
-        reader.unknown("", stray, [*(key.name for key in SHEET.keys), *PARTS], elsewhere(stray))
-    return table(reader, SHEET, {key: value for key, value in data.items() if key not in strays}, "")
+    fixed = {key.name for key in SHEET.keys}
+    for key in data:
+        if key not in fixed and key not in PARTS:
+            reader.unknown("", key, [*(one.name for one in SHEET.keys), *PARTS], elsewhere)
+    return table(reader, SHEET, {key: value for key, value in data.items() if key in fixed}, "")
 
 
 def _stage(reader: Reader, name: str | None) -> Stage | None:
@@ -111,7 +112,7 @@ def _bias(reader: Reader, data: Mapping[str, Any]) -> Bias | None:
         key = known.get(inner)
         where = below(BIAS, inner)
         if key is None:
-            reader.unknown(BIAS, inner, known, elsewhere(inner))
+            reader.unknown(BIAS, inner, known, elsewhere)
         elif not key.annotated:
             device = READERS[key.kind](reader, key, entry, where)
         else:
@@ -122,9 +123,9 @@ def _bias(reader: Reader, data: Mapping[str, Any]) -> Bias | None:
         return None
     bias = Bias(device, MappingProxyType(values))
     if not bias.ideal:
+        reason = f"it belongs to an ideal current source, and the device {clean(device)} has its own"
         for inner in values:
-            reason = f"it belongs to an ideal current source, and the device {clean(device)} has its own"
-            reader.unknown(BIAS, inner, (), reason)
+            reader.unknown(BIAS, inner, (), lambda _: reason)
     return bias
 
 
@@ -138,7 +139,7 @@ def _values(
         key = known.get(inner)
         where = below(part, inner)
         if key is None:
-            reader.unknown(part, inner, known, refusal(keys, inner, part))
+            reader.unknown(part, inner, known, lambda name: refusal(keys, name, part))
         elif key.kind is Kind.WHOLE:
             count = READERS[key.kind](reader, key, entry, where)
             if count is not None:

@@ -134,16 +134,10 @@ def parse(text: str, shown: str) -> Source | list[Problem]:
     except RecursionError:
         return [_too_deep(shown, places.stopped, places.key_at(places.stopped or 1))]
     except ValueError:  # an integer of more digits than Python converts
-        found = _HUGE_INTEGER.search(text)
-        line = text.count("\n", 0, found.start()) + 1 if found else None
-        return [
-            Problem(
-                shown,
-                line,
-                places.key_at(line or 1),
-                "Found an integer of thousands of digits, expected a number within 1e308.",
-            )
-        ]
+        huge = _HUGE_INTEGER.search(text)
+        at = text.count("\n", 0, huge.start()) + 1 if huge else 1
+        message = "Found an integer of thousands of digits, expected a number within 1e308."
+        return [Problem(shown, at, places.key_at(at), message)]
 
 
 def _broken(text: str, shown: str, places: Places, error: str) -> list[Problem]:

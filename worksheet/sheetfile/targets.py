@@ -108,10 +108,11 @@ def _target(
         if key is None:
             reader.unknown(where, inner, _KEYS)
         elif inner in _FIGURE and metric is not None:
-            reader.unknown(where, inner, (), f"{name} is a metric of its own; name a figure of yours otherwise")
+            reader.unknown(
+                where, inner, (), lambda _: f"{name} is a metric of its own; name a figure of yours otherwise"
+            )
         elif key is _YIELD and (metric is None or not metric.of_yield):
-            takes = ", ".join(one.key for one in metrics.all_metrics() if one.of_yield)
-            reader.unknown(where, inner, (), f"it is a share of parts, for {takes}")
+            reader.unknown(where, inner, (), _of_yield)
         elif inner in _LIMITS:
             fields[inner] = limit(reader, key, raw, place, dimension)
         else:
@@ -130,6 +131,11 @@ def _target(
         line=reader.places.line(where),
         **{_RENAMED.get(inner, inner): value for inner, value in fields.items()},
     )
+
+
+def _of_yield(_key: str) -> str:
+    takes = ", ".join(metric.key for metric in metrics.all_metrics() if metric.of_yield)
+    return f"it is a share of parts, for {takes}"
 
 
 def limit(reader: Reader, key: Key, raw: object, where: str, dimension: Dimension | None) -> float | None:
