@@ -237,4 +237,22 @@ def edge_cases() -> list[tuple[str, tuple[Document, Document, Document]]]:
         if name == "settled at once":
             sheet["assume"]["settling_tolerance"] = 0.4
         result.append((f"edge: {name}", (project, process, sheet)))
+    for name, stage, polarity, step in (
+        ("a step beyond the range of the output", "source-follower", "p", 1.5),
+        ("a step beyond the range of the input", "drain-follower", "n", 0.4),
+        ("a step that takes the gate below ground", "common-source", "n", 0.5),
+        ("a step that takes the gate above the supply", "cascode", "p", 0.6),
+    ):
+        project, process, sheet = draw(rng, stage, polarity, "ideal", want_invalid=False)
+        project["conditions"]["nominal"]["supply"] = 3.0
+        project["conditions"]["supply"] = [3.2]
+        for kind in process["device"].values():
+            kind.update(drain_coupling=0.02, drain_coupling_length=1e-6, max_voltage=4.0)
+        slope = 1e-5 if stage in DRAIN_OUTPUTS else 0.0
+        sheet.update(bulk="rail", bias={"device": "ideal", "output_conductance": slope})
+        sheet["assume"] = {"step_size": step, "load_capacitance": 1e-12}
+        sheet["choose"] = {"bias_current": 2e-7, "width": 1e-5, "length": 1e-6}
+        if stage == "cascode":
+            sheet["choose"].update(cascode_width=2e-5, cascode_length=1e-6)
+        result.append((f"edge: {name}", (project, process, sheet)))
     return result

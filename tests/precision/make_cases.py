@@ -46,7 +46,6 @@ def acceptable(case: Case, *, want_invalid: bool) -> bool:
     project, process, sheet = case
     if not all(1e-7 <= size <= 0.1 for key, size in sheet["choose"].items() if key.endswith("width")):
         return False
-    stepped = "step_size" in sheet["assume"]
     nominal, invalid = project["conditions"]["nominal"], 0
     try:
         for condition in conditions_of(project):
@@ -63,7 +62,7 @@ def acceptable(case: Case, *, want_invalid: bool) -> bool:
             invalid += bool(answer.validity)
     except (ArithmeticError, TypeError, ValueError):  # TypeError: a source below the body potential is complex
         return False
-    return (invalid > 0) == want_invalid and not (stepped and invalid)
+    return (invalid > 0) == want_invalid
 
 
 def recorded(value: Any) -> Any:

@@ -15,7 +15,8 @@ from mpmath import mp, mpf
 from tests.precision.reference_device import Point, Real, Transistor, transistor
 
 SOURCE_OUTPUTS = ("source-follower", "drain-follower")
-SLACK = mpf(10) ** -30
+LEVEL_DRIVEN = ("common-gate", "drain-follower")
+SLACK = mpf(10) ** -9
 
 
 class UndefinedError(ValueError):
@@ -193,38 +194,39 @@ def from_ground(b: Bench, name: str, voltage: Real) -> Real:
     return b.ground(b.supply - voltage if mirrored else voltage)
 
 
-def swing_after_step(b: Bench, main: Point, gain: Real) -> Real:
-    """How far an assumed step moves the output."""
-    if "step_size" not in b.assume:
-        return mpf(0)
-    step = mpf(b.assume["step_size"])
-    if b.stage not in SOURCE_OUTPUTS:
-        return abs(gain) * step
-    share = main.kappa if b.stage == "source-follower" else b.main.sigma
-    return share * step / ((main.kappa + b.main.sigma) if b.own_bulk else 1)
+def output_after(b: Bench, at: Levels, step: Real, gain: Real) -> Real:
+    """Where the output rests after a step at the input: by the charge law at a source, by the gain at a drain."""
+    if b.stage == "source-follower":
+        return b.main.source(at.gate + step, b.supply, bulk_on_source=b.own_bulk)
+    if b.stage == "drain-follower":
+        return b.main.source(at.gate, at.input + step, bulk_on_source=b.own_bulk)
+    return at.output + gain * step
 
 
-def validity(b: Bench, at: Levels, devices: dict[str, Point], swing: Real) -> list[dict[str, Any]]:
-    """What keeps the condition from being valid, each with how much is missing. [V]"""
-    found: list[dict[str, Any]] = []
+def validity(b: Bench, at: Levels, devices: dict[str, Point], gain: Real) -> list[dict[str, Any]]:
+    """What keeps the condition from being valid, each with the most that is missing. [V]
+
+    A gate is named by its device, a level by input or output. After an assumed step, rising and falling, the input, the
+    output and the range that moves with the input are looked at again. `gain` has its sign.
+    """
+    found: dict[tuple[str, str], Real] = {}
 
     def note(device: str, what: str, short_by: Real) -> None:
         if short_by > SLACK:
-            found.append({"device": device, "what": what, "short_by": short_by})
+            found[device, what] = max(short_by, found.get((device, what), short_by))
 
     for name, point in devices.items():
         note(name, "saturation", -point.headroom)
         note(name, "max_voltage", point.greatest_voltage - point.device.max_voltage)
         note(name, "range", outside(point.gate, mpf(0), b.supply))
-    note("input", "range", outside(at.input, mpf(0), b.supply))
-    low, high = output_range(b, at.input)
-    note("output", "range", outside(at.output, mpf(0), b.supply))
-    for move in (-swing, mpf(0), swing):
-        note("output", "range", max(low - (at.output + move), at.output + move - high))
+    driven = "input" if b.stage in LEVEL_DRIVEN else "main"
     step = mpf(b.assume.get("step_size", 0.0))
-    for move in (-step, step):
-        note("input", "step", outside(at.input + move, mpf(0), b.supply))
-    return found
+    for move in (mpf(0), step, -step):
+        level, output = at.input + move, output_after(b, at, move, gain) if move else at.output
+        note(driven, "range", outside(level, mpf(0), b.supply))
+        note("output", "range", outside(output, *output_range(b, level)))
+        note("output", "range", outside(output, mpf(0), b.supply))
+    return [{"device": device, "what": what, "short_by": short} for (device, what), short in found.items()]
 
 
 def outside(value: Real, low: Real, high: Real) -> Real:

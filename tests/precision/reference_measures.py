@@ -164,6 +164,7 @@ class Shape:
             return result
         result["dc_gain"] = (self.gain, None)
         if self.gain == 0:
+            del result["peaking"]
             return result
         if self.poles:
             result["bandwidth"] = self._named(self.crossing(self.gain**2 / 2))

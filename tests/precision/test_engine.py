@@ -79,18 +79,12 @@ def compare_points(found: dict[str, Any], wanted: dict[str, list[Any]]) -> list[
 
 
 def compare_validity(found: list[dict[str, Any]], expected: dict[str, Any]) -> list[str]:
-    """Entries of one condition; those of a range may be worded by node or by device."""
-    wanted = expected["validity"]
-    here = matching(found, expected["at"])
-    wrong = []
-    if bool(here) != bool(wanted):
-        wrong.append(f"validity {here}, expected {wanted}")
-    for what in ("saturation", "max_voltage"):
-        left = {entry["device"]: entry["short_by"] for entry in here if entry["what"] == what}
-        right = {device: short for device, kind, short in wanted if kind == what}
-        if left.keys() != right.keys() or any(abs(left[name] - right[name]) > VOLT for name in left):
-            wrong.append(f"{what} {left}, expected {right}")
-    return wrong
+    """Entries of one condition: which device or level, what, and by how much."""
+    here = {(entry["device"], entry["what"]): entry["short_by"] for entry in matching(found, expected["at"])}
+    wanted = {(device, what): short for device, what, short in expected["validity"]}
+    if here.keys() != wanted.keys() or any(abs(here[key] - wanted[key]) > VOLT for key in here):
+        return [f"validity at {expected['at']}: {here}, expected {wanted}"]
+    return []
 
 
 def matching(found: list[dict[str, Any]], at: dict[str, Any]) -> list[dict[str, Any]]:
