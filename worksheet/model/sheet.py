@@ -106,6 +106,17 @@ class Waiver:
 
 
 @dataclass(frozen=True, slots=True)
+class Collision:
+    """A key that two sides of a merge changed differently, to be settled. Values as TOML, "" for none."""
+
+    key: str
+    base: str = ""
+    ours: str = ""
+    theirs: str = ""
+    line: int | None = field(default=None, compare=False)
+
+
+@dataclass(frozen=True, slots=True)
 class Bias:
     """The current source: "ideal" with its conductance [S] and capacitance [F], or a device by name."""
 
@@ -155,6 +166,7 @@ class Sheet:
     targets: Mapping[str, Target] = field(default_factory=dict)
     evidence: tuple[Evidence, ...] = ()
     waivers: tuple[Waiver, ...] = ()
+    collisions: tuple[Collision, ...] = ()
     lines: Mapping[str, int] = field(default_factory=dict, compare=False)
 
 

@@ -406,6 +406,36 @@ WAIVER = Table(
     repeated=True,
 )
 
+COLLISION = Table(
+    "collision",
+    "Where two people gave one key different values, to be settled; the file holds what the first one gave.",
+    keys=(
+        Key("key", "Key", "The dotted key that both changed.", Kind.TEXT, required=True, moves_results=False),
+        Key(
+            "base",
+            "Before",
+            "What both started from, as TOML; left out where there was nothing.",
+            Kind.TEXT,
+            moves_results=False,
+        ),
+        Key(
+            "ours",
+            "Ours",
+            "What the file held that the merge went into, as TOML; left out where it was taken out.",
+            Kind.TEXT,
+            moves_results=False,
+        ),
+        Key(
+            "theirs",
+            "Theirs",
+            "What the other side holds, as TOML; left out where it was taken out there.",
+            Kind.TEXT,
+            moves_results=False,
+        ),
+    ),
+    repeated=True,
+)
+
 SHEET = Table(
     "",
     "One circuit block.",
@@ -482,6 +512,7 @@ SHEET = Table(
         ),
         EVIDENCE,
         WAIVER,
+        COLLISION,
     ),
 )
 """The whole sheet. In [assume] and [choose] the stage adds its design variables (stages.stage.Stage.design_keys)."""
@@ -490,6 +521,7 @@ __all__ = [
     "ASSUMPTIONS",
     "AT",
     "BIAS_KEYS",
+    "COLLISION",
     "CONDITION",
     "DESIGN",
     "EVIDENCE",

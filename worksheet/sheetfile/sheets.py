@@ -31,7 +31,7 @@ from worksheet.sheetfile.taken import (
     refusal,
     taken,
 )
-from worksheet.sheetfile.targets import read_evidence, read_targets, read_waivers
+from worksheet.sheetfile.targets import read_collisions, read_evidence, read_targets, read_waivers
 from worksheet.sheetfile.values import READERS, subtable, table
 from worksheet.stages import catalogue
 from worksheet.stages.stage import MAIN, Stage
@@ -63,6 +63,7 @@ def build(reader: Reader, source: Source, name: str) -> Sheet | None:
     targets, dimensions = read_targets(reader, keys.stage, own, data.get(TARGET, {}))
     evidence = read_evidence(reader, keys.stage, dimensions, data)
     waivers = read_waivers(reader, dimensions, data)
+    collisions = read_collisions(reader, data)
     values = {ASSUME: assume, CHOOSE: choose, OWN: own, BIAS: bias.values if bias else {}}
     formulas.check_values(reader, keys, values)
     formulas.check_targets(reader, keys, own, targets)
@@ -80,6 +81,7 @@ def build(reader: Reader, source: Source, name: str) -> Sheet | None:
         targets=MappingProxyType(targets),
         evidence=evidence,
         waivers=waivers,
+        collisions=collisions,
         lines=MappingProxyType(source.places.lines),
         **{key: value for key, value in fields.items() if key in _FIELDS},
     )

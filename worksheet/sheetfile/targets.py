@@ -1,4 +1,7 @@
-"""Targets, evidence and waivers: what is wanted of a sheet's metrics, what was found of them, and what was forgiven."""
+"""Targets, evidence and waivers: what is wanted of a sheet's metrics, what was found of them, and what was forgiven.
+
+The collisions that a merge left are read here too, as entries of the same form.
+"""
 
 from __future__ import annotations
 
@@ -9,15 +12,15 @@ from worksheet.model import dimension as dim
 from worksheet.model import metrics
 from worksheet.model.dimension import Dimension
 from worksheet.model.keys import Key, Kind, Table
-from worksheet.model.sheet import Evidence, Target, Value, Waiver
-from worksheet.model.sheet_keys import EVIDENCE, SHEET, WAIVER
+from worksheet.model.sheet import Collision, Evidence, Target, Value, Waiver
+from worksheet.model.sheet_keys import COLLISION, EVIDENCE, SHEET, WAIVER
 from worksheet.model.text import clean, nearest
 from worksheet.model.units import UnitError, parse_unit
 from worksheet.sheetfile.annotated import free_dimension, in_order
 from worksheet.sheetfile.locate import below
 from worksheet.sheetfile.names import own_name_problem
 from worksheet.sheetfile.reader import Reader, found
-from worksheet.sheetfile.values import READERS, deviation, missing, number, part_of, subtable
+from worksheet.sheetfile.values import READERS, deviation, missing, number, part_of, subtable, table
 from worksheet.stages.stage import Stage
 
 Dimensions = Mapping[str, Dimension | None]
@@ -189,6 +192,17 @@ def read_waivers(reader: Reader, targets: Dimensions, data: Mapping[str, Any]) -
         if fields is not None:
             waivers.append(Waiver(line=reader.places.line(where), **fields))
     return tuple(waivers)
+
+
+def read_collisions(reader: Reader, data: Mapping[str, Any]) -> tuple[Collision, ...]:
+    """Every [[collision]]."""
+    collisions = []
+    for entry, where in _entries(reader, COLLISION, data):
+        before = reader.count
+        fields = table(reader, COLLISION, entry, where)
+        if reader.count == before:
+            collisions.append(Collision(line=reader.places.line(where), **fields))
+    return tuple(collisions)
 
 
 def _read(
