@@ -265,7 +265,9 @@ class Extraction:
         left_out: Rows that it did not, by reason.
         rms_log_error: rms of ln(I_fit/I) over the used rows. [-]
         core_log_error: The same over inversion 0.001 to 10; None without such rows. [-]
-        zero_source_log_error: The same at the lowest source voltage. [-]
+        zero_source_log_error: The same at zero source voltage. [-]
+        core_points: Rows between inversion 0.001 and 10, by their measured current.
+        core_left_out: How many of them the fit does not use.
         inversion_span: Lowest and highest inversion that was used.
         trust, regions, hand, by_length, limits: The judgement; limits are sentences on what the model cannot do here.
         poor: Whether the fit is too poor to build on.
@@ -287,6 +289,8 @@ class Extraction:
     rms_log_error: float
     core_log_error: float | None
     zero_source_log_error: float | None
+    core_points: int
+    core_left_out: int
     inversion_span: Span
     trust: Trust
     regions: tuple[RegionError, ...]

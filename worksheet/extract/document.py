@@ -34,6 +34,8 @@ def document(result: Extraction) -> Plain:
             "inversion_high": result.inversion_span.high,
             "core_rms_log_error": result.core_log_error,
             "zero_source_rms_log_error": result.zero_source_log_error,
+            "core_points": result.core_points,
+            "core_left_out": result.core_left_out,
             "poor": result.poor,
             "left_out_for": [{"reason": x.reason, "count": x.count, "detail": x.detail} for x in result.left_out],
         },

@@ -31,7 +31,7 @@ from worksheet.extract.screen import (
     counts,
     screen,
 )
-from worksheet.extract.span import GOOD_OVER_ALL, NEAR_ZERO, Spanned, core_error, inversion, span
+from worksheet.extract.span import CORE_HIGH, CORE_LOW, GOOD_OVER_ALL, NEAR_ZERO, Spanned, core_error, inversion, span
 from worksheet.extract.table import CAPACITY, read_table
 from worksheet.model.problem import Problem
 
@@ -99,7 +99,7 @@ def extract_parameters(
     Returns: the extraction and no problem, or None and every problem.
     """
     names = list(shown) if shown is not None else [str(path) for path in paths]
-    rows, readings, problems = _read(paths, names, request)
+    rows, readings, problems = read_rows(paths, names, request)
     if rows is None or problems:
         return None, problems
     return extract_from_rows(rows, request, readings)
@@ -128,10 +128,18 @@ def extract_from_rows(
     return _judged(rows, screened, fit, request, readings), []
 
 
-def _read(
+def read_rows(
     paths: Sequence[Path], names: Sequence[str], request: Request
 ) -> tuple[Rows | None, tuple[Reading, ...], list[Problem]]:
-    """All files as one set of rows."""
+    """Read tables as one set of rows.
+
+    Args:
+        paths: The files.
+        names: What messages call them.
+        request: Columns, sizes and what else is asked.
+
+    Returns: the rows, how each file was read, and no problem; or None and every problem.
+    """
     problems = [
         Problem(
             "command line",
@@ -271,6 +279,7 @@ def _judged(rows: Rows, screened: Screened, fit: _Fit, request: Request, reading
     core = core_error(values, used, reference)
     lowest = used.take(np.abs(used.source) <= NEAR_ZERO)
     velocity = fit.estimates["velocity_length"].fitted
+    in_core = (level >= CORE_LOW) & (level <= CORE_HIGH)
     result = Extraction(
         polarity=request.polarity,
         readings=readings,
@@ -287,6 +296,8 @@ def _judged(rows: Rows, screened: Screened, fit: _Fit, request: Request, reading
         rms_log_error=rms,
         core_log_error=core,
         zero_source_log_error=core_error(values, lowest, reference) if len(lowest) else None,
+        core_points=int(in_core.sum()),
+        core_left_out=int((in_core & ~fit.used).sum()),
         inversion_span=Span(float(level[fit.used].min()), float(level[fit.used].max())),
         trust=judge.trust(used, level[fit.used], error),
         regions=found,

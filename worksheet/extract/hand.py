@@ -21,7 +21,7 @@ CONSTANT_CURRENT = 1e-7
 
 _LINEAR = 0.15
 _LEAST_POINTS = 6
-_WINDOW = 0.06
+_WINDOW, _WIDE = 0.06, 0.12
 _LN10 = float(np.log(10.0))
 _NONE = "the table holds no curve for it"
 
@@ -172,21 +172,22 @@ def _steepest(gate: Array, current: Array) -> float:
 
 def _extrapolated(curve: _Curve, current: Array) -> float:
     """Gate voltage at which the tangent at the greatest slope meets zero current, less V_DS/2. [V]"""
-    values, tangents = slopes(curve.gate, current)
+    values, tangents = slopes(curve.gate, current, _WIDE)
     place = int(np.argmax(tangents))
     return float(curve.gate[place] - values[place] / tangents[place] - curve.across / 2.0)
 
 
-def slopes(x: Array, y: Array) -> tuple[Array, Array]:
+def slopes(x: Array, y: Array, window: float = _WINDOW) -> tuple[Array, Array]:
     """Value and slope of a curve at each of its points, by a parabola through the points around it.
 
     Args:
         x: Rising. [V]
         y: The curve. [any]
+        window: Half width of the parabola's window, widened to the next point on either side. [V]
     Returns: smoothed y, and its slope against x, shape of x each
     """
     step = float(np.median(np.diff(x)))
-    reach = max(_WINDOW, 1.05 * step)
+    reach = max(window, 1.05 * step)
     values, tangents = np.empty_like(y), np.empty_like(y)
     for place, here in enumerate(x):
         low, high = int(np.searchsorted(x, here - reach)), int(np.searchsorted(x, here + reach, side="right"))

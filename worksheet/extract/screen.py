@@ -42,7 +42,7 @@ CONTAMINATION = 20.0
 
 _APART = 0.04
 _LEAST_POINTS = 6
-_FALLEN = 0.5
+_FALLEN, _MOSTLY = 0.5, 0.7
 _WEAK_SLOPE = 0.3
 _UPTURN, _UPTURN_LEAST = 3.0, 0.3
 
@@ -189,7 +189,10 @@ def _bottom(gate: Array, current: Array, thermal: float) -> int:
         if current[low] <= 0.0:
             return top
         if greatest > _WEAK_SLOPE / thermal and slope < _FALLEN * greatest:
-            return top
+            line = level[top] - _FALLEN * greatest * (gate[top] - gate[:top])
+            # One row that stands out is no floor: most of what lies below must have stopped falling.
+            if top > 1 and np.mean(level[:top] > line) > _MOSTLY:
+                return top
         greatest = max(greatest, min(slope, 1.0 / thermal))
         top -= 1
     return 0
