@@ -39,12 +39,17 @@ def with_targets(rng: random.Random, folder: Path, documents: tuple[Document, Do
     values = {}
     for key in rng.sample(sorted(set(every_metric(case))), 9):
         measured = case.solution.measure(key)
-        if measured.complete and float(abs(measured.values.reshape(-1)[0])) > 0:
+        if measured.complete and float(abs(measured.values.reshape(-1)[0])) > smallest(key):
             values[key] = float(measured.values.reshape(-1)[0])
     sheet["target"] = {
         key: {"max" if key in MAXIMA else "min": value * rng.uniform(0.5, 2.0)} for key, value in list(values.items())[:3]
     }
     return sheet
+
+
+def smallest(key: str) -> float:
+    """Below this a voltage is rounding of a difference and no target to aim at."""
+    return 1e-6 if key in ("input_low", "input_high", "output_low", "output_high", "output_swing") else 0.0
 
 
 def every_metric(case: Case) -> list[str]:

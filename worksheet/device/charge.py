@@ -36,9 +36,8 @@ def log_charge_from_drive(u: Number) -> Array:
 def _omega(z: Array) -> Array:
     """w with w + ln w = z (Wright's omega), elementwise."""
     low = z < -2.0
-    w = np.where(
-        low, np.exp(np.minimum(z, 0.0)), np.where(z > 1.0, z - np.log(np.maximum(z, 1.0)), np.exp((np.minimum(z, 1.0) - 1.0) * 0.5))
-    )
+    near = np.exp((np.minimum(z, 1.0) - 1.0) * 0.5)
+    w = np.where(low, np.exp(np.minimum(z, 0.0)), np.where(z > 1.0, z - np.log(np.maximum(z, 1.0)), near))
     tiny = z < -700.0
     w = np.where(tiny, 1.0, w)
     for _ in range(_STEPS):

@@ -25,5 +25,5 @@ def threshold_deviation(coefficient: Number, width: Number, length: Number) -> A
 
 
 def single_deviation(coefficient: Number, width: Number, length: Number) -> Array:
-    """Standard deviation of one device against its intended value: 1/sqrt(2) of a pair's. [V] or [-]; see pair_deviation."""
+    """Standard deviation of one device against its intended value. [V] or [-]; see pair_deviation."""
     return np.asarray(pair_deviation(coefficient, width, length) / np.sqrt(2.0))

@@ -65,7 +65,7 @@ def at_condition(
 
     Args:
         process: Parameters of process_keys by name, at the reference temperature. [unit of the key]
-        changes: Changes of process_keys.CORNER_CHANGES by name; missing ones change nothing. Shifts add, factors multiply.
+        changes: Changes of process_keys.CORNER_CHANGES by name, all optional. Shifts add, factors multiply.
         temperature: [K], over conditions
         reference_temperature: T_0. [K]
         width, length: [m]

@@ -112,7 +112,7 @@ class Network:
 
     @cached_property
     def input_capacitance(self) -> Number:
-        """At the device's terminal: Miller included for a gate; the node's own, output held, for source and drain. [F]"""
+        """At the device's terminal: with Miller for a gate; the node's own, output held, for source and drain. [F]"""
         terminal = self._circuit.terminal
         total = self._sums[(terminal, terminal)][1]
         if self._circuit.stage.drive != "gate":

@@ -9,6 +9,7 @@ from __future__ import annotations
 from collections.abc import Sequence
 
 import numpy as np
+from numpy.typing import NDArray
 
 from worksheet.device.arrays import Array, Number
 
@@ -109,7 +110,7 @@ def positive_roots(a: Sequence[Number]) -> Array:
             else np.zeros((0,))
         )
         if len(a) == 2:
-            inverse: Array = -ratio
+            inverse = np.asarray(-ratio, dtype=np.float64)
         elif len(a) == 3:
             inverse = np.stack(_quadratic_inverse(ratio[0], ratio[1]))
         else:
@@ -150,7 +151,7 @@ def _quadratic_inverse(b: Array, c: Array) -> tuple[Array, Array]:
     return far, near
 
 
-def _companion(ratio: Array) -> Array:
+def _companion(ratio: Array) -> NDArray[np.complex128]:
     """All y = 1/x with 1 + r_1 x + ... + r_n x^n = 0, along the first axis, after scaling to order one."""
     degree = ratio.shape[0]
     powers = np.arange(1, degree + 1).reshape((-1,) + (1,) * (ratio.ndim - 1))
@@ -161,7 +162,7 @@ def _companion(ratio: Array) -> Array:
     matrix[..., 0, :] = -np.moveaxis(scaled, 0, -1)
     for k in range(1, degree):
         matrix[..., k, k - 1] = 1.0
-    return np.moveaxis(np.linalg.eigvals(matrix), -1, 0) * size
+    return np.asarray(np.moveaxis(np.linalg.eigvals(matrix), -1, 0) * size, dtype=np.complex128)
 
 
 def _polished(a: Sequence[Number], roots: Array) -> Array:

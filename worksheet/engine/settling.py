@@ -22,8 +22,8 @@ def linear(numerator: Sequence[Number], denominator: Sequence[Number], tolerance
         numerator, denominator: H(s), coefficients lowest first.
         tolerance: Share of the final change. [-]
     Returns: [s], 0 where the output starts within it; NaN where the response does not settle
-    Source: exact partial fractions; one pole: tau ln(abs(1 - h)/tolerance). JEDEC JESD99B: until the band is entered for
-        the last time.
+    Source: exact partial fractions; one pole: tau ln(abs(1 - h)/tolerance). JEDEC JESD99B: until the band is entered
+        for the last time.
     """
     with np.errstate(all="ignore"):
         constants = poly.inverse_roots(denominator)
@@ -112,7 +112,7 @@ class _Error:
         return low, high, ~beyond & (self.excess(zero[None])[0] <= 0)
 
     def _extrema(self) -> tuple[Array, Array]:
-        """First extremum at or after 0, and the time between extrema (not finite for real poles: there is one at most)."""
+        """First extremum from 0 on, and the time between extrema (not finite for real poles: there is one at most)."""
         (w0, w1), (r0, r1) = self._weights, self._rates
         turn = r0.imag
         complex_pair = turn != 0

@@ -315,8 +315,8 @@ def _with_reasons_of(values: Number, parts: Sequence[Measured]) -> Measured:
 def _limit_ratio(numerator: Sequence[Number], denominator: Sequence[Number]) -> Array:
     """Limit of the ratio of two polynomials at infinity, by the highest power that either has."""
     limit = np.ones(())
-    for n, d in zip(numerator, denominator, strict=True):
-        n, d = np.asarray(n), np.asarray(d)
+    for top, bottom in zip(numerator, denominator, strict=True):
+        n, d = np.asarray(top), np.asarray(bottom)
         limit = np.where(d != 0, n / np.where(d != 0, d, 1.0), np.where(n != 0, np.inf, limit))
     return limit
 

@@ -1,4 +1,4 @@
-"""Where a number stands on ground that does not hold: headroom, rating and ranges, by how much and in which condition."""
+"""Where a number stands on ground that does not hold: headroom, rating, ranges, and by how much."""
 
 from __future__ import annotations
 
@@ -44,8 +44,8 @@ def shortfalls(solution: NumericSolution) -> list[Shortfall]:
     Args:
         solution: The solved circuit.
     Returns: one Shortfall a device and kind, whether it is broken anywhere or not
-    Source: contract of the review: saturation with its margin, rating between any two terminals, gates and levels within
-        the supply, the output within its range, also after an assumed step.
+    Source: contract of the review: saturation with its margin, rating between any two terminals, gates and levels
+        within the supply, the output within its range, also after an assumed step.
     """
     found = []
     for operating in solution.transistors:
@@ -82,7 +82,7 @@ def _output(solution: NumericSolution) -> Array:
 
 
 def _output_after(solution: NumericSolution, step: Number) -> Array:
-    """Output in the frame after a step at the input: exact for a source output, by the DC gain for a drain output. [V]"""
+    """Output in the frame after a step at the input: exact for a source output, by DC gain for a drain output. [V]"""
     levels, stage = solution.levels, solution.inputs.circuit.stage
     if not stage.source_output:
         with np.errstate(all="ignore"):

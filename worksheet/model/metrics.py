@@ -7,138 +7,25 @@ method of the Solution. A metric that is entered here is known to targets, formu
 
 from __future__ import annotations
 
-from collections.abc import Callable, Sequence
-from dataclasses import dataclass
-from enum import IntEnum
 from statistics import NormalDist
-from typing import Any, Protocol
+from typing import Any
 
 from worksheet.model import dimension as dim
-from worksheet.model.dimension import Dimension
+from worksheet.model.metric import Metric, Reason, Solution
 
-
-class Reason(IntEnum):
-    """Why a number does not exist. 0 is reserved for a number that does."""
-
-    NONE = 0
-    FEED_THROUGH = 1
-    GAIN_BELOW_1 = 2
-    UNLIMITED = 3
-    LONG_CHANNEL_ONLY = 4
-    NO_GAIN = 5
-    NO_DRAIN_COUPLING = 6
-    UNSTABLE = 7
-    NOT_A_NUMBER = 8
-
-    @property
-    def text(self) -> str:
-        """The reason in words, as in JSON."""
-        return _REASON_TEXT[self]
-
-    def verdict(self, side: str) -> str:
-        """What it means for a target's "min" or "max": "met", "missed" or "unknown" (physics: section 3's table)."""
-        return _VERDICTS.get((self, side), "unknown")
-
-
-_REASON_TEXT = {
-    Reason.NONE: "",
-    Reason.FEED_THROUGH: "feed-through",
-    Reason.GAIN_BELOW_1: "gain below 1",
-    Reason.UNLIMITED: "unlimited",
-    Reason.LONG_CHANNEL_ONLY: "large-signal settling holds for the long channel only",
-    Reason.NO_GAIN: "no gain",
-    Reason.NO_DRAIN_COUPLING: "no drain coupling",
-    Reason.UNSTABLE: "no settled response",
-    Reason.NOT_A_NUMBER: "not a number",
-}
-
-_VERDICTS = {
-    (Reason.FEED_THROUGH, "min"): "missed",
-    (Reason.FEED_THROUGH, "max"): "missed",
-    (Reason.GAIN_BELOW_1, "min"): "missed",
-    (Reason.GAIN_BELOW_1, "max"): "met",
-    (Reason.UNLIMITED, "min"): "met",
-    (Reason.UNLIMITED, "max"): "missed",
-}
-
-
-class SolvedDevice(Protocol):
-    """What a rule may ask of one transistor; arrays or expressions. Units as in model.operating."""
-
-    current: Any
-    transconductance: Any
-    width: Any
-    length: Any
-    matching_threshold: Any
-    matching_factor: Any
-
-
-class NoiseSource(Protocol):
-    """A source of noise current. `white` [A^2/Hz]; `referred` is abs(Z(0)/H(0))^2 [ohm^2 V^2/V^2]."""
-
-    white: Any
-    referred: Any
-
-
-class Solution(Protocol):
-    """What a rule may ask of a solved stage. Indexing by a metric's key gives that metric."""
-
-    current: Any
-    supply: Any
-    bias_overhead: Any
-    output_capacitance: Any
-    output_low: Any
-    output_high: Any
-    input_low: Any
-    input_high: Any
-    transistors: Sequence[SolvedDevice]
-    noise_sources: Sequence[NoiseSource]
-    white_noise_power: Any
-    flicker_noise_power: Any
-
-    def __getitem__(self, key: str) -> Any: ...
-    def sqrt(self, value: Any) -> Any: ...
-    def referred_to_input(self, device: SolvedDevice) -> Any: ...
-    def dc_gain(self) -> Any: ...
-    def bandwidth(self) -> Any: ...
-    def pole_frequency(self) -> Any: ...
-    def unity_gain_frequency(self) -> Any: ...
-    def output_resistance(self) -> Any: ...
-    def input_capacitance(self) -> Any: ...
-    def supply_rejection(self) -> Any: ...
-    def settling_time(self) -> Any: ...
-    def noise_corner(self) -> Any: ...
-    def peaking(self) -> Any: ...
-
-
-@dataclass(frozen=True)
-class Metric:
-    """One metric.
-
-    Attributes:
-        key: Name in sheets and JSON.
-        title, symbol, help: For people.
-        dimension: Its unit.
-        rule: Gives it from a Solution.
-        better: "high" or "low", where more or less of it is usually wanted; "" where that depends.
-        additive: Whether it adds up over blocks, so that a project may budget it.
-        needs_level: The level that a stage must take for the metric to be defined; "" for none.
-        of_yield: The metric of which this one is the bound at a target's yield; "" for none.
-        relation: The published relation behind it, for the algebra view.
-    """
-
-    key: str
-    title: str
-    symbol: str
-    dimension: Dimension
-    help: str
-    rule: Callable[[Any], Any]
-    better: str = ""
-    additive: bool = False
-    needs_level: str = ""
-    of_yield: str = ""
-    relation: str = ""
-
+__all__ = [
+    "DEFAULT_YIELD",
+    "METRICS",
+    "Metric",
+    "Reason",
+    "Solution",
+    "all_metrics",
+    "deviations",
+    "find",
+    "keys",
+    "register",
+    "withdraw",
+]
 
 DEFAULT_YIELD = 0.9973
 """Share of parts that a bound keeps where a target states none: 3.0 standard deviations of a normal law."""
@@ -167,53 +54,251 @@ def _offset(s: Solution) -> Any:
 
 
 METRICS: tuple[Metric, ...] = (
-    Metric("dc_gain", "DC gain", "A_0", dim.GAIN, "Magnitude of the transfer at zero frequency.", lambda s: s.dc_gain(), "high",
-           relation="abs(H(0)) of the nodal solution"),
-    Metric("bandwidth", "Bandwidth", "f_3dB", dim.FREQUENCY, "Lowest frequency at which the magnitude has fallen to 1/sqrt(2) of its DC value.", lambda s: s.bandwidth(), "high",
-           relation="abs(H(j omega))^2 = abs(H(0))^2/2"),
-    Metric("pole_frequency", "Pole frequency", "f_p", dim.FREQUENCY, "Lowest pole of the transfer; g_o/(2 pi C_o) for one node.", lambda s: s.pole_frequency(), "high",
-           relation="lowest root of det(G + s C)"),
-    Metric("unity_gain_frequency", "Unity-gain frequency", "f_u", dim.FREQUENCY, "Lowest frequency at which the magnitude is 1.", lambda s: s.unity_gain_frequency(), "high",
-           relation="abs(H(j omega)) = 1"),
-    Metric("output_resistance", "Output resistance", "R_o", dim.RESISTANCE, "Resistance seen into the output at zero frequency.", lambda s: s.output_resistance(),
-           relation="Z_o(0) of the nodal solution"),
-    Metric("input_capacitance", "Input capacitance", "C_in", dim.CAPACITANCE, "Capacitance seen into the input at low frequency, Miller effect included.",
-           lambda s: s.input_capacitance(), "low", relation="slope of Im(Y_in) at zero frequency (Miller)"),
-    Metric("supply_rejection", "Supply rejection", "PSR", dim.GAIN, "Gain from the input over gain from the supply at zero frequency.", lambda s: s.supply_rejection(), "high",
-           relation="abs(A_in/A_supply)"),
-    Metric("slew_rate", "Slew rate", "SR", dim.SLEW_RATE, "Fastest change of the output that the bias current allows.", lambda s: s.current / s.output_capacitance, "high",
-           relation="I = C dV/dt"),
-    Metric("settling_time", "Settling time", "t_s", dim.TIME, "From a step at the input until the output stays within the settling tolerance of its final change.",
-           lambda s: s.settling_time(), "low", relation="step response of H(s); with a step size the charge equation of the device"),
-    Metric("noise_density", "Noise density", "v_n", dim.NOISE_DENSITY, "White noise referred to the input.",
-           lambda s: s.sqrt(sum(n.referred * n.white for n in s.noise_sources)), "low", relation="S_i = 4 k T gamma g_s, all sources, over G_in^2"),
-    Metric("noise_corner", "Noise corner", "f_c", dim.FREQUENCY, "Frequency at which flicker and white noise are equal; 0 without flicker.", lambda s: s.noise_corner(), "low",
-           relation="flicker density = white density"),
-    Metric("output_noise", "Output noise", "v_no", dim.NOISE_VOLTAGE, "At the output: white noise over all frequency and flicker from noise_from to the pole frequency.",
-           lambda s: s.sqrt(s.white_noise_power + s.flicker_noise_power), "low", relation="integral of abs(Z_k)^2 S_k over frequency"),
-    Metric("input_noise", "Input noise", "v_ni", dim.NOISE_VOLTAGE, "Output noise referred to the input by the DC gain.", lambda s: s["output_noise"] / s["dc_gain"], "low",
-           relation="v_no/A_0"),
-    Metric("output_low", "Lowest output", "V_olow", dim.VOLTAGE, "Lowest output, from ground, at which every device is saturated.", lambda s: s.output_low, "low",
-           relation="sum of saturation voltages below the output"),
-    Metric("output_high", "Highest output", "V_ohigh", dim.VOLTAGE, "Highest output, from ground, at which every device is saturated.", lambda s: s.output_high, "high",
-           relation="supply less the saturation voltages above the output"),
-    Metric("output_swing", "Output swing", "V_osw", dim.VOLTAGE, "Highest less lowest output.", lambda s: s["output_high"] - s["output_low"], "high",
-           relation="V_ohigh - V_olow"),
-    Metric("supply_current", "Supply current", "I_DD", dim.CURRENT, "Bias current and the bias branch's overhead.", lambda s: s.current * (1 + s.bias_overhead), "low", additive=True,
-           relation="I (1 + k_b)"),
-    Metric("power", "Power", "P", dim.POWER, "Supply current times supply.", lambda s: s["supply_current"] * s.supply, "low", additive=True, relation="I_DD V_DD"),
-    Metric("gate_area", "Gate area", "A_g", dim.AREA, "Sum of width times length over all transistors.", lambda s: sum(d.width * d.length for d in s.transistors), "low", additive=True,
-           relation="sum of W L"),
-    Metric("offset", "Offset", "sd(V_os)", dim.VOLTAGE, "One standard deviation of the mismatch, referred to the input.", _offset, "low",
-           relation="sd = A_VT/sqrt(W L), A_beta/sqrt(W L) (Pelgrom 1989)"),
-    Metric("offset_limit", "Offset limit", "V_os,max", dim.VOLTAGE, "Bound that the magnitude of the offset keeps with the target's yield.",
-           lambda s: deviations(DEFAULT_YIELD) * s["offset"], "low", of_yield="offset", relation="normal law"),
-    Metric("input_low", "Lowest input", "V_ilow", dim.VOLTAGE, "Lowest input level, from ground, at which every device is saturated.", lambda s: s.input_low, "low",
-           needs_level="input_level", relation="range of the input level"),
-    Metric("input_high", "Highest input", "V_ihigh", dim.VOLTAGE, "Highest input level, from ground, at which every device is saturated.", lambda s: s.input_high, "high",
-           needs_level="input_level", relation="range of the input level"),
-    Metric("peaking", "Peaking", "M_p", dim.NUMBER, "Greatest magnitude over the DC magnitude; 1 where there is no peak.", lambda s: s.peaking(), "low",
-           relation="max abs(H)/abs(H(0))"),
+    Metric(
+        "dc_gain",
+        "DC gain",
+        "A_0",
+        dim.GAIN,
+        "Magnitude of the transfer at zero frequency.",
+        lambda s: s.dc_gain(),
+        "high",
+        relation="abs(H(0)) of the nodal solution",
+    ),
+    Metric(
+        "bandwidth",
+        "Bandwidth",
+        "f_3dB",
+        dim.FREQUENCY,
+        "Lowest frequency at which the magnitude has fallen to 1/sqrt(2) of its DC value.",
+        lambda s: s.bandwidth(),
+        "high",
+        relation="abs(H(j omega))^2 = abs(H(0))^2/2",
+    ),
+    Metric(
+        "pole_frequency",
+        "Pole frequency",
+        "f_p",
+        dim.FREQUENCY,
+        "Lowest pole of the transfer; g_o/(2 pi C_o) for one node.",
+        lambda s: s.pole_frequency(),
+        "high",
+        relation="lowest root of det(G + s C)",
+    ),
+    Metric(
+        "unity_gain_frequency",
+        "Unity-gain frequency",
+        "f_u",
+        dim.FREQUENCY,
+        "Lowest frequency at which the magnitude is 1.",
+        lambda s: s.unity_gain_frequency(),
+        "high",
+        relation="abs(H(j omega)) = 1",
+    ),
+    Metric(
+        "output_resistance",
+        "Output resistance",
+        "R_o",
+        dim.RESISTANCE,
+        "Resistance seen into the output at zero frequency.",
+        lambda s: s.output_resistance(),
+        relation="Z_o(0) of the nodal solution",
+    ),
+    Metric(
+        "input_capacitance",
+        "Input capacitance",
+        "C_in",
+        dim.CAPACITANCE,
+        "Capacitance seen into the input at low frequency, Miller effect included.",
+        lambda s: s.input_capacitance(),
+        "low",
+        relation="slope of Im(Y_in) at zero frequency (Miller)",
+    ),
+    Metric(
+        "supply_rejection",
+        "Supply rejection",
+        "PSR",
+        dim.GAIN,
+        "Gain from the input over gain from the supply at zero frequency.",
+        lambda s: s.supply_rejection(),
+        "high",
+        relation="abs(A_in/A_supply)",
+    ),
+    Metric(
+        "slew_rate",
+        "Slew rate",
+        "SR",
+        dim.SLEW_RATE,
+        "Fastest change of the output that the bias current allows.",
+        lambda s: s.current / s.output_capacitance,
+        "high",
+        relation="I = C dV/dt",
+    ),
+    Metric(
+        "settling_time",
+        "Settling time",
+        "t_s",
+        dim.TIME,
+        "From a step at the input until the output stays within the settling tolerance of its final change.",
+        lambda s: s.settling_time(),
+        "low",
+        relation="step response of H(s); with a step size the charge equation of the device",
+    ),
+    Metric(
+        "noise_density",
+        "Noise density",
+        "v_n",
+        dim.NOISE_DENSITY,
+        "White noise referred to the input.",
+        lambda s: s.sqrt(sum(n.referred * n.white for n in s.noise_sources)),
+        "low",
+        relation="S_i = 4 k T gamma g_s, all sources, over G_in^2",
+    ),
+    Metric(
+        "noise_corner",
+        "Noise corner",
+        "f_c",
+        dim.FREQUENCY,
+        "Frequency at which flicker and white noise are equal; 0 without flicker.",
+        lambda s: s.noise_corner(),
+        "low",
+        relation="flicker density = white density",
+    ),
+    Metric(
+        "output_noise",
+        "Output noise",
+        "v_no",
+        dim.NOISE_VOLTAGE,
+        "At the output: white noise over all frequency and flicker from noise_from to the pole frequency.",
+        lambda s: s.sqrt(s.white_noise_power + s.flicker_noise_power),
+        "low",
+        relation="integral of abs(Z_k)^2 S_k over frequency",
+    ),
+    Metric(
+        "input_noise",
+        "Input noise",
+        "v_ni",
+        dim.NOISE_VOLTAGE,
+        "Output noise referred to the input by the DC gain.",
+        lambda s: s["output_noise"] / s["dc_gain"],
+        "low",
+        relation="v_no/A_0",
+    ),
+    Metric(
+        "output_low",
+        "Lowest output",
+        "V_olow",
+        dim.VOLTAGE,
+        "Lowest output, from ground, at which every device is saturated.",
+        lambda s: s.output_low,
+        "low",
+        relation="sum of saturation voltages below the output",
+    ),
+    Metric(
+        "output_high",
+        "Highest output",
+        "V_ohigh",
+        dim.VOLTAGE,
+        "Highest output, from ground, at which every device is saturated.",
+        lambda s: s.output_high,
+        "high",
+        relation="supply less the saturation voltages above the output",
+    ),
+    Metric(
+        "output_swing",
+        "Output swing",
+        "V_osw",
+        dim.VOLTAGE,
+        "Highest less lowest output.",
+        lambda s: s["output_high"] - s["output_low"],
+        "high",
+        relation="V_ohigh - V_olow",
+    ),
+    Metric(
+        "supply_current",
+        "Supply current",
+        "I_DD",
+        dim.CURRENT,
+        "Bias current and the bias branch's overhead.",
+        lambda s: s.current * (1 + s.bias_overhead),
+        "low",
+        additive=True,
+        relation="I (1 + k_b)",
+    ),
+    Metric(
+        "power",
+        "Power",
+        "P",
+        dim.POWER,
+        "Supply current times supply.",
+        lambda s: s["supply_current"] * s.supply,
+        "low",
+        additive=True,
+        relation="I_DD V_DD",
+    ),
+    Metric(
+        "gate_area",
+        "Gate area",
+        "A_g",
+        dim.AREA,
+        "Sum of width times length over all transistors.",
+        lambda s: sum(d.width * d.length for d in s.transistors),
+        "low",
+        additive=True,
+        relation="sum of W L",
+    ),
+    Metric(
+        "offset",
+        "Offset",
+        "sd(V_os)",
+        dim.VOLTAGE,
+        "One standard deviation of the mismatch, referred to the input.",
+        _offset,
+        "low",
+        relation="sd = A_VT/sqrt(W L), A_beta/sqrt(W L) (Pelgrom 1989)",
+    ),
+    Metric(
+        "offset_limit",
+        "Offset limit",
+        "V_os,max",
+        dim.VOLTAGE,
+        "Bound that the magnitude of the offset keeps with the target's yield.",
+        lambda s: deviations(DEFAULT_YIELD) * s["offset"],
+        "low",
+        of_yield="offset",
+        relation="normal law",
+    ),
+    Metric(
+        "input_low",
+        "Lowest input",
+        "V_ilow",
+        dim.VOLTAGE,
+        "Lowest input level, from ground, at which every device is saturated.",
+        lambda s: s.input_low,
+        "low",
+        needs_level="input_level",
+        relation="range of the input level",
+    ),
+    Metric(
+        "input_high",
+        "Highest input",
+        "V_ihigh",
+        dim.VOLTAGE,
+        "Highest input level, from ground, at which every device is saturated.",
+        lambda s: s.input_high,
+        "high",
+        needs_level="input_level",
+        relation="range of the input level",
+    ),
+    Metric(
+        "peaking",
+        "Peaking",
+        "M_p",
+        dim.NUMBER,
+        "Greatest magnitude over the DC magnitude; 1 where there is no peak.",
+        lambda s: s.peaking(),
+        "low",
+        relation="max abs(H)/abs(H(0))",
+    ),
 )
 """All metrics, in the order of a table."""
 

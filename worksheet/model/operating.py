@@ -102,7 +102,7 @@ OPERATING_POINT = (
     OperatingValue("width", "Width", "W", dim.LENGTH, "Total channel width."),
     OperatingValue("length", "Length", "L", dim.LENGTH, "Channel length."),
 )
-"""All of them, in the order of a table. The region ("weak", "moderate", "strong") goes with the inversion coefficient."""
+"""All of them, in the order of a table. The region (weak, moderate, strong) goes with the inversion coefficient."""
 
 WEAK_BELOW, STRONG_ABOVE = 0.1, 10.0
 """Inversion coefficients that bound moderate inversion."""

@@ -296,7 +296,7 @@ DEVICE_PARAMETERS = (
     Key(
         "max_voltage",
         "Voltage rating",
-        "Greatest voltage that may stand between any two terminals; the foundry's reliability rules have the last word.",
+        "Greatest voltage between any two terminals; the foundry's reliability rules have the last word.",
         dimension=dim.VOLTAGE,
         symbol="V_max",
         low_open=True,

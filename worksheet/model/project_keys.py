@@ -28,7 +28,7 @@ TEMPERATURE = Key(
 SUPPLY = Key(
     "supply",
     "Supply voltage",
-    "Supply of the block, from ground. Stay within the device rating; the foundry's reliability rules have the last word.",
+    "Supply of the block, from ground. Stay within the rating; the foundry's reliability rules have the last word.",
     dimension=dim.VOLTAGE,
     symbol="V_DD",
     low_open=True,

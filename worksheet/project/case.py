@@ -184,7 +184,8 @@ class Case:
                 self.problem(
                     name,
                     stated,
-                    f"the formula {formula.text!r} {what} at {at.process}, {at.temperature:g} K, {at.supply:g} V; expected {wanted}",
+                    f"the formula {formula.text!r} {what} at {at.process}, {at.temperature:g} K, {at.supply:g} V; "
+                    f"expected {wanted}",
                 )
             )
         return np.asarray(result)
@@ -302,7 +303,7 @@ class Case:
         return NumericSolution(self.inputs)
 
     def figure(self, target: Target, solution: NumericSolution | None = None) -> Array:
-        """Values of a target that has a formula, over conditions; NaN where a metric in it is missing. [its own unit]"""
+        """Values of a target that has a formula, over conditions; NaN where a metric is missing. [its own unit]"""
         assert target.formula is not None
         solved = solution or self.solution
         return self.evaluate(target.formula, lambda name: solved[name] if metrics.find(name) is not None else None)

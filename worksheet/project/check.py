@@ -55,7 +55,7 @@ def _devices(sheet: Sheet, stage: Stage, process: Process) -> Iterator[Problem]:
         yield _problem(
             sheet,
             "bulk",
-            f'found "source", expected "rail": {sheet.device} has no well of its own (own_well = false in {process.file})',
+            f'found "source", expected "rail": {sheet.device} has no well of its own (own_well in {process.file})',
         )
     if sheet.bias.ideal:
         return
@@ -119,7 +119,7 @@ def _within(sheet: Sheet, device: Transistor, model: DeviceModel, name: str, num
         yield _problem(
             sheet,
             key,
-            f"found {shown[0]}, expected between {shown[1]} and {shown[2]}, the limits of {model.name} in the process file",
+            f"found {shown[0]}, expected between {shown[1]} and {shown[2]}, the process limits of {model.name}",
         )
 
 
@@ -146,13 +146,14 @@ def coupling_problems(
             yield _problem(
                 sheet,
                 "device",
-                f"kappa of {model.name} is {p.kappa:.4g} in corner {corner}; expected above 0 and at most 1 ({process.file})",
+                f"kappa of {model.name} is {p.kappa:.4g} in corner {corner}, expected above 0 and at most 1",
             )
         elif p.kappa + p.drain_coupling > 1 + _SLACK:
             key = _key(sheet, device.key("length"))
             yield _problem(
                 sheet,
                 key,
-                f"kappa + drain coupling of {model.name} is {p.kappa + p.drain_coupling:.4g} at {format_quantity(length, dim.LENGTH)} in corner {corner}; "
+                f"kappa + drain coupling of {model.name} is {p.kappa + p.drain_coupling:.4g} at "
+                f"{format_quantity(length, dim.LENGTH)} in corner {corner}; "
                 f"expected at most 1 (kappa {p.kappa:.4g}, drain coupling {p.drain_coupling:.4g} from {process.file})",
             )

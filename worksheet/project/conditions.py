@@ -60,7 +60,7 @@ class ConditionSet:
 
 
 def of_sheet(sheet: Sheet, project: ProjectFile, process: Process) -> ConditionSet:
-    """The conditions that a sheet is reviewed in: the project's, with the sheet's own supply or temperature in their place."""
+    """The conditions of a sheet: the project's, with the sheet's own supply or temperature in their place."""
     temperature, supply = sheet.assume.get("temperature"), sheet.assume.get("supply")
     temperatures = temperature.numbers if temperature is not None else project.temperatures
     supplies = supply.numbers if supply is not None else project.supplies

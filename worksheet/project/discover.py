@@ -74,7 +74,8 @@ def load(root: Path) -> Project:
 
 def checked(project: Project) -> Project:
     """Check what single files cannot show: devices, sizes, corners, links; sheets with problems move to `bad`."""
-    assert project.file is not None and project.process is not None
+    assert project.file is not None
+    assert project.process is not None
     problems = list(check.project_problems(project.file, project.process))
     sheets = dict(project.sheets)
     for sheet in project.sheets.values():

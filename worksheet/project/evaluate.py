@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Callable, Mapping
+from functools import partial
 
 import numpy as np
 
@@ -27,7 +28,8 @@ class Evaluator:
 
     def __init__(self, project: Project, propose: Proposer) -> None:
         """Take the project and the way to find proposals."""
-        assert project.file is not None and project.process is not None
+        assert project.file is not None
+        assert project.process is not None
         self.project = project
         self._file, self._process = project.file, project.process
         self._propose = propose
@@ -89,8 +91,9 @@ class Evaluator:
         key = (f"{name}:{own_supply}", wanted)
         if key not in self._linked:
             mapped = sets.linked(wanted, self.conditions(name), own_supply)
-            external: Callable[[str, str], Array] = lambda sheet, part: self._external(name, mapped, sheet, part)
-            self._linked[key] = Case(self.project.sheets[name], mapped, external, self.filled(name))
+            self._linked[key] = Case(
+                self.project.sheets[name], mapped, partial(self._external, name, mapped), self.filled(name)
+            )
         return self._linked[key]
 
     def inputs(self, name: str) -> Inputs:

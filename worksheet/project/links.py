@@ -79,7 +79,7 @@ def name_problems(sheet: Sheet, sheets: Mapping[str, Sheet]) -> list[Problem]:
 def _unknown(sheet: Sheet, sheets: Mapping[str, Sheet], name: str, own_metrics: bool) -> str | None:
     if "." not in name:
         known = [*names(sheet), *(metrics.keys() if own_metrics else ())]
-        if not own_metrics and name in metrics.keys():
+        if not own_metrics and metrics.find(name) is not None:
             return f"{name!r} is a metric of this sheet; only a target's formula may use it"
         return None if name in known else _suggest(f"{name!r} is no name of this sheet", name, known)
     other_name, part = name.split(".", 1)
@@ -87,9 +87,9 @@ def _unknown(sheet: Sheet, sheets: Mapping[str, Sheet], name: str, own_metrics: 
     if other is None:
         return _suggest(f"there is no sheet {other_name!r}", other_name, list(sheets))
     if part in other.targets and other.targets[part].formula is not None:
-        return f"{name!r} is a target with a formula; only metrics, assumptions, own names and design variables of another sheet can be used"
+        return f"{name!r} is a target with a formula, which another sheet cannot use"
     stage = catalogue.find(other.stage)
-    if part in metrics.keys():
+    if metrics.find(part) is not None:
         return stage.absent_metric(part) if stage is not None else None
     known = [*names(other), *metrics.keys()]
     return None if part in known else _suggest(f"{part!r} is no name of the sheet {other_name!r}", part, known)

@@ -28,7 +28,7 @@ def late_problems(case: Case) -> Iterator[Problem]:
                 yield case.problem(
                     key,
                     stated,
-                    f"the formula gives {found:g} m, expected between {low:g} and {high:g} m, the limits of {model.name}",
+                    f"the formula gives {found:g} m, expected {low:g} to {high:g} m, the limits of {model.name}",
                 )
         length = float(np.min(case.value(device.key("length"))))
         if case.stated(device.key("length")) is None or case.sheet.choose.get(device.key("length")) is None:

@@ -47,7 +47,8 @@ def _reverse_shares(solution: NumericSolution, case: Case, spread: Callable[[Arr
             at = case.conditions.conditions[place % len(case.conditions)]
             yield Note(
                 f"{name}.drain_conductance",
-                f"understated by up to {shares[place]:.0%}: the {name} device is near the edge of saturation at {at.process}, "
+                f"understated by up to {shares[place]:.0%}: the {name} device is near the edge of saturation at "
+                f"{at.process}, "
                 f"{format_quantity(at.temperature, dim.TEMPERATURE)}, {format_quantity(at.supply, dim.VOLTAGE)}",
             )
 

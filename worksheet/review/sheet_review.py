@@ -29,7 +29,8 @@ from worksheet.solver import goals, ranges
 class Points:
     """A case solved over points: its conditions, times the ends of its assumptions' ranges.
 
-    Arrays that it gives have shape (points,), the stated values at the nominal condition first, conditions running fastest.
+    Arrays that it gives have shape (points,): the stated values at the nominal condition first, conditions running
+    fastest.
     """
 
     case: Case
@@ -190,7 +191,8 @@ def level_problems(points: Points) -> list[Problem]:
     levels = case.stage.levels
     key = next((f"assume.{level}" for level in reversed(levels) if level not in case.sheet.assume), "assume")
     message = (
-        f"no {key.split('.')[-1]} is assumed and the range that keeps every device saturated is empty by {short:.3g} V at the nominal "
+        f"no {key.split('.')[-1]} is assumed and the range that keeps every device saturated is empty by {short:.3g} V "
+        f"at the nominal "
         f"condition; assume {' or '.join(levels)}, or change sizes, current or supply"
     )
     return [Problem(case.sheet.file, case.sheet.lines.get("assume", case.sheet.lines.get("stage")), key, message)]

@@ -110,7 +110,7 @@ class Needs:
         return found
 
     def proposal(self) -> dict[str, float]:
-        """What taking over would write: the recommended point's free values, on the layout grid and still valid. [SI]"""
+        """What taking over would write: the recommended point's free values, on the grid and still valid. [SI]"""
         point = self.solved.recommended
         if point is None:
             return {}

@@ -28,7 +28,7 @@ def followers(subject: Subject) -> dict[str, str]:
 
 
 def starting_values(subject: Subject, names: Sequence[str]) -> dict[str, float]:
-    """Numbers to start a search from: sizes near the shortest, inversion coefficient 1, one picofarad. [unit of each key]"""
+    """Numbers to start a search from: sizes near the shortest, inversion 1, one picofarad. [unit of each key]"""
     start: dict[str, float] = {}
     for device in subject.circuit.devices:
         model = subject.model(device)

@@ -22,7 +22,7 @@ SIDES = ("low", "high")
 
 
 def measure(subject: Subject, target: Target, solution: NumericSolution) -> Measured:
-    """What a target is about, over the solution's points: a metric, a bound at a yield, or a figure. [unit of the target]"""
+    """What a target is about, over the solution's points: a metric, a bound at a yield, a figure. [its unit]"""
     metric = metrics.find(target.name)
     if target.formula is not None or metric is None:
         return missing_where(subject.figure(target, solution))

@@ -49,7 +49,7 @@ class Free:
 
     @property
     def by_area(self) -> bool:
-        """Whether current is held and width and length are both free: then gate area and aspect ratio are coordinates."""
+        """Whether width and length are free and the current is not: then gate area and aspect ratio are coordinates."""
         return "bias_current" not in self.names and "width" in self.names and "length" in self.names
 
     def space(self) -> Space:
@@ -130,7 +130,7 @@ class Free:
 
 
 def freedoms(subject: Subject) -> tuple[str, ...]:
-    """What the recommended point is free in: current and width, length and load where they are open, less what is assumed."""
+    """What the recommended point is free in: current, width, and length and load where open, less what is assumed."""
     wanted = ["bias_current", "width"]
     wanted += [name for name in ("length", "load_capacitance") if name in subject.open_keys]
     return tuple(name for name in wanted if name not in subject.sheet.assume)

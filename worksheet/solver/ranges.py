@@ -15,7 +15,7 @@ FULL_UP_TO = 6
 
 
 def ranged(sheet: Sheet) -> dict[str, tuple[float, float]]:
-    """Assumptions and own names that carry a range: (low, high), the stated number where an end is left out. [unit of the key]"""
+    """Assumptions and own names with a range: (low, high), the stated number for a missing end. [unit of the key]"""
     found = {}
     for name, value in (*sheet.assume.items(), *sheet.own.items()):
         if value.number is not None and (value.low is not None or value.high is not None):

@@ -19,7 +19,7 @@ class Bound:
         value: Where. [unit of the variable]
         at: The condition in which it binds.
         point: Index of that condition, the nominal one being 0.
-        edge: Whether the metric stops existing there instead of crossing its limit.
+        edge: Whether the metric jumps or stops existing there instead of crossing its limit.
         moves_with: What moves along with the variable, by name ("width" when the inversion is kept). [unit of the key]
     """
 

@@ -75,7 +75,7 @@ class Search:
             score: Of (first, rest) at the least feasible first coordinate of each rest; inf to leave a place out.
         Returns: Found; where nothing holds, the place with the greatest least slack
         """
-        value = score if score is not None else (lambda first, rest: first)
+        value = score if score is not None else (lambda first, _rest: first)
         places = self._grid(self._space.rest, _COARSE.get(len(self._space.rest), 7))
         best = self._best(places, value, None)
         span = np.array(
@@ -92,7 +92,7 @@ class Search:
         return self._polished(best)
 
     def greatest(self, index: int) -> Array | None:
-        """The place with the most slack of one constraint among those where the wanted ones hold, None where none do."""
+        """The place with the most slack of one constraint among those where the wanted ones hold; None for none."""
         start = self.least()
         if not start.feasible:
             return None
@@ -150,7 +150,7 @@ class Search:
         return first, slack
 
     def _look(self, places: Array, start: Array, step: float, count: int) -> tuple[Array, Array, float]:
-        """Sample the first coordinate and interpolate: least feasible value, slack there, and the step of the interpolation."""
+        """Sample the first coordinate and interpolate: least feasible value, slack there, and the finer step."""
         samples = np.minimum(start[:, None] + step * np.arange(count), self._space.first[1])
         slack = self.slack(samples.reshape(-1), np.repeat(places, count, axis=0)).reshape(-1, len(places), count)
         grid = np.linspace(0, count - 1, (count - 1) * _FINER + 1)

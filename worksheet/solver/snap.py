@@ -1,4 +1,4 @@
-"""A proposal brought to what can be drawn and typed: sizes on the grid, the rest to few digits, all of it still valid."""
+"""A proposal brought to what can be drawn and typed: sizes on the grid, the rest to few digits, all still valid."""
 
 from __future__ import annotations
 

@@ -5,8 +5,8 @@ from __future__ import annotations
 from dataclasses import dataclass, replace
 
 from worksheet.model.keys import Key
-from worksheet.model.sheet import DeviceModel
 from worksheet.model.quantity import parse
+from worksheet.model.sheet import DeviceModel
 from worksheet.model.sheet_keys import GEOMETRY, OWN, SOLVE_KEYS
 from worksheet.solver.subject import Subject, scalar
 

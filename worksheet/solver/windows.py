@@ -23,6 +23,8 @@ _ROUNDS = 80
 _CLOSE = 2e-13
 _MET_BY = 2e-9
 _PROBE = 1e-8
+_JUMP = 1e-7
+"""More slack than this at the last value that meets: the metric jumps or stops existing there."""
 
 
 @dataclass(frozen=True, eq=False, slots=True)
@@ -141,7 +143,7 @@ def _crossings(trials: Trials, line: _Lines, places: Sequence[Array], met: Seque
     low, high, gap_low, gap_high = _refined(look, low, high, rising)
     chosen = np.where(rising, high, low)
     _, point = look(chosen)
-    edge = np.maximum(np.abs(gap_low), np.abs(gap_high)) >= 0.5 * goals.FAR
+    edge = np.abs(np.where(rising, gap_high, gap_low)) > _JUMP
     for k, axis in enumerate(owner):
         item = Crossing(int(rows[k]), float(np.exp(chosen[k])), int(point[k]), bool(rising[k]), bool(edge[k]))
         found[int(axis)].append(item)

@@ -18,7 +18,12 @@ DRIVE = "drive"
 LOAD, IDEAL, WELL, RESISTOR = "load", "ideal_bias", "well", "drive_resistor"
 """Names of the elements that are no transistor."""
 
-CONDUCTANCES = (("transconductance", 1, "gate"), ("drain_conductance", 1, "drain"), ("bulk_conductance", 1, "bulk"), ("source_conductance", -1, "source"))
+CONDUCTANCES = (
+    ("transconductance", 1, "gate"),
+    ("drain_conductance", 1, "drain"),
+    ("bulk_conductance", 1, "bulk"),
+    ("source_conductance", -1, "source"),
+)
 """i_d = g_m v_g + g_d v_d + g_b v_b - g_s v_s: operating value, sign, controlling terminal."""
 
 CAPACITANCES = (
@@ -78,7 +83,7 @@ class Circuit:
         return SUPPLY if device.upside_down else GROUND
 
     def node(self, device: Transistor, terminal: str) -> str:
-        """The network node of a device's terminal ("gate", "drain", "source", "bulk"); lines are told apart by device."""
+        """The network node of a device's "gate", "drain", "source" or "bulk"; lines are told apart by device."""
         name = self.bulk_node(device) if terminal == "bulk" else getattr(device, terminal)
         if name == LINE:
             return f"{LINE}:{device.name}"
@@ -120,7 +125,8 @@ class Circuit:
         terms = []
         for value, sign, terminal in CONDUCTANCES:
             column = self.node(device, terminal)
-            terms += [Term(drain, column, sign, (device.name, value), False), Term(source, column, -sign, (device.name, value), False)]
+            element = (device.name, value)
+            terms += [Term(drain, column, sign, element, False), Term(source, column, -sign, element, False)]
         for value, first, second in CAPACITANCES:
             terms += _between((device.name, value), self.node(device, first), self.node(device, second), dynamic=True)
         return terms
@@ -130,7 +136,7 @@ class Circuit:
         return self._stack(node, "upper", "lower")
 
     def stack_above(self, node: str) -> tuple[str, tuple[Transistor, ...]]:
-        """Follow the channels from a node towards the supply: the fixed node where that ends, and the devices passed."""
+        """Follow the channels from a node towards the supply: the fixed node at the end, and the devices passed."""
         return self._stack(node, "lower", "upper")
 
     def _stack(self, node: str, near: str, far: str) -> tuple[str, tuple[Transistor, ...]]:

@@ -35,7 +35,5 @@ DRAIN_FOLLOWER = Stage(
     purpose="Divide a voltage by the drain coupling: the output sees little of what the drain does.",
     transistors=(Transistor("main", gate=LINE, drain=IN, source=OUT),),
     levels=("input_level", "output_level"),
-    undefined={
-        "supply_rejection": "supply_rejection is not defined for a drain-driven follower: its input stands on the supply"
-    },
+    undefined={"supply_rejection": "supply_rejection has no meaning for this stage: its input stands on the supply"},
 )

@@ -27,7 +27,7 @@ def run(args: argparse.Namespace, output: Output) -> int:
     from worksheet.report import plain, review_text
     from worksheet.session.workbook import Workbook
 
-    result = Workbook.read(Path(args.project)).review(datetime.date.today())
+    result = Workbook.read(Path(args.project)).review(datetime.datetime.now().astimezone().date())
     tell(result.problems)
     if output.as_json:
         output.document(plain.review(result))
