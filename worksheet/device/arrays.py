@@ -8,5 +8,8 @@ from numpy.typing import NDArray
 Array = NDArray[np.float64]
 """Double-precision array; the last axis runs over conditions where a layer above says so."""
 
+Complex = NDArray[np.complex128]
+"""Double-precision complex array, same conventions."""
+
 Number = Array | float
 """What the functions of this layer take."""

@@ -9,9 +9,8 @@ from __future__ import annotations
 from collections.abc import Sequence
 
 import numpy as np
-from numpy.typing import NDArray
 
-from worksheet.device.arrays import Array, Number
+from worksheet.device.arrays import Array, Complex, Number
 
 Poly = list[Number]
 """Coefficients, lowest power first; an empty list is zero."""
@@ -89,6 +88,14 @@ def evaluate(a: Sequence[Number], x: Number) -> Array:
     return np.asarray(total)
 
 
+def evaluate_complex(a: Sequence[Number], x: Complex) -> Complex:
+    """Value of the polynomial at complex x (Horner)."""
+    total = np.zeros((), dtype=np.complex128)
+    for coefficient in reversed(a):
+        total = np.asarray(total * x + coefficient)
+    return total
+
+
 def lowest_positive_root(a: Sequence[Number]) -> Array:
     """Smallest real root above zero, NaN where there is none.
 
@@ -120,7 +127,7 @@ def positive_roots(a: Sequence[Number]) -> Array:
         return roots if len(a) <= 3 else _polished(a, roots)
 
 
-def inverse_roots(a: Sequence[Number]) -> Array:
+def inverse_roots(a: Sequence[Number]) -> Complex:
     """-1/root of every root along a new first axis, complex; 0 where the degree is lower (a root at infinity).
 
     For a denominator these are the time constants of its poles. [s]
@@ -151,7 +158,7 @@ def _quadratic_inverse(b: Array, c: Array) -> tuple[Array, Array]:
     return far, near
 
 
-def _companion(ratio: Array) -> NDArray[np.complex128]:
+def _companion(ratio: Array) -> Complex:
     """All y = 1/x with 1 + r_1 x + ... + r_n x^n = 0, along the first axis, after scaling to order one."""
     degree = ratio.shape[0]
     powers = np.arange(1, degree + 1).reshape((-1,) + (1,) * (ratio.ndim - 1))

@@ -7,7 +7,7 @@ from collections.abc import Sequence
 import numpy as np
 
 from worksheet.device import charge
-from worksheet.device.arrays import Array, Number
+from worksheet.device.arrays import Array, Complex, Number
 from worksheet.engine import polynomial as poly
 
 _BISECTIONS = 60
@@ -36,7 +36,7 @@ def linear(numerator: Sequence[Number], denominator: Sequence[Number], tolerance
         return _last_crossing(_residues(numerator, constants), constants, np.asarray(tolerance))
 
 
-def _apart(constants: Array) -> Array:
+def _apart(constants: Complex) -> Complex:
     """Move two equal time constants apart by a relative 1e-7, whose effect is of second order."""
     constants = constants.copy()
     for i in range(len(constants)):
@@ -47,13 +47,13 @@ def _apart(constants: Array) -> Array:
     return constants
 
 
-def _residues(numerator: Sequence[Number], constants: Array) -> Array:
+def _residues(numerator: Sequence[Number], constants: Complex) -> Complex:
     """Weights c_k of the error sum c_k exp(-t/tau_k), relative to the final change."""
     relative = [np.asarray(x / np.asarray(numerator[0])) for x in numerator]
     weights = []
     for k, tau in enumerate(constants):
         inverse = np.where(tau == 0, 0.0, -1.0 / np.where(tau == 0, 1.0, tau))
-        weight = -poly.evaluate([x.astype(np.complex128) for x in relative], inverse)
+        weight = -poly.evaluate_complex(relative, inverse)
         for j, other in enumerate(constants):
             if j != k:
                 weight = weight / (1.0 - other / np.where(tau == 0, 1.0, tau))
@@ -61,7 +61,7 @@ def _residues(numerator: Sequence[Number], constants: Array) -> Array:
     return np.stack(np.broadcast_arrays(*weights))
 
 
-def _last_crossing(weights: Array, constants: Array, tolerance: Array) -> Array:
+def _last_crossing(weights: Complex, constants: Complex, tolerance: Array) -> Array:
     shape = np.broadcast_shapes(weights.shape[1:], constants.shape[1:], tolerance.shape)
     weights = np.broadcast_to(weights, (len(weights), *shape)).reshape(len(weights), -1)
     constants = np.broadcast_to(constants, (len(constants), *shape)).reshape(len(constants), -1)
@@ -82,7 +82,7 @@ def _last_crossing(weights: Array, constants: Array, tolerance: Array) -> Array:
 class _Error:
     """The error sum w_k exp(-r_k t) of a step response, relative to its final change, for many cases at once."""
 
-    def __init__(self, weights: Array, rates: Array, tolerance: Array) -> None:
+    def __init__(self, weights: Complex, rates: Complex, tolerance: Array) -> None:
         self._weights, self._rates, self._tolerance = weights, rates, tolerance
         slowest = np.max(np.where(weights == 0, 0.0, 1.0 / rates.real), axis=0)
         envelope = np.sum(np.abs(weights), axis=0) / tolerance

@@ -11,7 +11,7 @@ from functools import cached_property
 
 import numpy as np
 
-from worksheet.device.arrays import Array, Number
+from worksheet.device.arrays import Array, Complex, Number
 from worksheet.device.constants import BOLTZMANN
 from worksheet.engine import polynomial as poly
 from worksheet.engine import settling
@@ -167,7 +167,7 @@ class NumericSolution:
         )
 
     @cached_property
-    def time_constants(self) -> Array:
+    def time_constants(self) -> Complex:
         """-1/pole of every pole along a first axis, complex. [s]"""
         return poly.inverse_roots(self.network.denominator)
 

@@ -59,7 +59,7 @@ def _ranges(solution: NumericSolution) -> Iterator[Shortfall]:
     levels, supply, step = solution.levels, solution.inputs.supply, solution.inputs.step_size
     for name, gate in levels.gates.items():
         driven = next(d for d in solution.inputs.circuit.devices if d.name == name).gate == IN
-        moved = step if driven and step is not None and solution.inputs.circuit.stage.holds_input else 0.0
+        moved = step if driven and step is not None else 0.0
         yield Shortfall(name, "range", _outside(gate, 0.0, supply, moved, moved))
     if levels.input_is_level:
         moved = 0.0 if step is None else step
