@@ -45,12 +45,12 @@ class Choice:
     Attributes:
         solution: The fit.
         reasons: Why a parameter is not in it, by name in law.NAMES.
-        unseen: Standard errors that optional parameters would have had, of those that were tried and left out.
+        tried: Optional parameters that were tried and left out.
     """
 
     solution: Solution
     reasons: dict[str, str]
-    unseen: dict[str, float]
+    tried: frozenset[str]
 
 
 def distinct(values: Array, apart: float) -> int:
@@ -126,22 +126,46 @@ def choose(
     order = neighbours(rows)
     best = _settled(minimise(rows, start, free, reference, weights=weights, neighbours=order), rows, reference, reasons)
     waiting = [one for one in offered if one not in reasons]
-    unseen: dict[str, float] = {}
+    tried: set[str] = set()
     while waiting:
         trials = [_with(rows, best, name, reference, weights, order) for name in waiting]
         gains = [_gain(best, trial) for trial in trials]
-        tried = {name: _unphysical(trial, name) for name, trial in zip(waiting, trials, strict=True)}
-        able = [place for place, name in enumerate(waiting) if not tried[name] and gains[place] > EVIDENCE]
+        wrong = {name: _unphysical(trial, name) for name, trial in zip(waiting, trials, strict=True)}
+        able = [place for place, name in enumerate(waiting) if not wrong[name] and gains[place] > EVIDENCE]
         if not able:
             for place, name in enumerate(waiting):
-                earned = tried[name] if gains[place] > EVIDENCE else ""
+                earned = wrong[name] if gains[place] > EVIDENCE else ""
                 reasons[name] = earned or "it does not earn its place: the fit is as good without it"
-                unseen[name] = trials[place].error(name) or 0.0
+                tried.add(name)
             break
         winner = max(able, key=lambda place: gains[place])
         best = trials[winner]
         del waiting[winner]
-    return Choice(_final(rows, best, reference, weights, order, reasons), reasons, unseen)
+    return Choice(_final(rows, best, reference, weights, order, reasons, tried), reasons, frozenset(tried))
+
+
+def unseen(rows: Rows, choice: Choice, reference: Reference) -> frozenset[str]:
+    """Parameters that were tried and left out, of which the data would not show a value that matters either.
+
+    Each is put to such a value and the rest fitted again; where the fit is hardly worse, nothing is known of it.
+
+    Args:
+        rows: The rows that were fitted.
+        choice: The fit.
+        reference: Where the parameters are stated.
+    """
+    found = set()
+    best = choice.solution
+    length = float(np.nanmin(rows.length)) if np.isfinite(rows.length).all() else 1.0
+    matters = {"inverse_potential": 1.0, "length_modulation": 0.2 * length, "velocity_length": 0.1e-6}
+    for name in choice.tried & matters.keys():
+        start = best.values.copy()
+        start[AT[name]] = matters[name]
+        trial = minimise(rows, start, best.free, reference)
+        worse = _spread(trial, best.scale) / max(_spread(best, best.scale), 1e-30)
+        if best.independent * np.log(max(worse, 1e-30)) < EVIDENCE:
+            found.add(name)
+    return frozenset(found)
 
 
 OFF_UNLESS_FREE = ("drain_coupling", *LAWS, *OPTIONAL)
@@ -172,7 +196,13 @@ def _settled(solution: Solution, rows: Rows, reference: Reference, reasons: dict
 
 
 def _final(
-    rows: Rows, best: Solution, reference: Reference, weights: Array | None, order: Index, reasons: dict[str, str]
+    rows: Rows,
+    best: Solution,
+    reference: Reference,
+    weights: Array | None,
+    order: Index,
+    reasons: dict[str, str],
+    tried: set[str],
 ) -> Solution:
     """The fit without optional parameters that later ones have made idle."""
     for name in [one for one in best.free if one in OPTIONAL]:
@@ -184,6 +214,7 @@ def _final(
             free = tuple(one for one in best.free if one != name)
             best = minimise(rows, start, free, reference, weights=weights, neighbours=order)
             reasons[name] = wrong or "it does not earn its place beside the others"
+            tried.add(name)
     return _settled(best, rows, reference, reasons)
 
 
@@ -208,9 +239,7 @@ def _gain(best: Solution, trial: Solution) -> float:
     Residuals are clipped at three standard deviations. Points that hang together count as fewer, except where the error
     falls so much that a designer would see it: the law's own misfit is no reason to leave out what mends it.
     """
-    edge = 3.0 * best.scale
-    before = float(np.mean(np.clip(best.residuals, -edge, edge) ** 2))
-    after = float(np.mean(np.clip(trial.residuals, -edge, edge) ** 2))
+    before, after = _spread(best, best.scale), _spread(trial, best.scale)
     ratio = np.log(max(before, 1e-30) / max(after, 1e-30))
     count = float(len(best.residuals)) if ratio > SEEN else best.independent
 
@@ -219,3 +248,8 @@ def _gain(best: Solution, trial: Solution) -> float:
         return 2.0 * width + 2.0 * width * (width + 1) / max(count - width - 1.0, 1.0)
 
     return float(count * ratio - penalty(trial) + penalty(best))
+
+
+def _spread(solution: Solution, scale: float) -> float:
+    """Mean square of the residuals, clipped at three standard deviations. [-]"""
+    return float(np.mean(np.clip(solution.residuals, -3.0 * scale, 3.0 * scale) ** 2))

@@ -10,7 +10,7 @@ import math
 
 import numpy as np
 
-from worksheet.extract.choose import CORE, Choice
+from worksheet.extract.choose import CORE, Choice, unseen
 from worksheet.extract.data import Estimate, Rows
 from worksheet.extract.fit import Solution
 from worksheet.extract.law import AT, Reference
@@ -45,12 +45,13 @@ _LARGEST_ERROR = {
     "threshold_drift": 5e-4,
     "mobility_exponent": 0.75,
 }
-_UNSEEN = {"inverse_potential": 1.0, "length_modulation": 0.2, "velocity_length": 0.1e-6}
 _WEAK, _STRONG = 0.1, 10.0
 
 
 def estimates(choice: Choice, rows: Rows, inversion: tuple[float, float], reference: Reference) -> dict[str, Estimate]:
     """The parameters of one fit.
+
+    What was tried and left out is looked at once more: a value that the data would not show is not stated as 0.
 
     Args:
         choice: The fit.
@@ -60,13 +61,14 @@ def estimates(choice: Choice, rows: Rows, inversion: tuple[float, float], refere
     """
     solution = choice.solution
     blind = _blind(solution, inversion)
+    hidden = unseen(rows, choice, reference)
     found = {}
     for name, unit in UNITS.items():
         inner = _FITTED_AS.get(name, name)
         if name == "drain_coupling_length":
             found[name] = _reference_length(rows, reference)
         elif inner in choice.reasons:
-            found[name] = _unfitted(name, inner, choice, rows)
+            found[name] = _unfitted(name, inner, choice, rows, hidden=inner in hidden)
         elif inner in blind:
             found[name] = Estimate(None, None, unit, blind[inner])
         else:
@@ -124,20 +126,17 @@ def _fitted(name: str, inner: str, solution: Solution, rows: Rows) -> Estimate:
     return Estimate(value, error, UNITS[name])
 
 
-def _unfitted(name: str, inner: str, choice: Choice, rows: Rows) -> Estimate:
+def _unfitted(name: str, inner: str, choice: Choice, rows: Rows, *, hidden: bool) -> Estimate:
     """A parameter that is not in the fit: None where nothing is known of it, else its default, which is 0."""
     reason = choice.reasons[inner]
-    if inner not in choice.unseen and name != "drain_coupling":
-        return Estimate(None, None, UNITS[name], reason)
     if name == "drain_coupling":
         seen = reason.startswith("it is not above 0")
         return Estimate(0.0 if seen else None, None, UNITS[name], reason)
-    error = choice.unseen[inner]
-    known = np.isfinite(rows.length).all()
-    scaled = error / float(rows.length.min()) if name == "length_modulation" and known else error
-    if scaled > _UNSEEN.get(inner, math.inf) and reason.startswith("it does not earn"):
+    if inner not in choice.tried:
+        return Estimate(None, None, UNITS[name], reason)
+    if hidden and reason.startswith("it does not earn"):
         return Estimate(None, None, UNITS[name], "the data cannot tell it from 0, nor from a value that would matter")
-    if name == "length_modulation" and not known:
+    if name == "length_modulation" and not np.isfinite(rows.length).all():
         return Estimate(None, None, UNITS[name], "the length is not known")
     return Estimate(0.0, None, UNITS[name], f"left at its default: {reason}")
 

@@ -259,7 +259,7 @@ def _anchored(part: Rows, found: Spanned, reference: Reference) -> Spanned:
             weights = weights / np.sqrt(np.mean(weights**2))
             choice = choose(inside, best.values, reference, weights=weights, offered=offered)
             reasons = {**choice.reasons, **_unoffered(found.choice.reasons, offered)}
-            choice = Choice(choice.solution, reasons, {**found.choice.unseen, **choice.unseen})
+            choice = Choice(choice.solution, reasons, found.choice.tried | choice.tried)
             trial = Spanned(choice, found.inside, found.low, found.high, found.highest_source, anchor)
         over_all = core_error(trial.values, inside, reference)
         zero = core_error(trial.values, inside.take(at_zero), reference)

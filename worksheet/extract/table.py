@@ -164,8 +164,9 @@ def _find(lines: Iterator[tuple[int, str]], stated: Mapping[str, Stated]) -> tup
         seen.append((number, line))
         for sign in _COMMENTS:
             bare = bare.removeprefix(sign).strip()
-        best = max(_DELIMITERS, key=lambda one: _score(one, bare, wanted))
-        if _score(best, bare, wanted) >= (len(wanted) if wanted else 3):
+        enough = len(wanted) if wanted else 3
+        best = next((one for one in _DELIMITERS if _score(one, bare, wanted) >= enough), None)
+        if best is not None:
             return _Head(number, tuple(best.split([bare])[0]), best, consumed=True), seen
         if wanted and all(one.startswith("#") for one in wanted) and (way := _numeric(line)) is not None:
             cells = tuple(f"#{place + 1}" for place in range(len(way.split([line])[0])))
@@ -186,10 +187,8 @@ def _score(delimiter: _Delimiter, line: str, wanted: Sequence[str]) -> int:
     if _all_numbers(cells):
         return 0
     folded = {one.strip().casefold() for one in cells}
-    numbered = [one for one in wanted if re.fullmatch(r"#[0-9]+", one)]
-    return sum(one.casefold() in folded for one in wanted) + (
-        len(numbered) if len(cells) > 1 and len(numbered) == len(wanted) else 0
-    )
+    numbered = sum(re.fullmatch(r"#[0-9]{1,5}", one) is not None and int(one[1:]) <= len(cells) for one in wanted)
+    return sum(one.casefold() in folded for one in wanted) + (numbered if len(cells) > 1 else 0)
 
 
 def _numeric(line: str) -> _Delimiter | None:
