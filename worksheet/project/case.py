@@ -223,7 +223,7 @@ class Case:
 
         def lookup(name: str) -> Number:
             if "." in name:
-                return self.external(*name.split(".", 1))
+                return self.moves[name] if name in self.moves else self.external(*name.split(".", 1))
             found = extra(name) if extra is not None else None
             return self.value(name) if found is None else found
 
@@ -259,9 +259,8 @@ class Case:
         current = self.value("bias_current")
         if not np.any(exponent):
             return current
-        temperature = np.asarray(self.value("temperature"))
-        nominal = temperature if temperature.ndim == 0 else temperature[..., :1]
-        return np.asarray(current * (temperature / nominal) ** exponent)
+        nominal = self.conditions.nominal.temperature
+        return np.asarray(current * (np.asarray(self.value("temperature")) / nominal) ** exponent)
 
     def parameters(self, device: Transistor) -> Parameters:
         """One transistor's parameters over the conditions."""

@@ -47,9 +47,7 @@ class Evaluator:
     def bare(self, name: str) -> Case:
         """A sheet's case with nothing proposed."""
         conditions = self.conditions(name)
-        return Case(
-            self.project.sheets[name], conditions, lambda sheet, key: self._external(name, conditions, sheet, key)
-        )
+        return Case(self.project.sheets[name], conditions, partial(self._external, name, conditions))
 
     def case(self, name: str) -> Case:
         """A sheet's case over its own conditions, with what it leaves open proposed.
@@ -59,6 +57,10 @@ class Evaluator:
         if name not in self._cases:
             self._cases[name] = self.bare(name).with_filled(self.filled(name))
         return self._cases[name]
+
+    def over(self, name: str, conditions: ConditionSet) -> Case:
+        """A sheet's case over other conditions than its own, its proposals held."""
+        return Case(self.project.sheets[name], conditions, partial(self._external, name, conditions), self.filled(name))
 
     def filled(self, name: str) -> Mapping[str, float]:
         """Proposals for what a sheet leaves open, found once. [unit of the key]"""

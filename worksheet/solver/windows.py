@@ -8,7 +8,7 @@ from dataclasses import dataclass
 import numpy as np
 
 from worksheet.device.arrays import Array
-from worksheet.solver import goals
+from worksheet.solver import roots
 from worksheet.solver.results import Bound, Region, Window
 from worksheet.solver.subject import scalar
 from worksheet.solver.trials import PROCESS, Index, Mask, Trials, holds, tolerances
@@ -19,10 +19,6 @@ Line = Callable[[Array], Mapping[str, Array]]
 
 _A_DECADE = 12
 _LEAST, _MOST = 40, 120
-_ROUNDS = 80
-_CLOSE = 2e-13
-_MET_BY = 2e-9
-_PROBE = 1e-8
 _JUMP = 1e-7
 """More slack than this at the last value that meets: the metric jumps or stops existing there."""
 
@@ -140,7 +136,7 @@ def _crossings(trials: Trials, line: _Lines, places: Sequence[Array], met: Seque
         at = np.arange(len(x))
         return cleared.slack[index, at] + allowed, np.asarray(cleared.worst[index, at])
 
-    low, high, gap_low, gap_high = _refined(look, low, high, rising)
+    low, high, gap_low, gap_high = roots.refined(look, low, high, rising)
     chosen = np.where(rising, high, low)
     _, point = look(chosen)
     edge = np.abs(np.where(rising, gap_high, gap_low)) > _JUMP
@@ -148,40 +144,6 @@ def _crossings(trials: Trials, line: _Lines, places: Sequence[Array], met: Seque
         item = Crossing(int(rows[k]), float(np.exp(chosen[k])), int(point[k]), bool(rising[k]), bool(edge[k]))
         found[int(axis)].append(item)
     return found
-
-
-def _refined(
-    look: Callable[[Array], tuple[Array, Index]], low: Array, high: Array, rising: Mask
-) -> tuple[Array, Array, Array, Array]:
-    """Both ends of every bracket drawn together by false position on the slack (Illinois), bisection where it stalls.
-
-    Returns: low, high, and the slack at both
-    """
-    gap_low, gap_high = look(low)[0], look(high)[0]
-    plain_low, plain_high = gap_low, gap_high
-    last = np.zeros(len(low))
-    for k in range(_ROUNDS):
-        met_end, met_gap = np.where(rising, high, low), np.where(rising, gap_high, gap_low)
-        width = high - low
-        near = np.abs(met_gap) <= _MET_BY
-        done = (near & (width <= 2 * _PROBE)) | (width <= _CLOSE * np.maximum(1.0, np.abs(low)))
-        if done.all():
-            break
-        with np.errstate(all="ignore"):
-            middle = (low * plain_high - high * plain_low) / (plain_high - plain_low)
-        middle = np.where(near, met_end + np.where(rising, -_PROBE, _PROBE), middle)
-        stuck = ~np.isfinite(middle) | (middle <= low) | (middle >= high) | (k % 5 == 4)
-        stuck |= np.maximum(np.abs(gap_low), np.abs(gap_high)) >= 0.5 * goals.FAR
-        middle = np.where(done, met_end, np.where(stuck, 0.5 * (low + high), middle))
-        gap = look(middle)[0]
-        above = (gap >= 0) == rising
-        to_high, to_low = above & ~done, ~above & ~done
-        plain_low = np.where(to_low, gap, np.where(to_high & (last > 0), plain_low / 2, plain_low))
-        plain_high = np.where(to_high, gap, np.where(to_low & (last < 0), plain_high / 2, plain_high))
-        low, gap_low = np.where(to_low, middle, low), np.where(to_low, gap, gap_low)
-        high, gap_high = np.where(to_high, middle, high), np.where(to_high, gap, gap_high)
-        last = np.where(done, last, np.where(above, 1.0, -1.0))
-    return low, high, gap_low, gap_high
 
 
 def _bound(trials: Trials, axis: Axis, crossing: Crossing) -> Bound:
