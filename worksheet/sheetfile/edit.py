@@ -168,9 +168,11 @@ def _annotate(document: Document, outer: Any, path: KeyPath, key: str, value: St
 def _add_table(document: Document, data: dict[str, Any], path: KeyPath, values: Values) -> str:
     """A new table."""
     names = tuple(map(str, path))
-    holder = data
+    holder: Any = data
     for part in names[:-1]:
-        holder = holder.setdefault(part, {})
+        holder = holder.setdefault(part, {}) if isinstance(holder, dict) else None
+    if not isinstance(holder, dict):
+        raise WriteRefusedError("what stands above it is no table")
     if names[-1] in holder:
         raise WriteRefusedError("the table exists already")
     holder[names[-1]] = plain(values)

@@ -16,7 +16,7 @@ Stated = str | int | float | bool | dt.date | Sequence[Any] | Mapping[str, Any]
 """What a key may be set to; a mapping is written as an inline table."""
 
 _LITERAL = re.compile(r"[^'\x00-\x08\x0a-\x1f\x7f]*")
-_LITERAL_LINES = re.compile(r"(?!\n)[^'\x00-\x08\x0b-\x1f\x7f]*")
+_LINES = re.compile(r"[^\x00-\x08\x0b-\x1f\x7f]*")
 
 
 def plain(value: Stated) -> Any:
@@ -27,6 +27,7 @@ def plain(value: Stated) -> Any:
     if isinstance(value, Mapping):
         return {key: plain(inner) for key, inner in value.items()}
     if isinstance(value, str):
+        value.encode()  # half of a surrogate pair has no place in a file
         return str(value)
     if isinstance(value, bool) or type(value) is dt.date:
         return value
@@ -53,8 +54,8 @@ def flat(value: Stated) -> str:
 
 def stated(value: Stated) -> str:
     """The value of a statement of its own: text of several lines stands on several lines."""
-    if isinstance(value, str) and "\n" in value and _LITERAL_LINES.fullmatch(value.replace("'", "").lstrip("\n")):
-        return '"""\n' + str(tomlkit.string(value, multiline=True).as_string())[3:]
+    if isinstance(value, str) and "\n" in value and _LINES.fullmatch(value):
+        return _on_lines(value, "\n")
     return flat(value)
 
 
@@ -65,14 +66,20 @@ def like(old: str, value: Stated) -> str:
         old: The old value as written.
         value: The new one.
     """
-    if isinstance(value, str):
-        if old.startswith(("'''", '"""')):
-            first = "\n" if old[3:4] == "\n" or old[3:5] == "\r\n" or value.startswith("\n") else ""
-            if old.startswith("'''") and _LITERAL_LINES.fullmatch(value.lstrip("\n")):
-                return f"'''{first}{value}'''"
-            if _LITERAL_LINES.fullmatch(value.replace("'", "").lstrip("\n")):
-                return '"""' + first + str(tomlkit.string(value, multiline=True).as_string())[3:]
-        if old.startswith("'") and _LITERAL.fullmatch(value):
-            return f"'{value}'"
-        return stated(value) if "\n" in value and "\n" in old else flat(value)
+    if not isinstance(value, str):
+        return flat(value)
+    if old.startswith(("'''", '"""')) and _LINES.fullmatch(value):
+        first = "\n" if old[3:5].startswith(("\n", "\r\n")) or value.startswith("\n") else ""
+        if old.startswith("'''") and "'" not in value:
+            return f"'''{first}{value}'''"
+        return _on_lines(value, first)
+    if old.startswith("'") and _LITERAL.fullmatch(value):
+        return f"'{value}'"
     return flat(value)
+
+
+def _on_lines(value: str, first: str) -> str:
+    """Text of several lines between three quotes; `first` is a line feed after these that is no part of it."""
+    rest = value.lstrip("\n")
+    body = str(tomlkit.string(rest, multiline=True).as_string())[3:-3]
+    return f'"""{first}{value[: len(value) - len(rest)]}{body}"""'
