@@ -74,15 +74,16 @@ def load(path: Path, shown: str) -> bytes | Problem:
         return Problem(shown, None, "", "There is no such file.")
     except (OSError, ValueError) as error:
         return Problem(shown, None, "", f"The file cannot be read: {_reason(error)}.")
-    with os.fdopen(descriptor, "rb") as file:
+    try:
         status = os.fstat(descriptor)
-        mode = status.st_mode
-        if not stat.S_ISREG(mode):
-            return Problem(shown, None, "", f"Found {_kind(mode)}, expected an ordinary file.")
-        try:
+        if not stat.S_ISREG(status.st_mode):
+            return Problem(shown, None, "", f"Found {_kind(status.st_mode)}, expected an ordinary file.")
+        with os.fdopen(descriptor, "rb", closefd=False) as file:
             content = file.read(LARGEST + 1)
-        except OSError as error:
-            return Problem(shown, None, "", f"The file cannot be read: {_reason(error)}.")
+    except OSError as error:
+        return Problem(shown, None, "", f"The file cannot be read: {_reason(error)}.")
+    finally:
+        os.close(descriptor)
     return _too_large(shown, max(status.st_size, len(content))) if len(content) > LARGEST else content
 
 
