@@ -16,13 +16,13 @@ COMMANDS = ("review", "solve", "stages", "start", "extract")
 """Modules of worksheet.cli.commands, in the order of the help."""
 
 
-class _Usage(Exception):
+class _UsageError(Exception):
     """The arguments are off."""
 
 
 class _Parser(argparse.ArgumentParser):
     def error(self, message: str) -> NoReturn:
-        raise _Usage(f"{message} (see {self.prog} --help)")
+        raise _UsageError(f"{message} (see {self.prog} --help)")
 
 
 def _parser() -> argparse.ArgumentParser:
@@ -30,11 +30,16 @@ def _parser() -> argparse.ArgumentParser:
         prog="biasbook",
         description="Calculation sheets for analog stages: what is needed, what is achieved, what binds.",
     )
-    parser.set_defaults(command=None)
+    parser.set_defaults(command=_no_command)
     subparsers = parser.add_subparsers(title="commands", metavar="COMMAND", parser_class=_Parser)
     for name in COMMANDS:
         import_module(f"worksheet.cli.commands.{name}").add(subparsers)
     return parser
+
+
+def _no_command(args: argparse.Namespace, output: Output) -> int:
+    del args, output
+    raise _UsageError("no command given (see biasbook --help)")
 
 
 def main(argv: Sequence[str] | None = None) -> int:
@@ -48,10 +53,8 @@ def main(argv: Sequence[str] | None = None) -> int:
     output = Output("--json" in arguments)
     try:
         parsed = _parser().parse_args(arguments)
-        if parsed.command is None:
-            raise _Usage("no command given (see biasbook --help)")
         status: int = parsed.command(parsed, output)
-    except _Usage as usage:
+    except _UsageError as usage:
         return _bad_usage(str(usage), output)
     except BrokenPipeError:
         close_quietly()

@@ -3,11 +3,12 @@
 from __future__ import annotations
 
 from collections.abc import Iterator
+from typing import TypeVar
 
 from worksheet.model.text import clean
 from worksheet.report import wording
 from worksheet.report.table import Column, Table, lines, wrapped
-from worksheet.review.results import MISSED, UNKNOWN, Review, SheetReview, TargetReview
+from worksheet.review.results import MET, MISSED, UNKNOWN, Review, SheetReview, TargetReview
 from worksheet.stages import catalogue
 
 _TARGETS = (
@@ -15,10 +16,16 @@ _TARGETS = (
     Column("wanted"),
     Column("nominal", right=True),
     Column("worst", right=True),
-    Column("where", flexible=True),
+    Column("where"),
     Column("margin", right=True),
     Column("verdict"),
 )
+_Cell = TypeVar("_Cell", str, Column)
+_WHERE = 4
+_WIDE = 110
+"""From this width on the table says where the worst value is; below, a line under it does for what is not met."""
+
+_DIGITS = 3
 
 
 def text(result: Review, width: int) -> Iterator[str]:
@@ -55,15 +62,36 @@ def _sheet(sheet: SheetReview, width: int) -> Iterator[str]:
     title = f": {clean(sheet.sheet.title)}" if sheet.sheet.title else ""
     yield from wrapped(f"{sheet.sheet.name}{title} ({kind}, {sheet.sheet.state}{count})", width)
     if sheet.targets:
-        yield from lines(Table(_TARGETS, tuple(_row(t) for t in sheet.targets)), width, "  ")
+        yield from lines(_targets(sheet, width), width, "  ")
     else:
         yield "  no targets"
     for target in sheet.targets:
-        if target.reason and target.verdict != "met":
-            yield from wrapped(f"{target.target.name}: {target.reason}", width, "  ")
+        said = _said(target, width)
+        if said:
+            yield from wrapped(f"{target.target.name}: {said}", width, "  ")
     yield from _validity(sheet, width)
     for note in sheet.notes:
         yield from wrapped(f"{note.about}: {note.text}", width, "  ")
+
+
+def _targets(sheet: SheetReview, width: int) -> Table:
+    rows = tuple(_row(target) for target in sheet.targets)
+    if width >= _WIDE:
+        return Table(_TARGETS, rows)
+    return Table(_without_where(_TARGETS), tuple(_without_where(row) for row in rows))
+
+
+def _without_where(row: tuple[_Cell, ...]) -> tuple[_Cell, ...]:
+    return row[:_WHERE] + row[_WHERE + 1 :]
+
+
+def _said(result: TargetReview, width: int) -> str:
+    """Why a target is not met and where it is worst, in words; "" where the table says enough."""
+    if result.verdict == MET:
+        return ""
+    where = "" if width >= _WIDE or result.worst_at is None else f"worst at {wording.condition(result.worst_at)}"
+    ends = ", ".join(f"{name} at an end of its range" for name in result.worst_with)
+    return "; ".join(part for part in (result.reason, where, ends) if part)
 
 
 def _row(result: TargetReview) -> tuple[str, ...]:
@@ -73,8 +101,8 @@ def _row(result: TargetReview) -> tuple[str, ...]:
     return (
         target.name,
         wording.limits(target, result.unit),
-        wording.metric_number(target.name, result.nominal, result.unit),
-        wording.metric_number(target.name, result.worst, result.unit),
+        wording.metric_number(target.name, result.nominal, result.unit, digits=_DIGITS),
+        wording.metric_number(target.name, result.worst, result.unit, digits=_DIGITS),
         wording.condition(result.worst_at),
         wording.margin(result.margin),
         (result.verdict.upper() if result.verdict in (MISSED, UNKNOWN) else result.verdict) + mark,
@@ -92,7 +120,8 @@ def _validity(sheet: SheetReview, width: int) -> Iterator[str]:
             "range": "outside its range",
         }[what]
         yield from wrapped(
-            f"not valid: {device} {said} by {wording.number(worst.short_by, worst.unit)} at {wording.condition(worst.at)}"
+            f"not valid: {device} {said} by {wording.number(worst.short_by, worst.unit, digits=_DIGITS)} "
+            f"at {wording.condition(worst.at)}"
             + (f", and at {len(entries) - 1} more conditions" if len(entries) > 1 else ""),
             width,
             "  ",

@@ -46,7 +46,7 @@ def watched(found: Stage) -> str:
 
 
 def held(found: Stage) -> list[str]:
-    """Terminals of all transistors that neither the input drives nor the output watches, and that no other one moves."""
+    """Terminals that neither the input drives nor the output watches, and that no other transistor moves."""
     fixed = [
         (device, terminal)
         for device in found.transistors

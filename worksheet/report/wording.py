@@ -12,7 +12,10 @@ STANDING = (
 )
 """What every report says of its numbers."""
 
-CAUTION = "A voltage past max_voltage endangers the device: the foundry's reliability rules, local codes and licensed practice have the last word."
+CAUTION = (
+    "A voltage past max_voltage endangers the device: the foundry's reliability rules, local codes and licensed "
+    "practice have the last word."
+)
 """Said wherever a rating is passed."""
 
 
@@ -39,10 +42,14 @@ def metric_number(key: str, value: float | None, unit: str, reason: str | None =
 
 
 def limits(target: Target, unit: str) -> str:
-    """What a target wants: "≥ 5 MHz", "0.65 to 1 V/V", with its guard band."""
+    """What a target wants: "≥ 5 MHz", "0.65 to 1 V/V" (the unit once where both ends share it), with its guard band."""
     low = None if target.minimum is None else metric_number(target.name, target.minimum, unit)
     high = None if target.maximum is None else metric_number(target.name, target.maximum, unit)
-    text = f"{low} to {high}" if low and high else f"≥ {low}" if low else f"≤ {high}"
+    if low and high:
+        number_low, _, unit_low = low.partition(" ")
+        text = f"{number_low if unit_low == high.partition(' ')[2] else low} to {high}"
+    else:
+        text = f"≥ {low}" if low else f"≤ {high}"
     return f"{text} +{target.guard:.0%}" if target.guard else text
 
 
@@ -55,4 +62,7 @@ def condition(at: Condition | None) -> str:
 
 def margin(value: float | None) -> str:
     """A relative margin with its sign."""
-    return "-" if value is None else f"{value:+.1%}" if abs(value) < 10 else f"{value:+.0f}x"
+    if value is None:
+        return "-"
+    value = 0.0 if abs(value) < 5e-4 else value
+    return f"{value:+.1%}" if abs(value) < 10 else f"{value:+.0f}x"

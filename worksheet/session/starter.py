@@ -18,6 +18,7 @@ from worksheet.stages.stage import Stage
 
 PROCESS_NAME = "my_process"
 SHEET_NAME = "first_block"
+PROCESS_FILE = f"{PROCESSES}/{PROCESS_NAME}.toml"
 _WIDTH = 100
 _P_CHANNEL = {
     "polarity": "p",
@@ -26,6 +27,22 @@ _P_CHANNEL = {
     "threshold": "0.45 V",
 }
 """Where the p-channel device of the example differs."""
+
+_CORNERS = {
+    "slow": {
+        "threshold_shift": "40 mV",
+        "specific_current_factor": "0.85",
+        "drain_coupling_factor": "1.1",
+        "capacitance_factor": "1.05",
+    },
+    "fast": {
+        "threshold_shift": "-40 mV",
+        "specific_current_factor": "1.15",
+        "drain_coupling_factor": "0.9",
+        "capacitance_factor": "0.95",
+    },
+}
+"""Changes of the example's corners, for both devices."""
 
 
 def start(folder: Path, stage: Stage) -> list[Problem]:
@@ -80,8 +97,8 @@ def process_text() -> str:
     """The process file of a new project: an n- and a p-channel device of invented numbers, and two corners."""
     lines = [
         *_said(
-            "The numbers below are invented, so that the project can be reviewed at once. Put your own process's in: every line "
-            "says what it is, in which unit, and where such a number is found. A bare value may become a table that says "
+            "The numbers below are invented, so that the project can be reviewed at once. Put your own process's in: every "
+            "line says what it is, in which unit, and where such a number is found. A bare value may become a table that says "
             'where it came from: { value = "0.45 V", source = "...", trust = "measured" }.'
         ),
         "",
@@ -93,19 +110,7 @@ def process_text() -> str:
         for key in DEVICE_PARAMETERS:
             value = _P_CHANNEL.get(key.name, key.example) if name == "pfet" else key.example
             lines += [*(_about(key) if name == "nfet" else ()), _line(key, value)]
-    slow = {
-        "threshold_shift": "40 mV",
-        "specific_current_factor": "0.85",
-        "drain_coupling_factor": "1.1",
-        "capacitance_factor": "1.05",
-    }
-    fast = {
-        "threshold_shift": "-40 mV",
-        "specific_current_factor": "1.15",
-        "drain_coupling_factor": "0.9",
-        "capacitance_factor": "0.95",
-    }
-    for corner, changes in (("slow", slow), ("fast", fast)):
+    for corner, changes in _CORNERS.items():
         for name in ("nfet", "pfet"):
             lines += ["", f"[corner.{corner}.{name}]"]
             for key in CORNER_CHANGES:

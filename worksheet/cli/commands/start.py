@@ -41,7 +41,7 @@ def run(args: argparse.Namespace, output: Output) -> int:
     output.lines(
         [
             f"A new project is in {clean(args.dir)}.",
-            f"Put your process's numbers into {starter.PROCESSES}/{starter.PROCESS_NAME}.toml, then: biasbook review {clean(args.dir)}",
+            f"Put your process's numbers into {starter.PROCESS_FILE}, then: biasbook review {clean(args.dir)}",
         ]
     )
     return Status.FINE
