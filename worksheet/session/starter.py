@@ -97,9 +97,9 @@ def process_text() -> str:
     """The process file of a new project: an n- and a p-channel device of invented numbers, and two corners."""
     lines = [
         *_said(
-            "The numbers below are invented, so that the project can be reviewed at once. Put your own process's in: every "
-            "line says what it is, in which unit, and where such a number is found. A bare value may become a table that says "
-            'where it came from: { value = "0.45 V", source = "...", trust = "measured" }.'
+            "The numbers below are invented, so that the project can be reviewed at once. Put your own process's in: "
+            "every line says what it is, in which unit, and where such a number is found. A bare value may become a "
+            'table that says where it came from: { value = "0.45 V", source = "...", trust = "measured" }.'
         ),
         "",
     ]
