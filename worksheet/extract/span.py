@@ -44,6 +44,7 @@ _RANGES = (
     (2e-3, 30.0),
     (3e-3, 30.0),
 )
+_FAR = 1.25
 _WORSE, _WORSE_BY = 1.10, 0.002
 _ANCHORS = (1.0, 2.0, 3.0, 4.0, 5.0)
 _TURNS = 3
@@ -123,9 +124,9 @@ def span(
     for highest in sources[::-1]:
         below = np.asarray(rows.source <= highest + 5e-4)
         part = rows.take(below)
-        if found is not None and (len(part) < _LEAST_ROWS or part.source.min() > NEAR_ZERO):
+        if found is not None and len(part) < _LEAST_ROWS:
             break
-        found = _ranged(part, start, reference, keep, most)
+        found = _hopeless(part, start, reference, keep, most) or _ranged(part, start, reference, keep, most)
         inside = below.copy()
         inside[below] = found.inside
         found = Spanned(found.choice, inside, found.low, found.high, float(highest), found.anchor)
@@ -133,6 +134,19 @@ def span(
         if not narrowing or FITTED_RANGE in keep or error is None or error <= GOOD_OVER_ALL:
             break
     assert found is not None  # rows are not empty
+    return found
+
+
+def _hopeless(
+    part: Rows, start: Array, reference: Reference, keep: Collection[str], most: float
+) -> Spanned | None:
+    """The fit over the core alone where even that is far from good, so that no range need be looked for; else None."""
+    if FITTED_RANGE in keep or SERIES_RESISTANCE in keep or len(part) > _SEARCHED:
+        return None
+    found = _within(part, start, reference, (CORE_LOW, CORE_HIGH))
+    error = core_error(found.values, part.take(found.inside), reference)
+    if error is None or error <= _FAR * GOOD_OVER_ALL or np.mean(_above(found, part, reference)) > most:
+        return None
     return found
 
 

@@ -114,6 +114,8 @@ def _read(path: Path, shown: str, stated: Mapping[str, Stated], capacity: int) -
     source = Lines(path, shown)
     lines = iter(source)
     head, seen = _find(lines, stated)
+    if head is None and stated:  # then match() can say which of the stated columns is not there
+        head, _ = _find(iter(seen), {})
     if head is None:
         return None, [_headless(shown, seen)]
     found = match(head.cells, stated)
