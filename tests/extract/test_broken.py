@@ -36,6 +36,7 @@ CASES: dict[str, tuple[bytes, int | None, tuple[str, ...]]] = {
     "decimal comma in a comma table": (HEADER.encode() + b"0,1,0,1,1e-6\n", 2, ("5 cells", "decimal commas")),
     "no current column": (b"vg,vs,vd\n0,0,1\n", None, ("no drain current",)),
     "no drain column": (b"vg,vs,id,w\n0,0,1e-6,1e-6\n", None, ("Found no vd",)),
+    "a quote never closed": (HEADER.encode() + b'0.1,0,1,"1e-6\n0.2,0,1,x\n', 3, ('"x"',)),
     "two columns for one": (b"vg,vs,vd,id,Ids\n0,0,1,1e-6,1e-6\n", 1, ("two columns", '"id"', '"Ids"')),
     "nothing flows": (HEADER.encode() + b"0,0,1,0\n0.1,0,1,0\n", None, ("no current other than 0",)),
     "micrometres": (b"vg,vs,vd,id,w,l\n0,0,1,1e-6,10,1\n", None, ("l=HEADER:UNIT",)),

@@ -26,8 +26,9 @@ LAWS = ("drain_coupling_exponent", "threshold_drift", "mobility_exponent")
 OPTIONAL = ("inverse_potential", "length_modulation", "velocity_length", "length_offset", "width_offset")
 """What has to earn its place."""
 
-EVIDENCE = 6.0
-"""By how much Akaike's criterion must fall for an optional parameter: strong evidence, chance rarely adds one."""
+EVIDENCE = 10.0
+"""By how much Akaike's criterion must fall for an optional parameter: beyond 10 the poorer law has essentially no
+support (Burnham and Anderson, Model Selection and Multimodel Inference, 2002), so that chance does not add one."""
 
 SEEN = 0.15
 """ln of the mean square error by which a parameter must mend a misfit for every point to count."""

@@ -47,7 +47,14 @@ class _Delimiter:
 
 
 def _by(sign: str) -> Split:
-    return lambda lines: list(csv.reader(lines, delimiter=sign, skipinitialspace=True))
+    def split(lines: list[str]) -> list[list[str]]:
+        rows = list(csv.reader(lines, delimiter=sign, skipinitialspace=True))
+        if len(rows) == len(lines):
+            return rows
+        # A quote that is never closed has swallowed line ends; a point never spans lines.
+        return [next(csv.reader([line], delimiter=sign, skipinitialspace=True), []) for line in lines]
+
+    return split
 
 
 def _by_pattern(pattern: str) -> Split:
