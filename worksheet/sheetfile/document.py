@@ -66,7 +66,11 @@ class Document:
             return self._through_tomlkit(path[:-1], lambda old: inline.add(old, key, render.flat(value)))
         same = [one for one in self.statements if one[2] == table]
         if not same:  # the table is written as dotted keys of another one
-            same = [one for one in self.statements if one[3].startswith(f"{table}.")]
+            same = [
+                one
+                for one in self.statements
+                if one[3].startswith(f"{table}.") and not f"{one[2]}.".startswith(f"{table}.")  # not below [table.x]
+            ]
             if not same:
                 return self.add_table(tuple(map(str, path[:-1])), {str(path[-1]): value})
             above = same[-1][2]
