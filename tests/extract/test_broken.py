@@ -1,16 +1,19 @@
 """Broken, empty, huge, binary and mis-signed tables: a clear message with file and line, never a traceback."""
 
+import json
 import os
 from pathlib import Path
 
 import numpy as np
 import pytest
-from hypothesis import given
+from hypothesis import given, settings
 from hypothesis import strategies as st
 
 from tests.extract.independent import Device, grid, noisy, write
 from tests.extract.tables import problems_of
-from worksheet.extract.extraction import Request, extract_parameters
+from worksheet.extract.data import Rows
+from worksheet.extract.document import document
+from worksheet.extract.extraction import Request, extract_from_rows, extract_parameters
 
 GOOD = noisy(Device(), grid(np.arange(0.0, 1.21, 0.05), vs=(0.0, 0.4)), 1)
 HEADER = "vg,vs,vd,id\n"
@@ -127,6 +130,40 @@ def test_any_bytes_give_problems_or_a_result(tmp_path_factory: pytest.TempPathFa
     path.write_bytes(content)
     result, problems = extract_parameters([path], Request())
     assert result is not None or problems
+
+
+KINDS = ("flat", "wild", "steps", "grid")
+
+
+def _any_currents(seed: int, count: int, kind: str) -> None:
+    draw = np.random.default_rng(seed)
+    gate, source = draw.uniform(-1, 2, count), draw.choice([0.0, 0.5], count)
+    across = draw.choice([0.05, 1.0], count) if kind == "grid" else draw.uniform(0, 2, count)
+    current = {
+        "flat": np.full(count, 1e-6),
+        "wild": 10.0 ** draw.uniform(-15, -2, count),
+        "steps": np.where(gate > 0.5, 1e-5, 1e-9),
+        "grid": 1e-7 * np.exp(gate * draw.uniform(0, 40)),
+    }[kind] * draw.choice([1.0, 1.0, 1.0, -1.0], count)
+    size = np.full(count, draw.choice([1e-6, np.nan]))
+    rows = Rows(gate, source, source + across, current, size, size, np.full(count, 300.0))
+    result, problems = extract_from_rows(rows, Request())
+    assert result is not None or problems
+    if result is not None:
+        json.dumps(document(result), allow_nan=False)
+        assert result.points + sum(one.count for one in result.left_out) == count
+
+
+@pytest.mark.parametrize("kind", KINDS)
+def test_currents_of_no_transistor_give_a_whole_document_or_problems(kind: str) -> None:
+    _any_currents(1, 25, kind)
+
+
+@pytest.mark.full
+@settings(max_examples=40)
+@given(st.integers(0, 10_000), st.sampled_from([12, 25, 60]), st.sampled_from(KINDS))
+def test_any_currents_give_a_whole_document_or_problems(seed: int, count: int, kind: str) -> None:
+    _any_currents(seed, count, kind)
 
 
 TOKENS = [

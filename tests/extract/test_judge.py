@@ -114,3 +114,12 @@ def test_a_good_fit_has_small_errors_everywhere(clean: Extraction) -> None:
         for error in (one.current, one.transconductance, one.drain_conductance):
             assert error is None or error < 0.02
     assert clean.limits == ()
+
+
+def test_curves_that_do_not_rise_have_no_hand_values() -> None:
+    at = grid(np.arange(0.0, 1.2, 0.1), vds=(0.05, 1.0))
+    at.id = np.full(len(at.vg), 1e-6)
+    rows = rows_of(at)
+    found = hand_values(rows, rows.current, np.ones(len(rows), dtype=bool))
+    assert len(found) == 5
+    assert all(one.value is None and one.method for one in found)

@@ -32,6 +32,12 @@ def test_good_rows_are_not_touched() -> None:
     assert screen(rows_of(at)).kept.all()
 
 
+@pytest.mark.parametrize("seed", range(5))
+def test_good_output_curves_are_not_touched(seed: int) -> None:
+    at = noisy(DEVICE, grid(np.array([0.3, 0.45, 0.6, 0.9]), vds=tuple(np.arange(0.02, 1.5, 0.02))), seed)
+    assert screen(rows_of(at)).kept.all()
+
+
 def test_noise_floor() -> None:
     at = noisy(DEVICE, grid(GATE), 2)
     noise = 1e-12 * (1 + 0.5 * np.random.default_rng(5).standard_normal(len(at.vg)))

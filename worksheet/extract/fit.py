@@ -23,7 +23,7 @@ HUBER = 2.0
 
 _FIRST_LOSS = 0.1
 _LEAST_SCALE = 1e-9
-_ROUNDS = 3
+_ROUNDS, _MOST_STEPS = 3, 50
 _RANK = 1e-7
 _NORMAL_MAD = 1.4826
 
@@ -111,7 +111,7 @@ def minimise(
             ftol=1e-10,
             xtol=1e-10,
             gtol=1e-10,
-            max_nfev=200,
+            max_nfev=_MOST_STEPS,
         )
         point = np.asarray(found.x, dtype=np.float64)
         scale = _scale(memory.residuals(point), len(free))

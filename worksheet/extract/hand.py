@@ -21,6 +21,7 @@ CONSTANT_CURRENT = 1e-7
 
 _LINEAR = 0.15
 _LEAST_POINTS = 6
+_RISE = 1e-3
 _WINDOW, _WIDE = 0.06, 0.12
 _LN10 = float(np.log(10.0))
 _NONE = "the table holds no curve for it"
@@ -62,7 +63,7 @@ def _of_device(rows: Rows, fitted: Array) -> list[Hand]:
     """The values of one device at one source voltage."""
     length = float(rows.length[0]) if np.isfinite(rows.length[0]) else None
     width = float(rows.width[0]) if np.isfinite(rows.width[0]) else None
-    curves = sorted(_curves(rows, fitted), key=lambda one: one.across)
+    curves = sorted(filter(_rises, _curves(rows, fitted)), key=lambda one: one.across)
     linear = curves[0] if curves and curves[0].across <= _LINEAR else None
     top = curves[-1] if curves else None
     return [
@@ -91,6 +92,13 @@ def _curves(rows: Rows, fitted: Array) -> list[_Curve]:
                 )
             )
     return found
+
+
+def _rises(curve: _Curve) -> bool:
+    """Whether the current grows with the gate somewhere, in the table and in the fit: every method needs that."""
+    reach = float(np.ptp(curve.gate))
+    sides = (curve.current, curve.fitted)
+    return all(float(np.max(slopes(curve.gate, side)[1])) * reach > _RISE * float(np.max(side)) for side in sides)
 
 
 def _constant_current(curves: list[_Curve], width: float | None, length: float | None) -> Hand:

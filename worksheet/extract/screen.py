@@ -44,7 +44,8 @@ _APART = 0.04
 _LEAST_POINTS = 6
 _FALLEN, _MOSTLY = 0.5, 0.7
 _WEAK_SLOPE = 0.3
-_UPTURN, _UPTURN_LEAST = 3.0, 0.3
+_UPTURN, _UPTURN_LEAST, _SURE = 3.0, 0.3, 4.0
+_SECOND_DIFFERENCE = 1.4826 / np.sqrt(6.0)
 
 
 @dataclass(frozen=True, eq=False, slots=True)
@@ -223,11 +224,13 @@ def _breaking(across: Array, current: Array) -> Mask:
     level = np.log(np.maximum(current, 1e-30))
     third = len(across) // 3
     span = max(len(across) // 10, 2)
-    slope = (level[span:] - level[:-span]) / np.maximum(across[span:] - across[:-span], 1e-9)
-    least = third + int(np.argmin(slope[third:]))
-    quiet = max(float(slope[least]), 0.0)
-    up = np.flatnonzero(slope[least:] > _UPTURN * quiet + _UPTURN_LEAST)
-    if not len(up) or not (slope[least + up[0] :] > quiet).all():
+    apart = np.maximum(across[span:] - across[:-span], 1e-9)
+    slope = (level[span:] - level[:-span]) / apart
+    quiet = max(float(np.median(slope[third : 2 * third])), 0.0)
+    noise = float(np.median(np.abs(np.diff(level, n=2)))) * _SECOND_DIFFERENCE * np.sqrt(2.0) / apart
+    calm = np.flatnonzero(slope <= _UPTURN * quiet + _UPTURN_LEAST + _SURE * noise)
+    first = int(calm[-1]) + 1 if len(calm) else len(slope)
+    if first < max(third, 1) or first > len(slope) - 2:
         return none
-    none[least + up[0] + span // 2 :] = True
+    none[first + span // 2 :] = True
     return none

@@ -137,9 +137,7 @@ def span(
     return found
 
 
-def _hopeless(
-    part: Rows, start: Array, reference: Reference, keep: Collection[str], most: float
-) -> Spanned | None:
+def _hopeless(part: Rows, start: Array, reference: Reference, keep: Collection[str], most: float) -> Spanned | None:
     """The fit over the core alone where even that is far from good, so that no range need be looked for; else None."""
     if FITTED_RANGE in keep or SERIES_RESISTANCE in keep or len(part) > _SEARCHED:
         return None
