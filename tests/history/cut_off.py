@@ -1,7 +1,8 @@
 """A record that kills itself at a given step: python cut_off.py PROJECT STEP NOTE.
 
 A step is the moment before or after anything that can leave a trace: a call of git, or a change of the file system.
-Exit status 0 where the record ended before that step.
+Exit status 0 where the record ended before that step. It prints a line when the record begins, for whoever kills it
+from outside.
 """
 
 import os
@@ -47,6 +48,7 @@ def main() -> None:
     for name in ("replace", "unlink", "write_text", "write_bytes"):
         setattr(Path, name, counted(getattr(Path, name)))
     lock._claim = counted(lock._claim)
+    print("begins", flush=True)
     made = record.record(place, files, note=note)
     assert isinstance(made, record.Recorded), made
 

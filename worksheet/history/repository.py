@@ -389,9 +389,7 @@ def _run(
             capture_output=True, timeout=SECONDS, check=False, pass_fds=keep,
         )  # fmt: skip
     except subprocess.TimeoutExpired:
-        message = (
-            f"git took longer than {SECONDS:.0f} s ({arguments[0]}) and was stopped: is the disk or the network slow?"
-        )
+        message = f"git {arguments[0]} took longer than {SECONDS:.0f} s and was stopped: is the disk slow?"
         raise RefusedError(Why.TIMEOUT, message) from None
     except (OSError, ValueError) as error:
         raise RefusedError(Why.FAILED, f"git could not be started in {clean(str(folder))}: {error}.") from None
