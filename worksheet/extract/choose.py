@@ -71,22 +71,22 @@ def not_carried(rows: Rows) -> dict[str, str]:
     reasons = {}
     lengths, widths = ratios(rows.length), ratios(rows.width)
     if not _several_drains(rows):
-        reasons["drain_coupling"] = "the table has one drain-source voltage only"
+        reasons["drain_coupling"] = "the fitted rows have one drain-source voltage only"
         reasons["length_modulation"] = reasons["drain_coupling"]
     if distinct(rows.source, _APART_VOLTAGE) < 2:
-        reasons["inverse_potential"] = "the table has one source voltage only"
+        reasons["inverse_potential"] = "the fitted rows have one source voltage only"
     if not np.isfinite(rows.length).all():
         reasons["velocity_length"] = "the length is not known"
     if lengths < 2:
-        reasons["drain_coupling_exponent"] = "the table has one length only"
+        reasons["drain_coupling_exponent"] = "the fitted rows have one length only"
     if "drain_coupling" in reasons:
         reasons["drain_coupling_exponent"] = reasons["drain_coupling"]
     if distinct(rows.temperature, 2.0) < 2:
-        reasons["threshold_drift"] = reasons["mobility_exponent"] = "the table has one temperature only"
+        reasons["threshold_drift"] = reasons["mobility_exponent"] = "the fitted rows have one temperature only"
     if lengths < 3:
-        reasons["length_offset"] = "the table has fewer than three lengths"
+        reasons["length_offset"] = "the fitted rows have fewer than three lengths"
     if widths < 3:
-        reasons["width_offset"] = "the table has fewer than three widths"
+        reasons["width_offset"] = "the fitted rows have fewer than three widths"
     return reasons
 
 
