@@ -38,11 +38,35 @@ class Project:
     problems: tuple[Problem, ...] = ()
 
 
-def load(root: Path) -> Project:
+class Reading:
+    """How the files of a project are listed and read: from the disk, each time. A session keeps what did not change."""
+
+    def sheets(self, root: Path) -> list[Path]:
+        """The files of the sheets, in the order of their names."""
+        return _sheet_files(root)
+
+    def project(self, path: Path, shown: str) -> tuple[ProjectFile | None, list[Problem]]:
+        """biasbook.toml."""
+        return read_project(path, shown=shown)
+
+    def process(self, path: Path, shown: str) -> tuple[Process | None, list[Problem]]:
+        """A process file."""
+        return read_process(path, shown=shown)
+
+    def sheet(self, path: Path, shown: str) -> tuple[Sheet | None, list[Problem]]:
+        """A sheet."""
+        return read_sheet(path, shown=shown)
+
+
+FROM_DISK = Reading()
+
+
+def load(root: Path, reading: Reading = FROM_DISK) -> Project:
     """Read a project folder.
 
     Args:
         root: The folder that holds biasbook.toml.
+        reading: How its files are read.
     Returns: the project with every problem found; sheets without problems are there in any case
     """
     missing = _not_a_project(root)
@@ -51,17 +75,17 @@ def load(root: Path) -> Project:
     refused = _leads_out(root, root / PROJECT_FILE, PROJECT_FILE)
     if refused is not None:
         return Project(root, None, None, problems=(refused,))
-    file, problems = read_project(root / PROJECT_FILE, shown=PROJECT_FILE)
+    file, problems = reading.project(root / PROJECT_FILE, PROJECT_FILE)
     process: Process | None = None
     if file is not None:
-        process, found = _process(root, file)
+        process, found = _process(root, file, reading)
         problems = [*problems, *found]
     sheets: dict[str, Sheet] = {}
     bad: list[str] = []
-    for path in _sheet_files(root):
+    for path in reading.sheets(root):
         shown = f"{SHEETS}/{path.name}"
         refused = _leads_out(root, path, shown)
-        sheet, found = (None, [refused]) if refused is not None else read_sheet(path, shown=shown)
+        sheet, found = (None, [refused]) if refused is not None else reading.sheet(path, shown)
         problems = [*problems, *found]
         if sheet is None:
             bad.append(path.stem)
@@ -118,7 +142,7 @@ def _not_a_project(root: Path) -> Problem | None:
     return None
 
 
-def _process(root: Path, file: ProjectFile) -> tuple[Process | None, list[Problem]]:
+def _process(root: Path, file: ProjectFile, reading: Reading) -> tuple[Process | None, list[Problem]]:
     path = root / PROCESSES / f"{file.process}.toml"
     shown = f"{PROCESSES}/{path.name}"
     if not path.exists():
@@ -133,7 +157,7 @@ def _process(root: Path, file: ProjectFile) -> tuple[Process | None, list[Proble
             )
         ]
     refused = _leads_out(root, path, shown)
-    return (None, [refused]) if refused is not None else read_process(path, shown=shown)
+    return (None, [refused]) if refused is not None else reading.process(path, shown)
 
 
 def _sheet_files(root: Path) -> list[Path]:

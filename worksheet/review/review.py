@@ -3,6 +3,8 @@
 from __future__ import annotations
 
 import datetime
+from collections.abc import Callable
+from dataclasses import dataclass
 
 from worksheet.model.problem import Problem
 from worksheet.project.case import CaseError
@@ -14,25 +16,43 @@ from worksheet.review.results import Review, SheetReview
 from worksheet.review.sheet_review import Points, level_problems, points_of, review_points
 
 
-def review(project: Project, evaluator: Evaluator | None, today: datetime.date) -> Review:
+@dataclass(frozen=True, eq=False, slots=True)
+class Reviewed:
+    """One sheet solved and reviewed, or why it cannot be."""
+
+    points: Points | None
+    result: SheetReview | None
+    problems: tuple[Problem, ...] = ()
+
+
+Reviewer = Callable[[Evaluator, str, datetime.date], Reviewed]
+"""Solves and reviews the sheet of that name."""
+
+
+def reviewed(evaluator: Evaluator, name: str, today: datetime.date) -> Reviewed:
+    """Solve and review one sheet."""
+    points, problems = solve(evaluator, name)
+    return Reviewed(points, None if points is None else review_points(points, today), tuple(problems))
+
+
+def review(
+    project: Project, evaluator: Evaluator | None, today: datetime.date, reviewer: Reviewer = reviewed
+) -> Review:
     """Review a project.
 
     Args:
         project: As its files state it.
         evaluator: Its evaluator; None where the project file or process cannot be read.
         today: For waivers with an end.
+        reviewer: How a sheet is reviewed; a session hands out again what did not change.
     Returns: Review; a bad sheet is among the problems and hides no other
     """
     if evaluator is None or project.file is None:
         return Review("", problems=project.problems, bad=project.bad)
-    problems: list[Problem] = list(project.problems)
-    solved: list[Points] = []
-    for name in project.sheets:
-        points, found = solve(evaluator, name)
-        problems += found
-        if points is not None:
-            solved.append(points)
-    reviews: list[SheetReview] = [review_points(points, today) for points in solved]
+    every = [reviewer(evaluator, name, today) for name in project.sheets]
+    problems = [*project.problems, *(problem for one in every for problem in one.problems)]
+    solved = [one.points for one in every if one.points is not None]
+    reviews = [one.result for one in every if one.result is not None]
     bad = (*project.bad, *(name for name in project.sheets if name not in {p.case.sheet.name for p in solved}))
     nominal = project.file.nominal
     return Review(

@@ -1,0 +1,74 @@
+"""Reviews that work out again only what a change can have moved: a sheet, and the sheets that take values from it."""
+
+from __future__ import annotations
+
+import datetime
+from collections.abc import Mapping
+
+from worksheet.model.sheet import Sheet
+from worksheet.project import links
+from worksheet.project.case import Case
+from worksheet.project.discover import Project
+from worksheet.project.evaluate import Evaluator
+from worksheet.review.results import Review
+from worksheet.review.review import Reviewed, review, reviewed
+from worksheet.solver.propose import propose
+
+Stated = tuple[object, ...]
+"""Everything stated that a sheet's results can depend on, to be compared by value."""
+
+
+class Reviewing:
+    """Reviews the states of one project, one after the other."""
+
+    def __init__(self) -> None:
+        self._reviewed: dict[str, tuple[Stated, Reviewed]] = {}
+        self._filled: dict[str, tuple[Stated, Mapping[str, float]]] = {}
+
+    def evaluator(self, project: Project) -> Evaluator | None:
+        """An evaluator of a state, which takes proposals over from states before where nothing moved them."""
+        if project.file is None or project.process is None:
+            return None
+        return Evaluator(project, lambda case: self._proposed(project, case))
+
+    def review(self, project: Project, evaluator: Evaluator | None, today: datetime.date) -> Review:
+        """Every sheet at every condition."""
+
+        def again(evaluator: Evaluator, name: str, today: datetime.date) -> Reviewed:
+            stated = (today, *stated_of(project, name))
+            known = self._reviewed.get(name)
+            if known is None or known[0] != stated:
+                known = (stated, reviewed(evaluator, name, today))
+                self._reviewed[name] = known
+            return known[1]
+
+        return review(project, evaluator, today, again)
+
+    def _proposed(self, project: Project, case: Case) -> Mapping[str, float]:
+        name = case.sheet.name
+        stated = stated_of(project, name)
+        known = self._filled.get(name)
+        if known is None or known[0] != stated:
+            known = (stated, propose(case))
+            self._filled[name] = known
+        return known[1]
+
+
+def stated_of(project: Project, name: str) -> Stated:
+    """What the results of a sheet can depend on: the sheet, sheets it needs, process and conditions."""
+    file = project.file
+    assert file is not None  # there is no evaluator without one
+    conditions = (file.processes, file.temperatures, file.supplies, file.nominal)
+    return (*_needed(project.sheets, name), project.process, conditions)
+
+
+def _needed(sheets: Mapping[str, Sheet], name: str) -> tuple[Sheet, ...]:
+    """A sheet and all that it takes values from, however far."""
+    found: dict[str, Sheet] = {}
+    open_names = [name]
+    while open_names:
+        sheet = sheets.get(open_names.pop())
+        if sheet is not None and sheet.name not in found:
+            found[sheet.name] = sheet
+            open_names += links.sheets_needed(sheet)
+    return tuple(found.values())
