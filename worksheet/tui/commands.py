@@ -1,0 +1,121 @@
+"""Every command once: its key, a second key that multiplexers leave alone, its title, its help, and when it is there.
+
+Bindings, the line at the foot, the list of commands, the help page, the user's key file and the documentation are all
+made from this table; a screen only has a method `action_NAME` for each of its commands.
+
+First keys are single letters and signs, which every multiplexer passes on; second keys are function and control keys.
+Control+A, control+B (prefixes of terminal multiplexers), control+S and control+Q (flow control) are given to none.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Iterator
+from dataclasses import dataclass
+
+BOOK, SHEET, ALGEBRA, MAP = "book", "sheet", "algebra", "map"
+EVERYWHERE = (BOOK, SHEET, ALGEBRA, MAP)
+
+PLACES = {
+    BOOK: "Project",
+    SHEET: "Sheet",
+    ALGEBRA: "Algebra",
+    MAP: "Window map",
+}
+"""Names of the screens that commands belong to."""
+
+
+@dataclass(frozen=True, slots=True)
+class Command:
+    """One command.
+
+    Attributes:
+        name: In the key file, and of the method that does it.
+        key: First key.
+        second: Another way in.
+        title: In the list of commands and at the foot.
+        help: What it does, one sentence.
+        places: Screens that have it.
+        when: Condition that must hold, a name of the screen's `holds` ("row", "field", "undo", ...); "" for none.
+        writes: Whether it changes files, so that a book opened for reading does not have it.
+        foot: Rank at the foot of the screen, 0 for none.
+    """
+
+    name: str
+    key: str
+    second: str
+    title: str
+    help: str
+    places: tuple[str, ...]
+    when: str = ""
+    writes: bool = False
+    foot: int = 0
+
+
+COMMANDS = (
+    Command("help", "question_mark", "f1", "Help", "Explain what has the focus, and list the keys.", EVERYWHERE, foot=9),
+    Command("commands", "space", "f2", "Commands", "List every command and run one; type to search.", EVERYWHERE, foot=8),
+    Command("open", "enter", "o", "Open", "Open the sheet of this block.", (BOOK,), "row", foot=1),
+    Command("find", "f", "ctrl+f", "Find", "Show only blocks whose name, title, stage, state or verdict holds what you type.", (BOOK,), foot=2),
+    Command("new", "n", "insert", "New", "Start a sheet for another block.", (BOOK,), writes=True, foot=3),
+    Command("duplicate", "d", "ctrl+d", "Duplicate", "Copy this sheet under another name.", (BOOK,), "row", writes=True, foot=4),
+    Command("rename", "r", "ctrl+r", "Rename", "Give this sheet another name; formulas of other sheets follow.", (BOOK, SHEET), "sheet", writes=True, foot=5),
+    Command("delete", "x", "delete", "Delete", "Take this sheet out of the project; undo brings it back.", (BOOK,), "row", writes=True, foot=6),
+    Command("problems", "exclamation_mark", "f9", "Problems", "List everything that is wrong with the project's files.", (BOOK, SHEET), "problems"),
+    Command("edit", "enter", "e", "Edit", "Change the value under the cursor where it stands.", (SHEET,), "field", writes=True, foot=1),
+    Command("step_up", "plus", "greater_than_sign", "More", "Raise the value under the cursor by one step.", (SHEET,), "step", writes=True, foot=2),
+    Command("step_down", "minus", "less_than_sign", "Less", "Lower the value under the cursor by one step.", (SHEET,), "step", writes=True, foot=2),
+    Command("step_size", "s", "f5", "Step size", "Choose what one step is: the grid, a finger, or a share of the value.", (SHEET,), foot=3),
+    Command("take", "p", "f7", "Take proposal", "Write the recommended point into the choices, on the grid.", (SHEET,), "proposal", writes=True, foot=4),
+    Command("add", "a", "insert", "Add", "Add an assumption, an own name, a target, evidence or a waiver.", (SHEET,), writes=True, foot=5),
+    Command("remove", "x", "delete", "Remove", "Take out what the cursor is on; undo brings it back.", (SHEET,), "removable", writes=True),
+    Command("algebra", "w", "f6", "Why", "Show the algebra behind the number under the cursor.", (SHEET,), "number", foot=6),
+    Command("map", "m", "f4", "Map", "Show where all targets hold, over bias current and load capacitance.", (SHEET,), foot=7),
+    Command("next_section", "tab", "right_square_bracket", "Next part", "Go to the next part of the sheet.", (SHEET,)),
+    Command("previous_section", "shift+tab", "left_square_bracket", "Part before", "Go to the part of the sheet before this one.", (SHEET,)),
+    Command("next_sheet", "n", "ctrl+n", "Next sheet", "Open the sheet after this one.", (SHEET,)),
+    Command("previous_sheet", "b", "ctrl+p", "Sheet before", "Open the sheet before this one.", (SHEET,)),
+    Command("drawing", "v", "ctrl+v", "Drawing", "Show or hide the drawing and the operating point beside the sheet.", (SHEET,)),
+    Command("follow", "enter", "o", "Follow", "Show the algebra of the input under the cursor.", (ALGEBRA,), "row", foot=1),
+    Command("unknown", "u", "f5", "Solve for", "Solve the target for another unknown.", (ALGEBRA,), "target", foot=2),
+    Command("undo", "z", "ctrl+u", "Undo", "Take back the last change, in whichever sheet it was.", (BOOK, SHEET, MAP), "undo", writes=True),
+    Command("redo", "y", "ctrl+y", "Redo", "Make the change again that was taken back last.", (BOOK, SHEET, MAP), "redo", writes=True),
+    Command("copy", "c", "f8", "Copy", "Copy the number, the row or the table out, through the terminal or into a file.", EVERYWHERE),
+    Command("theme", "t", "ctrl+t", "Theme", "Choose the colours; the choice is remembered.", EVERYWHERE),
+    Command("reload", "l", "ctrl+l", "Read again", "Read the files again and draw the screen anew.", EVERYWHERE),
+    Command("suspend", "ctrl+z", "S", "Suspend", "Go back to the shell; fg returns here.", EVERYWHERE),
+    Command("back", "escape", "backspace", "Back", "Go back to where you came from.", (SHEET, ALGEBRA, MAP), foot=10),
+    Command("leave", "q", "ctrl+x", "Leave", "Leave the program. Everything is on disk already.", EVERYWHERE, foot=10),
+)  # fmt: skip
+"""All of them, in the order of the help page."""
+
+
+def of_place(place: str) -> Iterator[Command]:
+    """Commands of a screen."""
+    return (command for command in COMMANDS if place in command.places)
+
+
+def find(name: str) -> Command | None:
+    """The command of that name, or None."""
+    return next((command for command in COMMANDS if command.name == name), None)
+
+
+_SHOWN = {
+    "question_mark": "?",
+    "exclamation_mark": "!",
+    "plus": "+",
+    "minus": "-",
+    "greater_than_sign": ">",
+    "less_than_sign": "<",
+    "right_square_bracket": "]",
+    "left_square_bracket": "[",
+    "escape": "esc",
+    "delete": "del",
+    "insert": "ins",
+}
+
+
+def shown_key(key: str) -> str:
+    """A key as people write it: "?", "ctrl+f", "F1"."""
+    if key in _SHOWN:
+        return _SHOWN[key]
+    return key.upper() if key[:1] == "f" and key[1:].isdigit() else key

@@ -1,0 +1,1 @@
+"""Pages: rows made from a snapshot and its results, without a screen; what a page says is tested here."""
