@@ -26,7 +26,7 @@ def coupling(parameters: Parameters, source_bulk: Number) -> Array:
     """
     psi = np.asarray(parameters.surface_potential)
     if not psi.any():
-        return np.asarray(parameters.kappa + 0.0 * np.asarray(source_bulk))
+        return np.broadcast_to(parameters.kappa, np.broadcast_shapes(np.shape(parameters.kappa), np.shape(source_bulk)))
     excess = 1.0 / parameters.kappa - 1.0
     depth = np.maximum(psi + source_bulk, 1e-6)
     moved = 1.0 / (1.0 + excess * np.sqrt(psi / depth))
@@ -72,7 +72,7 @@ def source_voltage(parameters: Parameters, u: Number, gate: Number, drain: Numbe
     body, rest = 2.0 * excess * np.sqrt(safe), thermal * u - p.drain_coupling * drain
     bend = rest * excess * np.sqrt(safe)
     wanted = gate - p.threshold - rest + safe + body * np.sqrt(safe)
-    x = np.sqrt(np.maximum(wanted, safe)) + 0.0
+    x = np.sqrt(np.maximum(wanted, safe))
     for _ in range(_STEPS):
         error = x * x + body * x + bend / x - wanted
         step = error / np.maximum(2.0 * x + body - bend / (x * x), 1e-3)

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Sequence
 from dataclasses import dataclass
 
 import numpy as np
@@ -53,3 +54,18 @@ def missing_where(values: Number, *rules: tuple[ArrayLike, Reason]) -> Measured:
     for mask, (_, reason) in zip(reversed(masks), reversed(rules), strict=True):
         reasons[np.broadcast_to(mask, shape)] = reason
     return Measured(np.where(reasons == Reason.NONE, array, np.nan), reasons)
+
+
+def with_reasons_of(values: Number, parts: Sequence[Measured], *rest: tuple[ArrayLike, Reason]) -> Measured:
+    """Plain values; where one is missing, the reason of the first part that is missing there, else the first of `rest`.
+
+    Args:
+        values: Any shape. [unit of the metric]
+        parts: What the values were reckoned from.
+        rest: (mask, reason) pairs that count only where a value is missing.
+    """
+    missing = ~np.isfinite(np.asarray(values, dtype=np.float64))
+    rules = [
+        (part.reasons == reason, reason) for part in parts if part.reasons is not None for reason in Reason if reason
+    ]
+    return missing_where(values, *rules, *((missing & mask, reason) for mask, reason in rest))

@@ -17,7 +17,7 @@ from worksheet.engine import polynomial as poly
 from worksheet.engine import settling
 from worksheet.engine.inputs import Inputs
 from worksheet.engine.levels import Levels
-from worksheet.engine.measured import Measured, missing_where
+from worksheet.engine.measured import Measured, missing_where, with_reasons_of
 from worksheet.engine.nodal import Network
 from worksheet.engine.operating import Operating, operating_points
 from worksheet.model import metrics
@@ -69,13 +69,18 @@ class NumericSolution:
             with np.errstate(all="ignore"):
                 result = metric.rule(self)
             parts = self._asked.pop()
-            self._measured[key] = result if isinstance(result, Measured) else _with_reasons_of(result, parts)
+            self._measured[key] = result if isinstance(result, Measured) else self._explained(result, parts)
         if self._asked:
             self._asked[-1].append(self._measured[key])
         return self._measured[key]
 
     def __getitem__(self, key: str) -> Array:
         return self.measure(key).values
+
+    def _explained(self, values: Number, parts: Sequence[Measured] = ()) -> Measured:
+        """Values with a reason where they are missing: that of a part, or what the stage lacks."""
+        static, dynamic = self._static[1] == 0, np.asarray(self.output_capacitance) == 0
+        return with_reasons_of(values, parts, (static, Reason.NO_CONDUCTANCE), (dynamic, Reason.NO_CAPACITANCE))
 
     def sqrt(self, value: Number) -> Array:
         """Square root, elementwise."""
@@ -174,7 +179,7 @@ class NumericSolution:
     def pole_frequency(self) -> Measured:
         """Lowest pole. [Hz]"""
         slowest = np.max(np.abs(self.time_constants), axis=0)
-        return missing_where(1.0 / (_TWO_PI * slowest))
+        return self._explained(1.0 / (_TWO_PI * slowest))
 
     def unity_gain_frequency(self) -> Measured:
         """Lowest frequency of unit magnitude. [Hz]"""
@@ -210,9 +215,8 @@ class NumericSolution:
         """[s]"""
         step = self.inputs.step_size
         if step is None:
-            return missing_where(
-                settling.linear(self.network.transfer, self.network.denominator, self.inputs.settling_tolerance)
-            )
+            settled = settling.linear(self.network.transfer, self.network.denominator, self.inputs.settling_tolerance)
+            return missing_where(settled, (self._static[0] == 0, Reason.NO_GAIN), (np.isnan(settled), Reason.UNSTABLE))
         if not self.inputs.circuit.stage.source_output:
             return missing_where(
                 settling.drain_step(
@@ -290,10 +294,14 @@ class NumericSolution:
 
     def noise_corner(self) -> Measured:
         """Frequency where flicker equals white. [Hz]"""
-        white = sum((s.referred * s.white for s in self.noise_sources), np.zeros(()))
-        flicker = [(s.referred * s.flicker, np.asarray(s.exponent)) for s in self.noise_sources if np.any(s.flicker)]
+        white = sum((s.numerator[0] ** 2 * np.asarray(s.white) for s in self.noise_sources), np.zeros(()))
+        flicker = [
+            (np.asarray(s.numerator[0] ** 2 * s.flicker), np.asarray(s.exponent))
+            for s in self.noise_sources
+            if np.any(s.flicker)
+        ]
         if not flicker:
-            return missing_where(0.0 * np.asarray(white))
+            return missing_where(np.zeros_like(white))
         return missing_where(_corner(white, flicker))
 
     @cached_property
@@ -302,14 +310,6 @@ class NumericSolution:
         values = [self.inputs.temperature, self.inputs.supply, self.inputs.current, self.inputs.load_capacitance]
         values += [p.specific for p in self.inputs.devices.values()]
         return np.broadcast_shapes(*[np.shape(v) for v in values])
-
-
-def _with_reasons_of(values: Number, parts: Sequence[Measured]) -> Measured:
-    """A rule's plain result; where it is missing, the reason of the first part that is missing there."""
-    rules = [
-        (part.reasons == reason, reason) for part in parts if part.reasons is not None for reason in Reason if reason
-    ]
-    return missing_where(values, *rules)
 
 
 def _limit_ratio(numerator: Sequence[Number], denominator: Sequence[Number]) -> Array:

@@ -22,6 +22,8 @@ class Reason(IntEnum):
     NO_DRAIN_COUPLING = 6
     UNSTABLE = 7
     NOT_A_NUMBER = 8
+    NO_CONDUCTANCE = 9
+    NO_CAPACITANCE = 10
 
     @property
     def text(self) -> str:
@@ -43,6 +45,8 @@ _REASON_TEXT = {
     Reason.NO_DRAIN_COUPLING: "no drain coupling",
     Reason.UNSTABLE: "no settled response",
     Reason.NOT_A_NUMBER: "not a number",
+    Reason.NO_CONDUCTANCE: "no output conductance",
+    Reason.NO_CAPACITANCE: "no capacitance",
 }
 
 _VERDICTS = {

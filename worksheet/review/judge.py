@@ -94,6 +94,8 @@ def judge(target: Target, measured: Measured, valid: Mask) -> Judgement:
 def _judge_absent(target: Target, measured: Measured, absent: Mask) -> tuple[Mask, Mask]:
     """Points whose number does not exist: missed, and unknown, by what the reason means for the target's sides."""
     missed, unknown = np.zeros(absent.shape, dtype=bool), np.zeros(absent.shape, dtype=bool)
+    if target.formula is not None:  # whatever its parts mean for themselves, a figure over a missing metric is unknown
+        return missed, absent
     sides = [side for side, limit in (("min", target.minimum), ("max", target.maximum)) if limit is not None]
     reasons = np.broadcast_to(Reason.NOT_A_NUMBER if measured.reasons is None else measured.reasons, absent.shape)
     for number in np.unique(reasons[absent]):

@@ -5,7 +5,7 @@ from __future__ import annotations
 import numpy as np
 
 from worksheet.device.arrays import Array
-from worksheet.engine.measured import Measured, missing_where
+from worksheet.engine.measured import Measured, with_reasons_of
 from worksheet.engine.solution import NumericSolution
 from worksheet.model import metrics
 from worksheet.model.metrics import Reason
@@ -25,7 +25,9 @@ def measure(subject: Subject, target: Target, solution: NumericSolution) -> Meas
     """What a target is about, over the solution's points: a metric, a bound at a yield, a figure. [its unit]"""
     metric = metrics.find(target.name)
     if target.formula is not None or metric is None:
-        return missing_where(subject.figure(target, solution))
+        names = target.formula.names if target.formula is not None else ()
+        parts = [solution.measure(name) for name in names if metrics.find(name) is not None]
+        return with_reasons_of(subject.figure(target, solution), parts)
     if metric.of_yield and target.yield_fraction is not None:
         base = solution.measure(metric.of_yield)
         return Measured(base.values * metrics.deviations(target.yield_fraction), base.reasons)

@@ -1,0 +1,110 @@
+"""Stages with stacks on either side of the output, which no built-in stage has: levels, ranges and poles."""
+
+from __future__ import annotations
+
+import numpy as np
+import pytest
+
+from tests.device.test_transistor import DEVICE
+from worksheet.device.constants import thermal_voltage
+from worksheet.device.transistor import saturation_voltage
+from worksheet.engine import polynomial as poly
+from worksheet.engine import settling
+from worksheet.engine.inputs import Inputs
+from worksheet.engine.solution import NumericSolution
+from worksheet.stages.circuit import Circuit
+from worksheet.stages.stage import GROUND, IN, LINE, OUT, SUPPLY, Stage, Transistor
+
+TALL = Stage(
+    "tall",
+    "Tall",
+    "Two common gates over a common source.",
+    (
+        Transistor("main", IN, "first", GROUND),
+        Transistor("lower", LINE, "second", "first"),
+        Transistor("upper", LINE, OUT, "second"),
+    ),
+    ("output_level",),
+)
+HUNG = Stage(
+    "hung",
+    "Hung follower",
+    "A follower whose drain is held by a common gate.",
+    (Transistor("main", IN, "hold", OUT), Transistor("top", LINE, SUPPLY, "hold")),
+    ("input_level", "output_level"),
+    one_level=True,
+)
+SUPPLY_VOLTAGE, CURRENT, MARGIN = 3.0, 2e-6, 0.03
+
+
+def solved(stage: Stage, polarity: str = "n", **more: float) -> NumericSolution:
+    devices = {d.name: DEVICE for d in stage.transistors}
+    circuit = Circuit(stage, polarity, "rail", ideal_bias=True)
+    return NumericSolution(
+        Inputs(circuit, np.array([300.0]), SUPPLY_VOLTAGE, CURRENT, devices, 1e-12, saturation_margin=MARGIN, **more)
+    )
+
+
+WANTED = float(saturation_voltage(CURRENT / DEVICE.specific, thermal_voltage(300.0))) + MARGIN
+
+
+@pytest.mark.parametrize("polarity", ["n", "p"])
+def test_inner_nodes_of_a_tall_stack(polarity: str) -> None:
+    solution = solved(TALL, polarity)
+    nodes = solution.levels.nodes
+    assert float(np.ravel(nodes["first"])[0]) == pytest.approx(WANTED)
+    assert float(np.ravel(nodes["second"])[0]) == pytest.approx(2 * WANTED)
+    low, high = 3 * WANTED, SUPPLY_VOLTAGE
+    expected = (low, high) if polarity == "n" else (SUPPLY_VOLTAGE - high, SUPPLY_VOLTAGE - low)
+    assert float(np.ravel(solution["output_low"])[0]) == pytest.approx(expected[0])
+    assert float(np.ravel(solution["output_high"])[0]) == pytest.approx(expected[1])
+
+
+def test_a_held_drain_stands_below_the_supply() -> None:
+    solution = solved(HUNG, output_level=0.8)
+    assert float(np.ravel(solution.levels.nodes["hold"])[0]) == pytest.approx(SUPPLY_VOLTAGE - WANTED)
+    main = solution.devices["main"]
+    assert float(np.ravel(main.drain_voltage)[0]) == pytest.approx(SUPPLY_VOLTAGE - WANTED)
+    assert float(np.ravel(main.source_voltage)[0]) == pytest.approx(0.8)
+
+
+def test_gain_of_a_tall_stack_against_a_plain_linear_solve() -> None:
+    solution = solved(TALL)
+    s = solution.devices["main"].slopes
+    g_m, g_s, g_d = (float(np.ravel(x)[0]) for x in (s.transconductance, s.source_conductance, s.drain_conductance))
+    matrix = np.array([[g_d + g_s, -g_d, 0.0], [-g_s, g_d + g_s, -g_d], [0.0, -g_s, g_d]])
+    output = np.linalg.solve(matrix, np.array([-g_m, 0.0, 0.0]))[2]
+    assert float(np.ravel(solution["dc_gain"])[0]) == pytest.approx(abs(output), rel=1e-9)
+    inner = np.linalg.solve(matrix, np.array([0.0, 0.0, 1.0]))[2]
+    assert float(np.ravel(solution["output_resistance"])[0]) == pytest.approx(inner, rel=1e-9)
+
+
+def test_three_poles_against_numpy_and_quadrature() -> None:
+    """numpy.roots for the poles, a fine grid for the noise integral, an explicit step response for settling."""
+    poles = np.array([-1.0, -2.5 + 1.5j, -2.5 - 1.5j])
+    denominator = [float(c) for c in np.poly(poles)[::-1].real]
+    numerator = [3.0, 0.4, 0.05]
+    constants = poly.inverse_roots([np.asarray(c) for c in denominator])
+    assert np.sort_complex(-1 / constants) == pytest.approx(np.sort_complex(poles), rel=1e-9)
+    omega = np.concatenate([np.linspace(0, 400, 2_000_001)])
+    h = np.polyval(numerator[::-1], 1j * omega) / np.polyval(denominator[::-1], 1j * omega)
+    integral = np.trapezoid(np.abs(h) ** 2, omega) / np.pi
+    assert float(poly.noise_integral(numerator, [np.asarray(c) for c in denominator])) == pytest.approx(
+        integral, rel=1e-4
+    )
+    t = np.linspace(0, 20, 200_001)
+    residues = [
+        np.polyval(numerator[::-1], p) / (p * np.polyval(np.polyder(np.array(denominator[::-1])), p)) for p in poles
+    ]
+    error = np.abs(sum(r * np.exp(p * t) for r, p in zip(residues, poles, strict=True)).real) / (
+        numerator[0] / denominator[0]
+    )
+    expected = t[np.flatnonzero(error > 1e-3)[-1]]
+    found = settling.linear([np.asarray(c) for c in [*numerator, 0.0]], [np.asarray(c) for c in denominator], 1e-3)
+    assert float(found) == pytest.approx(expected, abs=2e-4)
+
+
+def test_positive_roots_of_a_cubic_against_numpy() -> None:
+    coefficients = [np.asarray(c) for c in (-6.0, 11.0, -6.0, 1.0)]
+    assert np.sort(poly.positive_roots(coefficients)) == pytest.approx([1.0, 2.0, 3.0], rel=1e-12)
+    assert float(poly.lowest_positive_root(coefficients)) == pytest.approx(1.0, rel=1e-12)
