@@ -12,7 +12,7 @@ from worksheet.cli.diagnostics import Status, say, tell
 from worksheet.cli.output import Output, close_quietly
 from worksheet.model.problem import Problem
 
-COMMANDS = ("review", "solve", "stages", "start", "extract")
+COMMANDS = ("open", "review", "solve", "stages", "start", "extract")
 """Modules of worksheet.cli.commands, in the order of the help."""
 
 
@@ -38,8 +38,10 @@ def _parser() -> argparse.ArgumentParser:
 
 
 def _no_command(args: argparse.Namespace, output: Output) -> int:
-    del args, output
-    raise _UsageError("no command given (see biasbook --help)")
+    """The app, for the folder that the command is called in."""
+    from worksheet.cli.commands import open as open_command
+
+    return open_command.run(argparse.Namespace(**vars(args), project=".", read_only=False), output)
 
 
 def main(argv: Sequence[str] | None = None) -> int:

@@ -336,3 +336,23 @@ def _matching(known: Iterable[str], typed: str, whole: Any) -> tuple[str, ...]:
     first = [one for one in names if one.startswith(typed) and one != typed]
     rest = [one for one in names if typed and typed in one and one not in first and one != typed]
     return tuple(whole(one) for one in (*first, *rest)[:_MOST])
+
+
+# What is to be added
+
+
+def coming(snapshot: Snapshot, sheet: str, path: KeyPath, about: str) -> Place | None:
+    """Describe a place of an entry that is not in the sheet yet.
+
+    Args:
+        snapshot: The book.
+        sheet: Name of the sheet.
+        path: Where it will stand; an array's entry by any number.
+        about: The metric or target that a number there is of; "" for none.
+    """
+    table = SHEET.table(str(path[0]))
+    if table is None or not table.repeated:
+        return place(snapshot, sheet, path)
+    data = snapshot.data(sheet)
+    key = _of_metric(table, data, about, path[1:][1:])
+    return None if key is None else Place(sheet, path, key, (), _known(snapshot, data, path), key.required)

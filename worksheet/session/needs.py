@@ -12,6 +12,7 @@ from worksheet.model.problem import Problem
 from worksheet.model.quantity import format_input
 from worksheet.model.text import nearest
 from worksheet.project.case import Case, CaseError
+from worksheet.project.evaluate import Evaluator
 from worksheet.review.review import solve as solve_points
 from worksheet.session.workbook import Workbook, project_of_sheet
 from worksheet.sheetfile.document import WriteRefusedError
@@ -62,6 +63,12 @@ class Needs:
         if points is None:
             return found
         return cls._narrowed(root, points.case, over, target, unknown)
+
+    @classmethod
+    def at(cls, root: Path, evaluator: Evaluator, name: str) -> Needs | list[Problem]:
+        """Solve a sheet of a state that is evaluated already, or say why it cannot be."""
+        points, found = solve_points(evaluator, name)
+        return found if points is None else cls._narrowed(root, points.case, None, None, None)
 
     @classmethod
     def _narrowed(

@@ -15,7 +15,7 @@ from worksheet.tui.rows import HEAD, LABEL, PLAIN, QUIET, RULE, VALUE, Line, Pag
 from worksheet.tui.signs import Signs
 
 _COUNTED = ((MET, "met", 4), (MISSED, "missed", 6), (UNKNOWN, "unkn.", 5), (WAIVED, "waived", 6))
-_NAME, _STAGE, _STATE, _MARGIN = 18, 16, 10, 8
+_NAME, _STAGE, _STATE, _MARGIN = 17, 15, 10, 7
 _FIXED = _NAME + _STAGE + _STATE + _MARGIN + sum(width for _, _, width in _COUNTED) + 7
 _WIDE = _FIXED + 24
 """Columns from which on the tightest target is named beside its margin."""

@@ -151,6 +151,7 @@ def choices(facts: Facts) -> Iterator[Row]:
 
 
 def design(facts: Facts) -> list[Key]:
+    """Design variables of the sheet's stage."""
     """The design variables of the sheet's stage, in the order of a form."""
     stage = catalogue.find(str(facts.data.get("stage")))
     bias = facts.data.get("bias")

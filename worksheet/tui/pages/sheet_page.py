@@ -11,7 +11,7 @@ from worksheet.report.table import wrapped
 from worksheet.solver.results import Bound, Window
 from worksheet.tui import rows
 from worksheet.tui.pages import parts, words
-from worksheet.tui.pages.parts import Facts
+from worksheet.tui.pages.parts import Facts, design
 from worksheet.tui.rows import LABEL, PLAIN, QUIET, Page, Row, Span, heading, line
 
 _DEVICE = 10
@@ -82,7 +82,7 @@ def _needed(facts: Facts) -> Iterator[Row]:
     """Every bound of every variable, the binding ones first, with its formula by hand; then the proposals."""
     if facts.solved is None:
         return
-    keys = {key.name: key for key in parts.design(facts)}
+    keys = {key.name: key for key in design(facts)}
     for window in facts.solved.needed.values():
         key = keys.get(window.name)
         if key is not None:
@@ -101,7 +101,7 @@ def _binding_first(window: Window) -> list[Bound]:
 
 
 def _bound(facts: Facts, window: Window, bound: Bound, k: int) -> Row:
-    keys = {key.name: key for key in parts.design(facts)}
+    keys = {key.name: key for key in design(facts)}
     key = keys[window.name]
     ends = (window.region.low, window.region.high) if window.region is not None else ()
     sign = "≥" if bound.side == "low" else "≤"

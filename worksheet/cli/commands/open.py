@@ -1,0 +1,36 @@
+"""`biasbook open`: the terminal app."""
+
+from __future__ import annotations
+
+import argparse
+from pathlib import Path
+from typing import TYPE_CHECKING, Any
+
+from worksheet.cli.diagnostics import Status, tell
+from worksheet.model.problem import Problem
+
+if TYPE_CHECKING:
+    from worksheet.cli.output import Output
+
+
+def add(subparsers: Any) -> None:
+    """Describe the command's arguments."""
+    parser = subparsers.add_parser("open", help="the terminal app (also: biasbook alone, for the folder it is called in)")
+    parser.add_argument("project", metavar="PROJECT", nargs="?", default=".", help="the project folder (default: this one)")
+    parser.add_argument("--read-only", action="store_true", help="show everything, change nothing")
+    parser.set_defaults(command=run)
+
+
+def run(args: argparse.Namespace, output: Output) -> int:
+    """Open the app. 0; 2 where there is no project or the terminal cannot show it."""
+    del output
+    root = Path(args.project)
+    if not (root / "biasbook.toml").is_file():
+        message = "found no biasbook.toml there, expected a project folder; `biasbook start DIR` makes one"
+        tell([Problem(str(args.project), None, "", message)])
+        return Status.BAD_INPUT
+    import importlib
+
+    # Neither front end knows the other: the app is found by its name at the moment it is wanted.
+    status: int = importlib.import_module("worksheet.tui.app").run(root, read_only=args.read_only)
+    return status

@@ -1,0 +1,245 @@
+"""The app: one owner of the run, which hands values down to its screens and takes what they ask for to the session."""
+
+from __future__ import annotations
+
+import datetime
+import threading
+from pathlib import Path
+from typing import ClassVar
+
+from textual.app import App
+from textual.binding import BindingType
+from textual.message import Message
+
+from worksheet.model.problem import Problem
+from worksheet.session.edits import Request
+from worksheet.session.recovery import Journal
+from worksheet.session.session import Outcome, Session
+from worksheet.tui import keymap, themes
+from worksheet.tui.guard import Guard
+from worksheet.tui.recompute import Recompute, Stamped
+from worksheet.tui.recomputed import Needed, Results, needs_of, review_of
+from worksheet.tui.screens.book import BookScreen
+from worksheet.tui.screens.place import Place
+from worksheet.tui.signs import signs_for
+from worksheet.tui.terminal import Terminal
+
+_LOOK = 0.5
+"""How often files are looked at for changes by others. [s]"""
+
+
+class BookApp(App[int]):
+    """A project in the terminal."""
+
+    ENABLE_COMMAND_PALETTE = False
+    CSS_PATH = "styles/book.tcss"
+    BINDINGS: ClassVar[list[BindingType]] = []
+
+    class Reviewed(Message):
+        """A review has been worked out."""
+
+        def __init__(self, stamped: Stamped[Results]) -> None:
+            super().__init__()
+            self.stamped = stamped
+
+    class Solved(Message):
+        """A sheet's needs have been worked out."""
+
+        def __init__(self, stamped: Stamped[Needed]) -> None:
+            super().__init__()
+            self.stamped = stamped
+
+    class Changed(Message):
+        """Somebody else changed the files."""
+
+        def can_replace(self, message: Message) -> bool:
+            """Only the newest state matters."""
+            return isinstance(message, BookApp.Changed)
+
+    def __init__(self, session: Session, terminal: Terminal, guard: Guard | None = None) -> None:
+        """Take an open session and what the terminal can do; `guard` keeps the end from cutting a write in two."""
+        self.terminal = terminal
+        self.themes, theme_problems = themes.read(terminal.configuration)  # before the style sheet is read
+        super().__init__(ansi_color=terminal.few_colours)
+        self.session = session
+        self.signs = signs_for(terminal.plain_signs)
+        self.snapshot = session.snapshot()
+        self.results: Results | None = None
+        self.needed: Needed | None = None
+        self.journal = Journal(terminal.state / "typing", session.root)
+        self.keys = keymap.read(terminal.configuration)
+        self.own_problems: tuple[Problem, ...] = (*self.keys.problems, *theme_problems)
+        self._writing = guard.writing if guard is not None else threading.Lock()
+        self._reviews: Recompute[Results] = Recompute(lambda one: self._deliver(self.Reviewed(one)))
+        self._solves: Recompute[Needed] = Recompute(lambda one: self._deliver(self.Solved(one)))
+        self._ended = threading.Event()
+
+    # Beginning and end
+
+    def get_theme_variable_defaults(self) -> dict[str, str]:
+        """Colours of the roles before a theme is on."""
+        return dict(self.themes[self._first_theme()].theme().variables)
+
+    def on_mount(self) -> None:
+        """The project's screen, and the work behind it."""
+        for one in self.themes.values():
+            self.register_theme(one.theme())
+        self.theme = self._first_theme()
+        self.set_keymap(self.keys.changed())
+        self.push_screen(BookScreen())
+        self.work()
+        threading.Thread(target=self._look, name="look", daemon=True).start()
+        self.call_after_refresh(self._offer_left)
+
+    def _first_theme(self) -> str:
+        chosen = themes.remembered(self.terminal.state)
+        fallback = themes.SIXTEEN if self.terminal.few_colours else themes.DARK
+        return chosen if chosen in self.themes else fallback
+
+    def on_unmount(self) -> None:
+        """Begin nothing more."""
+        self._ended.set()
+        self._reviews.stop()
+        self._solves.stop()
+
+    def _look(self) -> None:
+        while not self._ended.wait(_LOOK):
+            if self.session.refresh():
+                self._deliver(self.Changed())
+
+    def _deliver(self, message: Message) -> None:
+        if not self._ended.is_set():
+            self.post_message(message)
+
+    def _offer_left(self) -> None:
+        left = self.journal.left()
+        if left:
+            from worksheet.tui.leaving import offer
+
+            offer(self, left)
+
+    # Values down
+
+    def work(self) -> None:
+        """Have worked out what belongs to the book as it stands."""
+        snapshot = self.snapshot = self.session.snapshot()
+        today = datetime.date.today()
+        self._reviews.want(snapshot.revision, lambda: review_of(self.session, snapshot, today))
+        sheet = self.open_name
+        if sheet is not None:
+            self._solves.want(snapshot.revision, lambda: needs_of(self.session, snapshot, sheet))
+
+    @property
+    def open_name(self) -> str | None:
+        """The sheet that is open, if one is."""
+        from worksheet.tui.screens.sheet import SheetScreen
+
+        return next((one.name_of_sheet for one in self.screen_stack if isinstance(one, SheetScreen)), None)
+
+    def show_book(self) -> None:
+        """Hand the state down to every screen that shows it."""
+        for screen in self.screen_stack:
+            if isinstance(screen, Place):
+                screen.show_book()
+
+    def on_book_app_reviewed(self, message: BookApp.Reviewed) -> None:
+        """Show it, unless it belongs to another revision by now."""
+        stamped = message.stamped
+        if stamped.revision != self.snapshot.revision:
+            return
+        if stamped.error:
+            self._say(f"The results cannot be worked out: {stamped.error}")
+        self.results = stamped.value or self.results
+        self.show_book()
+
+    def on_book_app_solved(self, message: BookApp.Solved) -> None:
+        """Show it, unless it belongs to another revision by now."""
+        stamped = message.stamped
+        if stamped.revision != self.snapshot.revision or stamped.value is None:
+            return
+        self.needed = stamped.value
+        self.show_book()
+
+    def on_book_app_changed(self) -> None:
+        """Take in what somebody else wrote."""
+        self.work()
+        self.show_book()
+        self._say("taken in: files changed by somebody else")
+
+    def _say(self, text: str) -> None:
+        screen = next((one for one in reversed(self.screen_stack) if isinstance(one, Place)), None)
+        if screen is not None:
+            screen.say(text)
+
+    # What screens ask for
+
+    def change(self, request: Request) -> Outcome:
+        """Have something changed; it is on disk when this returns accepted."""
+        with self._writing:
+            outcome = self.session.apply(request)
+        return self._after(outcome)
+
+    def undo(self) -> Outcome:
+        """Take the last change back."""
+        with self._writing:
+            outcome = self.session.undo()
+        return self._after(outcome)
+
+    def redo(self) -> Outcome:
+        """Make it again."""
+        with self._writing:
+            outcome = self.session.redo()
+        return self._after(outcome)
+
+    def _after(self, outcome: Outcome) -> Outcome:
+        self.work()
+        self.show_book()
+        return outcome
+
+    def reload(self) -> None:
+        """Read every file again."""
+        self.session.refresh(force=True)
+        self.work()
+        self.show_book()
+
+    def open_sheet(self, name: str, row: str = "") -> None:
+        """Show a sheet, with the cursor on a row of it."""
+        from worksheet.tui.screens.sheet import SheetScreen
+
+        screen = SheetScreen(name, row)
+        if isinstance(self.screen, SheetScreen):
+            self.switch_screen(screen)
+        else:
+            self.push_screen(screen)
+        self.call_after_refresh(self.work)
+
+    def choose_theme(self, name: str | None) -> None:
+        """Take other colours and remember them."""
+        if name in self.themes:
+            self.theme = str(name)
+            themes.remember(self.terminal.state, str(name))
+
+
+def run(root: Path, *, read_only: bool = False) -> int:
+    """Open a project in the terminal.
+
+    Args:
+        root: The project folder.
+        read_only: Whether nothing may be changed.
+    Returns: exit status: 0, 2 where the terminal cannot show the app (said on standard error)
+    """
+    import sys
+
+    from worksheet.tui.terminal import refusal, terminal
+
+    refused = refusal()
+    if refused is not None:
+        print(f"biasbook: {refused}", file=sys.stderr)
+        return 2
+    guard = Guard()
+    guard.start()
+    try:
+        app = BookApp(Session(root, read_only=read_only), terminal(), guard)
+        return app.run() or 0
+    finally:
+        guard.stop()

@@ -1,0 +1,249 @@
+"""A sheet's screen: its page with a cursor on one value, the stage beside it, and the value changed where it stands."""
+
+from __future__ import annotations
+
+from collections.abc import Iterable
+from typing import ClassVar
+
+from textual.containers import Horizontal
+from textual.widget import Widget
+
+from worksheet.model.keys import Kind
+from worksheet.session.edits import ChangeSheet, Put, RenameSheet
+from worksheet.session.needs import shown_input
+from worksheet.tui import commands
+from worksheet.tui.pages import sheet_page, stage_part, words
+from worksheet.tui.pages.parts import Facts
+from worksheet.tui.rows import HEAD, LABEL, PLAIN, QUIET, Page, Span, line
+from worksheet.tui.screens import adding, changing, stepping
+from worksheet.tui.screens.place import Place, bindings
+from worksheet.tui.widgets.in_place import InPlace
+from worksheet.tui.widgets.ledger import Ledger
+from worksheet.tui.widgets.lines import Lines
+
+_WIDE = 116
+"""Columns from which on the stage has a column of its own."""
+
+
+class SheetScreen(Place):
+    """One sheet."""
+
+    PLACE = commands.SHEET
+    BINDINGS = bindings(commands.SHEET)
+    SHOWN: ClassVar[bool] = True
+
+    def __init__(self, name: str, row: str = "") -> None:
+        """Take the sheet's name, and the row that the cursor begins on."""
+        super().__init__()
+        self.name_of_sheet = name
+        self.step_kind = "5 %"
+        self.change = changing.Change(self)
+        self._first = row
+        self._with_stage = True
+
+    def compose_page(self) -> Iterable[Widget]:
+        """The page, the stage beside it, the line to type in."""
+        with Horizontal():
+            yield Ledger(self.book.signs.pointer, id="body")
+            yield Lines(id="side")
+        yield InPlace(self.book.signs, id="in-place")
+
+    # What it shows
+
+    def facts(self) -> Facts:
+        """Everything that the page is made of."""
+        book, name = self.book, self.name_of_sheet
+        result = None if book.results is None else book.results.sheet(name)
+        needed = book.needed if book.needed is not None and book.needed.name == name else None
+        proposal = {} if needed is None else needed.proposal
+        solved = None if needed is None else needed.solved
+        return Facts(self.snapshot, name, result, solved, self.columns, book.signs, proposal, {})
+
+    @property
+    def columns(self) -> int:
+        """Room for a row."""
+        wide = self.app.size.width - (37 if self._beside else 0)
+        return max(wide - 3, 20)
+
+    @property
+    def _beside(self) -> bool:
+        return self._with_stage and self.app.size.width >= _WIDE
+
+    def show_book(self) -> None:
+        """Everything anew; only what changed is drawn."""
+        if not self.is_mounted:
+            return
+        facts = self.facts()
+        side = self.query_one("#side", Lines)
+        side.display = self._beside
+        if self._beside:
+            side.show(stage_part.below(facts))
+        self._show_title(facts)
+        page = sheet_page.page(facts)
+        if self._with_stage and not self._beside and self.app.size.height >= 22:
+            page = Page((*stage_part.beside(facts), *page.rows), page.sections)
+        self.ledger.show(page)
+        if self._first and self.ledger.go(self._first):
+            self._first = ""
+        self.show_foot()
+
+    def _show_title(self, facts: Facts) -> None:
+        data = facts.data
+        result = facts.result
+        said = [facts.text(self.name_of_sheet, HEAD), facts.text(str(data.get("stage", "")), LABEL)]
+        said.append(facts.text(words.typed(data.get("device")), LABEL))
+        said.append(facts.text(words.typed(data.get("state")) or "draft", PLAIN))
+        if self.name_of_sheet not in self.snapshot.names:
+            said.append(Span("is not there any more", words.VERDICT_ROLES["missed"]))
+        elif result is not None:
+            counts = ((result.count(v), v) for v in words.VERDICT_ROLES)
+            said += [Span(f"{n} {v}", words.VERDICT_ROLES[v]) for n, v in counts if n]
+        stale = self.book.results is None or self.book.results.revision != self.snapshot.revision
+        title = facts.text(str(data.get("title", "")), QUIET)
+        tail = Span("working..." if stale else f"step {self.step_kind}", QUIET)
+        read_only = [Span("for reading only", LABEL)] if self.snapshot.read_only else []
+        self.query_one("#title", Lines).show([line(*said, *read_only, gap=2), line(tail, title, gap=3)])
+
+    def on_ledger_moved(self) -> None:
+        """Other commands may hold here."""
+        self.show_foot()
+
+    def on_ledger_resized(self) -> None:
+        """Another width."""
+        self.show_book()
+
+    def on_resize(self) -> None:
+        """Another size."""
+        if self.change.open:
+            self.call_after_refresh(self.change.place_again)
+        self.show_book()
+
+    def holds(self) -> set[str]:
+        """What the cursor is on, and whether there is a proposal."""
+        held = super().holds() | {"sheet"}
+        field, row = self.ledger.field, self.ledger.row
+        if field is not None:
+            held.add("field")
+            if field.key.kind in (Kind.QUANTITY, Kind.WHOLE):
+                held.add("step")
+        if row is not None:
+            if row.subject[0] in ("metric", "variable", "bound", "operating"):
+                held.add("number")
+            if row.key.partition(".")[0] in ("target", "assume", "own", "choose", "evidence", "waiver"):
+                held.add("removable")
+        needed = self.book.needed
+        if needed is not None and needed.name == self.name_of_sheet and needed.proposal:
+            held.add("proposal")
+        return held
+
+    # Changing a value where it stands
+
+    def action_edit(self) -> None:
+        """Change the value under the cursor."""
+        self.change.begin(self.ledger.field)
+
+    def resume_typing(self, path: str, text: str) -> None:
+        """Go on with a text that was left behind."""
+        self.change.resume(path, text)
+
+    def on_in_place_typed(self, message: InPlace.Typed) -> None:
+        """Keep the text outside the project."""
+        self.change.typed(message.text)
+
+    def on_in_place_accepted(self, message: InPlace.Accepted) -> None:
+        """Into the sheet with it, or say why not."""
+        self.change.accept(message.text)
+
+    def on_in_place_given_up(self) -> None:
+        """As if nothing had been typed."""
+        self.change.give_up()
+
+    # Commands
+
+    def action_step_up(self) -> None:
+        """More of it."""
+        stepping.step(self, up=True)
+
+    def action_step_down(self) -> None:
+        """Less of it."""
+        stepping.step(self, up=False)
+
+    def action_step_size(self) -> None:
+        """What one step is."""
+        stepping.choose(self)
+
+    def action_take(self) -> None:
+        """Write the recommended point into the choices."""
+        needed = self.book.needed
+        keys = {key.name: key for key in sheet_page.design(self.facts())}
+        values = {} if needed is None else {n: v for n, v in needed.proposal.items() if n in keys}
+        pieces = tuple(Put(("choose", name), shown_input(keys[name], value)) for name, value in values.items())
+        if pieces:
+            self.ask_for(ChangeSheet(self.name_of_sheet, pieces, "proposal taken over"))
+
+    def action_add(self) -> None:
+        """One more assumption, name, target, evidence or waiver."""
+        adding.ask(self)
+
+    def action_remove(self) -> None:
+        """Take out what the cursor is on."""
+        changing.remove(self)
+
+    def action_rename(self) -> None:
+        """Give the sheet another name."""
+        from worksheet.tui.dialogs.form import FormDialog
+        from worksheet.tui.screens.book import name_line
+        from worksheet.tui.screens.forming import submit
+
+        def taken(texts: object) -> str:
+            assert isinstance(texts, dict)
+            wrong = submit(self.book, RenameSheet(self.name_of_sheet, texts["name"]))
+            if not wrong:
+                self.name_of_sheet = texts["name"]
+                self.book.work()
+            return wrong
+
+        form = FormDialog(f"Rename {self.name_of_sheet}", [name_line(self.name_of_sheet)], taken, self.book.signs)
+        self.app.push_screen(form)
+
+    def action_next_section(self) -> None:
+        """The next part."""
+        self.ledger.go_section(1)
+
+    def action_previous_section(self) -> None:
+        """The part before."""
+        self.ledger.go_section(-1)
+
+    def action_next_sheet(self) -> None:
+        """The sheet after this one."""
+        self._other(1)
+
+    def action_previous_sheet(self) -> None:
+        """The sheet before this one."""
+        self._other(-1)
+
+    def _other(self, step: int) -> None:
+        names = self.snapshot.names
+        if names:
+            present = names.index(self.name_of_sheet) if self.name_of_sheet in names else 0
+            row = self.ledger.row
+            self.book.open_sheet(names[(present + step) % len(names)], row.key if row is not None else "")
+
+    def action_drawing(self) -> None:
+        """Show or hide the stage."""
+        self._with_stage = not self._with_stage
+        self.show_book()
+
+    def action_algebra(self) -> None:
+        """What stands behind the number."""
+        from worksheet.tui.screens.algebra import AlgebraScreen
+
+        row = self.ledger.row
+        if row is not None:
+            self.app.push_screen(AlgebraScreen(self.name_of_sheet, *row.subject))
+
+    def action_map(self) -> None:
+        """Where all targets hold."""
+        from worksheet.tui.screens.window_map import MapScreen
+
+        self.app.push_screen(MapScreen(self.name_of_sheet))
