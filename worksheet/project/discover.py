@@ -102,8 +102,9 @@ def checked(project: Project) -> Project:
     assert project.process is not None
     problems = list(check.project_problems(project.file, project.process))
     sheets = dict(project.sheets)
+    used = links.names_used(project.sheets)
     for sheet in project.sheets.values():
-        found = [*check.sheet_problems(sheet, project.process), *links.name_problems(sheet, project.sheets)]
+        found = [*check.sheet_problems(sheet, project.process), *links.name_problems(sheet, project.sheets, used)]
         if found:
             problems += found
             del sheets[sheet.name]

@@ -56,8 +56,18 @@ def formulas_of(sheet: Sheet) -> Iterator[tuple[str, Formula, bool]]:
             yield f"target.{name}", target.formula, True
 
 
-def name_problems(sheet: Sheet, sheets: Mapping[str, Sheet]) -> list[Problem]:
-    """Names in a sheet's formulas that do not exist, and own names that nothing uses."""
+def names_used(sheets: Mapping[str, Sheet]) -> frozenset[str]:
+    """Every name that any formula of a project uses."""
+    return frozenset(n for sheet in sheets.values() for _, formula, _ in formulas_of(sheet) for n in formula.names)
+
+
+def name_problems(sheet: Sheet, sheets: Mapping[str, Sheet], elsewhere: frozenset[str]) -> list[Problem]:
+    """Names in a sheet's formulas that do not exist, and own names that nothing uses.
+
+    Args:
+        sheet, sheets: The sheet, and all of its project.
+        elsewhere: names_used of the project.
+    """
     problems: list[Problem] = []
     used: set[str] = set()
     for key, formula, own_metrics in formulas_of(sheet):
@@ -68,7 +78,6 @@ def name_problems(sheet: Sheet, sheets: Mapping[str, Sheet]) -> list[Problem]:
                 problems.append(
                     Problem(sheet.file, sheet.lines.get(f"{key}.formula", sheet.lines.get(key)), key, message)
                 )
-    elsewhere = {n for other in sheets.values() for _, f, _ in formulas_of(other) for n in f.names}
     for name in sheet.own:
         if name not in used and f"{sheet.name}.{name}" not in elsewhere:
             message = f"the own name {name!r} is used by no formula; remove it, or correct the name that was meant"
