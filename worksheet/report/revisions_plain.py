@@ -1,0 +1,116 @@
+"""Revisions and comparisons as JSON-ready data and as lines of text."""
+
+from __future__ import annotations
+
+from collections.abc import Iterator, Sequence
+from typing import Any
+
+from worksheet.compare.compared import Comparison, Result, SheetChange
+from worksheet.compare.inputs import Moved
+from worksheet.history.revisions import Revision
+from worksheet.model.problem import Problem
+from worksheet.model.text import clean
+from worksheet.report import plain, wording
+from worksheet.report.table import Column, Table, lines, wrapped
+
+Plain = dict[str, Any]
+_ID = 10
+
+
+def history(listed: Sequence[Revision]) -> Plain:
+    """The revisions as a document."""
+    return {"schema": plain.SCHEMA, "revisions": [revision(r) for r in listed], "problems": []}
+
+
+def revision(found: Revision) -> Plain:
+    """One revision."""
+    sheets = [p.removeprefix("sheets/").removesuffix(".toml") for p in found.paths if p.startswith("sheets/")]
+    return {"revision": found.revision, "dated": found.dated, "by": found.by, "note": found.note, "sheets": sheets}
+
+
+def history_text(listed: Sequence[Revision], width: int) -> Iterator[str]:
+    """The revisions as a table, newest first."""
+    columns = (Column("revision"), Column("dated"), Column("by", flexible=True), Column("note", flexible=True))
+    rows = tuple((r.revision[:_ID], r.dated[:16].replace("T", " "), r.by, r.note) for r in listed)
+    yield from lines(Table(columns, rows), width) if rows else ["no revision yet"]
+
+
+def comparison(old: str, new: str, found: Comparison, problems: Sequence[Problem]) -> Plain:
+    """A comparison as a document."""
+    return {
+        "schema": plain.SCHEMA,
+        "old": old,
+        "new": new,
+        "same": found.same,
+        "project": [_moved(m) for m in found.project],
+        "process": [_moved(m) for m in found.process],
+        "sheets": [_sheet(s) for s in found.sheets],
+        "problems": plain.problems(problems),
+    }
+
+
+def _moved(moved: Moved) -> Plain:
+    return {"key": moved.key, "old": moved.old, "new": moved.new, "unit": moved.unit}
+
+
+def _sheet(sheet: SheetChange) -> Plain:
+    return {
+        "sheet": sheet.sheet,
+        "status": sheet.status,
+        "inputs": [_moved(m) for m in sheet.inputs],
+        "results": [_result(r) for r in sheet.results],
+    }
+
+
+def _result(result: Result) -> Plain:
+    return {
+        "metric": result.metric,
+        "unit": result.unit,
+        "old": result.old,
+        "new": result.new,
+        "old_verdict": result.old_verdict,
+        "new_verdict": result.new_verdict,
+    }
+
+
+def comparison_text(old: str, new: str, found: Comparison, width: int) -> Iterator[str]:
+    """A comparison as a designer reads it: what was stated, and what that did."""
+    names = [name if name == "working" else name[:_ID] for name in (old, new)]
+    yield f"{names[0]} -> {names[1]}: {'nothing differs' if found.same else 'what differs'}"
+    for title, moved in (("Project", found.project), ("Process file", found.process)):
+        if moved:
+            yield ""
+            yield title
+            yield from _stated(moved, width)
+    for sheet in found.sheets:
+        yield ""
+        yield f"{clean(sheet.sheet)} ({sheet.status})"
+        yield from _stated(sheet.inputs, width)
+        if sheet.results and sheet.status in ("changed", "affected"):
+            yield from lines(_results(sheet.results), width, "  ")
+
+
+def _stated(moved: Sequence[Moved], width: int) -> Iterator[str]:
+    for m in moved:
+        old, new = (_shown(value, m.unit) for value in (m.old, m.new))
+        yield from wrapped(f"{m.key}: {old} -> {new}", width, "  ")
+
+
+def _shown(value: Any, unit: str) -> str:
+    if value is None:
+        return "not stated"
+    if isinstance(value, float):
+        return wording.number(value, unit) if unit else f"{value:.6g}"
+    return clean(str(value))
+
+
+def _results(results: Sequence[Result]) -> Table:
+    columns = (Column("metric", flexible=True), Column("old", right=True), Column("new", right=True), Column("verdict"))
+    rows = []
+    for r in results:
+        verdict = r.new_verdict or ""
+        if r.old_verdict != r.new_verdict:
+            verdict = f"{r.old_verdict or '-'} -> {r.new_verdict or '-'}"
+        old, new = (wording.metric_number(r.metric, value, r.unit) for value in (r.old, r.new))
+        rows.append((r.metric, old, new, verdict))
+    return Table(columns, tuple(rows))

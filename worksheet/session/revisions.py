@@ -1,0 +1,161 @@
+"""Revisions for both front ends: recording, listing, and two states of a project laid side by side."""
+
+from __future__ import annotations
+
+import datetime
+import tempfile
+from dataclasses import dataclass
+from pathlib import Path
+
+from worksheet.compare.compared import Comparison, State, compare
+from worksheet.history import own, repository, revisions
+from worksheet.history import record as recording
+from worksheet.history.outcome import Person, Refused
+from worksheet.history.repository import Repository
+from worksheet.history.revisions import Revision
+from worksheet.model.problem import Problem
+from worksheet.model.text import clean
+from worksheet.report import wording
+from worksheet.review.results import Review
+from worksheet.session.workbook import Workbook
+
+WORKING = "working"
+"""The files as they stand, instead of a revision."""
+
+_MOST_LINES = 40
+
+
+def refusal(found: Refused, root: Path) -> Problem:
+    """A refusal of git as a problem."""
+    return Problem(str(root), None, "", found.message)
+
+
+def repository_of(root: Path) -> Repository | Problem:
+    """The repository that encloses a project, or why there is none to use."""
+    found = repository.find(root)
+    if found is None:
+        message = "there is no git repository around this project yet; `biasbook record` makes one"
+        return Problem(str(root), None, "", message)
+    return refusal(found, root) if isinstance(found, Refused) else found
+
+
+@dataclass(frozen=True, slots=True)
+class Outcome:
+    """What came of a record: the new revision's id, "" where nothing had changed, and what there is to say."""
+
+    revision: str
+    remarks: tuple[str, ...]
+
+
+def record(root: Path, note: str, today: datetime.date, person: Person | None = None) -> Outcome | Problem:
+    """Save the project's own files as a revision, with a digest of what moved and which verdicts turned.
+
+    Args:
+        root: The project folder.
+        note: Why.
+        today: For waivers with an end.
+        person: Who records, where git does not know.
+    """
+    found = repository.create(root)
+    if isinstance(found, Refused):
+        return refusal(found, root)
+    files = own.own_files(root)
+    deleted = recording.gone(found, files)
+    if isinstance(deleted, Refused):
+        return refusal(deleted, root)
+    body = _digest(root, today)
+    made = recording.record(found, files, deleted, note=note, body=body, person=person)
+    if isinstance(made, Refused):
+        return refusal(made, root)
+    remarks = (*(f"{left.path}: {left.reason}" for left in made.left_out), *made.remarks)
+    return Outcome(made.revision if isinstance(made, recording.Recorded) else "", remarks)
+
+
+def history(root: Path, sheet: str | None = None) -> tuple[Revision, ...] | Problem:
+    """Revisions of a project or of one of its sheets, newest first."""
+    found = repository_of(root)
+    if isinstance(found, Problem):
+        return found
+    listed = revisions.history(found, None if sheet is None else f"sheets/{sheet}.toml")
+    return refusal(listed, root) if isinstance(listed, Refused) else listed
+
+
+@dataclass(frozen=True, eq=False, slots=True)
+class Compared:
+    """Two states by name, and what differs."""
+
+    old: str
+    new: str
+    comparison: Comparison
+    problems: tuple[Problem, ...]
+
+
+def compared(root: Path, old: str | None, new: str, today: datetime.date) -> Compared | Problem:
+    """Compare two revisions of a project, or a revision with the files as they stand.
+
+    Args:
+        root: The project folder.
+        old: A revision; the newest one where None.
+        new: A revision, or WORKING.
+        today: For waivers with an end.
+    """
+    found = repository_of(root)
+    if isinstance(found, Problem):
+        return found
+    before = _state(found, root, old or "HEAD", today)
+    after = _state(found, root, new, today)
+    for state in (before, after):
+        if isinstance(state, Problem):
+            return state
+    assert isinstance(before, tuple)
+    assert isinstance(after, tuple)
+    problems = (*before[1].review.problems, *after[1].review.problems)
+    return Compared(before[0], after[0], compare(before[1], after[1]), problems)
+
+
+def _state(found: Repository, root: Path, name: str, today: datetime.date) -> tuple[str, State] | Problem:
+    if name == WORKING:
+        return WORKING, _reviewed(root, today)
+    revision = revisions.resolve(found, name)
+    if isinstance(revision, Refused):
+        return refusal(revision, root)
+    files = revisions.read_files(found, revision)
+    if isinstance(files, Refused):
+        return refusal(files, root)
+    with tempfile.TemporaryDirectory(prefix="biasbook-") as folder:
+        laid = Path(folder)
+        for path, content in files.files.items():
+            (laid / path).parent.mkdir(parents=True, exist_ok=True)
+            (laid / path).write_bytes(content)
+        return revision, _reviewed(laid, today)
+
+
+def _reviewed(root: Path, today: datetime.date) -> State:
+    workbook = Workbook.read(root)
+    return State(workbook.project, workbook.review(today))
+
+
+def _digest(root: Path, today: datetime.date) -> str:
+    """What moved since the newest revision and which verdicts turned, as plain lines for the message."""
+    found = compared(root, None, WORKING, today)
+    if isinstance(found, Problem):
+        return _first(Workbook.read(root).review(today))
+    lines = [
+        f"{m.key}: {m.old} -> {m.new} {m.unit}".rstrip() for m in (*found.comparison.project, *found.comparison.process)
+    ]
+    for sheet in found.comparison.sheets:
+        lines.append(f"{sheet.sheet}: {sheet.status}")
+        lines += [f"  {m.key}: {m.old} -> {m.new} {m.unit}".rstrip() for m in sheet.inputs]
+        for result in sheet.results:
+            if result.old_verdict != result.new_verdict:
+                shown = [wording.metric_number(result.metric, v, result.unit) for v in (result.old, result.new)]
+                verdicts = f"{result.old_verdict or 'no target'} -> {result.new_verdict or 'no target'}"
+                lines.append(f"  {result.metric}: {verdicts} ({shown[0]} -> {shown[1]})")
+    more = [f"and {len(lines) - _MOST_LINES} more"] if len(lines) > _MOST_LINES else []
+    return clean("\n".join([*lines[:_MOST_LINES], *more]), lines=True)
+
+
+def _first(review: Review) -> str:
+    counts = {v: sum(s.count(v) for s in review.sheets) for v in ("met", "missed", "unknown", "waived")}
+    said = ", ".join(f"{count} {verdict}" for verdict, count in counts.items() if count)
+    return f"{len(review.sheets)} blocks; targets: {said or 'none'}"
