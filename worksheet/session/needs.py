@@ -65,10 +65,10 @@ class Needs:
         return cls._narrowed(root, points.case, over, target, unknown)
 
     @classmethod
-    def at(cls, root: Path, evaluator: Evaluator, name: str) -> Needs | list[Problem]:
-        """Solve a sheet of a state that is evaluated already, or say why it cannot be."""
+    def at(cls, root: Path, evaluator: Evaluator, name: str, unknown: str | None = None) -> Needs | list[Problem]:
+        """Solve a sheet of a state that is evaluated already, or say why it cannot be; `unknown` as in `of`."""
         points, found = solve_points(evaluator, name)
-        return found if points is None else cls._narrowed(root, points.case, None, None, None)
+        return found if points is None else cls._narrowed(root, points.case, None, None, unknown)
 
     @classmethod
     def _narrowed(

@@ -116,8 +116,9 @@ def _with(parsed: source.Source) -> Keys:
 
 def _keys(value: Any) -> tuple[str, ...] | str:
     """Keys as the toolkit names them, or what is wrong."""
-    listed = value if isinstance(value, list) else [value]
-    if not listed or not all(isinstance(one, str) and one for one in listed):
+    stated = value if isinstance(value, list) else [value]
+    listed = [one for one in stated if isinstance(one, str) and one]
+    if not listed or len(listed) != len(stated):
         return 'Found no key, expected a key or a list of keys, for example "g" or ["g", "ctrl+g"].'
     out = []
     for one in listed:

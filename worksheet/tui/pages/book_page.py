@@ -160,6 +160,7 @@ def _budget(one: BudgetReview, signs: Signs) -> Line:
         Span(("=" if signs.plain else "▬") * filled, role),
         Span(signs.across * (_BAR - filled), RULE),
         Span(f" {taken:.0%}", PLAIN, 6, right=True),
+        Span("  "),
         words.verdict_span(one.verdict),
         gap=0,
     )

@@ -52,8 +52,11 @@ class Change:
             found = fields.read(place, text)
             return found if isinstance(found, str) else ""
 
-        text = field.text if text is None else text
-        return Asked(field.title, text, wrong, lambda typed: fields.complete(place, typed), place.key.help)
+        def completed(text: str) -> tuple[str, ...]:
+            return fields.complete(place, text)
+
+        stands = field.text if text is None else text
+        return Asked(field.title, stands, wrong, completed, place.key.help, all_marked=text is None)
 
     def place_again(self) -> None:
         """The page has another size: the line follows its field."""

@@ -12,7 +12,7 @@ from worksheet.model.keys import Kind
 from worksheet.session.edits import ChangeSheet, Put, RenameSheet
 from worksheet.session.needs import shown_input
 from worksheet.tui import commands
-from worksheet.tui.pages import sheet_page, stage_part, words
+from worksheet.tui.pages import parts, sheet_page, stage_part, words
 from worksheet.tui.pages.parts import Facts
 from worksheet.tui.rows import HEAD, LABEL, PLAIN, QUIET, Page, Span, line
 from worksheet.tui.screens import adding, changing, stepping
@@ -175,7 +175,7 @@ class SheetScreen(Place):
     def action_take(self) -> None:
         """Write the recommended point into the choices."""
         needed = self.book.needed
-        keys = {key.name: key for key in sheet_page.design(self.facts())}
+        keys = {key.name: key for key in parts.design(self.facts())}
         values = {} if needed is None else {n: v for n, v in needed.proposal.items() if n in keys}
         pieces = tuple(Put(("choose", name), shown_input(keys[name], value)) for name, value in values.items())
         if pieces:

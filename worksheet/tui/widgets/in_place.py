@@ -27,13 +27,15 @@ _LEAST, _LINES = 44, 4
 
 @dataclass(frozen=True)
 class Asked:
-    """What is asked for: its title, the text so far, what says what is wrong with a text, what completes it, help."""
+    """What is asked for: its title, the text so far, what says what is wrong with a text, what completes it, help;
+    whether the next character takes the place of all of it."""
 
     title: str
     text: str
     check: Callable[[str], str]
     complete: Callable[[str], Sequence[str]]
     help: str
+    all_marked: bool = True
 
 
 class InPlace(Vertical):
@@ -92,6 +94,8 @@ class InPlace(Vertical):
         field.cursor_position = len(asked.text)
         self.add_class("shown")
         field.focus()
+        if asked.all_marked:
+            field.select_all()
         self._tell(asked.text)
 
     def close(self) -> None:
