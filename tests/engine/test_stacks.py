@@ -2,10 +2,13 @@
 
 from __future__ import annotations
 
+import dataclasses
+
 import numpy as np
 import pytest
 
 from tests.device.test_transistor import DEVICE
+from worksheet.device import bulk
 from worksheet.device.constants import thermal_voltage
 from worksheet.device.transistor import saturation_voltage
 from worksheet.engine import polynomial as poly
@@ -13,6 +16,7 @@ from worksheet.engine import settling
 from worksheet.engine.inputs import Inputs
 from worksheet.engine.solution import NumericSolution
 from worksheet.stages.circuit import Circuit
+from worksheet.stages.one_transistor import COMMON_GATE
 from worksheet.stages.stage import GROUND, IN, LINE, OUT, SUPPLY, Stage, Transistor
 
 TALL = Stage(
@@ -108,3 +112,32 @@ def test_positive_roots_of_a_cubic_against_numpy() -> None:
     coefficients = [np.asarray(c) for c in (-6.0, 11.0, -6.0, 1.0)]
     assert np.sort(poly.positive_roots(coefficients)) == pytest.approx([1.0, 2.0, 3.0], rel=1e-12)
     assert float(poly.lowest_positive_root(coefficients)) == pytest.approx(1.0, rel=1e-12)
+
+
+def test_the_gate_of_a_hung_follower_counts_with_its_held_drain() -> None:
+    solution = solved(HUNG, output_level=0.8)
+    drive = solution.levels.drives["main"]
+    expected = bulk.gate_voltage(DEVICE, drive, 0.8, SUPPLY_VOLTAGE - WANTED, solution.inputs.thermal)
+    assert float(np.ravel(solution.levels.input)[0]) == pytest.approx(float(np.ravel(expected)[0]), rel=1e-12)
+
+
+@pytest.mark.parametrize("polarity", ["n", "p"])
+def test_a_common_gate_without_levels_stands_in_the_middle(polarity: str) -> None:
+    """Input in the middle of 0 to supply less both saturation voltages, output in the middle of what that leaves."""
+    circuit = Circuit(COMMON_GATE, polarity, "rail", ideal_bias=False)
+    bias = dataclasses.replace(DEVICE, width=3e-6)
+    inputs = Inputs(
+        circuit,
+        np.array([300.0]),
+        SUPPLY_VOLTAGE,
+        CURRENT,
+        {"main": DEVICE, "bias": bias},
+        1e-12,
+        saturation_margin=MARGIN,
+    )
+    levels = NumericSolution(inputs).levels
+    over = float(saturation_voltage(CURRENT / bias.specific, thermal_voltage(300.0))) + MARGIN
+    entry = (SUPPLY_VOLTAGE - WANTED - over) / 2
+    assert float(np.ravel(levels.input)[0]) == pytest.approx(entry)
+    assert float(np.ravel(levels.output)[0]) == pytest.approx((entry + WANTED + SUPPLY_VOLTAGE - over) / 2)
+    assert float(np.ravel(levels.empty)[0]) < 0
