@@ -2,13 +2,15 @@
 
 from __future__ import annotations
 
-import datetime
 import threading
+from collections.abc import Sequence
 from pathlib import Path
 from typing import ClassVar
 
 from textual.app import App
 from textual.binding import BindingType
+from textual.driver import Driver
+from textual.filter import LineFilter
 from textual.message import Message
 
 from worksheet.model.problem import Problem
@@ -17,8 +19,9 @@ from worksheet.session.recovery import Journal
 from worksheet.session.session import Outcome, Session
 from worksheet.tui import keymap, themes
 from worksheet.tui.guard import Guard
+from worksheet.tui.plain_signs import PlainSigns
 from worksheet.tui.recompute import Recompute, Stamped
-from worksheet.tui.recomputed import Needed, Results, needs_of, review_of
+from worksheet.tui.recomputed import Needed, Results, needs_of, review_of, today
 from worksheet.tui.screens.book import BookScreen
 from worksheet.tui.screens.place import Place
 from worksheet.tui.signs import signs_for
@@ -56,15 +59,28 @@ class BookApp(App[int]):
             """Only the newest state matters."""
             return isinstance(message, BookApp.Changed)
 
-    def __init__(self, session: Session, terminal: Terminal, guard: Guard | None = None) -> None:
-        """Take an open session and what the terminal can do; `guard` keeps the end from cutting a write in two."""
+    def __init__(
+        self,
+        session: Session,
+        terminal: Terminal,
+        guard: Guard | None = None,
+        *,
+        results: Results | None = None,
+        driver_class: type[Driver] | None = None,
+    ) -> None:
+        """Take an open session and what the terminal can do; `guard` keeps the end from cutting a write in two.
+
+        `results` are what is known of the book already, so that the first picture shows them.
+        """
         self.terminal = terminal
         self.themes, theme_problems = themes.read(terminal.configuration)  # before the style sheet is read
-        super().__init__(ansi_color=terminal.few_colours)
+        super().__init__(driver_class=driver_class, ansi_color=True if terminal.no_colour else None)
+        self.fault: Exception | None = None
         self.session = session
         self.signs = signs_for(terminal.plain_signs)
+        self._plain = [PlainSigns()] if terminal.plain_signs else []
         self.snapshot = session.snapshot()
-        self.results: Results | None = None
+        self.results = results
         self.needed: Needed | None = None
         self.journal = Journal(terminal.state / "typing", session.root)
         self.keys = keymap.read(terminal.configuration)
@@ -75,6 +91,15 @@ class BookApp(App[int]):
         self._ended = threading.Event()
 
     # Beginning and end
+
+    def _fatal_error(self) -> None:
+        """Leave after a fault of the program; `start` tells of it without a traceback."""
+        self.fault = self._exception
+        self._close_messages_no_wait()
+
+    def get_line_filters(self) -> Sequence[LineFilter]:
+        """The toolkit's own; where only ASCII can be shown, one that lets nothing else through."""
+        return [*super().get_line_filters(), *self._plain]
 
     def get_theme_variable_defaults(self) -> dict[str, str]:
         """Colours of the roles before a theme is on."""
@@ -92,6 +117,8 @@ class BookApp(App[int]):
         self.call_after_refresh(self._offer_left)
 
     def _first_theme(self) -> str:
+        if self.terminal.no_colour:
+            return themes.SIXTEEN  # the toolkit takes all colours out of a theme of the terminal's own palette
         chosen = themes.remembered(self.terminal.state)
         fallback = themes.SIXTEEN if self.terminal.few_colours else themes.DARK
         return chosen if chosen in self.themes else fallback
@@ -123,8 +150,7 @@ class BookApp(App[int]):
     def work(self) -> None:
         """Have worked out what belongs to the book as it stands."""
         snapshot = self.snapshot = self.session.snapshot()
-        today = datetime.date.today()
-        self._reviews.want(snapshot.revision, lambda: review_of(self.session, snapshot, today))
+        self._reviews.want(snapshot.revision, lambda: review_of(self.session, snapshot, today()))
         sheet = self.open_name
         if sheet is not None:
             self._solves.want(snapshot.revision, lambda: needs_of(self.session, snapshot, sheet))
@@ -228,18 +254,6 @@ def run(root: Path, *, read_only: bool = False) -> int:
         read_only: Whether nothing may be changed.
     Returns: exit status: 0, 2 where the terminal cannot show the app (said on standard error)
     """
-    import sys
+    from worksheet.tui.start import start
 
-    from worksheet.tui.terminal import refusal, terminal
-
-    refused = refusal()
-    if refused is not None:
-        print(f"biasbook: {refused}", file=sys.stderr)
-        return 2
-    guard = Guard()
-    guard.start()
-    try:
-        app = BookApp(Session(root, read_only=read_only), terminal(), guard)
-        return app.run() or 0
-    finally:
-        guard.stop()
+    return start(root, read_only=read_only)

@@ -138,7 +138,7 @@ def _clashes(keys: dict[str, tuple[str, ...]], before: Mapping[str, tuple[str, .
         for other in COMMANDS:
             shared = set(keys[command.name]) & set(keys[other.name])
             if other is not command and shared and set(command.places) & set(other.places):
-                message = f"{sorted(shared)[0]} is the key of {other.name} already; {command.name} keeps its own keys."
+                message = f"{min(shared)} is the key of {other.name} already; {command.name} keeps its own keys."
                 problems.append(Problem(FILE, None, command.name, message))
                 keys[command.name] = before[command.name]
                 break

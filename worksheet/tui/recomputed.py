@@ -60,3 +60,8 @@ def needs_of(session: Session, snapshot: Snapshot, name: str) -> Needed:
     if isinstance(found, list):
         return Needed(snapshot.revision, name, problems=tuple(found))
     return Needed(snapshot.revision, name, found.solved, found.proposal())
+
+
+def today() -> datetime.date:
+    """The day where the user is; decides which waivers have ended."""
+    return datetime.datetime.now().astimezone().date()

@@ -20,7 +20,7 @@ from worksheet.report import wording
 from worksheet.report.table import width_of
 from worksheet.solver.plane import Plane
 from worksheet.solver.plane import Span as Stretch
-from worksheet.solver.trials import MAX_VOLTAGE, SATURATION, Constraint
+from worksheet.solver.trials import MAX_VOLTAGE, SATURATION, Constraint, Mask
 from worksheet.solver.variables import Variable
 from worksheet.tui.rows import HEAD, LABEL, MET, MISSED, PLAIN, QUIET, RULE, WAIVED, Line, Span
 from worksheet.tui.signs import Signs
@@ -163,8 +163,8 @@ def _foot(plane: Plane, across: int, signs: Signs) -> list[Line]:
 
 def legend(plane: Plane, columns: int, signs: Signs) -> list[Line]:
     """Which letter is which boundary; only those that are seen."""
-    seen = plane.crossed.reshape(len(plane.constraints), -1).any(axis=1)
-    bounds = plane.binding.reshape(len(plane.constraints), -1).any(axis=1)
+    seen = _somewhere(plane.crossed)
+    bounds = _somewhere(plane.binding)
     out: list[list[Span]] = [[]]
     for k, constraint in enumerate(plane.constraints):
         if seen[k]:
@@ -177,6 +177,11 @@ def legend(plane: Plane, columns: int, signs: Signs) -> list[Line]:
         nothing = "everything holds everywhere here" if plane.holds.any() else "nothing holds anywhere here"
         out[-1].append(Span(nothing, QUIET))
     return [tuple(one) for one in out]
+
+
+def _somewhere(where: Mask) -> list[bool]:
+    """Of masks over cells, whether each holds anywhere."""
+    return [bool(one.any()) for one in where]
 
 
 def _named(constraint: Constraint) -> str:

@@ -66,7 +66,7 @@ class MapScreen(Place):
         self._frame: tuple[Span, Span] | None = None
         self._asked: object = None
         self._count = 0
-        self._work: Recompute[Found] = Recompute(lambda one: self.post_message(self.Ready(one)))
+        self._work: Recompute[Found] = Recompute(self._deliver)
 
     def compose_page(self) -> Iterable[Widget]:
         """The map, then where the cross stands."""
@@ -76,6 +76,9 @@ class MapScreen(Place):
     def on_unmount(self) -> None:
         """Begin nothing more."""
         self._work.stop()
+
+    def _deliver(self, stamped: Stamped[Found]) -> None:
+        self.post_message(self.Ready(stamped))
 
     # What it shows
 
