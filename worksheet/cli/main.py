@@ -8,6 +8,7 @@ from collections.abc import Sequence
 from importlib import import_module
 from typing import NoReturn
 
+from worksheet import __version__
 from worksheet.cli.diagnostics import Status, say, tell
 from worksheet.cli.output import Output, close_quietly
 from worksheet.model.problem import Problem
@@ -30,6 +31,7 @@ def _parser() -> argparse.ArgumentParser:
         prog="biasbook",
         description="Calculation sheets for analog stages: what is needed, what is achieved, what binds.",
     )
+    parser.add_argument("--version", action="version", version=f"biasbook {__version__}")
     parser.set_defaults(command=_no_command)
     subparsers = parser.add_subparsers(title="commands", metavar="COMMAND", parser_class=_Parser)
     for name in COMMANDS:
@@ -58,6 +60,8 @@ def main(argv: Sequence[str] | None = None) -> int:
         status: int = parsed.command(parsed, output)
     except _UsageError as usage:
         return _bad_usage(str(usage), output)
+    except SystemExit as stop:  # how argparse ends --help and --version, after it said what was asked for
+        return int(stop.code or Status.FINE)
     except BrokenPipeError:
         close_quietly()
         return Status.FINE

@@ -6,7 +6,7 @@ from collections.abc import Iterator
 from typing import TypeVar
 
 from worksheet.model.text import clean
-from worksheet.report import wording
+from worksheet.report import details_text, wording
 from worksheet.report.table import Column, Table, lines, wrapped
 from worksheet.review.results import MET, MISSED, UNKNOWN, Review, SheetReview, TargetReview
 from worksheet.stages import catalogue
@@ -28,14 +28,22 @@ _WIDE = 110
 _DIGITS = 3
 
 
-def text(result: Review, width: int) -> Iterator[str]:
-    """Lines of a review, no wider than `width` columns where words allow it."""
+def text(result: Review, width: int, *, details: bool = False) -> Iterator[str]:
+    """Lines of a review, no wider than `width` columns where words allow it.
+
+    Args:
+        result: What was found.
+        width: Columns of the terminal.
+        details: Whether choices, operating points and metrics at the nominal condition are wanted too.
+    """
     yield from wrapped(f"{result.title or 'Project'}: {_counted(result)}", width)
     if result.nominal is not None:
         yield f"{result.conditions} conditions; nominal {wording.condition(result.nominal)}"
     for sheet in result.sheets:
         yield ""
         yield from _sheet(sheet, width)
+        if details:
+            yield from details_text.details(sheet, width)
     if result.budgets:
         yield ""
         yield "Budgets, all blocks times their count"

@@ -13,12 +13,15 @@ _INDENT = "  "
 
 
 def listed(stages: tuple[Stage, ...], width: int) -> Iterator[str]:
-    """One line a stage."""
-    columns = (Column("stage"), Column("driven"), Column("watched"), Column("held"), Column("what for", flexible=True))
-    rows = tuple((s.key, s.drive, stages_plain.watched(s), ", ".join(stages_plain.held(s)), s.purpose) for s in stages)
-    yield from lines(Table(columns, rows), width)
+    """Every stage in a few lines."""
+    for stage in stages:
+        held = ", ".join(stages_plain.held(stage))
+        yield from wrapped(
+            f"{stage.key}: {stage.drive} driven, {stages_plain.watched(stage)} watched, {held} held", width
+        )
+        yield from wrapped(stage.purpose, width, _INDENT)
     yield ""
-    yield from wrapped("biasbook stages STAGE shows one with its metrics and formulas.", width)
+    yield from wrapped("`biasbook stages STAGE` shows one with its metrics and formulas.", width)
 
 
 def one(stage: Stage, width: int) -> Iterator[str]:
@@ -26,7 +29,7 @@ def one(stage: Stage, width: int) -> Iterator[str]:
     yield f"{stage.title} ({stage.key})"
     yield from wrapped(stage.purpose, width, _INDENT)
     yield ""
-    yield "Drawn with n-channel devices; a p-channel stage is the mirror image about the supply"
+    yield from wrapped("Drawn with n-channel devices; a p-channel stage is the mirror image about the supply.", width)
     for device in stage.transistors:
         yield from wrapped(stages_plain.line_of(device), width, _INDENT)
     polarity = "the same polarity" if stage.source_output else "the other polarity"
@@ -44,9 +47,10 @@ def one(stage: Stage, width: int) -> Iterator[str]:
         yield from wrapped(f"of {' and '.join(stage.levels)} one at the most", width, _INDENT)
     yield ""
     yield "Its metrics"
-    columns = (Column("metric"), Column("unit"), Column("symbol"), Column("relation", flexible=True))
+    columns = (Column("metric"), Column("unit"), Column("symbol"), Column("relation", wraps=True))
     found = [m for m in metrics.all_metrics() if stage.absent_metric(m.key) is None]
     rows = tuple((m.key, m.dimension.unit or "-", m.symbol, m.relation) for m in found)
     yield from lines(Table(columns, rows), width, _INDENT)
-    for absent in (m.key for m in metrics.all_metrics() if stage.absent_metric(m.key) is not None):
-        yield from wrapped(f"not here: {stage.absent_metric(absent)}", width, _INDENT)
+    for absent in dict.fromkeys(stage.absent_metric(m.key) for m in metrics.all_metrics()):
+        if absent is not None:
+            yield from wrapped(f"not here: {absent}", width, _INDENT)

@@ -14,11 +14,15 @@ GAP = "  "
 
 @dataclass(frozen=True, slots=True)
 class Column:
-    """One column: its heading, which side its cells lean to, and whether it may be cut when space is short."""
+    """One column: its heading, which side its cells lean to, and how it gives way when space is short.
+
+    A flexible column is cut; one that wraps goes on below, so that nothing is lost. Only the last column may wrap.
+    """
 
     title: str
     right: bool = False
     flexible: bool = False
+    wraps: bool = False
 
 
 @dataclass(frozen=True, slots=True)
@@ -47,7 +51,7 @@ def cut(text: str, width: int) -> str:
 
 
 def lines(table: Table, width: int, indent: str = "") -> list[str]:
-    """A table as lines no wider than `width` columns; flexible columns give way first.
+    """A table as lines no wider than `width` columns; columns that wrap or are flexible give way.
 
     Args:
         table: What to show.
@@ -59,12 +63,22 @@ def lines(table: Table, width: int, indent: str = "") -> list[str]:
     room = width - len(indent) - len(GAP) * (len(widths) - 1)
     excess = sum(widths) - room
     for k, column in enumerate(table.columns):
-        if excess > 0 and column.flexible:
+        if excess > 0 and (column.flexible or column.wraps):
             give = min(excess, max(widths[k] - max(6, width_of(column.title)), 0))
             widths[k] -= give
             excess -= give
     heading = tuple(column.title for column in table.columns)
-    return [(indent + GAP.join(_cells(table, row, widths))).rstrip() for row in (heading, *rows)]
+    shown = (part for row in (heading, *rows) for part in _parts(table, row, widths))
+    return [(indent + GAP.join(_cells(table, part, widths))).rstrip() for part in shown]
+
+
+def _parts(table: Table, row: tuple[str, ...], widths: Sequence[int]) -> list[tuple[str, ...]]:
+    """A row as one line or, where its last cell wraps, as several of which only the first names it."""
+    if not table.columns[-1].wraps:
+        return [row]
+    first, *further = textwrap.wrap(row[-1], widths[-1]) or [""]
+    blank = ("",) * (len(row) - 1)
+    return [(*row[:-1], first), *((*blank, more) for more in further)]
 
 
 def _cells(table: Table, row: Sequence[str], widths: Sequence[int]) -> list[str]:

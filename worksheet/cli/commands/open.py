@@ -15,8 +15,12 @@ if TYPE_CHECKING:
 
 def add(subparsers: Any) -> None:
     """Describe the command's arguments."""
-    parser = subparsers.add_parser("open", help="the terminal app (also: biasbook alone, for the folder it is called in)")
-    parser.add_argument("project", metavar="PROJECT", nargs="?", default=".", help="the project folder (default: this one)")
+    parser = subparsers.add_parser(
+        "open", help="the terminal app (also: biasbook alone, for the folder it is called in)"
+    )
+    parser.add_argument(
+        "project", metavar="PROJECT", nargs="?", default=".", help="the project folder (default: this one)"
+    )
     parser.add_argument("--read-only", action="store_true", help="show everything, change nothing")
     parser.set_defaults(command=run)
 

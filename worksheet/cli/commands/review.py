@@ -16,6 +16,7 @@ def add(subparsers: Any) -> None:
     """Describe the command's arguments."""
     parser = subparsers.add_parser("review", help="spec against achieved, every sheet, every condition")
     parser.add_argument("project", nargs="?", default=".", help="project folder (default: this one)")
+    parser.add_argument("--details", action="store_true", help="also choices, operating points and metrics at nominal")
     parser.add_argument("--json", action="store_true", help="one JSON document on standard output")
     parser.set_defaults(command=run)
 
@@ -32,7 +33,7 @@ def run(args: argparse.Namespace, output: Output) -> int:
     if output.as_json:
         output.document(plain.review(result))
     elif result.sheets or not result.problems:
-        output.lines(review_text.text(result, output.width))
+        output.lines(review_text.text(result, output.width, details=args.details))
     if result.problems:
         return Status.BAD_INPUT
     return Status.FINE if result.met else Status.NOT_MET
