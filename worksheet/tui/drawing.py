@@ -211,4 +211,4 @@ def of_sheet(result: SheetReview, polarity: str, supply: float | None) -> Drawin
     )
 
 
-__all__ = ["Drawing", "IN", "of_sheet"]
+__all__ = ["IN", "Drawing", "of_sheet"]

@@ -1,4 +1,4 @@
-"""Colour themes: data files of the program and of the user, read into one frozen type; which one is on is remembered."""
+"""Colour themes: data files of the program and of the user, read into one type; which one is on is remembered."""
 
 from __future__ import annotations
 

@@ -30,9 +30,8 @@ class AskDialog(Dialog[str]):
             line(Span(letter, LABEL, 4), Span(self.signs.text(text), PLAIN)) for letter, text in self._answers.items()
         ]
         with Vertical(classes="dialog"):
-            yield Lines(
-                [(Span(self.heading, HEAD),), *said, (), *letters, line(Span("esc", LABEL, 4), Span("leave it as it is"))]
-            )
+            way_out = line(Span("esc", LABEL, 4), Span("leave it as it is"))
+            yield Lines([(Span(self.heading, HEAD),), *said, (), *letters, way_out])
 
     def on_key(self, event: events.Key) -> None:
         """One of the letters, or nothing."""

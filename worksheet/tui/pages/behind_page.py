@@ -89,7 +89,8 @@ def _bound_rows(facts: Facts, window: Window, target: str) -> Iterator[Row]:
         sign = "≥" if bound.side == "low" else "≤"
         value = wording.number(bound.value, window.unit)
         where = f"at {wording.condition(bound.at)}{', where the metric ends' if bound.edge else ''}"
-        spans = line(facts.text(window.name, LABEL, _NAME), facts.text(f"{sign} {value}", PLAIN, 16), facts.text(where, QUIET))
+        shown = facts.text(f"{sign} {value}", PLAIN, 16)
+        spans = line(facts.text(window.name, LABEL, _NAME), shown, facts.text(where, QUIET))
         copied = (window.name, f"{sign} {value}", wording.condition(bound.at))
         yield Row(f"solved.{window.name}.{k}", (spans,), subject=("variable", window.name), copied=copied)
 

@@ -1,4 +1,4 @@
-"""Parts of a sheet's page that stand in its file: targets, choices, assumptions, own names, evidence, waivers, the block.
+"""Parts of a sheet's page that stand in its file: targets, choices, assumptions, names, evidence, waivers, the block.
 
 Each part gives rows whose fields are the values as typed.
 """

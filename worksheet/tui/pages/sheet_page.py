@@ -116,7 +116,8 @@ def _bound(facts: Facts, window: Window, bound: Bound, k: int) -> Row:
     if hand:
         lines += [line(Span("  "), facts.text(text, QUIET), gap=0) for text in _wrapped(facts, hand)[:2]]
     copied = (window.name, bound.side, value, bound.target, wording.condition(bound.at), hand or "")
-    return Row(f"needed.{window.name}.{k}", tuple(lines), subject=("bound", f"{window.name}:{bound.target}"), copied=copied)
+    subject = ("bound", f"{window.name}:{bound.target}")
+    return Row(f"needed.{window.name}.{k}", tuple(lines), subject=subject, copied=copied)
 
 
 def _metrics(facts: Facts) -> Iterator[Row]:

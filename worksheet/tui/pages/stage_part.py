@@ -13,7 +13,15 @@ from worksheet.tui.pages.parts import Facts
 from worksheet.tui.rows import HEAD, LABEL, PLAIN, Line, Row, Span, line
 
 _DRAWN, _LABEL, _CELL = 36, 9, 11
-_SHORT = ("inversion_coefficient", "current", "transconductance", "transconductance_efficiency", "gate_source_voltage", "saturation_voltage", "headroom")  # fmt: skip
+_SHORT = {
+    "inversion_coefficient",
+    "current",
+    "transconductance",
+    "transconductance_efficiency",
+    "gate_source_voltage",
+    "saturation_voltage",
+    "headroom",
+}
 
 
 def drawn(facts: Facts) -> tuple[Line, ...]:

@@ -71,7 +71,8 @@ def _target(screen: SheetScreen) -> None:
         if name == _FIGURE:
             _figure(screen)
         elif name is not None:
-            _form(screen, f"Target {name}", _target_places(screen, name), lambda values: (Put(("target", name), values),))
+            places = _target_places(screen, name)
+            _form(screen, f"Target {name}", places, lambda values: (Put(("target", name), values),))
 
     screen.app.push_screen(PickDialog("Target", items, screen.book.signs), done)
 
@@ -162,7 +163,10 @@ def _places(screen: SheetScreen, paths: Mapping[str, KeyPath]) -> dict[str, Fiel
 
 
 def _name(help: str) -> FormLine:  # noqa: A002
-    return FormLine("name", "Name", help, check=lambda text: "" if is_identifier(text) else "Letters, digits and _ only.")
+    def wrong(text: str) -> str:
+        return "" if is_identifier(text) else "Letters, digits and _ only."
+
+    return FormLine("name", "Name", help, check=wrong)
 
 
 def _stated(values: Mapping[str, Any]) -> Any:
@@ -217,8 +221,6 @@ def _read(key: str, found: tuple[Piece, ...]) -> dict[str, Any]:
 
 def _line(key: str, place: FieldPlace, text: str) -> FormLine:
     described = place.key
-    if key == "value" and described.annotated:
-        described = place.key
     needed = " (needed)" if place.required else ""
     example = f" Such as {described.example}." if described.example else ""
     title = ANNOTATIONS.keys[0].title if key == "value" else described.title

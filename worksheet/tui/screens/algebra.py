@@ -166,8 +166,6 @@ def window_for(session: Session, snapshot: Snapshot, name: str, unknown: str) ->
     if evaluator is None:
         return None
     found = Needs.at(session.root, evaluator, name, unknown=unknown)
-    if isinstance(found, list):
-        raise ValueError(found[0].message)
-    return found.solved.needed.get(unknown)
-
-
+    if isinstance(found, Needs):
+        return found.solved.needed.get(unknown)
+    raise ValueError(found[0].message)

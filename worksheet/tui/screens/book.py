@@ -122,9 +122,9 @@ class BookScreen(Place):
         lines = [
             name_line(""),
             FormLine("stage", "Stage", f"One of {', '.join(catalogue.keys())}", complete=_of(catalogue.keys())),
-            FormLine("device", "Device", f"One of {', '.join(devices)}", devices[0] if devices else "", complete=_of(devices)),
+            FormLine("device", "Device", f"One of {', '.join(devices)}", "".join(devices[:1]), complete=_of(devices)),
             FormLine("title", "Title", "What the block is, for people."),
-        ]  # fmt: skip
+        ]
         self._form("New sheet", lines, lambda t: NewSheet(t["name"], t["stage"], t["device"], t["title"]))
 
     def action_duplicate(self) -> None:
@@ -162,7 +162,10 @@ def name_line(name: str) -> FormLine:
     """The line for a sheet's name."""
     from worksheet.sheetfile.names import sheet_name_problem
 
-    return FormLine("name", "Name", "Of its file and in formulas: letters, digits and _.", name, lambda t: sheet_name_problem(t) or "")
+    def wrong(text: str) -> str:
+        return sheet_name_problem(text) or ""
+
+    return FormLine("name", "Name", "Of its file and in formulas: letters, digits and _.", name, wrong)
 
 
 def _of(known: Sequence[str]) -> Callable[[str], Sequence[str]]:

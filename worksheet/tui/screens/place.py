@@ -165,8 +165,8 @@ class Place(Screen[None]):
 
     def action_help(self) -> None:
         """Help for what has the focus, and the keys."""
-        from worksheet.tui.helping import paragraphs
         from worksheet.tui.dialogs.reading import ReadingDialog
+        from worksheet.tui.helping import paragraphs
 
         ledger = self.query(Ledger).first()
         found = paragraphs(self.PLACE, ledger.row, ledger.field, self.book.keys)

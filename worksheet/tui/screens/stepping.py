@@ -43,7 +43,8 @@ def choose(screen: SheetScreen) -> None:
         steps.GRID: "Widths and lengths go from one point of the process's grid to the next; the rest by 5 %.",
         steps.FINGER: "Widths grow by whole fingers, each as wide as before; the rest by 5 %.",
     }
-    items = [Item(kind, kind, notes.get(kind, "A share of the value, which leads back the same way.")) for kind in steps.KINDS]
+    share = "A share of the value, which leads back the same way."
+    items = [Item(kind, kind, notes.get(kind, share)) for kind in steps.KINDS]
 
     def done(kind: str | None) -> None:
         if kind:

@@ -28,7 +28,8 @@ _LEAST, _LINES = 44, 4
 @dataclass(frozen=True)
 class Asked:
     """What is asked for: its title, the text so far, what says what is wrong with a text, what completes it, help;
-    whether the next character takes the place of all of it."""
+    whether the next character takes the place of all of it.
+    """
 
     title: str
     text: str
