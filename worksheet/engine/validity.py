@@ -6,6 +6,7 @@ from collections.abc import Iterator
 from dataclasses import dataclass
 
 import numpy as np
+from numpy.typing import NDArray
 
 from worksheet.device.arrays import Array, Number
 from worksheet.engine.solution import NumericSolution
@@ -33,9 +34,9 @@ class Shortfall:
     short_by: Array
 
     @property
-    def broken(self) -> Array:
+    def broken(self) -> NDArray[np.bool_]:
         """Where it does not hold."""
-        return np.asarray(self.short_by > TOLERANCE)
+        return np.asarray(self.short_by > TOLERANCE, dtype=np.bool_)
 
 
 def shortfalls(solution: NumericSolution) -> list[Shortfall]:

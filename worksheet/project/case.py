@@ -7,7 +7,7 @@ for inputs with some values replaced by arrays, and formulas follow.
 from __future__ import annotations
 
 from collections.abc import Callable, Mapping
-from dataclasses import dataclass, field
+from dataclasses import dataclass, field, replace
 from functools import cached_property
 from typing import Any
 
@@ -77,6 +77,7 @@ class Case:
         external: Values of other sheets at these conditions.
         filled: Numbers for what the sheet leaves open (the solver's proposals), by key. [unit of the key]
         moves: Values that replace the sheet's own.
+        shifts, factors: Mismatch of single transistors by name: added to the threshold [V], times the specific current.
     """
 
     sheet: Sheet
@@ -84,14 +85,20 @@ class Case:
     external: External
     filled: Mapping[str, float] = field(default_factory=dict)
     moves: Moves = field(default_factory=dict)
+    shifts: Mapping[str, Number] = field(default_factory=dict)
+    factors: Mapping[str, Number] = field(default_factory=dict)
 
     def moved(self, moves: Moves) -> Case:
         """The same case with further values replaced."""
-        return Case(self.sheet, self.conditions, self.external, self.filled, {**self.moves, **moves})
+        return replace(self, moves={**self.moves, **moves})
+
+    def mismatched(self, shifts: Mapping[str, Number], factors: Mapping[str, Number]) -> Case:
+        """The same case with single transistors off their intended values."""
+        return replace(self, shifts=dict(shifts), factors=dict(factors))
 
     def with_filled(self, filled: Mapping[str, float]) -> Case:
         """The same case with further open values filled in."""
-        return Case(self.sheet, self.conditions, self.external, {**self.filled, **filled}, self.moves)
+        return replace(self, filled={**self.filled, **filled})
 
     @property
     def stage(self) -> Stage:
@@ -266,13 +273,20 @@ class Case:
         """One transistor's parameters over the conditions."""
         model = self.model(device)
         changes = self.conditions.changes(model.name)
-        return at_condition(
+        intended = at_condition(
             self._process(model),
             changes,
             self.value("temperature"),
             self.conditions.process.reference_temperature,
             self.value(device.key("width")),
             self.value(device.key("length")),
+        )
+        if device.name not in self.shifts:
+            return intended
+        return replace(
+            intended,
+            threshold=intended.threshold + self.shifts[device.name],
+            specific_current=intended.specific_current * self.factors[device.name],
         )
 
     def _optional(self, name: str) -> Number | None:

@@ -9,6 +9,7 @@ from pathlib import Path
 from worksheet.model.problem import Problem
 from worksheet.project.discover import SHEETS, Project, load
 from worksheet.project.evaluate import Evaluator
+from worksheet.review.deeper import Deeper, Wanted, deeper
 from worksheet.review.results import Review
 from worksheet.review.review import review
 from worksheet.solver.propose import propose
@@ -36,6 +37,10 @@ class Workbook:
     def review(self, today: datetime.date) -> Review:
         """Every sheet at every condition. `today` decides which waivers have ended."""
         return review(self.project, self.evaluator, today)
+
+    def deeper(self, result: Review, wanted: Wanted) -> Deeper:
+        """Fragility and yield beside a review of this workbook."""
+        return deeper(result, self.evaluator, wanted)
 
 
 def project_of_sheet(path: Path) -> tuple[Path, str] | Problem:

@@ -12,28 +12,46 @@ if TYPE_CHECKING:
     from worksheet.cli.output import Output
 
 
+_MOST_SAMPLES = 1_000_000
+
+
 def add(subparsers: Any) -> None:
     """Describe the command's arguments."""
     parser = subparsers.add_parser("review", help="spec against achieved, every sheet, every condition")
     parser.add_argument("project", nargs="?", default=".", help="project folder (default: this one)")
     parser.add_argument("--details", action="store_true", help="also choices, operating points and metrics at nominal")
+    parser.add_argument("--fragile", action="store_true", help="how far every input can move before a target breaks")
+    parser.add_argument("--samples", type=_count, default=0, metavar="N", help="yield over N samples of mismatch")
+    parser.add_argument("--seed", type=int, default=0, metavar="S", help="of the samples (default: 0)")
     parser.add_argument("--json", action="store_true", help="one JSON document on standard output")
     parser.set_defaults(command=run)
+
+
+def _count(text: str) -> int:
+    """A whole number of samples, at least 1."""
+    number = int(text)
+    if not 1 <= number <= _MOST_SAMPLES:
+        raise argparse.ArgumentTypeError(f"expected 1 to {_MOST_SAMPLES} samples")
+    return number
 
 
 def run(args: argparse.Namespace, output: Output) -> int:
     """Review a project. 0: all met or waived and in budget; 1: not; 2: bad input."""
     import datetime
 
-    from worksheet.report import plain, review_text
+    from worksheet.report import deeper, plain, review_text
+    from worksheet.review.deeper import Wanted
     from worksheet.session.workbook import Workbook
 
-    result = Workbook.read(Path(args.project)).review(datetime.datetime.now().astimezone().date())
+    workbook = Workbook.read(Path(args.project))
+    result = workbook.review(datetime.datetime.now().astimezone().date())
+    beside = workbook.deeper(result, Wanted(args.fragile, args.samples, args.seed))
     tell(result.problems)
     if output.as_json:
-        output.document(plain.review(result))
+        output.document(deeper.into_document(plain.review(result), beside))
     elif result.sheets or not result.problems:
         output.lines(review_text.text(result, output.width, details=args.details))
+        output.lines(deeper.text(result, beside, output.width))
     if result.problems:
         return Status.BAD_INPUT
     return Status.FINE if result.met else Status.NOT_MET

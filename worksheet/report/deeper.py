@@ -1,0 +1,112 @@
+"""Fragility and yields beside a review: into its document, and as lines of text."""
+
+from __future__ import annotations
+
+from collections.abc import Iterator, Sequence
+from typing import Any
+
+from worksheet.model.keys import TRUST
+from worksheet.report import wording
+from worksheet.report.table import Column, Table, lines
+from worksheet.review.deeper import Deeper
+from worksheet.review.fragility import Fragile, Fragility
+from worksheet.review.results import Review
+from worksheet.review.yields import Yield
+
+Plain = dict[str, Any]
+_SHOWN = 12
+
+
+def into_document(document: Plain, found: Deeper) -> Plain:
+    """A review's document with what was asked for beside it."""
+    for sheet in document["sheets"]:
+        name = sheet["sheet"]
+        if name in found.fragile:
+            ranked = found.fragile[name]
+            sheet["fragile"] = [_row(r) for r in ranked.nominal]
+            sheet["fragile_worst"] = [_row(r) for r in ranked.worst]
+            sheet["not_ranked"] = list(ranked.not_ranked)
+        if name in found.yields:
+            shares = found.yields[name]
+            sheet.update(_share(shares.every))
+            for target in sheet["targets"]:
+                target.update(_share(shares.targets.get(target["metric"])))
+    return document
+
+
+def _row(row: Fragile) -> Plain:
+    plain: Plain = {
+        "target": row.target,
+        "name": row.name,
+        "value": row.value,
+        "unit": row.unit,
+        "sensitivity": row.sensitivity,
+        "break_value": row.break_value,
+        "room": row.room,
+        "trust": row.trust,
+    }
+    if row.standard_error is not None:
+        plain["standard_error"] = row.standard_error
+    return plain
+
+
+def _share(found: Yield | None) -> Plain:
+    if found is None:
+        return {"yield": None, "yield_low": None, "yield_high": None}
+    return {"yield": found.share, "yield_low": found.low, "yield_high": found.high}
+
+
+def text(review: Review, found: Deeper, width: int) -> Iterator[str]:
+    """What would have to be true for each block to fail, weakest trust first, and yields."""
+    for sheet in review.sheets:
+        name = sheet.sheet.name
+        if name in found.fragile:
+            yield ""
+            yield f"{name}: what would have to be true for it to fail"
+            yield from lines(_weakest(found.fragile[name]), width, "  ")
+        if name in found.yields:
+            shares = found.yields[name]
+            yield ""
+            yield f"{name}: yield at the nominal condition, 95 % interval"
+            rows = [(target, share) for target, share in shares.targets.items()]
+            every = [("all targets", shares.every)] if shares.every is not None else []
+            columns = (Column("target", flexible=True), Column("yield", right=True), Column("interval", right=True))
+            yield from lines(Table(columns, tuple(_yield_row(*row) for row in (*rows, *every))), width, "  ")
+
+
+def _yield_row(name: str, share: Yield) -> tuple[str, str, str]:
+    return name, f"{share.share:.2%}", f"{share.low:.2%} to {share.high:.2%}"
+
+
+def _weakest(found: Fragility) -> Table:
+    """The nearest break of each input, least trusted first, then least room."""
+    nearest: dict[str, Fragile] = {}
+    for row in found.worst:
+        if row.room is not None and (row.name not in nearest or row.room < (nearest[row.name].room or 0.0)):
+            nearest[row.name] = row
+    order = sorted(nearest.values(), key=lambda r: (_trust(r.trust), r.room or 0.0))
+    columns = (
+        Column("input", flexible=True),
+        Column("trust"),
+        Column("stands at", right=True),
+        Column("breaks at", right=True),
+        Column("room", right=True),
+        Column("known to", right=True),
+        Column("target", flexible=True),
+    )
+    return Table(columns, tuple(_weak_row(row) for row in _most(order)))
+
+
+def _most(rows: Sequence[Fragile]) -> Sequence[Fragile]:
+    return rows[:_SHOWN]
+
+
+def _trust(trust: str) -> int:
+    return TRUST.index(trust) if trust in TRUST else -1
+
+
+def _weak_row(row: Fragile) -> tuple[str, ...]:
+    known = "-" if row.standard_error is None else f"{row.standard_error / abs(row.value):.2%}"
+    room = "-" if row.room is None else f"{row.room:.1%}"
+    shown = [wording.number(value, row.unit, digits=3) for value in (row.value, row.break_value)]
+    return row.name, row.trust or "not said", *shown, room, known, row.target

@@ -1,0 +1,49 @@
+"""What a review adds on request, sheet by sheet: fragility and yield. Nothing of it is computed otherwise."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+from dataclasses import dataclass, field
+
+from worksheet.project.evaluate import Evaluator
+from worksheet.review.fragility import Fragility, fragility
+from worksheet.review.results import Review
+from worksheet.review.yields import Yields, yields
+
+
+@dataclass(frozen=True, slots=True)
+class Wanted:
+    """What is asked for: the ranking of inputs, and a number of samples (0 for none) from a seed."""
+
+    fragile: bool = False
+    samples: int = 0
+    seed: int = 0
+
+
+@dataclass(frozen=True, slots=True)
+class Deeper:
+    """Fragility and yields by sheet, as far as they were asked for."""
+
+    fragile: Mapping[str, Fragility] = field(default_factory=dict)
+    yields: Mapping[str, Yields] = field(default_factory=dict)
+
+
+def deeper(review: Review, evaluator: Evaluator | None, wanted: Wanted) -> Deeper:
+    """Compute what is asked for beside a review.
+
+    Args:
+        review: The review.
+        evaluator: Its project; None where that cannot be read.
+        wanted: What is asked for.
+    """
+    if evaluator is None:
+        return Deeper()
+    ranked, shares = {}, {}
+    for sheet in review.sheets:
+        name = sheet.sheet.name
+        if wanted.fragile:
+            worst = {t.target.name: t.worst_at for t in sheet.targets if t.worst_at is not None}
+            ranked[name] = fragility(evaluator, name, worst)
+        if wanted.samples:
+            shares[name] = yields(evaluator, name, wanted.samples, wanted.seed)
+    return Deeper(ranked, shares)
