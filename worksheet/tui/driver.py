@@ -12,8 +12,6 @@ from typing import Any
 
 from rich.cells import cell_len
 from textual.drivers.linux_driver import LinuxDriver
-from textual.events import Resize
-from textual.message import Message
 
 _TOKEN = re.compile(
     r"\x1b\[(?P<row>\d+);(?P<column>\d+)H"
@@ -88,7 +86,8 @@ class Picture:
             return False
         if known is not None and not known[0]:
             self._cells.pop((row, column - 1), None)
-        self._cells.pop((row, column + wide), None) if self._halved(row, column + wide) else None
+        if self._halved(row, column + wide):
+            self._cells.pop((row, column + wide), None)
         self._cells[place] = cell
         if wide == 2:
             self._cells[right] = ("", cell[1])
@@ -134,10 +133,13 @@ class CellDriver(LinuxDriver):
     def __init__(self, *arguments: Any, **options: Any) -> None:
         super().__init__(*arguments, **options)
         self._picture = Picture()
+        self._known_size: tuple[int, int] | None = None
 
     def write(self, data: str) -> None:
-        """Send what changes."""
-        if _OTHER_SCREEN in data:
+        """Send what changes. After a change of size the terminal may show anything."""
+        size = self._get_terminal_size()
+        if size != self._known_size or _OTHER_SCREEN in data:
+            self._known_size = size
             self._picture.forget()
         if not _MOVE.match(data):
             super().write(data)
@@ -148,9 +150,3 @@ class CellDriver(LinuxDriver):
             super().write(data)
         else:
             super().write(changed)
-
-    def process_message(self, message: Message) -> None:
-        """A terminal of another size may show anything."""
-        if isinstance(message, Resize):
-            self._picture.forget()
-        super().process_message(message)
