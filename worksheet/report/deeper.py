@@ -86,12 +86,12 @@ def _weakest(found: Fragility) -> Table:
             nearest[row.name] = row
     order = sorted(nearest.values(), key=lambda r: (_trust(r.trust), r.room or 0.0))
     columns = (
-        Column("input", flexible=True),
+        Column("input"),
         Column("trust"),
-        Column("stands at", right=True),
+        Column("now", right=True),
         Column("breaks at", right=True),
         Column("room", right=True),
-        Column("known to", right=True),
+        Column("known", right=True),
         Column("target", flexible=True),
     )
     return Table(columns, tuple(_weak_row(row) for row in _most(order)))
