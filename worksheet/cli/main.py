@@ -13,7 +13,7 @@ from worksheet.cli.diagnostics import Status, say, tell
 from worksheet.cli.output import Output, close_quietly
 from worksheet.model.problem import Problem
 
-COMMANDS = ("open", "review", "solve", "stages", "start", "record", "history", "compare", "extract")
+COMMANDS = ("open", "demo", "review", "solve", "stages", "start", "record", "history", "compare", "extract")
 """Modules of worksheet.cli.commands, in the order of the help."""
 
 

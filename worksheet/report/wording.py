@@ -65,4 +65,6 @@ def margin(value: float | None) -> str:
     if value is None:
         return "-"
     value = 0.0 if abs(value) < 5e-4 else value
-    return f"{value:+.1%}" if abs(value) < 10 else f"{value:+.0f}x"
+    if abs(value) < 1:
+        return f"{value:+.1%}"
+    return f"{value:+.0%}" if abs(value) < 10 else f"{value:+.0f}x"

@@ -53,9 +53,9 @@ def start(folder: Path, stage: Stage) -> list[Problem]:
         stage: The stage of its first sheet.
     Returns: what stood in the way; nothing is written then
     """
-    if folder.exists() and (not folder.is_dir() or any(folder.iterdir())):
-        what = "a folder that is not empty" if folder.is_dir() else "a file"
-        return [Problem(str(folder), None, "", f"found {what}; expected a new or an empty folder")]
+    problem = occupied(folder)
+    if problem is not None:
+        return [problem]
     texts = {
         Path(PROJECT_FILE): project_text(),
         Path(PROCESSES) / f"{PROCESS_NAME}.toml": process_text(),
@@ -69,6 +69,18 @@ def start(folder: Path, stage: Stage) -> list[Problem]:
     except (OSError, WriteRefusedError) as error:
         return [Problem(str(folder), None, "", f"the project could not be written: {error}")]
     return []
+
+
+def occupied(folder: Path) -> Problem | None:
+    """Say why a new project cannot be put into a folder, or None where it does not exist or is empty."""
+    try:
+        if not folder.is_dir():
+            what = "a file" if folder.exists() or folder.is_symlink() else ""
+        else:
+            what = "a folder that is not empty" if any(folder.iterdir()) else ""
+    except (OSError, ValueError) as error:
+        what = f"a place that cannot be looked at ({error})"
+    return Problem(str(folder), None, "", f"found {what}; expected a new or an empty folder") if what else None
 
 
 def project_text() -> str:
