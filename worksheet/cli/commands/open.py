@@ -15,7 +15,7 @@ if TYPE_CHECKING:
 
 def add(subparsers: Any) -> None:
     """Describe the command's arguments."""
-    parser = subparsers.add_parser("open", help="the terminal app; biasbook alone opens the folder it is called in")
+    parser = subparsers.add_parser("open", help="the terminal app; biasbook alone means `open .`")
     parser.add_argument(
         "project", metavar="PROJECT", nargs="?", default=".", help="the project folder (default: this one)"
     )
