@@ -6,14 +6,19 @@ Nothing is written here.
 
 from __future__ import annotations
 
-from collections.abc import Iterator, Mapping
+from collections.abc import Iterator, Mapping, Sequence
 from dataclasses import dataclass, field
-from typing import Any
+from typing import TYPE_CHECKING, Any
 
+from worksheet.compare import conflict
 from worksheet.model import formula
-from worksheet.model.sheet import Sheet
-from worksheet.project import links
+from worksheet.model.problem import Problem
+from worksheet.session.reading import data_of
 from worksheet.session.snapshot import Snapshot, file_of
+
+if TYPE_CHECKING:  # what edits a text comes with a library that nothing needs before the first edit
+    from worksheet.compare.settle import Side
+    from worksheet.sheetfile.edit import Edit
 
 KeyPath = tuple[str | int, ...]
 
@@ -94,16 +99,48 @@ class DeleteSheet:
     name: str
 
 
-Request = ChangeSheet | NewSheet | DuplicateSheet | RenameSheet | DeleteSheet
+@dataclass(frozen=True, slots=True)
+class SettleCollision:
+    """Settle a collision that a merge left in a sheet.
+
+    Attributes:
+        name: The sheet.
+        number: Of the collision in the sheet, counted from 0.
+        side: "standing" for what the sheet says by now, "ours", "theirs", or "base" for what both started from.
+    """
+
+    name: str
+    number: int
+    side: Side
+
+
+@dataclass(frozen=True, slots=True)
+class TakeSide:
+    """Take one side of a sheet that holds a merge's conflict markers: "ours" or "theirs"."""
+
+    name: str
+    side: str
+
+
+Request = ChangeSheet | NewSheet | DuplicateSheet | RenameSheet | DeleteSheet | SettleCollision | TakeSide
+
+
+def name_of(request: Request) -> str:
+    """The sheet that a request is about."""
+    return request.sheet if isinstance(request, ChangeSheet) else request.name
 
 
 @dataclass(frozen=True, slots=True)
 class FileChange:
-    """A file before and after; None where it does not exist."""
+    """A file before and after; None where it does not exist.
+
+    `like` names the file whose permissions a new one takes; "" for the usual ones.
+    """
 
     file: str
     before: bytes | None
     after: bytes | None
+    like: str = ""
 
 
 class RefusedError(Exception):
@@ -127,6 +164,10 @@ def title_of(request: Request) -> str:
             return f"{name} renamed {new}"
         case DeleteSheet(name):
             return f"{name} taken out"
+        case SettleCollision(name):
+            return f"collision settled in {name}"
+        case TakeSide(name, side):
+            return f"{side} taken for {name}"
 
 
 def changes(request: Request, snapshot: Snapshot) -> tuple[FileChange, ...]:
@@ -140,18 +181,45 @@ def changes(request: Request, snapshot: Snapshot) -> tuple[FileChange, ...]:
         case NewSheet():
             return (FileChange(_free(snapshot, request.name), None, _new(request).encode()),)
         case DuplicateSheet(name, copy):
-            return (FileChange(_free(snapshot, copy), None, _content(snapshot, name)),)
+            content = _following(_content(snapshot, name), file_of(name), name, copy)
+            return (FileChange(_free(snapshot, copy), None, content, like=file_of(name)),)
         case RenameSheet(name, new):
             return _renamed(snapshot, name, new)
         case DeleteSheet(name):
             return (FileChange(file_of(name), _content(snapshot, name), None),)
+        case SettleCollision() | TakeSide():
+            before = _content(snapshot, request.name)
+            text = before.decode("utf-8")
+            after = _settled(request, text) if isinstance(request, SettleCollision) else _one_side(request, text)
+            return (FileChange(file_of(request.name), before, after.encode()),)
 
 
-def changed(snapshot: Snapshot, sheet: str, pieces: tuple[Piece, ...]) -> bytes:
+def _settled(request: SettleCollision, text: str) -> str:
+    from worksheet.compare.settle import settle
+
+    found = settle(text, request.number, request.side, file_of(request.name))
+    if isinstance(found, Problem):
+        raise RefusedError(found.key, found.message)
+    return found
+
+
+def _one_side(request: TakeSide, text: str) -> str:
+    sides = conflict.split(text)
+    if sides is None or request.side not in ("ours", "theirs"):
+        raise RefusedError("", f"{request.name} holds no two sides to choose from.")
+    return sides.ours if request.side == "ours" else sides.theirs
+
+
+def changed(snapshot: Snapshot, sheet: str, pieces: Sequence[Piece]) -> bytes:
     """A sheet's content after some pieces. WriteRefusedError where one cannot be made."""
+    return changed_content(_content(snapshot, sheet), pieces)
+
+
+def changed_content(content: bytes, pieces: Sequence[Piece]) -> bytes:
+    """A content after some pieces. WriteRefusedError where one cannot be made."""
     from worksheet.sheetfile import edit
 
-    made: list[edit.Edit] = []
+    made: list[Edit] = []
     for piece in pieces:
         match piece:
             case Put(path, value):
@@ -160,7 +228,7 @@ def changed(snapshot: Snapshot, sheet: str, pieces: tuple[Piece, ...]) -> bytes:
                 made.append(edit.RemoveKey(path))
             case AddEntry(array, values):
                 made.append(edit.AddEntry(array, values))
-    return edit.apply(_content(snapshot, sheet).decode("utf-8"), made).encode("utf-8")
+    return edit.apply(content.decode("utf-8"), made).encode("utf-8")
 
 
 def _content(snapshot: Snapshot, name: str) -> bytes:
@@ -195,23 +263,34 @@ def _new(request: NewSheet) -> str:
 
 
 def _renamed(snapshot: Snapshot, name: str, new: str) -> tuple[FileChange, ...]:
+    """The new file first and the old one last, so that every formula finds its sheet at any moment."""
     content = _content(snapshot, name)
-    target = _free(snapshot, new)
+    target, source = _free(snapshot, new), file_of(name)
     others = []
-    for other in snapshot.project.sheets.values():
-        pieces = tuple(_following(other, name, new))
-        if pieces and other.name != name:
-            before = _content(snapshot, other.name)
-            others.append(FileChange(file_of(other.name), before, changed(snapshot, other.name, pieces)))
-    return (FileChange(target, None, content), *others, FileChange(file_of(name), content, None))
+    for other in snapshot.names:
+        shown = file_of(other)
+        before = snapshot.contents.get(shown)
+        after = None if before is None or other == name else _following(before, shown, name, new)
+        if after != before and after is not None:
+            others.append(FileChange(shown, before, after))
+    own = FileChange(target, None, _following(content, source, name, new), like=source)
+    return (own, *others, FileChange(source, content, None))
 
 
-def _following(sheet: Sheet, name: str, new: str) -> Iterator[Piece]:
-    """Formulas that name a sheet, with its new name."""
-    for key, found, _ in links.formulas_of(sheet):
-        text = formula.rename(found.text, name, new)
-        if text != found.text:
-            yield Put((*key.split("."), "formula"), text)
+def _following(content: bytes, shown: str, name: str, new: str) -> bytes:
+    """A sheet whose formulas name another sheet by its new name; one that is no TOML stays as it is."""
+    pieces = list(_formulas(data_of(content, shown), (), name, new))
+    return changed_content(content, pieces) if pieces else content
+
+
+def _formulas(data: Mapping[str, Any], path: KeyPath, name: str, new: str) -> Iterator[Piece]:
+    for key, value in data.items():
+        if isinstance(value, dict):
+            yield from _formulas(value, (*path, key), name, new)
+        elif key == "formula" and isinstance(value, str):
+            text = formula.rename(value, name, new)
+            if text != value:
+                yield Put((*path, key), text)
 
 
 def value_at(data: Any, path: KeyPath) -> Any:
@@ -232,14 +311,20 @@ __all__ = [
     "DeleteSheet",
     "DuplicateSheet",
     "FileChange",
+    "KeyPath",
     "NewSheet",
     "Piece",
     "Put",
     "RefusedError",
     "RenameSheet",
     "Request",
+    "SettleCollision",
     "TakeOut",
+    "TakeSide",
+    "changed",
+    "changed_content",
     "changes",
+    "name_of",
     "title_of",
     "value_at",
 ]

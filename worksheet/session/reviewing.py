@@ -55,11 +55,15 @@ class Reviewing:
 
 
 def stated_of(project: Project, name: str) -> Stated:
-    """What the results of a sheet can depend on: the sheet, sheets it needs, process and conditions."""
+    """What the results of a sheet can depend on: the sheet, sheets it needs, process and conditions.
+
+    The lines count too: a problem names its own.
+    """
     file = project.file
     assert file is not None  # there is no evaluator without one
     conditions = (file.processes, file.temperatures, file.supplies, file.nominal)
-    return (*_needed(project.sheets, name), project.process, conditions)
+    needed = _needed(project.sheets, name)
+    return (*needed, *(sheet.lines for sheet in needed), project.process, conditions)
 
 
 def _needed(sheets: Mapping[str, Sheet], name: str) -> tuple[Sheet, ...]:

@@ -8,33 +8,37 @@ from __future__ import annotations
 
 import datetime
 import threading
-from collections.abc import Sequence
+from collections.abc import Callable, Sequence
 from dataclasses import dataclass, replace
 from pathlib import Path
 
 from worksheet.model.problem import Problem
 from worksheet.model.text import clean
-from worksheet.project.case import CaseError
-from worksheet.project.discover import Project, load
+from worksheet.project.discover import PROJECT_FILE, Project, load
 from worksheet.project.evaluate import Evaluator
 from worksheet.review.results import Review
 from worksheet.session.edits import (
     ChangeSheet,
     FileChange,
     KeyPath,
-    Put,
     RefusedError,
     Request,
     changes,
+    name_of,
     title_of,
     value_at,
 )
-from worksheet.session.reading import FileReading, Shelf, data_of, signature
+from worksheet.session.judging import formula_problems, new_problems, unused_names
+from worksheet.session.reading import FileReading, Shelf, signature
 from worksheet.session.reviewing import Reviewing
 from worksheet.session.snapshot import Snapshot, file_of
 from worksheet.session.undoing import Step, moved_by, patch_of, step_back
+from worksheet.session.writing import Writer
 
 READ_ONLY = "The book is opened for reading only."
+AWAY = "The project's folder is gone or cannot be reached; nothing is written until it is back."
+_TRIES = 5
+"""How often a change is made anew where somebody else writes the same file at that moment."""
 
 
 @dataclass(frozen=True, slots=True)
@@ -76,6 +80,7 @@ class Session:
         self._read_only = read_only
         self._lock = threading.RLock()
         self._shelf = Shelf()
+        self._writer = Writer(root)
         self._reviewing = Reviewing()
         self._undo: list[Step] = []
         self._redo: list[Step] = []
@@ -101,7 +106,7 @@ class Session:
     def refresh(self, *, force: bool = False) -> bool:
         """Take in what others changed. Whether anything differs."""
         with self._lock:
-            if not force and signature(self.root) == self._signature:
+            if not force and self._signature is not None and signature(self.root) == self._signature:
                 return False
             return self._take_in()
 
@@ -111,9 +116,17 @@ class Session:
         project = load(self.root, reading)
         self._signature = stamp
         before = self._snapshot
-        if before.revision and reading.contents == before.contents and project.problems == before.project.problems:
+        away = PROJECT_FILE in before.contents and not (self.root / PROJECT_FILE).exists()
+        if away:  # a share that is gone, a branch that is being changed: the last state stays in sight
+            where = Problem(clean(str(self.root)), None, "", AWAY)
+            project = replace(before.project, problems=(where, *(p for p in before.project.problems if p != where)))
+            reading.contents = dict(before.contents)
+        elif before.away:
+            before = replace(before, away=False)
+        same = reading.contents == before.contents and project.problems == before.project.problems
+        if before.revision and same and away == self._snapshot.away:
             return False
-        self._show(replace(before, project=project, contents=reading.contents))
+        self._show(replace(before, project=project, contents=reading.contents, away=away))
         return True
 
     def _show(self, snapshot: Snapshot) -> None:
@@ -124,57 +137,72 @@ class Session:
             undo=self._undo[-1].title if self._undo else "",
             redo=self._redo[-1].title if self._redo else "",
             read_only=self._read_only,
+            away=snapshot.away,
         )
 
     # What can be done
 
     def apply(self, request: Request) -> Outcome:
         """Make a change: on disk and in the snapshot when this returns, or not at all."""
+        return self._again(lambda: self._apply(request))
+
+    def _apply(self, request: Request) -> Outcome:
+        collision = self._collision(request)
+        if collision is not None:
+            return Outcome(collision=collision)
+        try:
+            made = changes(request, self._snapshot)
+        except (RefusedError, ValueError) as error:
+            return Outcome(problems=(_problem(request, error),))
+        outcome = self._commit(title_of(request), made, request)
+        if outcome.accepted:
+            self._undo.append(Step(outcome.done, tuple(map(patch_of, made)), moved_by(made)))
+            self._redo.clear()
+            self._show(self._snapshot)
+        return outcome
+
+    def _again(self, change: Callable[[], Outcome]) -> Outcome:
+        """Make a change on the files as they stand; anew where somebody else was writing one of them just then."""
+        from worksheet.sheetfile.write import ChangedOnDiskError
+
         if self._read_only:
             return Outcome(problems=(Problem("", None, "", READ_ONLY),))
         with self._lock:
-            self.refresh()
-            collision = self._collision(request)
-            if collision is not None:
-                return Outcome(collision=collision)
-            try:
-                made = changes(request, self._snapshot)
-            except (RefusedError, ValueError) as error:
-                return Outcome(problems=(_problem(request, error),))
-            moved = moved_by(request, *self._data(request, made))
-            outcome = self._commit(title_of(request), made, checked=True, request=request)
-            if outcome.accepted:
-                self._undo.append(Step(outcome.done, tuple(map(patch_of, made)), moved))
-                self._redo.clear()
-                self._show(self._snapshot)
-            return outcome
+            for _ in range(_TRIES):
+                self.refresh(force=self._signature is None)
+                if self._snapshot.away:
+                    return Outcome(problems=self._snapshot.project.problems[:1])
+                try:
+                    return change()
+                except ChangedOnDiskError as error:
+                    self._signature = None
+                    said = str(error)
+            return Outcome(problems=(Problem("", None, "", said),))
 
     def undo(self) -> Outcome:
         """Take the last change back."""
-        return self._step(self._undo, self._redo, "taken back: ")
+        return self._again(lambda: self._step(self._undo, self._redo, "taken back: "))
 
     def redo(self) -> Outcome:
         """Make the change again that was taken back last."""
-        return self._step(self._redo, self._undo, "made again: ")
+        return self._again(lambda: self._step(self._redo, self._undo, "made again: "))
 
     def _step(self, source: list[Step], target: list[Step], said: str) -> Outcome:
-        with self._lock:
-            if not source or self._read_only:
-                return Outcome()
-            self.refresh()
-            step = source[-1].inverse
-            try:
-                made = step_back(step, self._snapshot)
-            except (RefusedError, ValueError) as error:
-                source.pop()  # it can never be taken back any more; what lies before it may be
-                self._show(self._snapshot)
-                return Outcome(problems=(Problem("", None, "", str(error)),))
-            outcome = self._commit(said + step.title, made, checked=False)
-            if outcome.accepted:
-                source.pop()
-                target.append(Step(step.title, tuple(map(patch_of, made)), step.moved))
-                self._show(self._snapshot)
-            return outcome
+        if not source:
+            return Outcome()
+        step = source[-1].inverse
+        try:
+            made = step_back(step, self._snapshot)
+        except (RefusedError, ValueError) as error:
+            source.pop()  # it can never be taken back any more; what lies before it may be
+            self._show(self._snapshot)
+            return Outcome(problems=(Problem("", None, "", str(error)),))
+        outcome = self._commit(said + step.title, made)
+        if outcome.accepted:
+            source.pop()
+            target.append(Step(step.title, tuple(map(patch_of, made)), step.moved))
+            self._show(self._snapshot)
+        return outcome
 
     # How it is done
 
@@ -187,90 +215,27 @@ class Session:
                     return Collision(path, found)
         return None
 
-    def _data(self, request: Request, made: Sequence[FileChange]) -> tuple[dict[str, object], dict[str, object]]:
-        if not isinstance(request, ChangeSheet):
-            return {}, {}
-        (change,) = made
-        return dict(self._snapshot.data(request.sheet)), data_of(change.after or b"", change.file)
+    def _commit(self, title: str, made: Sequence[FileChange], request: Request | None = None) -> Outcome:
+        """Hold what a request makes of the files against the whole project, write it, take it in.
 
-    def _commit(
-        self, title: str, made: Sequence[FileChange], *, checked: bool, request: Request | None = None
-    ) -> Outcome:
-        """Hold a change against the whole project, write it, take it in."""
+        A way back has no request and is held against nothing: it leads to what was there.
+        """
         reading = FileReading(self._shelf, {change.file: change.after for change in made})
         project = load(self.root, reading)
-        if checked:
-            wrong = self._new_problems(project, request)
+        if request is not None:
+            wrong = new_problems(self._snapshot.project, project, request)
+            evaluator = self._reviewing.evaluator(project) if not wrong else None
+            if evaluator is not None:
+                wrong = formula_problems(evaluator, request)
             if wrong:
-                return Outcome(problems=wrong, unused=_unused(wrong, request))
-        wrong = self._write(made)
-        if wrong:
-            return Outcome(problems=wrong)
-        self._signature = signature(self.root)
+                return Outcome(problems=tuple(wrong), unused=unused_names(wrong, request))
+        stuck = self._writer.write(made)
+        self._signature = None  # others may have written meanwhile: the next look is a thorough one
+        if stuck:
+            return Outcome(problems=stuck)
         self._show(replace(self._snapshot, project=project, contents=reading.contents))
         return Outcome(done=title)
 
-    def _new_problems(self, project: Project, request: Request | None) -> tuple[Problem, ...]:
-        """What would be wrong that is not wrong now."""
-        known = {(p.file, p.key, p.message) for p in self._snapshot.project.problems}
-        found = [p for p in project.problems if (p.file, p.key, p.message) not in known]
-        if not found and isinstance(request, ChangeSheet) and request.sheet in project.sheets:
-            found = self._formula_problems(project, request)
-        return tuple(found)
-
-    def _formula_problems(self, project: Project, request: ChangeSheet) -> list[Problem]:
-        """Formulas that give no number in their range, which no reader of the text can see."""
-        evaluator = self._reviewing.evaluator(project)
-        if evaluator is None:
-            return []
-        for piece in request.pieces:
-            if isinstance(piece, Put) and len(piece.path) == 3 and piece.path[-1] == "formula":
-                table, name, _ = piece.path
-                if table in ("assume", "choose", "own"):
-                    try:
-                        evaluator.case(request.sheet).value(str(name))
-                    except CaseError as error:
-                        return [error.problem]
-        return []
-
-    def _write(self, made: Sequence[FileChange]) -> tuple[Problem, ...]:
-        """Write files one by one; where one fails, those before it are put back."""
-        done: list[FileChange] = []
-        for change in made:
-            try:
-                self._put(change)
-            except ValueError as error:
-                for earlier in reversed(done):
-                    try:
-                        self._put(FileChange(earlier.file, earlier.after, earlier.before))
-                    except ValueError as worse:
-                        return (Problem(change.file, None, "", str(error)), Problem(earlier.file, None, "", str(worse)))
-                return (Problem(change.file, None, "", str(error)),)
-            done.append(change)
-        return ()
-
-    def _put(self, change: FileChange) -> None:
-        from worksheet.sheetfile import write
-
-        path = self.root / change.file
-        if change.after is None:
-            write.remove(path, read=change.before or b"", root=self.root)
-        elif change.before is None:
-            write.create(path, change.after.decode("utf-8"), root=self.root)
-        else:
-            write.save(path, read=change.before, new=change.after.decode("utf-8"), root=self.root)
-
 
 def _problem(request: Request, error: Exception) -> Problem:
-    name = request.sheet if isinstance(request, ChangeSheet) else request.name
-    return Problem(file_of(clean(name)), None, getattr(error, "key", ""), str(error))
-
-
-def _unused(problems: Sequence[Problem], request: Request | None) -> tuple[str, ...]:
-    """Own names that are left unused, where nothing else is wrong."""
-    if not isinstance(request, ChangeSheet):
-        return ()
-    found = [
-        p.key.removeprefix("own.") for p in problems if p.key.startswith("own.") and "used by no formula" in p.message
-    ]
-    return tuple(found) if len(found) == len(problems) else ()
+    return Problem(file_of(clean(name_of(request))), None, getattr(error, "key", ""), str(error))

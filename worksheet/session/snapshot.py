@@ -6,6 +6,7 @@ from collections.abc import Mapping
 from dataclasses import dataclass, field
 from typing import Any
 
+from worksheet.compare.conflict import Conflict, split
 from worksheet.model.problem import Problem
 from worksheet.project.discover import SHEETS, Project
 from worksheet.session.reading import data_of
@@ -21,6 +22,7 @@ class Snapshot:
         contents: Bytes of every file that was read, by path within the project.
         undo, redo: What would be taken back or made again next, in words; "" for nothing.
         read_only: Whether nothing may be changed.
+        away: Whether the folder is gone; the rest is as it was last seen.
     """
 
     revision: int
@@ -29,6 +31,7 @@ class Snapshot:
     undo: str = ""
     redo: str = ""
     read_only: bool = False
+    away: bool = False
     _data: dict[str, dict[str, Any]] = field(default_factory=dict, repr=False)
 
     @property
@@ -43,6 +46,13 @@ class Snapshot:
             content = self.contents.get(shown)
             self._data[name] = {} if content is None else data_of(content, shown)
         return self._data[name]
+
+    def sides(self, name: str) -> Conflict | None:
+        """Both sides of a sheet in which a merge left its conflict markers; None for any other sheet."""
+        try:
+            return split(self.contents.get(file_of(name), b"").decode("utf-8"))
+        except UnicodeDecodeError:
+            return None
 
     def problems_of(self, name: str) -> tuple[Problem, ...]:
         """What is wrong with one sheet."""

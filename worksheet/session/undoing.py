@@ -9,23 +9,28 @@ still what the change left.
 from __future__ import annotations
 
 import hashlib
-from collections.abc import Mapping
+from collections.abc import Iterator, Sequence
 from dataclasses import dataclass
 from typing import Any
 
+from worksheet.model.text import clean
 from worksheet.session.edits import (
-    ChangeSheet,
+    AddEntry,
     FileChange,
     KeyPath,
     Piece,
     Put,
     RefusedError,
-    Request,
     TakeOut,
-    changed,
+    changed_content,
     value_at,
 )
-from worksheet.session.snapshot import Snapshot, file_of
+from worksheet.session.reading import data_of
+from worksheet.session.snapshot import Snapshot
+from worksheet.sheetfile.locate import dotted
+
+_LARGEST = 4_000
+"""Most characters of values that a step keeps beside its bytes."""
 
 
 @dataclass(frozen=True, slots=True)
@@ -59,9 +64,9 @@ class Patch:
 
 @dataclass(frozen=True, slots=True)
 class Moved:
-    """A value that a change moved, None where there was or is none."""
+    """A value that a change moved, None where there was or is none; of an array of tables, one entry of it."""
 
-    sheet: str
+    file: str
     path: KeyPath
     old: Any
     new: Any
@@ -81,7 +86,7 @@ class Step:
         return Step(
             self.title,
             tuple(patch.inverse for patch in reversed(self.patches)),
-            tuple(Moved(one.sheet, one.path, one.new, one.old) for one in reversed(self.moved)),
+            tuple(Moved(one.file, one.path, one.new, one.old) for one in reversed(self.moved)),
         )
 
 
@@ -112,17 +117,38 @@ def _same(one: bytes, other: bytes, most: int) -> int:
     return low
 
 
-def moved_by(request: Request, before: Mapping[str, Any], after: Mapping[str, Any]) -> tuple[Moved, ...]:
-    """The values that a request moves in one sheet, for a way back that other changes do not bar."""
-    if not isinstance(request, ChangeSheet):
-        return ()
-    found = []
-    for piece in request.pieces:
-        if isinstance(piece, Put | TakeOut):
-            old, new = value_at(before, piece.path), value_at(after, piece.path)
-            if not isinstance(old, dict | list) and not isinstance(new, dict | list):
-                found.append(Moved(request.sheet, piece.path, old, new))
-    return tuple(found)
+def moved_by(made: Sequence[FileChange]) -> tuple[Moved, ...]:
+    """The values that a change moves, for a way back that other people's changes beside them do not bar.
+
+    None at all where files come or go, or where a text is too long to be kept twice: then every byte goes back or none.
+    """
+    found: list[Moved] = []
+    for change in made:
+        if change.before is None or change.after is None:
+            return ()
+        before, after = data_of(change.before, change.file), data_of(change.after, change.file)
+        found += _differences(change.file, (), before, after)
+    return () if sum(len(repr(one.old)) + len(repr(one.new)) for one in found) > _LARGEST else tuple(found)
+
+
+def _differences(file: str, path: KeyPath, before: Any, after: Any) -> Iterator[Moved]:
+    if isinstance(before, dict) and isinstance(after, dict):
+        for key in dict.fromkeys((*before, *after)):
+            yield from _differences(file, (*path, key), before.get(key), after.get(key))
+    elif len(path) == 1 and all(one is None or _is_entries(one) for one in (before, after)):
+        old, new = list(before or ()), list(after or ())
+        for entry in list(old):
+            if entry in new:
+                old.remove(entry)
+                new.remove(entry)
+        yield from (Moved(file, path, entry, None) for entry in old)
+        yield from (Moved(file, path, None, entry) for entry in new)
+    elif before != after:
+        yield Moved(file, path, before, after)
+
+
+def _is_entries(value: Any) -> bool:
+    return isinstance(value, list) and all(isinstance(entry, dict) for entry in value)
 
 
 def step_back(step: Step, snapshot: Snapshot) -> tuple[FileChange, ...]:
@@ -133,18 +159,41 @@ def step_back(step: Step, snapshot: Snapshot) -> tuple[FileChange, ...]:
     contents = snapshot.contents
     if all(patch.fits(contents.get(patch.file)) for patch in step.patches):
         return tuple(patch.made(contents.get(patch.file)) for patch in step.patches)
-    if not step.moved or len(step.patches) != 1:
-        raise RefusedError("", f"{step.title}: the files were changed by something else since.")
-    sheet = step.moved[0].sheet
-    data = snapshot.data(sheet)
+    made = []
+    for patch in step.patches:
+        content = contents.get(patch.file)
+        moved = [one for one in step.moved if one.file == patch.file]
+        if patch.fits(content):
+            made.append(patch.made(content))
+        elif content is None or not moved:
+            raise RefusedError("", f"{step.title}: {clean(patch.file)} was changed by something else since.")
+        else:
+            made.append(FileChange(patch.file, content, _put_back(step.title, content, moved)))
+    return tuple(made)
+
+
+def _put_back(title: str, content: bytes, moved: Sequence[Moved]) -> bytes:
+    """A file that somebody else changed too, with some values put back that are still what the step left."""
     pieces: list[Piece] = []
-    for one in step.moved:
-        if value_at(data, one.path) != one.old:
-            raise RefusedError("", f"{step.title}: {_dotted(one.path)} was changed by something else since.")
-        pieces.append(TakeOut(one.path) if one.new is None else Put(one.path, one.new))
-    before = contents.get(file_of(sheet))
-    return (FileChange(file_of(sheet), before, changed(snapshot, sheet, tuple(pieces))),)
+    data = data_of(content, moved[0].file)
+    for one in moved:
+        present = value_at(data, one.path)
+        entries = present if len(one.path) == 1 and _is_entries(present) else None
+        if isinstance(one.old, dict) and len(one.path) == 1 and entries is not None and one.old in entries:
+            number = entries.index(one.old)
+            pieces.append(TakeOut((*one.path, number)))
+            entries.pop(number)
+        elif isinstance(one.new, dict) and len(one.path) == 1 and one.old is None:
+            pieces.append(AddEntry(str(one.path[0]), one.new))
+        elif present != one.old:
+            raise RefusedError("", f"{title}: {clean(dotted(one.path))} was changed by something else since.")
+        else:
+            pieces += _stated(one.path, present, one.new)
+    return changed_content(content, pieces)
 
 
-def _dotted(path: KeyPath) -> str:
-    return ".".join(str(part) for part in path)
+def _stated(path: KeyPath, present: Any, value: Any) -> list[Piece]:
+    if value is None:
+        return [TakeOut(path)]
+    swapped = isinstance(present, dict) or (isinstance(value, dict) and present is not None)
+    return [*([TakeOut(path)] if swapped else []), Put(path, value)]

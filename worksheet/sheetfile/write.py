@@ -52,13 +52,14 @@ def save(path: Path, *, read: bytes, new: str, root: Path) -> bytes:
     return content
 
 
-def create(path: Path, text: str, *, root: Path) -> bytes:
+def create(path: Path, text: str, *, root: Path, mode: int | None = None) -> bytes:
     """Write a file that does not exist yet, and its folder where that is missing.
 
     Args:
         path: The file.
         text: Its text.
         root: The folder that it must lie in.
+        mode: Its permissions; None for the usual ones.
 
     Returns: what was written.
     Raises: WriteRefusedError, where something stands there already, the path leads out of the root, or the system
@@ -68,8 +69,10 @@ def create(path: Path, text: str, *, root: Path) -> bytes:
     with _sentences(path):
         target = _within(path, root)
         target.parent.mkdir(parents=True, exist_ok=True)
-        beside = _write_beside(target, content, _ORDINARY)
+        beside = _write_beside(target, content, _ORDINARY if mode is None else mode)
         try:
+            if mode is not None:
+                beside.chmod(mode)
             _put_new(beside, target)
         finally:
             beside.unlink(missing_ok=True)
