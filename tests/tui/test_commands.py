@@ -45,7 +45,7 @@ def test_one_way_in_of_each_needs_no_modifier() -> None:
     """Function keys and control keys are lost in some chain of terminals; a plain key never is."""
     for command in COMMANDS:
         plain = [key for key in (command.key, command.second) if "+" not in key]
-        assert plain or command.name in {"previous_section"}, command.name
+        assert plain or command.name == "previous_section", command.name
 
 
 @pytest.mark.parametrize("place", PLACES)

@@ -1,7 +1,7 @@
 """Themes as data: complete, with the contrast of WCAG 2.2 AA, the user's own beside them, the choice remembered.
 
-Contrast: W3C, Web Content Accessibility Guidelines 2.2, success criteria 1.4.3 (4.5 to 1 for text) and 1.4.11 (3 to 1 for
-what is needed to understand a picture). The extremes of the ratio, 1 and 21, are the standard's own.
+Contrast: W3C, Web Content Accessibility Guidelines 2.2, success criteria 1.4.3 (4.5 to 1 for text) and 1.4.11 (3 to 1
+for what is needed to understand a picture). The extremes of the ratio, 1 and 21, are the standard's own.
 """
 
 import itertools
