@@ -2,12 +2,14 @@
 
 from __future__ import annotations
 
+import os
 import sys
 from collections.abc import Iterable
 from enum import IntEnum
 
+from worksheet.cli.locale import asks_for_ascii
 from worksheet.model.problem import Problem
-from worksheet.model.text import clean
+from worksheet.model.text import clean, plain_signs
 
 
 class Status(IntEnum):
@@ -21,7 +23,10 @@ class Status(IntEnum):
 def say(text: str) -> None:
     """One line on standard error, control characters taken out."""
     encoding = sys.stderr.encoding or "utf-8"
-    sys.stderr.write(clean(text).encode(encoding, "replace").decode(encoding) + "\n")
+    text = clean(text)
+    if asks_for_ascii(os.environ) or not encoding.lower().replace("-", "").startswith("utf"):
+        text = plain_signs(text)
+    sys.stderr.write(text.encode(encoding, "replace").decode(encoding) + "\n")
 
 
 def tell(problems: Iterable[Problem]) -> None:

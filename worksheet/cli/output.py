@@ -9,8 +9,14 @@ import sys
 from collections.abc import Iterable
 from typing import Any
 
+from worksheet.cli.locale import asks_for_ascii
+from worksheet.model.text import plain_signs
+
 NARROWEST = 40
 USUAL = 80
+
+_TONES = {"missed": ("\x1b[1;31m", "\x1b[0m"), "unknown": ("\x1b[33m", "\x1b[0m"), "waived": ("\x1b[36m", "\x1b[0m")}
+"""Colours of verdicts that want a look (ECMA-48 SGR); the words beside them say the same."""
 
 
 class Output:
@@ -28,9 +34,15 @@ class Output:
 
     def lines(self, lines: Iterable[str]) -> None:
         """Write lines of text; characters that the terminal cannot show are replaced."""
+        from worksheet.report.table import on, paper_for
+
         encoding = sys.stdout.encoding or "utf-8"
-        for line in lines:
-            sys.stdout.write(line.encode(encoding, "replace").decode(encoding) + "\n")
+        coloured = sys.stdout.isatty() and not os.environ.get("NO_COLOR") and os.environ.get("TERM") != "dumb"
+        paper = paper_for(encoding, asks_for_ascii(os.environ), _TONES if coloured else None)
+        with on(paper):
+            for line in lines:
+                text = plain_signs(line) if paper.plain else line
+                sys.stdout.write(text.encode(encoding, "replace").decode(encoding) + "\n")
 
     def document(self, document: dict[str, Any]) -> None:
         """Write one JSON document."""

@@ -11,7 +11,7 @@ import keyword
 import re
 from collections.abc import Iterable
 
-__all__ = ["REPLACEMENT", "clean", "is_identifier", "nearest"]
+__all__ = ["REPLACEMENT", "SIGNS", "clean", "is_identifier", "nearest", "plain_signs"]
 
 REPLACEMENT = "�"
 """Stands where a character was that a terminal could obey or that would hide others."""
@@ -47,6 +47,35 @@ def clean(text: str, *, lines: bool = False) -> str:
     if lines:
         return _UNSAFE.sub(lambda found: found[0] if found[0] in _LINE_CHARACTERS else REPLACEMENT, text)
     return _UNSAFE.sub(lambda found: " " if found[0] in _LINE_CHARACTERS else REPLACEMENT, text)
+
+
+SIGNS = {
+    "Ω": "ohm",
+    "µ": "u",
+    "μ": "u",
+    "√": "rt",
+    "²": "^2",
+    "°": "deg",
+    "≥": ">=",
+    "≤": "<=",
+    "×": "x",
+    "·": "-",
+    "…": "~",
+    "−": "-",
+    "–": "-",
+    "—": "-",
+    "′": "'",
+    "κ": "kappa",
+    "σ": "sigma",
+}
+"""The signs that this program writes, and what stands for each where only ASCII can be shown."""
+
+_PLAIN = str.maketrans(SIGNS)
+
+
+def plain_signs(text: str) -> str:
+    """A text with this program's own signs spelled in ASCII; other characters stay."""
+    return text if text.isascii() else text.translate(_PLAIN)
 
 
 def nearest(name: str, candidates: Iterable[str]) -> str | None:

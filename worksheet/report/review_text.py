@@ -18,7 +18,7 @@ _TARGETS = (
     Column("worst", right=True),
     Column("where"),
     Column("margin", right=True),
-    Column("verdict"),
+    Column("verdict", toned=True),
 )
 _Cell = TypeVar("_Cell", str, Column)
 _WHERE = 4
@@ -94,18 +94,18 @@ def _without_where(row: tuple[_Cell, ...]) -> tuple[_Cell, ...]:
 
 
 def _said(result: TargetReview, width: int) -> str:
-    """Why a target is not met and where it is worst, in words; "" where the table says enough."""
+    """Why a target is not met, where it is worst and which evidence is stale; "" where the table says enough."""
+    stale = sum(e.stale for e in result.evidence)
+    evidence = f"stale, found for other inputs: {stale} of {len(result.evidence)} pieces of evidence" if stale else ""
     if result.verdict == MET:
-        return ""
+        return evidence
     where = "" if width >= _WIDE or result.worst_at is None else f"worst at {wording.condition(result.worst_at)}"
     ends = ", ".join(f"{name} at an end of its range" for name in result.worst_with)
-    return "; ".join(part for part in (result.reason, where, ends) if part)
+    return "; ".join(part for part in (result.reason, where, ends, evidence) if part)
 
 
 def _row(result: TargetReview) -> tuple[str, ...]:
     target = result.target
-    stale = sum(e.stale for e in result.evidence)
-    mark = f" ({stale} stale)" if stale else ""
     return (
         target.name,
         wording.limits(target, result.unit),
@@ -113,7 +113,7 @@ def _row(result: TargetReview) -> tuple[str, ...]:
         wording.metric_number(target.name, result.worst, result.unit, digits=_DIGITS),
         wording.condition(result.worst_at),
         wording.margin(result.margin),
-        (result.verdict.upper() if result.verdict in (MISSED, UNKNOWN) else result.verdict) + mark,
+        result.verdict.upper() if result.verdict in (MISSED, UNKNOWN) else result.verdict,
     )
 
 
@@ -142,7 +142,7 @@ def _budgets(result: Review) -> Table:
         Column("limit", right=True),
         Column("nominal", right=True),
         Column("worst", right=True),
-        Column("verdict"),
+        Column("verdict", toned=True),
     )
     rows = tuple(
         (
