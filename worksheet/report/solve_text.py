@@ -78,14 +78,21 @@ def _bound(window: Window, bound: Bound, key: Key, hand: Hand, width: int) -> It
     formula = said.get("formula") if said.get("method") == "closed form" else (said.get("hand") or {}).get("formula")
     if not formula:
         return
+    where = "".join(f", {text}" for text in said.get("where", ()))
     if said["method"] == "closed form":
-        yield from wrapped(f"{key.symbol} {sign} {formula}", width, _INDENT * 2)
+        yield from wrapped(f"{key.symbol} {sign} {formula}{where}", width, _INDENT * 2)
         return
     estimate = said["hand"]
-    neglects = f"; neglects {', '.join(estimate['neglects'])}" if estimate["neglects"] else ""
+    named = [_neglect(name, estimate.get("effects", {}).get(name)) for name in estimate["neglects"]]
+    neglects = f"{where}; neglects {', '.join(named)}" if named else where
     yield from wrapped(
         f"by hand {key.symbol} {sign} {formula} = {shown(key, estimate['value'])}{neglects}", width, _INDENT * 2
     )
+
+
+def _neglect(name: str, share: float | None) -> str:
+    """A neglect with what it does to the metric at the present point."""
+    return name if share is None else f"{name} ({abs(share):.1%})"
 
 
 def _points(solved: Solved, keys: Keys, width: int) -> Iterator[str]:

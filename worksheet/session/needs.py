@@ -148,13 +148,16 @@ class Needs:
 
         low, high = goals.limits(self.case.sheet.targets[bound.target])
         limit = low if bound.limit == "min" else high
+        assert limit is not None  # a bound belongs to a limit that exists
         found = hand_bound(self.case, bound.target, bound.side, limit, window.name, bound.point)
         if found is None:
             return {"method": "numeric", "formula": None, "hand": None}
+        beside = {"where": list(found.where), "dropped": [str(d) for d in found.dropped]}
         if found.exact:
-            return {"method": "closed form", "formula": found.formula, "hand": None}
-        hand = {"formula": found.formula, "value": found.value, "neglects": list(found.neglects)}
-        return {"method": "numeric", "formula": None, "hand": hand}
+            return {"method": "closed form", "formula": found.formula, "hand": None, **beside}
+        effects = {e.name: e.share for e in found.effects if e.name in found.neglects}
+        hand = {"formula": found.formula, "value": found.value, "neglects": list(found.neglects), "effects": effects}
+        return {"method": "numeric", "formula": None, "hand": hand, **beside}
 
 
 def shown_input(key: Key, value: float) -> str:
