@@ -1,4 +1,4 @@
-"""The project that the tests of the app open: eight invented blocks over all five stages, linked, with every verdict."""
+"""The project that the tests of the app open: eight invented blocks over all five stages, with every verdict."""
 
 from __future__ import annotations
 

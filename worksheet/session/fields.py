@@ -25,7 +25,7 @@ from worksheet.stages import catalogue
 from worksheet.stages.stage import Stage
 
 _NAME_AT_END = re.compile(r"[A-Za-z_][A-Za-z0-9_]*(?:\.[A-Za-z0-9_]*)?$")
-_UNIT_AT_END = re.compile(r"^\s*[-+]?[0-9.]+(?:[eE][-+]?[0-9]+)?\s*(\S*)$")
+_UNIT_AT_END = re.compile(r"^\s*[-+]?[0-9.]+(?:[eE][-+]?[0-9]+)?\s*((?:[^\s*/+(-]\S*)?)$")
 _PREFIXES = ("", "f", "p", "n", "u", "m", "k", "M", "G")
 _MOST = 8
 

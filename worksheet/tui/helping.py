@@ -74,7 +74,7 @@ def of_subject(kind: str, name: str) -> list[str]:
     if kind == "bound":
         return [
             "# A bound",
-            "Where a target is just met as this variable moves with the others held, in the worst condition that counts.",
+            "Where a target is just met as this variable moves with the others held, in the worst condition.",
             "The bounds that set the ends of the window bind.",
         ]
     return []
