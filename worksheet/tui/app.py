@@ -163,10 +163,16 @@ class BookApp(App[int]):
         return next((one.name_of_sheet for one in self.screen_stack if isinstance(one, SheetScreen)), None)
 
     def show_book(self) -> None:
-        """Hand the state down to every screen that shows it."""
-        for screen in self.screen_stack:
-            if isinstance(screen, Place):
-                screen.show_book()
+        """Hand the state down to the uppermost screen that shows it; those below take it in when they come up again.
+
+        A screen below that is drawn makes the toolkit draw the one above it as a whole.
+        """
+        screen = self._uppermost()
+        if screen is not None:
+            screen.show_book()
+
+    def _uppermost(self) -> Place | None:
+        return next((one for one in reversed(self.screen_stack) if isinstance(one, Place)), None)
 
     def on_book_app_reviewed(self, message: BookApp.Reviewed) -> None:
         """Show it, unless it belongs to another revision by now."""
@@ -193,7 +199,7 @@ class BookApp(App[int]):
         self._say("taken in: files changed by somebody else")
 
     def _say(self, text: str) -> None:
-        screen = next((one for one in reversed(self.screen_stack) if isinstance(one, Place)), None)
+        screen = self._uppermost()
         if screen is not None:
             screen.say(text)
 
