@@ -58,3 +58,22 @@ def tightest(targets: tuple[TargetReview, ...]) -> TargetReview | None:
     known = [one for one in targets if one.margin is not None]
     open_ones = [one for one in known if one.verdict != WAIVED] or known
     return min(open_ones, key=lambda one: one.margin if one.margin is not None else 0.0, default=None)
+
+
+def margin_strip(targets: tuple[TargetReview, ...], columns: int) -> list[rows.Span]:
+    """The margin of every target in one line, for watching them while something else is stepped.
+
+    In the order of the sheet where all fit, else the tightest first and as many as have room.
+    """
+    found = [_margin_piece(one) for one in targets]
+    if sum(len(piece.text) + 2 for piece in found) > columns:
+        ranked = sorted(targets, key=lambda one: one.margin if one.margin is not None else float("inf"))
+        found, rest = [], [_margin_piece(one) for one in ranked]
+        while rest and sum(len(piece.text) + 2 for piece in [*found, rest[0]]) <= columns:
+            found.append(rest.pop(0))
+    return found
+
+
+def _margin_piece(one: TargetReview) -> rows.Span:
+    said = "" if one.verdict == MET else f" {verdict(one.verdict)}"
+    return rows.Span(f"{one.target.name} {wording.margin(one.margin)}{said}", VERDICT_ROLES[one.verdict])

@@ -100,9 +100,11 @@ class SheetScreen(Place):
             said += [Span(f"{n} {v}", words.VERDICT_ROLES[v]) for n, v in counts if n]
         stale = self.book.results is None or self.book.results.revision != self.snapshot.revision
         title = facts.text(str(data.get("title", "")), QUIET)
-        tail = Span("working..." if stale else f"step {self.step_kind}", QUIET)
+        tail = Span("working..." if stale else f"step {self.step_kind}", LABEL)
         read_only = [Span("for reading only", LABEL)] if self.snapshot.read_only else []
-        self.query_one("#title", Lines).show([line(*said, *read_only, gap=2), line(tail, title, gap=3)])
+        margins = words.margin_strip(() if result is None else result.targets, self.app.size.width - 16)
+        shown = [line(*said, *read_only, title, gap=2), line(tail, *margins, gap=2)]
+        self.query_one("#title", Lines).show(shown)
 
     def on_ledger_moved(self) -> None:
         """Other commands may hold here."""
