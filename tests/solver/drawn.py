@@ -42,7 +42,8 @@ def with_targets(rng: random.Random, folder: Path, documents: tuple[Document, Do
         if measured.complete and float(abs(measured.values.reshape(-1)[0])) > smallest(key):
             values[key] = float(measured.values.reshape(-1)[0])
     sheet["target"] = {
-        key: {"max" if key in MAXIMA else "min": value * rng.uniform(0.5, 2.0)} for key, value in list(values.items())[:3]
+        key: {"max" if key in MAXIMA else "min": value * rng.uniform(0.5, 2.0)}
+        for key, value in list(values.items())[:3]
     }
     return sheet
 
@@ -56,4 +57,4 @@ def every_metric(case: Case) -> list[str]:
     """Metrics that the case's stage has."""
     from worksheet.model import metrics
 
-    return [key for key in metrics.keys() if case.stage.absent_metric(key) is None]
+    return [m.key for m in metrics.all_metrics() if case.stage.absent_metric(m.key) is None]

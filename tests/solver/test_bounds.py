@@ -1,4 +1,4 @@
-"""A bound put back into the sheet makes its target just met in the worst condition, whatever stage, metric and unknown."""
+"""A bound put back into the sheet makes its target just met in the worst condition, for every stage and unknown."""
 
 from __future__ import annotations
 
@@ -48,7 +48,9 @@ def check(seed: int, kind: tuple[str, str, str], folder: Path, keep: str) -> int
                 for k, c in enumerate(trials.constraints)
                 if c.name == bound.target and c.side == ("low" if bound.limit == "min" else "high")
             )
-            slack = trials.clear({"load_capacitance": np.array([float(np.ravel(again.value("load_capacitance"))[0])])}).slack
+            slack = trials.clear(
+                {"load_capacitance": np.array([float(np.ravel(again.value("load_capacitance"))[0])])}
+            ).slack
             if bound.edge:
                 assert slack[index, 0] >= -JUST_MET, (name, bound)
             else:
