@@ -81,7 +81,11 @@ class Colours:
             panel=role["raised"],
             dark=self.dark,
             ansi=self.terminal_colours,
-            variables={f"book-{name.replace('_', '-')}": colour for name, colour in role.items()},
+            variables={
+                **{f"book-{name.replace('_', '-')}": colour for name, colour in role.items()},
+                "ansi-background": role["ground"],  # asked for by the toolkit's own style sheets, which leave them out
+                "ansi-foreground": role["text"],
+            },
         )
 
 
