@@ -33,9 +33,8 @@ class Shown:
         environment = {**os.environ, "TERM": term, "LANG": "C.UTF-8", "XDG_STATE_HOME": str(root.parent / "state")}
         environment |= {"XDG_CONFIG_HOME": str(root.parent / "configuration"), "PYTHONPATH": str(TOP), **more}
         program = "import sys; from worksheet.cli.main import entry; sys.exit(entry())"
-        self.child = pexpect.spawn(
-            sys.executable, ["-c", program, "open", str(root)], env=environment, dimensions=(size[1], size[0]), timeout=30
-        )  # fmt: skip
+        arguments = ["-c", program, "open", str(root)]
+        self.child = pexpect.spawn(sys.executable, arguments, env=environment, dimensions=(size[1], size[0]))
 
     def until(self, *texts: str) -> str:
         """Read until the screen shows all the texts."""

@@ -47,7 +47,8 @@ def in_short(facts: Facts) -> Iterator[Line]:
             continue
         cells = [values.get(value.key) for values in devices.values()]
         texts = [format_quantity(c, value.dimension, words.DIGITS) if isinstance(c, float) else "-" for c in cells]
-        yield line(facts.text(value.symbol, LABEL, _LABEL), *(facts.text(text, PLAIN, _CELL) for text in texts))
+        short = value.symbol if len(value.symbol) <= _LABEL else value.title.lower()
+        yield line(facts.text(short, LABEL, _LABEL), *(facts.text(text, PLAIN, _CELL) for text in texts))
     regions = [str(values.get("region") or "-") for values in devices.values()]
     yield line(Span("region", LABEL, _LABEL), *(facts.text(text, PLAIN, _CELL) for text in regions))
 
