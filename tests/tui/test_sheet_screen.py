@@ -274,6 +274,17 @@ def test_a_number_is_followed_to_what_moves_it_and_back(root: Path) -> None:
     drive(root, steps)
 
 
+def test_the_algebra_of_a_bound_comes_once_the_sheet_stands_still(root: Path) -> None:
+    async def steps(d: Drive) -> None:
+        await d.sheet(NAME, "target.power")
+        assert not any("I ≤ power/supply" in row for row in d.rows())
+        await d.until(lambda: any("I ≤ power/supply" in row for row in d.rows()))
+        await d.press("w")
+        await d.until(lambda: any("I ≤ power/supply" in row for row in d.rows()))
+
+    drive(root, steps)
+
+
 def test_every_size_shows_the_sheet(root: Path) -> None:
     for size in ((60, 15), (80, 24), (120, 40), (250, 80)):
 

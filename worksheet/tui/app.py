@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import threading
-from collections.abc import Sequence
+from collections.abc import Mapping, Sequence
 from pathlib import Path
 from typing import ClassVar
 
@@ -21,11 +21,14 @@ from worksheet.tui import keymap, themes
 from worksheet.tui.guard import Guard
 from worksheet.tui.plain_signs import PlainSigns
 from worksheet.tui.recompute import Recompute, Stamped
-from worksheet.tui.recomputed import Needed, Results, needs_of, review_of, today
+from worksheet.tui.recomputed import Hands, Needed, Results, hands_of, needs_of, review_of, today
 from worksheet.tui.screens.book import BookScreen
 from worksheet.tui.screens.place import Place
 from worksheet.tui.signs import signs_for
 from worksheet.tui.terminal import Terminal
+
+_REST = 0.8
+"""How long a sheet must stand still before its algebra is looked for. [s]"""
 
 _LOOK = 0.5
 """How often files are looked at for changes by others. [s]"""
@@ -49,6 +52,13 @@ class BookApp(App[int]):
         """A sheet's needs have been worked out."""
 
         def __init__(self, stamped: Stamped[Needed]) -> None:
+            super().__init__()
+            self.stamped = stamped
+
+    class Explained(Message):
+        """The algebra of a sheet's bounds has been found."""
+
+        def __init__(self, stamped: Stamped[Hands]) -> None:
             super().__init__()
             self.stamped = stamped
 
@@ -88,6 +98,8 @@ class BookApp(App[int]):
         self._writing = guard.writing if guard is not None else threading.Lock()
         self._reviews: Recompute[Results] = Recompute(lambda one: self._deliver(self.Reviewed(one)))
         self._solves: Recompute[Needed] = Recompute(lambda one: self._deliver(self.Solved(one)))
+        self._explains: Recompute[Hands] = Recompute(lambda one: self._deliver(self.Explained(one)))
+        self.hands: Hands | None = None
         self._ended = threading.Event()
 
     # Beginning and end
@@ -128,6 +140,7 @@ class BookApp(App[int]):
         self._ended.set()
         self._reviews.stop()
         self._solves.stop()
+        self._explains.stop()
 
     def _look(self) -> None:
         while not self._ended.wait(_LOOK):
@@ -189,8 +202,33 @@ class BookApp(App[int]):
         stamped = message.stamped
         if stamped.revision != self.snapshot.revision or stamped.value is None:
             return
-        self.needed = stamped.value
+        self.needed = needed = stamped.value
         self.show_book()
+        self.set_timer(_REST, lambda: self._explain(needed))
+
+    def _explain(self, needed: Needed) -> None:
+        """Look for the algebra once nothing has moved for a while: it takes a core for seconds."""
+        snapshot, session = self.snapshot, self.session
+        if needed is not self.needed or needed.revision != snapshot.revision or needed.solved is None:
+            return
+        self._explains.want(
+            snapshot.revision,
+            lambda: hands_of(
+                session, snapshot, needed.name, lambda: not self._ended.is_set() and needed is self.needed
+            ),
+        )
+
+    def on_book_app_explained(self, message: BookApp.Explained) -> None:
+        """Show it, unless it belongs to another revision by now."""
+        stamped = message.stamped
+        if stamped.revision == self.snapshot.revision and stamped.value is not None:
+            self.hands = stamped.value
+            self.show_book()
+
+    def hands_for(self, name: str) -> Mapping[tuple[str, str, str], str]:
+        """Formulas by hand of a sheet as it stands; empty while they are being looked for."""
+        hands = self.hands
+        return hands.texts if hands and hands.name == name and hands.revision == self.snapshot.revision else {}
 
     def on_book_app_changed(self) -> None:
         """Take in what somebody else wrote."""

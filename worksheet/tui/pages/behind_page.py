@@ -92,7 +92,9 @@ def _bound_rows(facts: Facts, window: Window, target: str) -> Iterator[Row]:
         shown = facts.text(f"{sign} {value}", PLAIN, 16)
         spans = line(facts.text(window.name, LABEL, _NAME), shown, facts.text(where, QUIET))
         copied = (window.name, f"{sign} {value}", wording.condition(bound.at))
-        yield Row(f"solved.{window.name}.{k}", (spans,), subject=("variable", window.name), copied=copied)
+        hand = facts.hands.get((window.name, target, bound.side), "")
+        below = [line(Span("  "), facts.text(text, QUIET), gap=0) for text in wrapped(hand, facts.columns - 2) if hand]
+        yield Row(f"solved.{window.name}.{k}", (spans, *below), subject=("variable", window.name), copied=copied)
 
 
 def _window(facts: Facts, name: str) -> Iterator[Row]:

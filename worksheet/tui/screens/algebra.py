@@ -67,7 +67,7 @@ class AlgebraScreen(Place):
         book, snapshot, name = self.book, self.snapshot, self.name_of_sheet
         result = None if book.results is None else book.results.sheet(name)
         solved = book.needed.solved if book.needed is not None and book.needed.name == name else None
-        facts = Facts(snapshot, name, result, solved, self.columns, book.signs, {}, {})
+        facts = Facts(snapshot, name, result, solved, self.columns, book.signs, {}, book.hands_for(name))
         kind, subject = self.trail[-1]
         self.ledger.show(behind_page.page(facts, kind, subject, self._fragile, self._asked))
         trail = " < ".join(one.partition(":")[2] or one for _, one in reversed(self.trail))

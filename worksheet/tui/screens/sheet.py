@@ -57,7 +57,7 @@ class SheetScreen(Place):
         needed = book.needed if book.needed is not None and book.needed.name == name else None
         proposal = {} if needed is None else needed.proposal
         solved = None if needed is None else needed.solved
-        return Facts(self.snapshot, name, result, solved, self.columns, book.signs, proposal, {})
+        return Facts(self.snapshot, name, result, solved, self.columns, book.signs, proposal, book.hands_for(name))
 
     @property
     def columns(self) -> int:
