@@ -166,7 +166,7 @@ class Case:
             return self.conditions.temperature
         stated = self.stated(name)
         if stated is not None and stated.formula is not None:
-            return self._checked(name, stated, stated.formula)
+            return self._checked(self._where(name), stated, stated.formula, self._key(name))
         if stated is not None and stated.number is not None:
             return stated.number
         if name in self.filled:
@@ -176,9 +176,9 @@ class Case:
             raise KeyError(name)
         return float(default)
 
-    def _checked(self, name: str, stated: Value, formula: Formula) -> Number:
-        result = self.evaluate(formula)
-        key = self._key(name)
+    def _checked(self, where: str, stated: Value, formula: Formula, key: Key | None) -> Number:
+        """What a value's formula gives, held to the range of its key. `where` is its dotted key."""
+        result = self.evaluate(formula, where)
         wrong = np.atleast_1d(
             ~np.isfinite(result) | np.vectorize(lambda x: key is not None and key.outside(float(x)) is not None)(result)
         )
@@ -188,8 +188,8 @@ class Case:
             wanted = key.range_text() if key is not None else "a number"
             what = f"gives {found:g}" if np.isfinite(found) else "gives no number"
             raise CaseError(
-                self.problem(
-                    name,
+                self._problem_at(
+                    where,
                     stated,
                     f"the formula {formula.text!r} {what} at {at.process}, {at.temperature:g} K, {at.supply:g} V; "
                     f"expected {wanted}",
@@ -197,19 +197,20 @@ class Case:
             )
         return np.asarray(result)
 
+    def _where(self, name: str) -> str:
+        """The dotted key of one of this sheet's values."""
+        sheet = self.sheet
+        tables = (("assume", sheet.assume), ("choose", sheet.choose), ("own", sheet.own))
+        table = next((t for t, values in tables if name in values), "")
+        return f"{table}.{name}" if table else name
+
     def problem(self, name: str, stated: Value | None, message: str) -> Problem:
         """A problem with one of this sheet's values."""
-        sheet = self.sheet
-        table = next(
-            (
-                t
-                for t, values in (("assume", sheet.assume), ("choose", sheet.choose), ("own", sheet.own))
-                if name in values
-            ),
-            "",
-        )
-        key = f"{table}.{name}" if table else name
-        return Problem(sheet.file, sheet.lines.get(key, stated.line if stated is not None else None), key, message)
+        return self._problem_at(self._where(name), stated, message)
+
+    def _problem_at(self, where: str, stated: Value | None, message: str) -> Problem:
+        line = self.sheet.lines.get(where, stated.line if stated is not None else None)
+        return Problem(self.sheet.file, line, where, message)
 
     def fail(self, key: str, message: str) -> CaseError:
         """The error that one of this sheet's values cannot be had, to be raised by whoever finds out."""
@@ -219,11 +220,12 @@ class Case:
         known = {key.name: key for key in self.stage.design_keys(self.sheet.bias.ideal)} | _DEFAULTS
         return known.get(name)
 
-    def evaluate(self, formula: Formula, extra: Callable[[str], Number | None] | None = None) -> Array:
+    def evaluate(self, formula: Formula, where: str, extra: Callable[[str], Number | None] | None = None) -> Array:
         """A formula over this case. [SI], over conditions
 
         Args:
             formula: What to evaluate.
+            where: The dotted key that it stands at, for messages.
             extra: Further names (a target's metrics); None for a name that it does not know.
         Raises: CaseError where the formula cannot be evaluated.
         """
@@ -238,7 +240,8 @@ class Case:
             try:
                 return np.asarray(formulas.evaluate(formula, lookup, FUNCTIONS, number=np.float64), dtype=np.float64)
             except FormulaError as error:
-                raise CaseError(Problem(self.sheet.file, None, "formula", f"{formula.text!r}: {error}")) from error
+                message = f"the formula {formula.text!r} gives no number: {error}"
+                raise CaseError(self._problem_at(where, None, message)) from error
 
     def _bias(self, name: str) -> Number:
         moved = self.moves.get(f"bias.{name}")
@@ -248,7 +251,7 @@ class Case:
         if stated is None:
             return float(_BIAS[name].default or 0.0)
         if stated.formula is not None:
-            return self.evaluate(stated.formula)
+            return self._checked(f"bias.{name}", stated, stated.formula, _BIAS[name])
         return stated.number or 0.0
 
     def _process(self, model: DeviceModel) -> dict[str, Number]:
@@ -319,7 +322,10 @@ class Case:
         """Values of a target that has a formula, over conditions; NaN where a metric is missing. [its own unit]"""
         assert target.formula is not None
         solved = solution or self.solution
-        return self.evaluate(target.formula, lambda name: solved[name] if metrics.find(name) is not None else None)
+        where = f"target.{target.name}"
+        return self.evaluate(
+            target.formula, where, lambda name: solved[name] if metrics.find(name) is not None else None
+        )
 
 
 _PLAIN = (

@@ -21,7 +21,7 @@ _SLACK = 1e-9
 
 def project_problems(file: ProjectFile, process: Process) -> Iterator[Problem]:
     """Corners that the project names and the process file does not have, and corners of devices it does not have."""
-    known = [TYPICAL, *process.corners]
+    known = list(dict.fromkeys((TYPICAL, *process.corners)))
     for name in dict.fromkeys((*file.processes, file.nominal.process)):
         if name not in known:
             key = "conditions.process" if name in file.processes else "conditions.nominal"
@@ -87,7 +87,7 @@ def _levels(sheet: Sheet, stage: Stage) -> Iterator[Problem]:
 
 
 def _evidence(sheet: Sheet, process: Process) -> Iterator[Problem]:
-    known = [TYPICAL, *process.corners]
+    known = list(dict.fromkeys((TYPICAL, *process.corners)))
     for number, item in enumerate(sheet.evidence):
         if item.at is not None and item.at.process not in known:
             yield _problem(

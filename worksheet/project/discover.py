@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import os
 from collections.abc import Mapping
 from dataclasses import dataclass, field
 from pathlib import Path
@@ -69,7 +70,7 @@ def load(root: Path, reading: Reading = FROM_DISK) -> Project:
         reading: How its files are read.
     Returns: the project with every problem found; sheets without problems are there in any case
     """
-    missing = _not_a_project(root)
+    missing = not_a_project(root)
     if missing is not None:
         return Project(root, None, None, problems=(missing,))
     refused = _leads_out(root, root / PROJECT_FILE, PROJECT_FILE)
@@ -82,6 +83,8 @@ def load(root: Path, reading: Reading = FROM_DISK) -> Project:
         problems = [*problems, *found]
     sheets: dict[str, Sheet] = {}
     bad: list[str] = []
+    unlisted = _unlisted(root)
+    problems = [*problems, *([unlisted] if unlisted is not None else [])]
     for path in reading.sheets(root):
         shown = f"{SHEETS}/{path.name}"
         refused = _leads_out(root, path, shown)
@@ -134,10 +137,17 @@ def _drop_dependents(sheets: dict[str, Sheet], project: Project, problems: list[
                 dropped = True
 
 
-def _not_a_project(root: Path) -> Problem | None:
-    if not root.is_dir():
+def not_a_project(root: Path) -> Problem | None:
+    """Say why a path is no project folder, or None where it is one."""
+    try:
+        folder, file = root.is_dir(), (root / PROJECT_FILE).exists()
+    except (OSError, ValueError) as error:
+        return Problem(
+            str(root), None, "", f"found a path that cannot be looked at ({error}); expected a project folder"
+        )
+    if not folder:
         return Problem(str(root), None, "", "found no such folder; expected a project folder that holds biasbook.toml")
-    if not (root / PROJECT_FILE).exists():
+    if not file:
         message = "found a folder without biasbook.toml; expected a project (`biasbook start DIR` makes one)"
         return Problem(str(root), None, "", message)
     return None
@@ -166,7 +176,20 @@ def _sheet_files(root: Path) -> list[Path]:
     return sorted(folder.glob("*.toml")) if folder.is_dir() and inside(root, folder) else []
 
 
+def _unlisted(root: Path) -> Problem | None:
+    """Say why the folder of the sheets cannot be listed, or None where it can or is not there."""
+    folder = root / SHEETS
+    if not inside(root, folder):
+        return _leads_out(root, folder, SHEETS)
+    try:
+        if folder.exists():
+            os.scandir(folder).close()
+    except OSError as error:
+        return Problem(SHEETS, None, "", f"the folder of the sheets cannot be listed: {error.strerror}")
+    return None
+
+
 def _leads_out(root: Path, path: Path, shown: str) -> Problem | None:
     if inside(root, path):
         return None
-    return Problem(shown, None, "", "found a link that leads out of the project; expected a file inside it")
+    return Problem(shown, None, "", "found a link that leads out of the project; expected a place inside it")

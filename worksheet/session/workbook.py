@@ -45,8 +45,12 @@ class Workbook:
 
 def project_of_sheet(path: Path) -> tuple[Path, str] | Problem:
     """The project folder and the sheet's name for a path to sheets/NAME.toml, or what is wrong with the path."""
-    if path.suffix != ".toml" or path.parent.name not in (SHEETS, "") or not path.exists():
-        what = "no such file" if not path.exists() else "no sheet of a project"
+    try:
+        there = path.exists()
+    except (OSError, ValueError) as error:
+        return Problem(str(path), None, "", f"found a path that cannot be looked at ({error})")
+    if path.suffix != ".toml" or path.parent.name not in (SHEETS, "") or not there:
+        what = "no such file" if not there else "no sheet of a project"
         return Problem(str(path), None, "", f"found {what}; expected PROJECT/{SHEETS}/NAME.toml")
     folder = path.resolve().parent
     if folder.name != SHEETS:

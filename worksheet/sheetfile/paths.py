@@ -9,5 +9,5 @@ def inside(root: Path, path: Path) -> bool:
     """Whether `path`, its links followed, lies in `root`; a loop of links does not."""
     try:
         return path.resolve().is_relative_to(root.resolve())
-    except (OSError, RuntimeError):
+    except (OSError, RuntimeError, ValueError):  # ValueError: a zero byte in the path
         return False

@@ -7,7 +7,6 @@ from pathlib import Path
 from typing import TYPE_CHECKING, Any
 
 from worksheet.cli.diagnostics import Status, tell
-from worksheet.model.problem import Problem
 
 if TYPE_CHECKING:
     from worksheet.cli.output import Output
@@ -26,12 +25,15 @@ def add(subparsers: Any) -> None:
 def run(args: argparse.Namespace, output: Output) -> int:
     """Open the app. 0; 2 where there is no project or the terminal cannot show it."""
     del output
-    root = Path(args.project)
-    if not (root / "biasbook.toml").is_file():
-        message = "found no biasbook.toml there, expected a project folder; `biasbook start DIR` makes one"
-        tell([Problem(str(args.project), None, "", message)])
-        return Status.BAD_INPUT
     import importlib
+
+    from worksheet.project.discover import not_a_project
+
+    root = Path(args.project)
+    problem = not_a_project(root)
+    if problem is not None:
+        tell([problem])
+        return Status.BAD_INPUT
 
     # Neither front end knows the other: the app is found by its name at the moment it is wanted.
     status: int = importlib.import_module("worksheet.tui.app").run(root, read_only=args.read_only)
