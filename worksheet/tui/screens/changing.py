@@ -59,11 +59,9 @@ class Change:
         return Asked(field.title, stands, wrong, completed, place.key.help, all_marked=text is None)
 
     def place_again(self) -> None:
-        """The page has another size: the line follows its field."""
-        from textual.widgets import Input
-
-        text = self._line.query_one(Input).value
-        self.begin(self._screen.ledger.field, text)
+        """The page stands differently: the line follows its field, with what is typed in it."""
+        if self._place is not None:
+            self._line.move(self._screen.ledger.field_region(), self._screen.ledger.region)
 
     def resume(self, dotted: str, text: str) -> None:
         """Go on with a text that was left behind at a key."""

@@ -85,6 +85,8 @@ class SheetScreen(Place):
         self.ledger.show(page)
         if self._first and self.ledger.go(self._first):
             self._first = ""
+        if self.change.open:
+            self.call_after_refresh(self.change.place_again)
         self.show_foot()
 
     def _show_title(self, facts: Facts) -> None:
@@ -116,8 +118,6 @@ class SheetScreen(Place):
 
     def on_resize(self) -> None:
         """Another size."""
-        if self.change.open:
-            self.call_after_refresh(self.change.place_again)
         self.show_book()
 
     def holds(self) -> set[str]:

@@ -85,11 +85,7 @@ class InPlace(Vertical):
     def ask(self, asked: Asked, at: Region, within: Region) -> None:
         """Open over a place of the screen."""
         self._asked, self._turn = asked, -1
-        width = min(max(_LEAST, at.width + 4, width_of(asked.text) + 4), within.width)
-        x = min(at.x, within.right - width)
-        y = min(at.y, within.bottom - _LINES + 1)
-        self.styles.width = width
-        self.styles.offset = (max(x, within.x), max(y, within.y))
+        self.move(at, within)
         field = self.query_one(Input)
         field.value = asked.text
         field.cursor_position = len(asked.text)
@@ -98,6 +94,15 @@ class InPlace(Vertical):
         if asked.all_marked:
             field.select_all()
         self._tell(asked.text)
+
+    def move(self, at: Region, within: Region) -> None:
+        """Stand over another place; what is typed stays."""
+        text = "" if self._asked is None else self._asked.text
+        width = min(max(_LEAST, at.width + 4, width_of(text) + 4), within.width)
+        x = min(at.x, within.right - width)
+        y = min(at.y, within.bottom - _LINES + 1)
+        self.styles.width = width
+        self.styles.offset = (max(x, within.x), max(y, within.y))
 
     def close(self) -> None:
         """Nothing is asked any more."""

@@ -16,6 +16,7 @@ from textual.message import Message
 from textual.scroll_view import ScrollView
 from textual.strip import Strip
 
+from worksheet.report.table import width_of
 from worksheet.tui.rows import Field, Page, Row
 from worksheet.tui.widgets.lines import ROLE_CLASSES, strip_of
 
@@ -82,15 +83,24 @@ class Ledger(ScrollView, can_focus=True):
         return fields[min(self._field, len(fields) - 1)] if fields else None
 
     def show(self, page: Page) -> None:
-        """Show other rows. The cursor stays on the row of the same key, else near where it was."""
+        """Show other rows. The cursor stays on the row of the same key, and that row where it is on the screen."""
         before, old_where, key = self._page, self._where, self.row.key if self.row is not None else None
+        height = self._height_on_screen()
         self._page = page
         self._where = [(k, n) for k, row in enumerate(page.rows) for n in range(len(row.lines))]
         self._starts = [sum(len(row.lines) for row in page.rows[:k]) for k in range(len(page.rows))]
         self._place(key)
         self.virtual_size = Size(self.size.width, len(self._where))
         self._repaint(before, old_where)
+        if height is not None and self._row >= 0:
+            self.scroll_to(y=max(self._starts[self._row] - height, 0), animate=False, immediate=True)
         self.post_message(self.Moved(self.row, self.field))
+
+    def _height_on_screen(self) -> int | None:
+        """At which line of the window the cursor's row stands; None at the top of the page, which stays in sight."""
+        if not 0 <= self._row < len(self._starts) or not self.scroll_offset.y:
+            return None
+        return self._starts[self._row] - round(self.scroll_offset.y)
 
     def _place(self, key: str | None) -> None:
         rows = self._page.rows
@@ -150,8 +160,8 @@ class Ledger(ScrollView, can_focus=True):
             for span in line:
                 if span.field is field:
                     y = self._starts[self._row] + n - self.scroll_offset.y
-                    return Region(self.region.x + at, self.region.y + y, len(span.shown), 1)
-                at += len(span.shown)
+                    return Region(self.region.x + at, self.region.y + y, width_of(span.shown), 1)
+                at += width_of(span.shown)
         return Region(0, 0, 0, 0)
 
     def go(self, key: str, field: int = 0) -> bool:
@@ -245,9 +255,9 @@ class Ledger(ScrollView, can_focus=True):
             return
         at, chosen = 2, 0
         for span in row.lines[n]:
-            if span.field is not None and at <= event.x < at + len(span.shown):
+            if span.field is not None and at <= event.x < at + width_of(span.shown):
                 chosen = row.fields.index(span.field)
-            at += len(span.shown)
+            at += width_of(span.shown)
         self._go(k, chosen)
 
     def on_resize(self) -> None:
