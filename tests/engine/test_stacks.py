@@ -16,7 +16,7 @@ from worksheet.engine import settling
 from worksheet.engine.inputs import Inputs
 from worksheet.engine.solution import NumericSolution
 from worksheet.stages.circuit import Circuit
-from worksheet.stages.one_transistor import COMMON_GATE
+from worksheet.stages.one_transistor import COMMON_GATE, COMMON_SOURCE, SOURCE_FOLLOWER
 from worksheet.stages.stage import GROUND, IN, LINE, OUT, SUPPLY, Stage, Transistor
 
 TALL = Stage(
@@ -141,3 +141,31 @@ def test_a_common_gate_without_levels_stands_in_the_middle(polarity: str) -> Non
     assert float(np.ravel(levels.input)[0]) == pytest.approx(entry)
     assert float(np.ravel(levels.output)[0]) == pytest.approx((entry + WANTED + SUPPLY_VOLTAGE - over) / 2)
     assert float(np.ravel(levels.empty)[0]) < 0
+
+
+def test_noise_integral_of_four_poles_against_quadrature() -> None:
+    poles = np.array([-1.0, -3.0, -2.0 + 1.0j, -2.0 - 1.0j])
+    denominator = [float(c) for c in np.poly(poles)[::-1].real]
+    numerator = [2.0, 0.7, -0.3, 0.05]
+    omega = np.linspace(0, 400, 2_000_001)
+    h = np.polyval(numerator[::-1], 1j * omega) / np.polyval(denominator[::-1], 1j * omega)
+    integral = np.trapezoid(np.abs(h) ** 2, omega) / np.pi
+    assert float(poly.noise_integral(numerator, [np.asarray(c) for c in denominator])) == pytest.approx(
+        integral, rel=1e-4
+    )
+
+
+@pytest.mark.parametrize("inversion", [1e-6, 0.3, 50.0])
+@pytest.mark.parametrize("sign", [1.0, -1.0])
+def test_a_tiny_step_settles_with_the_linear_time_constant(inversion: float, sign: float) -> None:
+    specific, capacitance, thermal, tolerance = 1e-6, 1e-12, 0.0259, 1e-3
+    slope = 2 / (1 + np.sqrt(1 + 4 * inversion))
+    tau = capacitance / (specific * inversion * slope / thermal)
+    found = settling.source_step(sign * 1e-8, inversion, specific, capacitance, thermal, tolerance)
+    assert float(found) == pytest.approx(tau * np.log(1 / tolerance), rel=1e-5)
+
+
+def test_only_the_common_source_inverts() -> None:
+    for stage, sign in ((COMMON_SOURCE, -1.0), (COMMON_GATE, 1.0), (SOURCE_FOLLOWER, 1.0)):
+        solution = solved(stage)
+        assert np.sign(float(np.ravel(solution.signed_gain())[0])) == sign
