@@ -132,10 +132,14 @@ class Term:
 
 @contextmanager
 def running(
-    root: Path, *options: str, home: Path, size: tuple[int, int] = (80, 24), **environment: str
+    root: Path,
+    *options: str,
+    home: Path,
+    size: tuple[int, int] = (80, 24),
+    environment: dict[str, str] | None = None,
 ) -> Iterator[Term]:
     """The app over a project, killed at the end where it still runs."""
-    term = Term(["open", str(root), *options], home, size, environment)
+    term = Term(["open", str(root), *options], home, size, environment or {})
     try:
         yield term
     finally:

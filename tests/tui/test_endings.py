@@ -163,7 +163,7 @@ def test_every_size_from_the_least_to_a_wall(root: Path, tmp_path: Path) -> None
 
 @pytest.mark.parametrize("name", ["xterm-256color", "screen", "tmux-256color", "vt220"])
 def test_terminals_of_every_kind(root: Path, tmp_path: Path, name: str) -> None:
-    with running(root, home=tmp_path, TERM=name) as term:
+    with running(root, home=tmp_path, environment={"TERM": name}) as term:
         term.until("bucket_buffer")
         term.keys("enter")
         term.until("Targets")
@@ -173,7 +173,7 @@ def test_terminals_of_every_kind(root: Path, tmp_path: Path, name: str) -> None:
 
 @pytest.mark.parametrize("environment", [{"NO_COLOR": "1"}, {"LANG": "C", "LC_ALL": "C"}])
 def test_no_colour_and_no_unicode(root: Path, tmp_path: Path, environment: dict[str, str]) -> None:
-    with running(root, home=tmp_path, **environment) as term:
+    with running(root, home=tmp_path, environment=environment) as term:
         term.until("bucket_buffer")
         term.keys("enter")
         term.until("Targets")
@@ -188,7 +188,7 @@ def test_no_colour_and_no_unicode(root: Path, tmp_path: Path, environment: dict[
 def test_a_terminal_that_cannot_is_refused_with_the_command_that_can(
     root: Path, tmp_path: Path, environment: dict[str, str]
 ) -> None:
-    with running(root, home=tmp_path, **environment) as term:
+    with running(root, home=tmp_path, environment=environment) as term:
         assert term.ended() == 2
         term.read()
         assert "biasbook review" in term.text
