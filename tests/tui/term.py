@@ -32,7 +32,7 @@ KEYS = {
     "backspace": "\x7f",
     "f1": "\x1bOP",
 }
-_PROGRAM = "import sys; from worksheet.cli.main import entry; sys.exit(entry())"
+PROGRAM = "import sys; from worksheet.cli.main import entry; sys.exit(entry())"
 _UNKNOWN = re.compile(
     rb"\x1b\[>[\d;]*[um]|\x1b\[<u|\x1b\[=\d*;?\d*u|\x1b\[\?[\d;]*\$p|\x1b\]\d+;[^\x07\x1b]*(\x07|\x1b\\)"
 )
@@ -55,7 +55,7 @@ class Term:
         if self.pid == 0:
             kept = {"PATH": os.environ["PATH"], "HOME": str(home), "LANG": "C.UTF-8", "TERM": "xterm-256color"}
             os.chdir(TOP)
-            os.execve(sys.executable, [sys.executable, "-c", _PROGRAM, *arguments], kept | environment)
+            os.execve(sys.executable, [sys.executable, "-c", PROGRAM, *arguments], kept | environment)
         self.before = termios.tcgetattr(self.descriptor)
         self.resize(size)
 

@@ -80,15 +80,15 @@ def test_a_hung_up_line_ends_it_where_the_signal_is_ignored(root: Path, tmp_path
     )
     import tests.tui.term as term_module
 
-    kept = term_module._PROGRAM
-    term_module._PROGRAM = code
+    kept = term_module.PROGRAM
+    term_module.PROGRAM = code
     try:
         term = Term(["open", str(root)], tmp_path, (80, 24), {})
         term.until("Rain gauge front end")
         os.close(term.descriptor)
         assert term.ended() == 128 + signal.SIGHUP
     finally:
-        term_module._PROGRAM = kept
+        term_module.PROGRAM = kept
 
 
 def test_a_line_that_nobody_reads_does_not_keep_it(root: Path, tmp_path: Path) -> None:
