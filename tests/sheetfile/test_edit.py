@@ -10,6 +10,7 @@ from tests.sheetfile.texts import PROCESS, PROJECT, SHEET
 from worksheet.sheetfile.document import WriteRefusedError
 from worksheet.sheetfile.edit import AddEntry, AddTable, Edit, RemoveKey, SetValue, apply
 from worksheet.sheetfile.read import parse_process, parse_project, parse_sheet
+from worksheet.sheetfile.source import Written
 
 MIXED = """\
 # a file that was written by hand
@@ -285,3 +286,21 @@ def test_the_project_file_takes_edits() -> None:
     assert problems == []
     assert project is not None
     assert project.budgets["power"] == 1e-3
+
+
+def test_a_long_note_of_many_lines_is_set_and_set_again_as_lines() -> None:
+    note = 'a line with "quotes" and a \\ in it\n' * 5_000 + '\u00b5\x7f"'
+    text = apply('notes = "short" # kept\n', [SetValue(("notes",), note)])
+    again = apply(text, [SetValue(("notes",), note + "!")])
+    assert tomllib.loads(again)["notes"] == note + "!"
+    assert again.endswith('!""" # kept\n')
+    assert apply('notes = "short"\n', [SetValue(("notes",), "one\ntwo")]) == 'notes = """\none\ntwo"""\n'
+
+
+def test_a_number_stays_as_it_was_typed() -> None:
+    edits = [
+        SetValue(("target", "figure", "min"), Written("1e11")),
+        SetValue(("target", "figure", "max"), Written(".5")),
+    ]
+    text = apply("[target]\nfigure = { min = 2e10, max = 3 }\n", edits)
+    assert text == "[target]\nfigure = { min = 1e11, max = 0.5 }\n"

@@ -21,6 +21,7 @@ from worksheet.model.text import nearest
 from worksheet.project import links
 from worksheet.session.edits import KeyPath, Piece, Put, TakeOut, value_at
 from worksheet.session.snapshot import Snapshot
+from worksheet.sheetfile.source import Written
 from worksheet.stages import catalogue
 from worksheet.stages.stage import Stage
 
@@ -216,7 +217,7 @@ def _number(key: Key, text: str) -> str | None:
 
 def _bare(text: str) -> int | float | None:
     try:
-        return int(text) if re.fullmatch(r"[-+]?[0-9]+", text) else float(text) if _is_float(text) else None
+        return int(text) if re.fullmatch(r"[-+]?[0-9]+", text) else Written(text) if _is_float(text) else None
     except ValueError:
         return None
 

@@ -6,7 +6,9 @@ the content that some files would have.
 
 from __future__ import annotations
 
+import contextlib
 from collections.abc import Callable, Mapping
+from functools import lru_cache
 from pathlib import Path
 from typing import Any, TypeVar
 
@@ -78,8 +80,9 @@ class FileReading(Reading):
         return self._shelf.parsed(shown, content, parse)
 
 
+@lru_cache(maxsize=8)
 def data_of(content: bytes, shown: str) -> dict[str, Any]:
-    """The plain TOML data of a file, values as typed; empty where it is no TOML."""
+    """The plain TOML data of a file, values as typed; empty where it is no TOML. To be read, not to be changed."""
     text = source.decode(content, shown)
     if isinstance(text, Problem):
         return {}
@@ -87,16 +90,19 @@ def data_of(content: bytes, shown: str) -> dict[str, Any]:
     return parsed.data if isinstance(parsed, source.Source) else {}
 
 
-def signature(root: Path) -> tuple[tuple[str, int, int, int], ...]:
-    """What tells quickly whether any file of a project may have changed: name, size, time and number of each."""
-    found = []
+Signature = Mapping[str, tuple[int, int, int]]
+"""What tells quickly whether a file may have changed: its size, time and number, by its path within the project."""
+
+
+def signature(root: Path) -> Signature:
+    """The signature of every file of a project."""
+    found = {}
     for path in [root / PROJECT_FILE, *_listed(root / PROCESSES), *_listed(root / SHEETS)]:
-        try:
+        with contextlib.suppress(OSError):
             status = path.stat()
-        except OSError:
-            continue
-        found.append((str(path), status.st_size, status.st_mtime_ns, status.st_ino))
-    return tuple(found)
+            shown = path.name if path.parent == root else f"{path.parent.name}/{path.name}"
+            found[shown] = (status.st_size, status.st_mtime_ns, status.st_ino)
+    return found
 
 
 def _listed(folder: Path) -> list[Path]:

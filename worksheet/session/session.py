@@ -29,11 +29,12 @@ from worksheet.session.edits import (
     value_at,
 )
 from worksheet.session.judging import formula_problems, new_problems, unused_names
-from worksheet.session.reading import FileReading, Shelf, signature
+from worksheet.session.reading import FileReading, Shelf, Signature, signature
 from worksheet.session.reviewing import Reviewing
 from worksheet.session.snapshot import Snapshot, file_of
 from worksheet.session.undoing import Step, moved_by, patch_of, step_back
 from worksheet.session.writing import Writer
+from worksheet.sheetfile import source
 
 READ_ONLY = "The book is opened for reading only."
 AWAY = "The project's folder is gone or cannot be reached; nothing is written until it is back."
@@ -84,7 +85,8 @@ class Session:
         self._reviewing = Reviewing()
         self._undo: list[Step] = []
         self._redo: list[Step] = []
-        self._signature: object = None
+        self._signature: Signature = {}
+        self._unsure: set[str] = set()
         self._snapshot = Snapshot(0, Project(root, None, None), {}, read_only=read_only)
         self._take_in()
 
@@ -106,15 +108,32 @@ class Session:
     def refresh(self, *, force: bool = False) -> bool:
         """Take in what others changed. Whether anything differs."""
         with self._lock:
-            if not force and self._signature is not None and signature(self.root) == self._signature:
+            if not force and self._as_left(signature(self.root)):
                 return False
             return self._take_in()
+
+    def _as_left(self, present: Signature) -> bool:
+        """Whether no file has changed, those that were just written compared by their bytes."""
+        if any(
+            self._signature.get(file) != present.get(file)
+            for file in self._signature.keys() | present.keys()
+            if file not in self._unsure
+        ):
+            return False
+        for file in self._unsure:
+            content = source.load(self.root / file, file)
+            if (None if isinstance(content, Problem) else content) != self._snapshot.contents.get(file):
+                return False
+        self._signature = present
+        self._unsure.clear()
+        return True
 
     def _take_in(self) -> bool:
         stamp = signature(self.root)
         reading = FileReading(self._shelf)
         project = load(self.root, reading)
         self._signature = stamp
+        self._unsure.clear()
         before = self._snapshot
         away = PROJECT_FILE in before.contents and not (self.root / PROJECT_FILE).exists()
         if away:  # a share that is gone, a branch that is being changed: the last state stays in sight
@@ -169,13 +188,13 @@ class Session:
             return Outcome(problems=(Problem("", None, "", READ_ONLY),))
         with self._lock:
             for _ in range(_TRIES):
-                self.refresh(force=self._signature is None)
+                self.refresh()
                 if self._snapshot.away:
                     return Outcome(problems=self._snapshot.project.problems[:1])
                 try:
                     return change()
                 except ChangedOnDiskError as error:
-                    self._signature = None
+                    self._signature = {}
                     said = str(error)
             return Outcome(problems=(Problem("", None, "", said),))
 
@@ -230,7 +249,7 @@ class Session:
             if wrong:
                 return Outcome(problems=tuple(wrong), unused=unused_names(wrong, request))
         stuck = self._writer.write(made)
-        self._signature = None  # others may have written meanwhile: the next look is a thorough one
+        self._unsure |= {change.file for change in made}  # others may have written them since
         if stuck:
             return Outcome(problems=stuck)
         self._show(replace(self._snapshot, project=project, contents=reading.contents))

@@ -175,10 +175,11 @@ def step_back(step: Step, snapshot: Snapshot) -> tuple[FileChange, ...]:
 def _put_back(title: str, content: bytes, moved: Sequence[Moved]) -> bytes:
     """A file that somebody else changed too, with some values put back that are still what the step left."""
     pieces: list[Piece] = []
+    arrays: dict[KeyPath, list[Any]] = {}
     data = data_of(content, moved[0].file)
     for one in moved:
         present = value_at(data, one.path)
-        entries = present if len(one.path) == 1 and _is_entries(present) else None
+        entries = arrays.setdefault(one.path, list(present)) if len(one.path) == 1 and _is_entries(present) else None
         if isinstance(one.old, dict) and len(one.path) == 1 and entries is not None and one.old in entries:
             number = entries.index(one.old)
             pieces.append(TakeOut((*one.path, number)))

@@ -6,14 +6,23 @@ before and after is the business of `edit`.
 
 from __future__ import annotations
 
+import re
 from collections.abc import Callable, Mapping
 from typing import Any
 
 import tomlkit
 
 from worksheet.sheetfile import inline, render
-from worksheet.sheetfile.locate import Statement, dotted, locate, split
+from worksheet.sheetfile.locate import BASIC, DOTTED, LITERAL, Statement, dotted, locate, split
 from worksheet.sheetfile.render import Stated
+
+_TEXT = re.compile(
+    rf"""(?P<before>[ \t]*+{DOTTED}[ \t]*+=[ \t]*+)
+        (?P<old>\"\"\"(?:[^"\\]|\\[\s\S]|"(?!""))*+\"{{3,5}}|'''(?:[^']|'(?!''))*+'{{3,5}}|{BASIC}(?!")|{LITERAL}(?!'))
+        (?P<after>[ \t]*+(?:\#[^\n]*+)?\r?\n?)""",
+    re.VERBOSE,
+)
+"""A statement whose value is a text."""
 
 KeyPath = tuple[str | int, ...]
 """Where something stands: table, key, key of an inline table; a number for an entry of a list."""
@@ -41,6 +50,10 @@ class Document:
 
     def replace(self, path: KeyPath, value: Stated) -> str:
         """Another value for what exists."""
+        (first, last, _, _), inside = self._statement(path)
+        text = _TEXT.fullmatch("".join(self.lines[first - 1 : last])) if not inside else None
+        if text is not None:  # tomlkit takes time that grows with the square of a long note
+            return self._with(first - 1, last, [text["before"] + render.like(text["old"], value) + text["after"]])
         return self._through_tomlkit(path, lambda old: render.like(old, value))
 
     def wrap(self, path: KeyPath, key: str, beside: Mapping[str, Any]) -> str:

@@ -11,10 +11,15 @@ from typing import Any
 import tomlkit
 
 from worksheet.sheetfile.locate import dotted
+from worksheet.sheetfile.source import Written
 
 Stated = str | int | float | bool | dt.date | Sequence[Any] | Mapping[str, Any]
 """What a key may be set to; a mapping is written as an inline table."""
 
+_ESCAPES = {"\b": "\\b", "\t": "\\t", "\n": "\\n", "\f": "\\f", "\r": "\\r", '"': '\\"', "\\": "\\\\"}
+_UNFIT = re.compile(r'[\x00-\x1f\x7f"\\]')
+_UNFIT_ON_LINES = re.compile(r'[\x00-\x08\x0b-\x1f\x7f\\]|"(?=""|"?\Z)')
+_NUMBER = re.compile(r"(?=[^.eE]*[.eE])[+-]?(?:0|[1-9][0-9]*)(?:\.[0-9]+)?(?:[eE][+-]?[0-9]+)?")
 _LITERAL = re.compile(r"[^'\x00-\x08\x0a-\x1f\x7f]*")
 _LINES = re.compile(r"[^\x00-\x08\x0b-\x1f\x7f]*")
 
@@ -44,12 +49,16 @@ def plain(value: Stated) -> Any:
 
 def flat(value: Stated) -> str:
     """The value on one line."""
-    value = plain(value)
-    if isinstance(value, dict):
+    single = plain(value)
+    if isinstance(value, Mapping):
         return "{ " + ", ".join(f"{dotted([key])} = {flat(inner)}" for key, inner in value.items()) + " }"
-    if isinstance(value, list):
+    if isinstance(value, str):
+        return f'"{_escaped(single, _UNFIT)}"'
+    if isinstance(value, Sequence):
         return "[" + ", ".join(map(flat, value)) + "]"
-    return str(tomlkit.item(value).as_string())
+    if isinstance(value, Written) and _NUMBER.fullmatch(value.text):
+        return value.text
+    return str(tomlkit.item(single).as_string())
 
 
 def stated(value: Stated) -> str:
@@ -75,11 +84,14 @@ def like(old: str, value: Stated) -> str:
         return _on_lines(value, first)
     if old.startswith("'") and _LITERAL.fullmatch(value):
         return f"'{value}'"
-    return flat(value)
+    return stated(value) if old.startswith(("'", '"')) else flat(value)
 
 
 def _on_lines(value: str, first: str) -> str:
     """Text of several lines between three quotes; `first` is a line feed after these that is no part of it."""
-    rest = value.lstrip("\n")
-    body = str(tomlkit.string(rest, multiline=True).as_string())[3:-3]
-    return f'"""{first}{value[: len(value) - len(rest)]}{body}"""'
+    return f'"""{first}{_escaped(value, _UNFIT_ON_LINES)}"""'
+
+
+def _escaped(value: str, unfit: re.Pattern[str]) -> str:
+    """Text with everything escaped that cannot stand between quotes, as TOML has it."""
+    return unfit.sub(lambda found: "".join(_ESCAPES.get(one, f"\\u{ord(one):04x}") for one in found[0]), value)

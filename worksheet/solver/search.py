@@ -20,6 +20,7 @@ _SCAN, _FINER, _LOCAL = 33, 8, 7
 _COARSE = {0: 1, 1: 41, 2: 13, 3: 9}
 _ZOOM_POINTS, _ZOOM_ROUNDS, _SHRINK = 5, 14, 0.5
 _BISECTIONS = 60
+_FARTHEST = 1e12
 _WIDE_FIRST, _WIDE_REST = 61, {1: 41, 2: 9}
 _CLIMB_ROUNDS, _CLIMB_SHRINK = 24, 0.6
 
@@ -118,7 +119,8 @@ class Search:
 
     def _grid(self, rest: Sequence[tuple[float, float]], count: int) -> Array:
         axes = [np.linspace(low, high, count) if high > low else np.array([low]) for low, high in rest]
-        return np.array(list(product(*axes))).reshape(-1, len(rest))
+        points = list(product(*axes))
+        return np.array(points).reshape(len(points), len(rest))
 
     def _best(
         self, places: Array, value: Callable[[Array, Array], Array], known: tuple[float, Array, float] | None
@@ -153,6 +155,7 @@ class Search:
         """Sample the first coordinate and interpolate: least feasible value, slack there, and the finer step."""
         samples = np.minimum(start[:, None] + step * np.arange(count), self._space.first[1])
         slack = self.slack(samples.reshape(-1), np.repeat(places, count, axis=0)).reshape(-1, len(places), count)
+        slack = np.clip(slack, -_FARTHEST, _FARTHEST)  # nothing can be interpolated towards infinity
         grid = np.linspace(0, count - 1, (count - 1) * _FINER + 1)
         base = np.minimum(grid.astype(int), count - 2)
         share = grid - base
