@@ -12,11 +12,14 @@ _NOUNS = {"bias_current": "current", "load_capacitance": "load", "inversion_coef
 
 @dataclass(frozen=True, slots=True)
 class Hold:
-    """One kind of level that is held: what it is called, the levels' keys, and whether the name is a plural."""
+    """One kind of level that is held: what it is called, the levels' keys, whether the name is a
+    plural, and the device that it is about ("" for all).
+    """
 
     name: str
     keys: frozenset[str]
     several: bool = False
+    device: str = ""
 
     def moving_with(self, unknown: str) -> str:
         """What holding it is called as a neglect."""
@@ -56,8 +59,9 @@ def corner_of_flicker() -> Hold:
 def inversions(circuit: Circuit) -> list[Hold]:
     """Inversion coefficients, the main device's last."""
     names = [d.name for d in circuit.devices if d.name != MAIN]
-    others = [Hold(f"inversion of {n}", _of_devices(circuit, ("inversion_coefficient",), n)) for n in names]
-    return [*others, Hold("inversion", _of_devices(circuit, ("inversion_coefficient",), MAIN))]
+    held = ("inversion_coefficient",)
+    others = [Hold(f"inversion of {n}", _of_devices(circuit, held, n), device=n) for n in names]
+    return [*others, Hold("inversion", _of_devices(circuit, held, MAIN), device=MAIN)]
 
 
 def drain_couplings(circuit: Circuit) -> Hold:
@@ -72,5 +76,13 @@ def ladder(circuit: Circuit) -> list[tuple[Hold, ...]]:
     *others, main = inversions(circuit)
     most = (*with_noise, *others, corner_of_flicker())
     sigma = drain_couplings(circuit)
-    steps = [base, with_noise, (*with_noise, *others), most, (*most, sigma), (*most, main), (couplings(circuit), main, *others)]
+    steps = [
+        base,
+        with_noise,
+        (*with_noise, *others),
+        most,
+        (*most, sigma),
+        (*most, main),
+        (couplings(circuit), main, *others),
+    ]
     return list(dict.fromkeys(steps))

@@ -1,9 +1,7 @@
 """A metric turned round: the formula of one unknown for a limit on the metric, found by sympy.
 
-The metric's definition is opened level by level until the unknown stands in it. Where it is reached through one
-level alone, the equation is solved for that level and goes on below it; where several lead to it they are opened,
-and in a transistor whose inversion moves everything is written in its charge, in which the long channel is rational.
-What is held on the way, and what is neglected, stands beside the formula.
+The whole metric is tried first; where that gives no short formula, neglects are made and levels held, from little to
+much, and those that make a difference stand beside the formula. Formulas are kept in memory.
 """
 
 from __future__ import annotations
@@ -14,23 +12,19 @@ from functools import lru_cache
 from typing import Any
 
 from worksheet.engine.symbolic.algebra import Algebra, Setting, of
-from worksheet.engine.symbolic.definition import Definition, Pick
 from worksheet.engine.symbolic.neglects import NEGLECTS
-from worksheet.solver import holds, solving
+from worksheet.engine.symbolic.vocabulary import PER_WIDTH
+from worksheet.solver import holds
 from worksheet.solver.holds import Hold
-from worksheet.solver.solving import Solutions
+from worksheet.solver.inversion_steps import INVERSION, Derivation
 from worksheet.stages.circuit import CAPACITANCES
-from worksheet.stages.stage import MAIN
+from worksheet.stages.stage import OUT, Transistor
 
-INVERSION = "main.inversion_coefficient"
 GEOMETRY, KEEP_INVERSION = "geometry", "inversion"
 
-_STEPS = 12
-_BRANCHES = 4
-_SMALL_ROOT = 12
+_MOST_TRIED = 14
 LONGEST = 45
 """Operations beyond which a formula is none that a designer writes."""
-
 
 
 @dataclass(frozen=True, eq=False)
@@ -42,7 +36,7 @@ class HandFormula:
         branches: Every solution that may be physical, as sympy expressions in levels and in `shorthand`.
         shorthand: For each branch the symbol that it is written in and what that stands for, or None.
         neglects: Names of the neglects that made a difference.
-        held: Names of what is held although it moves with the unknown.
+        held: What is held although it moves with the unknown.
         dropped: Solutions left out, with the reason.
         algebra: The levels that it is written in.
     """
@@ -53,7 +47,7 @@ class HandFormula:
     branches: tuple[Any, ...]
     shorthand: tuple[tuple[Any, Any] | None, ...]
     neglects: tuple[str, ...]
-    held: tuple[str, ...]
+    held: tuple[Hold, ...]
     dropped: tuple[str, ...]
     algebra: Algebra
 
@@ -66,171 +60,6 @@ class HandFormula:
         """A branch without its shorthand."""
         short = self.shorthand[branch]
         return self.branches[branch] if short is None else self.branches[branch].xreplace({short[0]: short[1]})
-
-
-@dataclass(frozen=True, eq=False)
-class _Branch:
-    """A formula under way: the unknown's expression, its shorthand, and what was held."""
-
-    expression: Any
-    shorthand: tuple[Any, Any] | None
-
-    @property
-    def operations(self) -> int:
-        """How long it is."""
-        import sympy
-
-        short = 0 if self.shorthand is None else sympy.count_ops(self.shorthand[1])
-        return int(sympy.count_ops(self.expression) + short)
-
-
-class Derivation:
-    """One attempt to invert a metric, with given neglects and holds."""
-
-    def __init__(self, a: Algebra, unknown: str, held: tuple[Hold, ...]) -> None:
-        """Take the algebra and what is held.
-
-        Args:
-            a: The algebra, its neglects made.
-            unknown: Key of the level that is sought.
-            held: What stays although it moves with the unknown.
-        """
-        import sympy
-
-        self._a = a
-        self._unknown = unknown
-        self._held = frozenset(key for hold in held for key in hold.keys)
-        self._short = sympy.Symbol("y", positive=True)
-        self.dropped: list[str] = []
-        self.met: set[str] = set()
-
-    def of(self, found: Definition, limit: Any) -> list[_Branch]:
-        """All ways in which a metric's definition gives the unknown for a limit."""
-        if found.expression is None:
-            return []
-        if found.root is None:
-            return self._go(found.expression, limit, _STEPS)
-        if found.root.pick not in (Pick.LOWEST_POSITIVE, Pick.SLOWEST):
-            return []
-        at = solving.solve(found.expression, limit, found.root.unknown).values
-        if found.root.pick is Pick.SLOWEST:
-            at = tuple(-abs(x) for x in at[:1])
-        branches: list[_Branch] = []
-        for place in at:
-            equation = (found.root.left - found.root.right).xreplace({found.root.unknown: place})
-            branches += self._go(equation, 0, _STEPS)
-        return branches
-
-    def _moving(self, expression: Any) -> list[str]:
-        """Levels in an expression that move with the unknown; what is held is noted."""
-        moving = []
-        for symbol in sorted(expression.free_symbols, key=lambda s: s.name):
-            key = self._a.key(symbol)
-            if key is None or not self._a.depends(key, self._unknown):
-                continue
-            self.met |= self._a.touched(key, self._unknown, self._held)
-            if self._a.depends(key, self._unknown, self._held):
-                moving.append(key)
-        return moving
-
-    def _go(self, expression: Any, value: Any, steps: int) -> list[_Branch]:
-        """Solve expression = value for the unknown."""
-        import sympy
-
-        moving = self._moving(expression)
-        if not moving or steps == 0 or sympy.count_ops(expression) > solving.LARGEST:
-            return []
-        if moving == [self._unknown]:
-            solved = self._solve(expression, value, self._a.symbol(self._unknown))
-            direct = [_Branch(v, None) for v in solved]
-            by_charge = self._by_charge(MAIN, expression, value) if self._unknown == INVERSION else []
-            return min((way for way in (direct, by_charge) if way), key=_length, default=[])
-        if len(moving) == 1:
-            return self._below(moving[0], expression, value, steps)
-        inner = {key: self._a.definition(key) for key in moving if key != self._unknown}
-        charges = {key for key in inner if key.endswith((".charge", ".inversion_coefficient"))}
-        opened = {k: d for k, d in inner.items() if k not in charges}
-        if any(d is None or d.root is not None or d.expression is None for d in opened.values()):
-            return []
-        if opened:
-            written = {self._a.symbol(k): d.expression for k, d in opened.items() if d is not None}
-            return self._go(expression.xreplace(written), value, steps - 1)
-        owners = {key.partition(".")[0] for key in charges}
-        return self._by_charge(owners.pop(), expression, value) if len(owners) == 1 else []
-
-    def _below(self, key: str, expression: Any, value: Any, steps: int) -> list[_Branch]:
-        """Solve for the one level that leads to the unknown, and go on with its definition."""
-        if key.endswith(".charge"):
-            return self._by_charge(key.partition(".")[0], expression, value)
-        found = self._a.definition(key)
-        if key.endswith(".inversion_coefficient") and expression != self._a.symbol(key):
-            branches = self._by_charge(key.partition(".")[0], expression, value)
-            if branches:
-                return branches
-        if found is None or found.expression is None or found.root is not None:
-            return []
-        if self._a.alias(key) == self._unknown or found.expression.is_Symbol:
-            return self._go(expression.xreplace({self._a.symbol(key): found.expression}), value, steps - 1)
-        branches = []
-        for inner in self._solve(expression, value, self._a.symbol(key)):
-            branches += self._go(found.expression, inner, steps - 1)
-        if branches:
-            return branches
-        return self._go(expression.xreplace({self._a.symbol(key): found.expression}), value, steps - 1)
-
-    def _by_charge(self, device: str, expression: Any, value: Any) -> list[_Branch]:
-        """Write everything in a device's charge, solve for it, and give the unknown by it."""
-        q, inversion = (self._a.symbol(f"{device}.{name}") for name in ("charge", "inversion_coefficient"))
-        law = self._a.definition(f"{device}.charge")
-        assert law is not None
-        if len(self._moving(law.expression)) > 1:
-            return []  # velocity saturation moves with the length
-        of_charge = solving.solve(law.expression, q, inversion).values
-        by_inversion = self._unknown_by(device)
-        if len(of_charge) != 1 or by_inversion is None:
-            return []
-        squares = of_charge[0].expand()
-        sought = by_inversion.xreplace({inversion: squares})
-        unknown = self._a.symbol(self._unknown)
-        written = _in_charge(expression, inversion, squares).xreplace({unknown: sought})
-        solved = self._solve(written, value, q)
-        return [_Branch(by_inversion.xreplace({inversion: squares.xreplace({q: self._short})}), (self._short, s)) for s in solved]
-
-    def _unknown_by(self, device: str) -> Any:
-        """The unknown as an expression in a device's inversion coefficient; None where there is no short one."""
-        inversion = self._a.symbol(f"{device}.inversion_coefficient")
-        found = self._a.definition(f"{device}.inversion_coefficient")
-        if found is None:
-            return inversion if self._unknown == f"{device}.inversion_coefficient" else None
-        expression = found.expression
-        for _ in range(_STEPS):
-            moving = [k for k in self._moving(expression) if k != self._unknown]
-            if not moving:
-                break
-            parts = {key: self._a.definition(key) for key in moving}
-            expression = expression.xreplace({self._a.symbol(k): d.expression for k, d in parts.items() if d is not None})
-        solved = solving.solve(expression, inversion, self._a.symbol(self._unknown)).values
-        return solved[0] if len(solved) == 1 else None
-
-    def _solve(self, expression: Any, value: Any, symbol: Any) -> tuple[Any, ...]:
-        found: Solutions = solving.solve(expression, value, symbol)
-        self.dropped += [d for d in found.dropped if d not in self.dropped]
-        return found.values[:_BRANCHES]
-
-
-def _length(branches: list[_Branch]) -> int:
-    return max(branch.operations for branch in branches)
-
-
-def _in_charge(expression: Any, inversion: Any, squares: Any) -> Any:
-    """An expression with the inversion coefficient written in the charge, in which its roots are whole."""
-    import sympy
-
-    half = sympy.Rational(1, 2)
-    roots = {p for p in expression.atoms(sympy.Pow) if abs(p.exp) == half and p.base.has(inversion)}
-    small = {p for p in roots if sympy.count_ops(p.base) <= _SMALL_ROOT}
-    written = {p: sympy.sqrt(sympy.factor(p.base.xreplace({inversion: squares}))) ** (2 * p.exp) for p in small}
-    return expression.xreplace(written).xreplace({inversion: squares})
 
 
 _KNOWN: dict[tuple[Any, ...], HandFormula | None] = {}
@@ -253,7 +82,7 @@ def hand_formula(
         unknown: Key of the unknown: a design variable, "inversion_coefficient", or an assumption.
         keep: For the bias current: "geometry", or "inversion" where the width goes with it.
         neglects: What is small enough to be neglected; everything where None. frozenset() asks for the exact form.
-        moving_parasitics: With the inversion kept: whether the node's parasitics go with the width.
+        moving_parasitics: Whether a device's capacitances go with its width, where that is the unknown or follows it.
     Returns: HandFormula, None where the metric does not depend on the unknown or has no short formula
     """
     known = (setting, metric, unknown, keep, neglects, moving_parasitics)
@@ -274,10 +103,15 @@ def _found(
     if exact is not None or neglects == frozenset():
         return exact
     names = frozenset(n.name for n in NEGLECTS) if neglects is None else neglects
+    tried = 0
     for made in _restored(frozenset(relevant(setting, metric, names))):
+        a = algebra_for(setting.neglecting(made), unknown, keep, moving)
         for held in holds.ladder(setting.circuit):
+            if not a.depends(metric, _key(unknown), frozenset(k for h in held for k in h.keys)):
+                continue
             found = _attempt(setting, metric, unknown, keep, made, held, moving)
-            if found is not None:
+            tried += 1
+            if found is not None or tried == _MOST_TRIED:
                 return found
     return None
 
@@ -309,7 +143,7 @@ def _attempt(
 
     a = algebra_for(setting.neglecting(made), unknown, keep, moving)
     found = a.definition(metric)
-    if found is None or not a.depends(metric, _key(unknown), frozenset(k for h in held for k in h.keys)):
+    if found is None:
         return None
     limit = sympy.Symbol(metric, **({"positive": True} if a.word(metric).positive else {"real": True}))
     derivation = Derivation(a, _key(unknown), held)
@@ -317,6 +151,10 @@ def _attempt(
     if not branches:
         return None
     kept = [hold for hold in held if hold.keys & derivation.met]
+    if moving and keep != KEEP_INVERSION:
+        kept += [
+            h for h in holds.inversions(a.circuit) if h not in kept and f"{h.device}.width_capacitance" in a.stated
+        ]
     return HandFormula(
         metric,
         unknown,
@@ -324,7 +162,7 @@ def _attempt(
         tuple(b.expression for b in branches),
         tuple(b.shorthand for b in branches),
         _reported(setting, metric, made),
-        tuple(hold.moving_with(unknown) for hold in kept),
+        tuple(kept),
         tuple(derivation.dropped),
         a,
     )
@@ -335,30 +173,40 @@ _ALGEBRAS: dict[tuple[Any, ...], Algebra] = {}
 
 def algebra_for(setting: Setting, unknown: str, keep: str, moving_parasitics: bool) -> Algebra:
     """The algebra in which an unknown is sought: what follows it is defined by it."""
-    if keep != KEEP_INVERSION and unknown != "inversion_coefficient":
+    inverted = keep == KEEP_INVERSION or unknown == "inversion_coefficient"
+    wide = next((d for d in setting.circuit.devices if d.key("width") == unknown), None)
+    if inverted:
+        wide = setting.circuit.stage.transistors[0]
+    if not inverted and not (moving_parasitics and wide is not None):
         return of(setting)
-    known = (setting, moving_parasitics)
+    known = (setting, inverted, wide if moving_parasitics else None)
     if known not in _ALGEBRAS:
         if len(_ALGEBRAS) > _MOST_KNOWN:
             _ALGEBRAS.clear()
-        _ALGEBRAS[known] = Algebra(setting, _kept_inversion(moving_parasitics))
+        _ALGEBRAS[known] = Algebra(setting, _followed(*known[1:]))
     return _ALGEBRAS[known]
 
 
-def _kept_inversion(moving_parasitics: bool) -> Any:
-    """Definitions where the inversion is stated: the width follows current and inversion."""
+def _followed(inverted: bool, wide: Transistor | None) -> Any:
+    """Definitions of what follows: the width a stated inversion and current, a device's capacitances its width."""
 
     def stated(a: Algebra) -> Mapping[str, Any]:
-        main = a.circuit.stage.transistors[0]
-        inversion, width = a.of(main, "inversion_coefficient"), a.symbol("width")
-        by_inversion = a.symbol("current") * a.symbol("length") / (a.of(main, "square_current") * inversion)
-        definitions = {INVERSION: None, "width": by_inversion}
-        if moving_parasitics:
-            node = a.network.node_capacitance("out")
-            own = [a.of(main, name) for name, _, _ in CAPACITANCES if node.has(a.of(main, name))]
-            rest = node.xreplace({symbol: 0 for symbol in own})
-            definitions[f"{MAIN}.width_capacitance"] = None
-            definitions["output_capacitance"] = rest + a.of(main, "width_capacitance") * width
+        definitions: dict[str, Any] = {}
+        if inverted:
+            main = a.circuit.stage.transistors[0]
+            square = a.of(main, "square_current") * a.of(main, "inversion_coefficient")
+            definitions = {INVERSION: None, "width": a.symbol("current") * a.symbol("length") / square}
+        if wide is not None:
+            node, width = a.network.node_capacitance(OUT), a.of(wide, "width")
+            own = [a.of(wide, name) for name, _, _ in CAPACITANCES]
+            rest = node.xreplace(dict.fromkeys(own, 0))
+            definitions[f"{wide.name}.width_capacitance"] = None
+            if rest != node:
+                definitions["output_capacitance"] = rest + a.of(wide, "width_capacitance") * width
+            for name, _, _ in CAPACITANCES:
+                per_width = f"{wide.name}.{name}{PER_WIDTH}"
+                definitions[per_width] = None
+                definitions[f"{wide.name}.{name}"] = a.symbol(per_width) * width
         return definitions
 
     return stated

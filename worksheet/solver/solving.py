@@ -71,17 +71,13 @@ def _joined(found: list[Solutions]) -> Solutions:
 
 
 def _without_root(expression: Any, value: Any, symbol: Any, roots: set[Any]) -> Solutions:
-    """Solve for the one square root that holds the symbol, then for the symbol in what stands under it."""
+    """Solve for the square root that holds the symbol, then for the symbol in what stands under it."""
     import sympy
 
     bases = {p.base for p in roots}
     if len(bases) != 1:
         return _squared(expression, value, symbol)
     base = bases.pop()
-    perfect = sympy.sqrt(sympy.factor(base) if sympy.count_ops(base) <= _SHAPE else base)
-    if not any(p.base.has(symbol) for p in perfect.atoms(sympy.Pow) if not p.exp.is_integer):
-        plain = expression.xreplace({p: perfect if p.exp == _half() else 1 / perfect for p in roots})
-        return solve(plain, value, symbol)
     stands = sympy.Dummy("root", positive=True)
     rest = expression.xreplace({p: stands if p.exp == _half() else 1 / stands for p in roots})
     if rest.has(symbol):
@@ -119,12 +115,15 @@ def _rational(equation: Any, symbol: Any) -> list[Any] | None:
         return [_tidy(-coefficients[1] / coefficients[0])]
     if all(c == 0 for c in coefficients[1 : degree - lowest]):
         ratio = _tidy(-coefficients[degree - lowest] / coefficients[0])
-        return [sympy.root(ratio, degree - lowest), *([-sympy.sqrt(ratio)] if degree - lowest == _HIGHEST_DEGREE else [])]
+        return [
+            sympy.root(ratio, degree - lowest),
+            *([-sympy.sqrt(ratio)] if degree - lowest == _HIGHEST_DEGREE else []),
+        ]
     if degree - lowest > _HIGHEST_DEGREE:
         return []
     if sum(sympy.count_ops(c) for c in coefficients[:3]) > _SMALL:
         return []
-    return [_tidy(r) for r in sympy.polys.polyroots.roots_quadratic(sympy.Poly(coefficients[:3], symbol))]
+    return list(sympy.polys.polyroots.roots_quadratic(sympy.Poly(coefficients[:3], symbol)))
 
 
 def _tidy(expression: Any) -> Any:
@@ -156,7 +155,7 @@ def _unrooted(expression: Any) -> Any:
 
 
 def _general(expression: Any, value: Any, symbol: Any) -> list[Any]:
-    """Solutions by sympy's general solver of the equation's bare shape, everything without the symbol being one letter."""
+    """Solutions by sympy's general solver of the equation's bare shape, what is without the symbol being letters."""
     import sympy
 
     letters: dict[Any, Any] = {}
@@ -216,9 +215,17 @@ def _shape(expression: Any, symbol: Any, letters: dict[Any, Any]) -> Any:
 
 
 def _physical(found: list[Any], symbol: Any) -> Solutions:
+    import sympy
+
     if not symbol.is_positive:
         return Solutions(tuple(found))
-    kept = [f for f in found if not f.is_nonpositive and f.is_real is not False]
-    dropped = [f"{symbol.name} would be negative" for f in found if f.is_nonpositive]
-    dropped += [f"{symbol.name} would not be real" for f in found if f.is_real is False and not f.is_nonpositive]
+    kept, dropped = [], []
+    for solution in found:
+        short = sympy.count_ops(solution) <= _SMALL  # of a long one sympy would search long for its sign
+        if short and solution.is_nonpositive:
+            dropped.append(f"{symbol.name} would be negative")
+        elif short and solution.is_real is False:
+            dropped.append(f"{symbol.name} would not be real")
+        else:
+            kept.append(solution)
     return Solutions(tuple(kept), tuple(dropped))

@@ -74,7 +74,7 @@ class Stage:
     transistors: tuple[Transistor, ...]
     levels: tuple[str, ...]
     one_level: bool = False
-    undefined: Mapping[str, str] = field(default_factory=lambda: MappingProxyType({}))
+    undefined: Mapping[str, str] = field(default_factory=lambda: MappingProxyType({}), hash=False)
 
     @property
     def drive(self) -> str:

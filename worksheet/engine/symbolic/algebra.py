@@ -61,7 +61,8 @@ class Algebra:
         self._symbols: dict[str, Any] = {}
         self._keys: dict[Any, str] = {}
         self._definitions: dict[str, Definition | None] = {}
-        for key, expression in (stated(self) if stated is not None else {}).items():
+        self.stated: Mapping[str, Any] = stated(self) if stated is not None else {}
+        for key, expression in self.stated.items():
             self._definitions[key] = None if expression is None else Definition(key, expression)
 
     @cached_property
@@ -227,8 +228,8 @@ class Algebra:
         parts = [found.expression, found.holds]
         if found.root is not None:
             parts += [found.root.left, found.root.right]
-        keys = {self.key(s) for part in parts if part is not None for s in part.free_symbols}
-        return tuple(sorted((k for k in keys if k is not None), key=lambda k: self.word(k).symbol))
+        symbols = {s for part in parts if part is not None for s in part.free_symbols if s in self._keys}
+        return tuple(self._keys[s] for s in sorted(symbols, key=lambda s: s.name))
 
 
 def neutral(key: str) -> int:

@@ -127,11 +127,9 @@ class SymbolicSolution:
 
     def _static(self, top: Any, bottom: Any) -> Any:
         """A ratio at zero frequency, common factors taken out."""
-        import sympy
-
         if bottom == 0:
             return Definition("", None, missing=Reason.UNLIMITED)
-        return sympy.factor_terms(sympy.cancel(top / bottom)) if len(self.network.nodes) > 1 else top / bottom
+        return _reduced(top, bottom) if len(self.network.nodes) > 1 else top / bottom
 
     def signed_gain(self) -> Any:
         """H(0) with its sign. [V/V]"""
@@ -277,6 +275,13 @@ class SymbolicSolution:
         f = sympy.Symbol("f", positive=True)
         flicker = sum(s.referred * s.flicker * f**-s.exponent for s in loud)
         return Definition("", f, Root(f, flicker, white, Pick.ONLY))
+
+
+@lru_cache(maxsize=1024)
+def _reduced(top: Any, bottom: Any) -> Any:
+    import sympy
+
+    return sympy.factor_terms(sympy.cancel(top / bottom))
 
 
 def _coefficients(letter: str, count: int) -> tuple[Any, ...]:

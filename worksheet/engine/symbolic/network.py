@@ -96,34 +96,27 @@ class Network:
     def _matrix(self) -> Any:
         import sympy
 
-        return sympy.Matrix(
+        return sympy.ImmutableMatrix(
             [
                 [self._sums.get((r, c), (0, 0))[0] + self._s * self._dynamic(r, c) for c in self.nodes]
                 for r in self.nodes
             ]
         )
 
-    def _coefficients(self, expression: Any) -> Coefficients:
-        """Coefficients of s, in each only the leading power of the drain conductances where they are small."""
-        import sympy
-
-        powers = sympy.Poly(sympy.expand(expression), self._s).all_coeffs()[::-1]
-        if DRAIN_CONDUCTANCE in self._made:
-            powers = [_leading(c, self._small) for c in powers]
-        return [sympy.factor_terms(c) for c in powers]
+    def _determinant(self, matrix: Any) -> Coefficients:
+        small = self._small if DRAIN_CONDUCTANCE in self._made else None
+        return list(_determinant(matrix, self._s, small))
 
     def _numerator(self, right: Mapping[str, Any]) -> Coefficients:
         import sympy
 
-        matrix = self._matrix.copy()
-        for row, node in enumerate(self.nodes):
-            matrix[row, len(self.nodes) - 1] = right.get(node, sympy.S.Zero)
-        return self._coefficients(matrix.det(method="berkowitz"))
+        column = sympy.Matrix([right.get(node, sympy.S.Zero) for node in self.nodes])
+        return self._determinant(sympy.ImmutableMatrix(self._matrix[:, :-1]).row_join(column))
 
     @cached_property
     def exact_denominator(self) -> Coefficients:
         """Coefficients of det(G + sC), no pole neglected."""
-        return self._coefficients(self._matrix.det(method="berkowitz"))
+        return self._determinant(self._matrix)
 
     @cached_property
     def denominator(self) -> Coefficients:
@@ -212,6 +205,17 @@ class Network:
         if index >= len(coefficients):
             raise KeyError(key)
         return coefficients[index]
+
+
+@lru_cache(maxsize=4096)
+def _determinant(matrix: Any, s: Any, small: Any) -> tuple[Any, ...]:
+    """Coefficients of s in a determinant, in each only the leading power of what is small, if anything is."""
+    import sympy
+
+    powers = sympy.Poly(sympy.expand(matrix.det(method="berkowitz")), s).all_coeffs()[::-1]
+    if small is not None:
+        powers = [_leading(c, small) for c in powers]
+    return tuple(sympy.factor_terms(c) for c in powers)
 
 
 def _ratio(top: Any, bottom: Any) -> Any:

@@ -24,26 +24,30 @@ Leaf = Callable[[str], float]
 class Point:
     """An algebra at one condition."""
 
-    def __init__(self, algebra: Algebra, leaf: Leaf, nominal: Point | None = None) -> None:
+    def __init__(
+        self, algebra: Algebra, leaf: Leaf, nominal: Point | None = None, held: Mapping[str, float] | None = None
+    ) -> None:
         """Take the numbers; nothing is evaluated yet.
 
         Args:
             algebra: What to evaluate.
             leaf: Gives the numbers that are stated.
             nominal: The nominal condition, where levels that are held were found; None where this is it.
+            held: Numbers of levels that are not evaluated, by key. [unit of the level]
         """
         self.algebra = algebra
         self.nominal = nominal
         self._leaf = leaf
         self._known: dict[str, Any] = {}
+        for key, value in (held or {}).items():
+            self._known[canonical(algebra.circuit, key)] = _float(value)
 
     def number(self, key: str) -> float | None:
         """The number of a level, None where it has none. [unit of the level]"""
-        return real(self._exact(key))
+        return real(self.exact(key))
 
-    def _exact(self, key: str) -> Any:
-        import sympy
-
+    def exact(self, key: str) -> Any:
+        """The number of a level to twenty digits, a sympy number; None where it has none. [unit of the level]"""
         key = canonical(self.algebra.circuit, key)
         if key not in self._known:
             found = self.algebra.definition(key)
@@ -51,9 +55,9 @@ class Point:
                 self._known[key] = self._defined(found)
             elif key.endswith(AT_NOMINAL):
                 assert self.nominal is not None  # held levels belong to other conditions
-                self._known[key] = self.nominal._exact(key.removesuffix(AT_NOMINAL))
+                self._known[key] = self.nominal.exact(key.removesuffix(AT_NOMINAL))
             else:
-                self._known[key] = sympy.Float(self._leaf(key), DIGITS + 5)
+                self._known[key] = _float(self._leaf(key))
         return self._known[key]
 
     def _defined(self, found: Definition) -> Any:
@@ -63,7 +67,7 @@ class Point:
             return None
         values = {}
         for key in self.algebra.inputs(found):
-            value = self._exact(key)
+            value = self.exact(key)
             if value is None:
                 return None
             values[self.algebra.symbol(key)] = value
@@ -77,7 +81,7 @@ class Point:
         for symbol in expression.free_symbols:
             key = self.algebra.key(symbol)
             if key is not None:
-                values[symbol] = self._exact(key)
+                values[symbol] = self.exact(key)
         if any(v is None for v in values.values()):
             return None
         return real(evaluated(expression, None, values))
@@ -107,6 +111,12 @@ def evaluated(expression: Any, root: Root | None, values: Mapping[Any, Any]) -> 
         return _greatest(expression.xreplace(dict(values)), root.unknown, roots)
     chosen = _chosen(roots, root.pick)
     return None if chosen is None else _number(expression, {**values, root.unknown: chosen})
+
+
+def _float(value: float) -> Any:
+    import sympy
+
+    return sympy.Float(value, DIGITS + 5)
 
 
 def _number(expression: Any, values: Mapping[Any, Any]) -> Any:
@@ -216,3 +226,8 @@ def _last(root: Root, values: Mapping[Any, Any]) -> float | None:
                 low, high = (middle, high) if excess(middle) > 0 else (low, middle)
             return 0.5 * (low + high)
     return 0.0
+
+
+def evaluated_float(expression: Any, numbers: Mapping[Any, float]) -> float | None:
+    """An expression on numbers by symbol, None where it has no real one."""
+    return real(evaluated(expression, None, {symbol: _float(value) for symbol, value in numbers.items()}))

@@ -3,7 +3,7 @@
 Keys: a sheet's own names ("bias_current", "cascode_width", "supply"); "DEVICE.VALUE" for an operating-point value or
 a law of one transistor; "DEVICE.process.PARAMETER" and "DEVICE.corner.CHANGE"; "bias.output_conductance" and
 "bias.capacitance" of an ideal source; a metric's key; and the levels of the circuit listed here. "KEY@nominal" is a
-level that was found at the nominal condition and held.
+level that was found at the nominal condition and held, "KEY/width" one per metre of its device's width.
 """
 
 from __future__ import annotations
@@ -18,7 +18,7 @@ from worksheet.model.sheet_keys import ASSUMPTIONS, BIAS_KEYS, DESIGN
 from worksheet.stages.circuit import Circuit
 from worksheet.stages.stage import MAIN
 
-AT_NOMINAL = "@nominal"
+AT_NOMINAL, PER_WIDTH = "@nominal", "/width"
 
 
 @dataclass(frozen=True, slots=True)
@@ -133,6 +133,9 @@ def word(circuit: Circuit, key: str) -> Word:
         plain = word(circuit, key.removesuffix(AT_NOMINAL))
         title = f"{plain.title}, found at the nominal condition"
         return replace(plain, key=key, symbol=f"{plain.symbol}_n", title=title)
+    if key.endswith(PER_WIDTH):
+        plain = word(circuit, key.removesuffix(PER_WIDTH))
+        return replace(plain, key=key, symbol=f"{plain.symbol}W", title=f"{plain.title} per metre of width", unit="F/m")
     found = _circuit(key) or _described(circuit, key) or _device(circuit, key)
     if found is None:
         raise KeyError(key)
