@@ -289,7 +289,7 @@ def test_the_project_file_takes_edits() -> None:
 
 
 def test_a_long_note_of_many_lines_is_set_and_set_again_as_lines() -> None:
-    note = 'a line with "quotes" and a \\ in it\n' * 5_000 + '\u00b5\x7f"'
+    note = 'a line with "quotes" and a \\ in it\n' * 5_000 + 'µ"'
     text = apply('notes = "short" # kept\n', [SetValue(("notes",), note)])
     again = apply(text, [SetValue(("notes",), note + "!")])
     assert tomllib.loads(again)["notes"] == note + "!"
