@@ -32,6 +32,7 @@ from worksheet.session.judging import formula_problems, new_problems, unused_nam
 from worksheet.session.reading import FileReading, Shelf, Signature, signature
 from worksheet.session.reviewing import Reviewing
 from worksheet.session.snapshot import Snapshot, file_of
+from worksheet.session.turns import turn
 from worksheet.session.undoing import Step, moved_by, patch_of, step_back
 from worksheet.session.writing import Writer
 from worksheet.sheetfile import source
@@ -186,7 +187,7 @@ class Session:
 
         if self._read_only:
             return Outcome(problems=(Problem("", None, "", READ_ONLY),))
-        with self._lock:
+        with self._lock, turn(self.root):
             for _ in range(_TRIES):
                 self.refresh()
                 if self._snapshot.away:
@@ -222,6 +223,14 @@ class Session:
             target.append(Step(step.title, tuple(map(patch_of, made)), step.moved))
             self._show(self._snapshot)
         return outcome
+
+    def copy_to(self, folder: Path) -> tuple[Problem, ...]:
+        """Write the files as they were last seen into another folder; what stands there already stays.
+
+        Returns: what could not be written.
+        """
+        made = [FileChange(file, None, content) for file, content in self.snapshot().contents.items()]
+        return Writer(folder).write(made)
 
     # How it is done
 

@@ -29,6 +29,7 @@ from worksheet.session.reading import data_of
 from worksheet.session.snapshot import Snapshot
 from worksheet.sheetfile.locate import dotted
 
+_EITHER: dict[str | int, str] = {"value": "formula", "formula": "value"}
 _LARGEST = 4_000
 """Most characters of values that a step keeps beside its bytes."""
 
@@ -120,12 +121,13 @@ def _same(one: bytes, other: bytes, most: int) -> int:
 def moved_by(made: Sequence[FileChange]) -> tuple[Moved, ...]:
     """The values that a change moves, for a way back that other people's changes beside them do not bar.
 
-    None at all where files come or go, or where a text is too long to be kept twice: then every byte goes back or none.
+    None of files that come or go, and none at all where a text is too long to be kept twice: then every byte goes back
+    or none.
     """
     found: list[Moved] = []
     for change in made:
         if change.before is None or change.after is None:
-            return ()
+            continue
         before, after = data_of(change.before, change.file), data_of(change.after, change.file)
         found += _differences(change.file, (), before, after)
     return () if sum(len(repr(one.old)) + len(repr(one.new)) for one in found) > _LARGEST else tuple(found)
@@ -190,7 +192,19 @@ def _put_back(title: str, content: bytes, moved: Sequence[Moved]) -> bytes:
             raise RefusedError("", f"{title}: {clean(dotted(one.path))} was changed by something else since.")
         else:
             pieces += _stated(one.path, present, one.new)
-    return changed_content(content, pieces)
+    return changed_content(content, _swapped(pieces))
+
+
+def _swapped(pieces: list[Piece]) -> list[Piece]:
+    """A value that takes a formula's place, or the other way round, does so where it stands."""
+    coming = {piece.path for piece in pieces if isinstance(piece, Put)}
+    return [
+        piece
+        for piece in pieces
+        if not isinstance(piece, TakeOut)
+        or piece.path[-1] not in _EITHER
+        or (*piece.path[:-1], _EITHER[piece.path[-1]]) not in coming
+    ]
 
 
 def _stated(path: KeyPath, present: Any, value: Any) -> list[Piece]:
