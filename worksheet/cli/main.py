@@ -26,7 +26,9 @@ class _Parser(argparse.ArgumentParser):
         raise _UsageError(f"{message} (see {self.prog} --help)")
 
 
-def _parser() -> argparse.ArgumentParser:
+def _parser(arguments: Sequence[str]) -> argparse.ArgumentParser:
+    """The parser; where the command is named, of that command alone, so that no other has to be loaded."""
+    names = arguments[:1] if arguments and arguments[0] in COMMANDS else COMMANDS
     parser = _Parser(
         prog="biasbook",
         description="Calculation sheets for analog stages: what is needed, what is achieved, what binds.",
@@ -34,7 +36,7 @@ def _parser() -> argparse.ArgumentParser:
     parser.add_argument("--version", action="version", version=f"biasbook {__version__}")
     parser.set_defaults(command=_no_command)
     subparsers = parser.add_subparsers(title="commands", metavar="COMMAND", parser_class=_Parser)
-    for name in COMMANDS:
+    for name in names:
         import_module(f"worksheet.cli.commands.{name}").add(subparsers)
     return parser
 
@@ -56,7 +58,7 @@ def main(argv: Sequence[str] | None = None) -> int:
     arguments = list(sys.argv[1:] if argv is None else argv)
     output = Output("--json" in arguments)
     try:
-        parsed = _parser().parse_args(arguments)
+        parsed = _parser(arguments).parse_args(arguments)
         status: int = parsed.command(parsed, output)
     except _UsageError as usage:
         return _bad_usage(str(usage), output)

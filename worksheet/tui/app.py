@@ -3,9 +3,9 @@
 from __future__ import annotations
 
 import threading
-from collections.abc import Mapping, Sequence
+from collections.abc import Callable, Mapping, Sequence
 from pathlib import Path
-from typing import ClassVar
+from typing import TYPE_CHECKING, ClassVar
 
 from textual.app import App
 from textual.binding import BindingType
@@ -14,21 +14,28 @@ from textual.filter import LineFilter
 from textual.message import Message
 
 from worksheet.model.problem import Problem
-from worksheet.session.edits import Request
 from worksheet.session.recovery import Journal
-from worksheet.session.session import Outcome, Session
 from worksheet.tui import keymap, themes
+from worksheet.tui.first_picture import Picture
 from worksheet.tui.guard import Guard
 from worksheet.tui.plain_signs import PlainSigns
 from worksheet.tui.recompute import Recompute, Stamped
-from worksheet.tui.recomputed import Hands, Needed, Results, hands_of, needs_of, review_of, today
-from worksheet.tui.screens.book import BookScreen
-from worksheet.tui.screens.place import Place
+from worksheet.tui.screens.first import FirstScreen
 from worksheet.tui.signs import signs_for
 from worksheet.tui.terminal import Terminal
 
+if TYPE_CHECKING:  # what computes is loaded behind the first picture
+    from worksheet.session.edits import Request
+    from worksheet.session.session import Outcome, Session
+    from worksheet.session.snapshot import Snapshot
+    from worksheet.tui.recomputed import Hands, Needed, Results
+    from worksheet.tui.screens.place import Place
+
 _REST = 0.8
 """How long a sheet must stand still before its algebra is looked for. [s]"""
+
+_PATIENCE = 1.0
+"""Longest wait for the first picture before the book is loaded beside it. [s]"""
 
 _LOOK = 0.5
 """How often files are looked at for changes by others. [s]"""
@@ -40,6 +47,20 @@ class BookApp(App[int]):
     ENABLE_COMMAND_PALETTE = False
     CSS_PATH = "styles/book.tcss"
     BINDINGS: ClassVar[list[BindingType]] = []
+
+    class Pictured(Message):
+        """The first picture has been made."""
+
+        def __init__(self, picture: Picture) -> None:
+            super().__init__()
+            self.picture = picture
+
+    class Opened(Message):
+        """The book has been read and reviewed; None with the error where that failed."""
+
+        def __init__(self, session: Session | None, results: Results | None, error: Exception | None = None) -> None:
+            super().__init__()
+            self.session, self.results, self.error = session, results, error
 
     class Reviewed(Message):
         """A review has been worked out."""
@@ -71,28 +92,30 @@ class BookApp(App[int]):
 
     def __init__(
         self,
-        session: Session,
+        session: Session | Callable[[], Session],
         terminal: Terminal,
         guard: Guard | None = None,
         *,
-        results: Results | None = None,
         driver_class: type[Driver] | None = None,
     ) -> None:
-        """Take an open session and what the terminal can do; `guard` keeps the end from cutting a write in two.
+        """Take what the terminal can do; `guard` keeps the end from cutting a write in two.
 
-        `results` are what is known of the book already, so that the first picture shows them.
+        `session` is one that is open, or what opens one, which is called in a thread behind the first picture.
         """
         self.terminal = terminal
         self.themes, theme_problems = themes.read(terminal.configuration)  # before the style sheet is read
         super().__init__(driver_class=driver_class, ansi_color=True if terminal.no_colour else None)
         self.fault: Exception | None = None
-        self.session = session
+        self._given = session
+        self._loading = False
+        self.first_picture: Callable[[], Picture | None] = lambda: None
         self.signs = signs_for(terminal.plain_signs)
         self._plain = [PlainSigns()] if terminal.plain_signs else []
-        self.snapshot = session.snapshot()
-        self.results = results
+        self.session: Session
+        self.snapshot: Snapshot
+        self.journal: Journal
+        self.results: Results | None = None
         self.needed: Needed | None = None
-        self.journal = Journal(terminal.state / "typing", session.root)
         self.keys = keymap.read(terminal.configuration)
         self.own_problems: tuple[Problem, ...] = (*self.keys.problems, *theme_problems)
         self._writing = guard.writing if guard is not None else threading.Lock()
@@ -123,7 +146,61 @@ class BookApp(App[int]):
             self.register_theme(one.theme())
         self.theme = self._first_theme()
         self.set_keymap(self.keys.changed())
-        self.push_screen(BookScreen())
+        if callable(self._given):
+            picture = self.first_picture()
+            self.push_screen(FirstScreen(picture))
+            self.set_timer(_PATIENCE, self._load)
+            if picture is not None:
+                self.call_after_refresh(self._load)
+        else:
+            self._begin(self._given)
+
+    def _load(self) -> None:
+        """Begin to load the book, once the first picture is on the screen or has been waited for long enough.
+
+        Loading keeps the interpreter busy; beside it the picture would be drawn in twice the time.
+        """
+        if callable(self._given) and not self._loading:
+            self._loading = True
+            threading.Thread(target=self._open, args=(self._given,), name="opening", daemon=True).start()
+
+    def _open(self, opener: Callable[[], Session]) -> None:
+        """In a thread: read and review the book, and load what shows it."""
+        try:
+            import worksheet.tui.screens.book  # noqa: F401 - loaded here, so that the event loop need not wait for it
+            from worksheet.tui.recomputed import review_of, today
+
+            session = opener()
+            self._deliver(self.Opened(session, review_of(session, session.snapshot(), today())))
+        except Exception as error:  # noqa: BLE001 - raised again on the event loop
+            self._deliver(self.Opened(None, None, error))
+
+    def on_book_app_pictured(self, message: BookApp.Pictured) -> None:
+        """Show the first picture, where the screens proper are not there yet."""
+        if isinstance(self.screen, FirstScreen):
+            self.screen.show_picture(message.picture)
+            self.call_after_refresh(self._load)
+
+    def on_book_app_opened(self, message: BookApp.Opened) -> None:
+        """The book is there: the project's screen, and the keys that were pressed before it came."""
+        if message.session is None:
+            raise message.error or RuntimeError("the book could not be opened")
+        self.results = message.results
+        first = self.screen
+        self._begin(message.session)
+        for key in first.pressed if isinstance(first, FirstScreen) else ():
+            self.call_after_refresh(self.simulate_key, key)
+
+    def _begin(self, session: Session) -> None:
+        """The project's screen, and the work behind it."""
+        from worksheet.tui.screens.book import BookScreen
+
+        self.session, self.snapshot = session, session.snapshot()
+        self.journal = Journal(self.terminal.state / "typing", session.root)
+        if isinstance(self.screen, FirstScreen):
+            self.switch_screen(BookScreen())
+        else:
+            self.push_screen(BookScreen())
         self.work()
         threading.Thread(target=self._look, name="look", daemon=True).start()
         self.call_after_refresh(self._offer_left)
@@ -162,6 +239,8 @@ class BookApp(App[int]):
 
     def work(self) -> None:
         """Have worked out what belongs to the book as it stands."""
+        from worksheet.tui.recomputed import needs_of, review_of, today
+
         snapshot = self.snapshot = self.session.snapshot()
         self._reviews.want(snapshot.revision, lambda: review_of(self.session, snapshot, today()))
         sheet = self.open_name
@@ -185,6 +264,8 @@ class BookApp(App[int]):
             screen.show_book()
 
     def _uppermost(self) -> Place | None:
+        from worksheet.tui.screens.place import Place
+
         return next((one for one in reversed(self.screen_stack) if isinstance(one, Place)), None)
 
     def on_book_app_reviewed(self, message: BookApp.Reviewed) -> None:
@@ -208,6 +289,8 @@ class BookApp(App[int]):
 
     def _explain(self, needed: Needed) -> None:
         """Look for the algebra once nothing has moved for a while: it takes a core for seconds."""
+        from worksheet.tui.recomputed import hands_of
+
         snapshot, session = self.snapshot, self.session
         if needed is not self.needed or needed.revision != snapshot.revision or needed.solved is None:
             return

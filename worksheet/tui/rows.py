@@ -8,9 +8,12 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 from dataclasses import dataclass, field, replace
+from typing import TYPE_CHECKING
 
-from worksheet.model.keys import Key
 from worksheet.report.table import cut, width_of
+
+if TYPE_CHECKING:
+    from worksheet.model.keys import Key
 
 KeyPath = tuple[str | int, ...]
 

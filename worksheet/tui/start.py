@@ -1,26 +1,25 @@
-"""The start: what the terminal can do, the book read while the toolkit loads, the guard, the app, and how it ended.
+"""The start: what the terminal can do, the first picture, the guard, the app, and how it ended.
 
-Before the first picture nothing is imported but the toolkit, numpy and the standard library; reading and reviewing the
-book runs beside the import of the toolkit, so that the first picture shows every block with its verdict.
+Before the first picture this process imports the toolkit and the standard library alone; what computes is loaded
+behind it, and in the copy that makes the picture.
 """
 
 from __future__ import annotations
 
 import os
 import sys
-import threading
 import traceback
-from dataclasses import dataclass
 from pathlib import Path
 from typing import TYPE_CHECKING, Any
 
+from worksheet.tui import first_picture
+from worksheet.tui.first_picture import Picture, Wanted
 from worksheet.tui.terminal import Terminal, refusal, terminal
 
 if TYPE_CHECKING:
     from worksheet.session.session import Session
     from worksheet.tui.app import BookApp
     from worksheet.tui.guard import Guard
-    from worksheet.tui.recomputed import Results
 
 REFUSED = 2
 FAULT = 70
@@ -28,37 +27,6 @@ FAULT = 70
 
 REPORT = "last-fault.txt"
 """In the folder of what is remembered between runs: what happened when the program stopped by itself."""
-
-_WAIT = 0.3
-"""Longest that the first picture waits for results. [s]"""
-
-
-@dataclass
-class _Opening:
-    """The book, read and reviewed in a thread of its own."""
-
-    root: Path
-    read_only: bool
-    session: Session | None = None
-    results: Results | None = None
-    error: Exception | None = None
-
-    def begin(self) -> threading.Thread:
-        """Start to read."""
-        thread = threading.Thread(target=self._run, name="opening", daemon=True)
-        thread.start()
-        return thread
-
-    def _run(self) -> None:
-        try:
-            from worksheet.session.session import Session
-            from worksheet.tui.recomputed import review_of, today
-
-            session = Session(self.root, read_only=self.read_only)
-            self.session = session
-            self.results = review_of(session, session.snapshot(), today())
-        except Exception as error:  # noqa: BLE001 - raised again by whoever waits for the book
-            self.error = error
 
 
 def start(root: Path, *, read_only: bool) -> int:
@@ -69,15 +37,15 @@ def start(root: Path, *, read_only: bool) -> int:
     os.environ.setdefault("TEXTUAL_FPS", "120")  # read when the toolkit is imported: halves the wait for the last cell
     os.environ.setdefault("TEXTUAL_ANIMATIONS", "none")
     surroundings = terminal()
-    opening = _Opening(root, read_only)
-    thread = opening.begin()
+    first = _First()
+    first_picture.begin(Wanted(root, os.get_terminal_size(0), read_only, surroundings), first.made)
     from worksheet.tui.guard import Guard
 
     guard = Guard()
-    app: BookApp | None = None
     guard.start()
     try:
-        app = _app(opening, thread, surroundings, guard)
+        app = _app(root, surroundings, guard, read_only=read_only)
+        first.show_on(app)
         status = app.run(mouse=False)
         fault = app.fault
     except Exception as error:  # noqa: BLE001 - whatever it is, the user gets one sentence and his terminal back
@@ -90,17 +58,34 @@ def start(root: Path, *, read_only: bool) -> int:
     return status or 0
 
 
-def _app(opening: _Opening, thread: threading.Thread, surroundings: Terminal, guard: Guard) -> BookApp:
-    """The app with the book in it; with its results where they are there in time."""
+class _First:
+    """The first picture on its way from the thread that took it to the app, whichever is there first."""
+
+    def __init__(self) -> None:
+        self._picture: Picture | None = None
+        self._app: BookApp | None = None
+
+    def made(self, picture: Picture) -> None:
+        """It is made; in any thread."""
+        self._picture = picture
+        if self._app is not None and self._app.is_running:
+            self._app.post_message(self._app.Pictured(picture))
+
+    def show_on(self, app: BookApp) -> None:
+        """The app is there."""
+        self._app = app
+        app.first_picture = lambda: self._picture
+
+
+def _app(root: Path, surroundings: Terminal, guard: Guard, *, read_only: bool) -> BookApp:
     from worksheet.tui.app import BookApp
 
-    while opening.session is None and opening.error is None:
-        thread.join(0.01)
-    thread.join(_WAIT)
-    if opening.error is not None:
-        raise opening.error
-    assert opening.session is not None  # there is one, or there is an error
-    return BookApp(opening.session, surroundings, guard, results=opening.results, driver_class=_driver(surroundings))
+    def opener() -> Session:
+        from worksheet.session.session import Session
+
+        return Session(root, read_only=read_only)
+
+    return BookApp(opener, surroundings, guard, driver_class=_driver(surroundings))
 
 
 def _driver(surroundings: Terminal) -> Any:

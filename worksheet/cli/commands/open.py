@@ -27,14 +27,15 @@ def run(args: argparse.Namespace, output: Output) -> int:
     del output
     import importlib
 
-    from worksheet.project.discover import not_a_project
-
     root = Path(args.project)
-    problem = not_a_project(root)
-    if problem is not None:
-        tell([problem])
-        return Status.BAD_INPUT
+    if not (root / "biasbook.toml").is_file():  # what says why is slow to load, so it is asked where it is needed only
+        from worksheet.project.discover import not_a_project
+
+        problem = not_a_project(root)
+        if problem is not None:
+            tell([problem])
+            return Status.BAD_INPUT
 
     # Neither front end knows the other: the app is found by its name at the moment it is wanted.
-    status: int = importlib.import_module("worksheet.tui.app").run(root, read_only=args.read_only)
+    status: int = importlib.import_module("worksheet.tui.start").start(root, read_only=args.read_only)
     return status

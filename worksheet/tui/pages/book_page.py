@@ -21,6 +21,8 @@ _WIDE = _FIXED + 24
 """Columns from which on the tightest target is named beside its margin."""
 
 _BAR = 20
+_DETAIL = 6
+"""Most lines for the block under the cursor."""
 
 
 def heading(columns: int) -> Line:
@@ -44,9 +46,7 @@ def page(snapshot: Snapshot, review: Review | None, columns: int, signs: Signs, 
         wanted: Only blocks that hold all its words anywhere.
     """
     results = {} if review is None else {one.sheet.name: one for one in review.sheets}
-    made = [
-        _row(snapshot, name, results.get(name), columns, signs, pending=review is None) for name in snapshot.names
-    ]
+    made = [_row(snapshot, name, results.get(name), columns, signs, pending=review is None) for name in snapshot.names]
     asked = wanted.casefold().split()
     kept = [row for row, text in made if all(word in text for word in asked)]
     if not kept:
@@ -164,3 +164,26 @@ def _budget(one: BudgetReview, signs: Signs) -> Line:
         words.verdict_span(one.verdict),
         gap=0,
     )
+
+
+def detail_room(height: int) -> int:
+    """Lines below the list for the block under the cursor, on a screen of some lines."""
+    return min(_DETAIL, max(height - 12, 0))
+
+
+def parts(snapshot: Snapshot, review: Review, size: tuple[int, int], signs: Signs) -> dict[str, list[Line]]:
+    """The whole page by part of the screen, with the cursor on the first block: the first picture of a book."""
+    columns, height = max(size[0] - 3, 20), size[1]
+    found = page(snapshot, review, columns, signs)
+    first = next((row for row in found.rows if row.stops), None)
+    marked = [Span(f"{signs.pointer if row is first else ' '} ", HEAD) for row in found.rows]
+    room, name = detail_room(height), first.subject[1] if first is not None else ""
+    result = next((one for one in review.sheets if one.sheet.name == name), None)
+    detail = detail_lines(result, snapshot.problems_of(name), room, signs)[:room]
+    return {
+        "title": list(title_lines(snapshot, review, signs)),
+        "heading": [heading(columns)],
+        "blocks": [(mark, *row.lines[0]) for mark, row in zip(marked, found.rows, strict=True)],
+        "detail": [*detail, *[()] * (room - len(detail))],
+        "budgets": budget_lines(review.budgets, signs),
+    }

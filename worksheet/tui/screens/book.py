@@ -21,9 +21,6 @@ from worksheet.tui.widgets.lines import Lines
 
 Made = Callable[[Mapping[str, str]], Request]
 
-_DETAIL = 6
-"""Lines below the list for the block under the cursor."""
-
 
 class BookScreen(Place):
     """All blocks of a project."""
@@ -63,7 +60,7 @@ class BookScreen(Place):
         results = self.book.results
         result = None if results is None or name is None else results.sheet(name)
         problems = () if name is None else self.snapshot.problems_of(name)
-        room = min(_DETAIL, max(self.app.size.height - 12, 0))
+        room = book_page.detail_room(self.app.size.height)
         lines = book_page.detail_lines(result, problems, room, self.book.signs)[:room]
         self.query_one("#detail", Lines).show([*lines, *[()] * (room - len(lines))])
 

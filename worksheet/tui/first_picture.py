@@ -1,0 +1,152 @@
+"""The first picture: every block with its verdict, worked out beside the start of the toolkit.
+
+The toolkit and the engine take about as long to load, so the picture is made by a forked copy of the process while this
+one loads the toolkit; it is handed over as lines of text. A picture that was made before of the same bytes, on the same
+day, at the same size is kept in the folder of what is remembered, and then there is nothing to wait for. The screens
+proper take its place as soon as they are loaded; until then keys are kept for them.
+
+Nothing here imports the toolkit or the engine at its top, which is the point of it.
+"""
+
+from __future__ import annotations
+
+import contextlib
+import datetime
+import hashlib
+import json
+import os
+import threading
+from collections.abc import Callable, Mapping
+from dataclasses import dataclass
+from pathlib import Path
+from typing import TYPE_CHECKING, Any
+
+from worksheet import __version__
+
+if TYPE_CHECKING:
+    from worksheet.tui.rows import Line
+    from worksheet.tui.terminal import Terminal
+
+Picture = Mapping[str, list[list[tuple[str, str]]]]
+"""By part of the screen: its lines, each as pieces of text with their role."""
+
+_LARGEST = 4_000_000
+_PARTS = ("title", "heading", "blocks", "detail", "budgets")
+
+
+@dataclass(frozen=True)
+class Wanted:
+    """What picture is wanted.
+
+    Attributes:
+        root: The project.
+        size: Columns and lines of the terminal.
+        read_only: Whether nothing may be changed.
+        terminal: What can be shown.
+    """
+
+    root: Path
+    size: tuple[int, int]
+    read_only: bool
+    terminal: Terminal
+
+    @property
+    def kept(self) -> Path:
+        """Where the picture of this project is kept."""
+        name = hashlib.blake2b(os.fsencode(self.root.resolve()), digest_size=8).hexdigest()
+        return self.terminal.state / "pictures" / f"{name}.json"
+
+    def key(self) -> str:
+        """A digest of everything that the picture depends on."""
+        about = (__version__, self.size, self.read_only, self.terminal.plain_signs, _today().isoformat())
+        whole = hashlib.blake2b(repr(about).encode(), digest_size=16)
+        for folder in ("", "process", "sheets"):
+            for path in sorted((self.root / folder).glob("*.toml")):
+                content = path.read_bytes()
+                whole.update(f"\0{folder}/{path.name}\0{len(content)}\0".encode("utf-8", "surrogateescape"))
+                whole.update(content)
+        return whole.hexdigest()
+
+
+def _today() -> datetime.date:
+    return datetime.datetime.now().astimezone().date()
+
+
+def begin(wanted: Wanted, tell: Callable[[Picture], None]) -> None:
+    """Have the picture made, or take the one that is kept; `tell` is called with it, from another thread.
+
+    To be called while the process has one thread: it is copied.
+    """
+    with contextlib.suppress(OSError):
+        kept = _kept(wanted, wanted.key())
+        if kept is not None:
+            tell(kept)
+            return
+        source, sink = os.pipe()
+        copy = os.fork()
+        if copy == 0:
+            os.close(source)
+            _make(wanted, sink)
+        os.close(sink)
+        threading.Thread(target=_take, args=(source, copy, tell), name="first-picture", daemon=True).start()
+
+
+def _kept(wanted: Wanted, key: str) -> Picture | None:
+    try:
+        content = wanted.kept.read_bytes()
+        data = json.loads(content) if len(content) <= _LARGEST else None
+    except (OSError, ValueError):
+        return None
+    return _read(data.get("picture")) if isinstance(data, dict) and data.get("key") == key else None
+
+
+def _read(data: Any) -> Picture | None:
+    """A picture from what was read; None where it is none."""
+    try:
+        return {part: [[(str(t), str(r)) for t, r in line] for line in data[part]] for part in _PARTS}
+    except (KeyError, TypeError, ValueError):
+        return None
+
+
+def _make(wanted: Wanted, sink: int) -> None:
+    """In the copy: make the picture, hand it over, keep it, end."""
+    try:
+        key = wanted.key()
+        picture = make(wanted)
+        with os.fdopen(sink, "w", encoding="utf-8") as pipe:
+            json.dump(picture, pipe)
+        with contextlib.suppress(OSError):
+            wanted.kept.parent.mkdir(parents=True, exist_ok=True, mode=0o700)
+            beside = wanted.kept.with_suffix(".part")
+            beside.write_text(json.dumps({"key": key, "picture": picture}), "utf-8")
+            if wanted.key() == key:
+                beside.replace(wanted.kept)
+    finally:
+        os._exit(0)  # the copy has nothing to clean up: what it shares belongs to the process itself
+
+
+def make(wanted: Wanted) -> Picture:
+    """The picture of a project as it stands."""
+    from worksheet.session.session import Session
+    from worksheet.tui.pages import book_page
+    from worksheet.tui.signs import signs_for
+
+    session = Session(wanted.root, read_only=wanted.read_only)
+    snapshot = session.snapshot()
+    review = session.review(snapshot, _today())
+    parts = book_page.parts(snapshot, review, wanted.size, signs_for(wanted.terminal.plain_signs))
+    return {part: [_plain(line) for line in parts[part]] for part in _PARTS}
+
+
+def _plain(line: Line) -> list[tuple[str, str]]:
+    return [(span.shown, span.role) for span in line]
+
+
+def _take(source: int, copy: int, tell: Callable[[Picture], None]) -> None:
+    """Take the picture from the copy."""
+    with contextlib.suppress(OSError, ValueError), os.fdopen(source, encoding="utf-8") as pipe:
+        picture = _read(json.loads(pipe.read(_LARGEST)))
+        if picture is not None:
+            tell(picture)
+    with contextlib.suppress(ChildProcessError):
+        os.waitpid(copy, 0)
