@@ -223,6 +223,8 @@ def changed_content(content: bytes, pieces: Sequence[Piece]) -> bytes:
     for piece in pieces:
         match piece:
             case Put(path, value):
+                if isinstance(value, Mapping) and value_at(data_of(content, ""), path) is not None:
+                    made.append(edit.RemoveKey(path))
                 made.append(edit.SetValue(path, value))
             case TakeOut(path):
                 made.append(edit.RemoveKey(path))

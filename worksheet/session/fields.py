@@ -15,6 +15,7 @@ from worksheet.model import formula, metrics
 from worksheet.model.dimension import Dimension
 from worksheet.model.formula import FormulaError
 from worksheet.model.keys import ANNOTATIONS, Key, Kind, Table
+from worksheet.model.project_keys import CONDITION
 from worksheet.model.quantity import QuantityError, parse, parse_free
 from worksheet.model.sheet_keys import OWN, PROPOSE, SHEET
 from worksheet.model.text import nearest
@@ -143,6 +144,8 @@ def _known(snapshot: Snapshot, data: Mapping[str, Any], path: KeyPath) -> tuple[
         return devices
     if path == ("bias", "device"):
         return ("ideal", *_bias_devices(snapshot, data))
+    if path[0] == "evidence" and path[-1] == "at":
+        return () if process is None else tuple(dict.fromkeys(("typical", *process.corners)))
     if path[0] == "evidence" and path[-1] == "metric":
         return tuple(dict.fromkeys([*_targets(data), *metrics.keys()]))
     if path[0] == "waiver" and path[-1] == "target":
@@ -270,6 +273,8 @@ def _plain(place: Place, text: str) -> tuple[Any] | str:
                 return (datetime.date.fromisoformat(text),)
             except ValueError:
                 return f"{key.title}: found {text}, expected a date such as 2026-11-03."
+        case Kind.CONDITION:
+            return _condition(place, text)
         case Kind.FORMULA:
             try:
                 parsed = formula.parse(text)
@@ -282,6 +287,27 @@ def _plain(place: Place, text: str) -> tuple[Any] | str:
             return f"{unknown} is no name that a formula can use here{f'; did you mean {near}?' if near else '.'}"
         case _:
             return (text,)
+
+
+def _condition(place: Place, text: str) -> tuple[Any] | str:
+    """Process, temperature and supply, with commas between them."""
+    parts = [part.strip() for part in text.split(",")]
+    keys = CONDITION.keys
+    if len(parts) != len(keys):
+        example = ", ".join(key.example for key in keys)
+        return f"{place.key.title}: found {text}, expected {len(keys)} values with commas, for example {example}."
+    for key, part in zip(keys, parts, strict=True):
+        if key.kind is not Kind.QUANTITY:
+            found = _one_of(key, part, place.known) if place.known else (part,)
+            wrong = found if isinstance(found, str) else None
+        else:
+            try:
+                wrong = _number(key, part)
+            except QuantityError as error:
+                wrong = str(error)
+        if wrong is not None:
+            return wrong
+    return ({key.name: part for key, part in zip(keys, parts, strict=True)},)
 
 
 def _one_of(key: Key, text: str, choices: Iterable[str]) -> tuple[str] | str:
@@ -302,6 +328,8 @@ def complete(place: Place, text: str) -> tuple[str, ...]:
     if key.kind in (Kind.CHOICE, Kind.NAME):
         known = key.choices or place.known
         return _matching(known, text, lambda one: one)
+    if key.kind is Kind.CONDITION and "," not in text:
+        return _matching(place.known, text, lambda one: f"{one}, ")
     if key.kind is Kind.FORMULA:
         return _names(place, text)
     if key.kind is not Kind.QUANTITY:
