@@ -166,4 +166,4 @@ def _about(key: Key) -> tuple[str, ...]:
 
 
 def _said(text: str) -> Iterator[str]:
-    return iter(textwrap.wrap(text, _WIDTH, initial_indent="# ", subsequent_indent="# "))
+    return iter(textwrap.wrap(text, _WIDTH, initial_indent="# ", subsequent_indent="# ", break_on_hyphens=False))
