@@ -11,7 +11,8 @@ from worksheet.device.arrays import Array, Complex, Number
 from worksheet.engine import polynomial as poly
 
 _BISECTIONS = 60
-_GRID = 1200
+_LOGARITHMIC, _EVEN = 96, 400
+"""Points in time at which the error of three or more poles is looked at: even ones only where it can ring."""
 _APART = 1e-7
 
 
@@ -83,7 +84,10 @@ class _Error:
     """The error sum w_k exp(-r_k t) of a step response, relative to its final change, for many cases at once."""
 
     def __init__(self, weights: Complex, rates: Complex, tolerance: Array) -> None:
-        self._weights, self._rates, self._tolerance = weights, rates, tolerance
+        self._rings = bool(np.any(rates.imag != 0))
+        self._tolerance = tolerance
+        self._weights, self._rates = weights, rates
+        self._plain = list(zip(weights.real, rates.real, strict=True))
         slowest = np.max(np.where(weights == 0, 0.0, 1.0 / rates.real), axis=0)
         envelope = np.sum(np.abs(weights), axis=0) / tolerance
         self._bound = slowest * np.maximum(np.log(envelope), 0.0) * 1.0001 + 1e-300
@@ -91,6 +95,10 @@ class _Error:
     def excess(self, times: Array) -> Array:
         """abs(error) - tolerance at times of shape (points, cases)."""
         total = np.zeros(times.shape)
+        if not self._rings:
+            for weight, rate in self._plain:
+                total += weight * np.exp(-times * rate)
+            return np.asarray(np.abs(total) - self._tolerance)
         for weight, rate in zip(self._weights, self._rates, strict=True):
             total += (weight * np.exp(-times * rate)).real
         return np.asarray(np.abs(total) - self._tolerance)
@@ -125,8 +133,9 @@ class _Error:
 
     def bracket_by_scan(self) -> tuple[Array, Array, Array]:
         """Times before and after the last crossing of more poles, from a grid with even and with logarithmic steps."""
-        logarithmic = self._bound * 10.0 ** np.linspace(-12, 0, _GRID // 2)[:, None]
-        times = np.sort(np.concatenate([logarithmic, self._bound * np.linspace(0, 1, _GRID)[:, None]]), axis=0)
+        times = self._bound * 10.0 ** np.linspace(-9, 0, _LOGARITHMIC)[:, None]
+        if self._rings:
+            times = np.sort(np.concatenate([times, self._bound * np.linspace(0, 1, _EVEN)[:, None]]), axis=0)
         above = self.excess(times) > 0
         last = times.shape[0] - 1 - np.argmax(above[::-1], axis=0)
         columns = np.arange(times.shape[1])
