@@ -180,6 +180,32 @@ def test_evidence_carries_the_basis_and_a_waiver_its_target(root: Path) -> None:
     drive(root, steps)
 
 
+def test_the_condition_of_evidence_is_typed_and_changed_where_it_stands(root: Path) -> None:
+    async def steps(d: Drive) -> None:
+        screen = await d.sheet(NAME, "target.bandwidth")
+        await d.press("a")
+        await d.type("evidence")
+        await d.press("enter")
+        for text in ("", "5 MHz", "", "", "", "", "simulation", "", "", "slow, 350 K, 1.71 V", "", "", ""):
+            await d.type(text)
+            await d.press("enter")
+        evidence = _data(root)["evidence"][1]
+        assert evidence["at"] == {"process": "slow", "temperature": "350 K", "supply": "1.71 V"}
+        row = next(one for one in screen.ledger.page.rows if one.key == "evidence.1")
+        assert any("slow, 350 K, 1.71 V" in shown(one) for one in row.lines)
+        place = next(k for k, field in enumerate(row.fields) if field.path[-1] == "at")
+        assert screen.ledger.go("evidence.1", place)
+        await d.press("enter")
+        await d.type("slowly, 350 K, 1.71 V")
+        assert "did you mean slow" in _said(d)
+        await d.press("home", *["delete"] * 6)
+        await d.type("fast")
+        await d.press("enter")
+        assert _data(root)["evidence"][1]["at"]["process"] == "fast"
+
+    drive(root, steps)
+
+
 def test_removing_asks_about_names_that_nothing_would_use(root: Path) -> None:
     async def steps(d: Drive) -> None:
         await d.sheet("wind_cascode", "target.rate_margin")

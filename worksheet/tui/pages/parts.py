@@ -10,7 +10,7 @@ from dataclasses import dataclass
 from typing import Any
 
 from worksheet.model.dimension import Dimension
-from worksheet.model.keys import ANNOTATIONS, Key, Kind
+from worksheet.model.keys import ANNOTATIONS, Key
 from worksheet.model.quantity import format_quantity
 from worksheet.model.sheet_keys import BIAS_KEYS, EVIDENCE, OWN, SHEET, SOLVE_KEYS, TARGET_KEYS, WAIVER
 from worksheet.report import wording
@@ -255,7 +255,6 @@ def _entry(facts: Facts, array: str, k: int, entry: Mapping[str, Any], keys: tup
     fields = {
         key.name: facts.field((array, k, key.name), key, entry.get(key.name), f"{array} {k + 1}: {key.title}")
         for key in keys
-        if key.kind is not Kind.CONDITION
     }
     lead, *rest = [key.name for key in keys if key.name in fields]
     first = [value_span(facts, fields[lead], _NAME)]
@@ -267,9 +266,6 @@ def _entry(facts: Facts, array: str, k: int, entry: Mapping[str, Any], keys: tup
     for name in rest:
         if name in entry and name != "value":
             second += [Span(fields[name].key.title.lower(), QUIET), value_span(facts, fields[name])]
-    at = entry.get("at")
-    if isinstance(at, Mapping):
-        second += [Span("at", QUIET), facts.text(" ".join(words.typed(one) for one in at.values()))]
     copied = tuple(field.text for field in fields.values())
     lines = (line(*first), (_INDENT, *line(*second))) if second else (line(*first),)
     return Row(f"{array}.{k}", lines, subject=(array, str(k)), copied=copied)

@@ -6,6 +6,7 @@ import datetime
 from collections.abc import Mapping
 from typing import Any
 
+from worksheet.model.project_keys import CONDITION
 from worksheet.model.sheet import Condition
 from worksheet.report import wording
 from worksheet.review.results import MET, MISSED, UNKNOWN, WAIVED, TargetReview
@@ -16,11 +17,13 @@ VERDICT_ROLES = {MET: rows.MET, MISSED: rows.MISSED, UNKNOWN: rows.UNKNOWN, WAIV
 
 
 def typed(value: Any) -> str:
-    """A TOML value as it is typed into a field; a value with notes or a formula by what it states."""
+    """A TOML value as it is typed into a field; a table by the value or formula that it states, or by its condition."""
     if value is None:
         return ""
     if isinstance(value, Mapping):
-        return typed(value.get("value", value.get("formula")))
+        stated = value.get("value", value.get("formula"))
+        parts = [value[key.name] for key in CONDITION.keys if key.name in value]
+        return ", ".join(map(typed, parts)) if stated is None else typed(stated)
     if isinstance(value, list):
         return ", ".join(typed(one) for one in value)
     if isinstance(value, datetime.date):

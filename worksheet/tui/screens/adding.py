@@ -6,7 +6,7 @@ from collections.abc import Mapping
 from typing import TYPE_CHECKING, Any
 
 from worksheet.model import metrics
-from worksheet.model.keys import ANNOTATIONS, Key, Kind
+from worksheet.model.keys import ANNOTATIONS, Key
 from worksheet.model.sheet_keys import EVIDENCE, TARGET_KEYS, WAIVER
 from worksheet.model.text import is_identifier
 from worksheet.session import fields
@@ -87,7 +87,7 @@ def _target_places(screen: SheetScreen, name: str, *, figure: bool = False) -> d
     left_out = set() if figure else {"formula", "unit"}
     if metric is None or not metric.of_yield:
         left_out.add("yield")
-    keys = [key.name for key in TARGET_KEYS if key.name not in left_out and key.kind is not Kind.CONDITION]
+    keys = [key.name for key in TARGET_KEYS if key.name not in left_out]
     order = ["formula", *keys] if figure else keys
     return _places(screen, {key: ("target", name, key) for key in dict.fromkeys(order)})
 
@@ -144,8 +144,7 @@ def _entry(screen: SheetScreen, array: str, keys: tuple[Key, ...], about: str, t
     places = {
         key.name: place
         for key in keys
-        if key.kind is not Kind.CONDITION
-        and (place := fields.coming(screen.snapshot, screen.name_of_sheet, (array, 0, key.name), texts[about]))
+        if (place := fields.coming(screen.snapshot, screen.name_of_sheet, (array, 0, key.name), texts[about]))
     }
     _form(screen, f"Add {array}", places, lambda values: (AddEntry(array, values),), texts=texts)
 
