@@ -24,7 +24,6 @@ from worksheet.solver.results import Bound, Solved, Window
 from worksheet.solver.snap import snapped
 from worksheet.solver.variables import INVERSION, on_request, variables
 
-
 MOST_NODES = 2
 """Beyond so many nodes nobody writes a formula on paper, and sympy would take minutes to find one."""
 

@@ -206,9 +206,7 @@ def of_sheet(result: SheetReview, polarity: str, supply: float | None) -> Drawin
         return None
     choice = {name: one.value for name, one in result.choices.items()}
     circuit = Circuit(stage, polarity, sheet.bulk, sheet.bias.ideal)
-    return Drawing(
-        circuit, result.operating_point, choice.get("load_capacitance"), choice.get("bias_current"), supply
-    )
+    return Drawing(circuit, result.operating_point, choice.get("load_capacitance"), choice.get("bias_current"), supply)
 
 
 __all__ = ["IN", "Drawing", "of_sheet"]
