@@ -78,6 +78,8 @@ class Case:
         filled: Numbers for what the sheet leaves open (the solver's proposals), by key. [unit of the key]
         moves: Values that replace the sheet's own.
         shifts, factors: Mismatch of single transistors by name: added to the threshold [V], times the specific current.
+        strict: Whether a formula that leaves its range while values are moved is an error: what is stated must hold
+            itself, what is only tried (by the solver, by fragility) may fail.
     """
 
     sheet: Sheet
@@ -87,6 +89,7 @@ class Case:
     moves: Moves = field(default_factory=dict)
     shifts: Mapping[str, Number] = field(default_factory=dict)
     factors: Mapping[str, Number] = field(default_factory=dict)
+    strict: bool = False
 
     def moved(self, moves: Moves) -> Case:
         """The same case with further values replaced."""
@@ -95,6 +98,10 @@ class Case:
     def mismatched(self, shifts: Mapping[str, Number], factors: Mapping[str, Number]) -> Case:
         """The same case with single transistors off their intended values."""
         return replace(self, shifts=dict(shifts), factors=dict(factors))
+
+    def held(self, moves: Moves) -> Case:
+        """The same case at further values that the sheet states (ends of ranges), where every formula must hold too."""
+        return replace(self, moves={**self.moves, **moves}, strict=True)
 
     def with_filled(self, filled: Mapping[str, float]) -> Case:
         """The same case with further open values filled in."""
@@ -179,22 +186,20 @@ class Case:
     def _checked(self, where: str, stated: Value, formula: Formula, key: Key | None) -> Number:
         """What a value's formula gives, held to the range of its key. `where` is its dotted key."""
         result = self.evaluate(formula, where)
-        wrong = np.atleast_1d(
-            ~np.isfinite(result) | np.vectorize(lambda x: key is not None and key.outside(float(x)) is not None)(result)
-        )
-        if wrong.any() and not self.moves:
-            at = self.conditions.conditions[int(np.argmax(np.broadcast_to(wrong, (len(self.conditions),))))]
-            found = float(np.broadcast_to(result, (len(self.conditions),))[np.argmax(wrong)])
+        wrong = ~np.isfinite(result)
+        if key is not None:
+            wrong = wrong | np.vectorize(lambda x: key.outside(float(x)) is not None)(result)
+        if np.any(wrong) and (self.strict or not self.moves):
+            shape = np.broadcast_shapes(np.shape(wrong), (len(self.conditions),))
+            place = int(np.argmax(np.broadcast_to(wrong, shape)))
+            at = self.conditions.conditions[place % len(self.conditions)]
+            found = float(np.broadcast_to(result, shape).reshape(-1)[place])
             wanted = key.range_text() if key is not None else "a number"
             what = f"gives {found:g}" if np.isfinite(found) else "gives no number"
-            raise CaseError(
-                self._problem_at(
-                    where,
-                    stated,
-                    f"the formula {formula.text!r} {what} at {at.process}, {at.temperature:g} K, {at.supply:g} V; "
-                    f"expected {wanted}",
-                )
-            )
+            ends = " at an end of a range that it uses" if self.moves else ""
+            where_at = f"{at.process}, {at.temperature:g} K, {at.supply:g} V{ends}"
+            message = f"the formula {formula.text!r} {what} at {where_at}; expected {wanted}"
+            raise CaseError(self._problem_at(where, stated, message))
         return np.asarray(result)
 
     def _where(self, name: str) -> str:

@@ -82,8 +82,8 @@ class Points:
 
 def points_of(case: Case, extra: Mapping[str, Array] | None = None) -> Points:
     """Solve a case over its conditions and the ends of its ranges. CaseError where a value does not resolve."""
-    moves = dict(ranges.vertices(case.sheet)) if extra is None else dict(extra)
-    return Points(case, moves, case.moved(moves).solution if moves else case.solution)
+    moves = ranges.worst_points(case) if extra is None else dict(extra)
+    return Points(case, moves, case.held(moves).solution if moves else case.solution)
 
 
 def review_points(points: Points, today: datetime.date) -> SheetReview:

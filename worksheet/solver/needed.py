@@ -19,7 +19,7 @@ from worksheet.solver.windows import Axis
 def trials_of(subject: Subject, over: str | None = None) -> Trials:
     """The constraints of a sheet over the conditions of its `over`, or of the one given."""
     sheet = subject.sheet
-    return Trials(subject, over or sheet.solve.over, ranges.vertices(sheet), ranges.waived_targets(sheet))
+    return Trials(subject, over or sheet.solve.over, ranges.worst_points(subject), ranges.waived_targets(sheet))
 
 
 def solve(subject: Subject, over: str | None = None) -> Solved:

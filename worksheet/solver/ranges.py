@@ -2,13 +2,14 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping
 from itertools import product
 
 import numpy as np
 
 from worksheet.device.arrays import Array
 from worksheet.model.sheet import Sheet
+from worksheet.solver import goals
+from worksheet.solver.subject import Subject
 
 FULL_UP_TO = 6
 """Up to so many ranges every vertex is a point."""
@@ -29,8 +30,8 @@ def ranged(sheet: Sheet) -> dict[str, tuple[float, float]]:
 def vertices(sheet: Sheet) -> dict[str, Array]:
     """Values of each ranged name over the points, shape (points, 1); the first point is the stated values.
 
-    Every vertex up to six ranges; beyond that each range alone at either end (the vertices to which the signs of the
-    sensitivities point are added by `steered`).
+    Every vertex up to six ranges; beyond that each range alone at either end, to which `worst_points` adds the vertices
+    that the signs of the sensitivities point to.
     """
     ranges = ranged(sheet)
     if not ranges:
@@ -45,21 +46,31 @@ def vertices(sheet: Sheet) -> dict[str, Array]:
     return _columns(list(ranges), points)
 
 
-def steered(sheet: Sheet, rising: Mapping[str, Mapping[str, bool]]) -> dict[str, Array]:
-    """Further points for more than six ranges: for each metric, all ranges at the ends that lower and that raise it.
+def worst_points(subject: Subject) -> dict[str, Array]:
+    """All points at which the worst of a sheet's targets is looked for, shape (points, 1).
+
+    As vertices, and beyond six ranges also, for each target and condition, all ranges at the ends that lower and that
+    raise it there.
 
     Args:
-        sheet: The sheet.
-        rising: By metric, by ranged name: whether the metric rises with it.
-    Returns: values of each ranged name, shape (points, 1)
+        subject: The sheet, with a number for everything it leaves open.
+    Source: physics, section 6: the signs are those of the change over each range alone.
     """
-    ranges = ranged(sheet)
-    points = []
-    for signs in rising.values():
-        up = tuple(high if signs.get(name, True) else low for name, (low, high) in ranges.items())
-        down = tuple(low if signs.get(name, True) else high for name, (low, high) in ranges.items())
-        points += [up, down]
-    return _columns(list(ranges), list(dict.fromkeys(points)))
+    alone = vertices(subject.sheet)
+    if len(alone) <= FULL_UP_TO:
+        return alone
+    solution = subject.moved(alone).solution
+    points: dict[tuple[float, ...], None] = {}
+    for target in subject.sheet.targets.values():
+        values = goals.measure(subject.moved(alone), target, solution).values
+        values = np.broadcast_to(values, (1 + 2 * len(alone), len(subject.conditions)))
+        rises = values[2::2] >= values[1::2]
+        for rising in np.unique(rises, axis=1).T:
+            ends = zip(rising, ranged(subject.sheet).values(), strict=True)
+            up, down = zip(*((high, low) if up else (low, high) for up, (low, high) in ends), strict=True)
+            points |= {up: None, down: None}
+    steered = _columns(list(alone), list(points)) if points else {}
+    return {name: np.concatenate([alone[name], *([steered[name]] if steered else [])]) for name in alone}
 
 
 def _stated(sheet: Sheet, name: str) -> float:
