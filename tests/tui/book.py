@@ -33,7 +33,7 @@ owner = "M. Okafor"
 notes = "Drives the row wires of the bucket array."
 
 [assume]
-load_capacitance = { value = "1.2 pF", low = "0.9 pF", high = "1.6 pF", source = "floor plan", trust = "estimate" }
+load_capacitance = { value = "1.2 pF", low = "0.9 pF", high = "1.6 pF", source = "floor plan, rev 3", trust = "estimate" }
 input_level = { value = "1.2 V", source = "sensor datasheet", trust = "agreed" }
 
 [choose]
@@ -151,7 +151,7 @@ stage = "source-follower"
 device = "nfet"
 
 [assume]
-load_capacitance = { formula = "2*drip_amplifier.input_capacitance + 200e-15", source = "two", trust = "estimate" }
+load_capacitance = { formula = "2*drip_amplifier.input_capacitance + 200e-15", source = "two of them", trust = "estimate" }
 
 [choose]
 bias_current = "1 uA"
