@@ -32,7 +32,10 @@ def refusal(found: Refused, root: Path) -> Problem:
 
 def repository_of(root: Path) -> Repository | Problem:
     """The repository that encloses a project, or why there is none to use."""
-    found = repository.find(root)
+    try:
+        found = repository.find(root)
+    except (OSError, ValueError) as error:  # no folder can have such a name
+        return Problem(str(root), None, "", f"found no folder that can be read: {getattr(error, 'strerror', error)}")
     if found is None:
         message = "there is no git repository around this project yet; `biasbook record` makes one"
         return Problem(str(root), None, "", message)
