@@ -26,9 +26,10 @@ def run(args: argparse.Namespace, output: Output) -> int:
     """Open the app. 0; 2 where there is no project or the terminal cannot show it."""
     del output
     import importlib
+    import os.path
 
     root = Path(args.project)
-    if not (root / "biasbook.toml").is_file():  # what says why is slow to load, so it is asked where it is needed only
+    if not os.path.isfile(root / "biasbook.toml"):  # noqa: PTH113 (false for names that no file can have); what says why is slow to load, so it is asked where it is needed only
         from worksheet.project.discover import not_a_project
 
         problem = not_a_project(root)
