@@ -8,7 +8,7 @@ from typing import Any
 
 import numpy as np
 
-from worksheet.model.sheet import Value
+from worksheet.model.sheet import Condition, Value
 from worksheet.model.sheet_keys import SHEET
 from worksheet.project.case import Case
 from worksheet.project.links import formulas_of
@@ -49,22 +49,31 @@ def _content(case: Case) -> dict[str, Any]:
         "choose": {k: _value(v) for k, v in sheet.choose.items() if not v.propose},
         "proposed": {k: _rounded(v, _PROPOSED_DIGITS) for k, v in case.filled.items()},
         "solve": [sheet.solve.keep, sheet.solve.inversion_coefficient, sheet.solve.over, sheet.solve.current_allowance],
-        "conditions": [[c.process, c.temperature, c.supply] for c in conditions.conditions],
+        "conditions": [[c.process, c.temperature, c.supply] for c in _ordered(case)[0]],
         "links": _links(case),
     }
 
 
 def _value(value: Value) -> list[Any]:
     formula = None if value.formula is None else repr(value.formula.tree)
-    return [value.number, formula, list(value.numbers), value.low, value.high, value.standard_error]
+    return [value.number, formula, sorted(value.numbers), value.low, value.high]
+
+
+def _ordered(case: Case) -> tuple[list[Condition], list[int]]:
+    """The conditions in an order that does not depend on how they are listed, nominal first; and their places."""
+    every = case.conditions.conditions
+    places = [0, *sorted(range(1, len(every)), key=lambda k: every[k])]
+    return [every[k] for k in places], places
 
 
 def _links(case: Case) -> dict[str, list[str]]:
     """Values taken from other sheets; a target's formula moves no result and does not count."""
+    places = _ordered(case)[1]
     names = {n for _, formula, of_target in formulas_of(case.sheet) if not of_target for n in formula.names if "." in n}
     return {
-        name: [_rounded(x, _LINKED_DIGITS) for x in np.atleast_1d(case.external(*name.split(".", 1)))]
+        name: [_rounded(x, _LINKED_DIGITS) for x in np.broadcast_to(values, (len(places),))[places]]
         for name in sorted(names)
+        for values in [case.external(*name.split(".", 1))]
     }
 
 
