@@ -15,8 +15,9 @@ from worksheet.engine import polynomial as poly
 from worksheet.engine import settling
 from worksheet.engine.inputs import Inputs
 from worksheet.engine.solution import NumericSolution
+from worksheet.engine.validity import shortfalls
 from worksheet.stages.circuit import Circuit
-from worksheet.stages.one_transistor import COMMON_GATE, COMMON_SOURCE, SOURCE_FOLLOWER
+from worksheet.stages.one_transistor import COMMON_GATE, COMMON_SOURCE, DRAIN_FOLLOWER, SOURCE_FOLLOWER
 from worksheet.stages.stage import GROUND, IN, LINE, OUT, SUPPLY, Stage, Transistor
 
 TALL = Stage(
@@ -169,3 +170,47 @@ def test_only_the_common_source_inverts() -> None:
     for stage, sign in ((COMMON_SOURCE, -1.0), (COMMON_GATE, 1.0), (SOURCE_FOLLOWER, 1.0)):
         solution = solved(stage)
         assert np.sign(float(np.ravel(solution.signed_gain())[0])) == sign
+
+
+def stepped(stage: Stage, bulk_at: str, step: float) -> NumericSolution:
+    circuit = Circuit(stage, "n", bulk_at, ideal_bias=True)
+    return NumericSolution(
+        Inputs(circuit, np.array([300.0]), SUPPLY_VOLTAGE, CURRENT, {"main": DEVICE}, 1e-12, step_size=step)
+    )
+
+
+def test_a_tiny_step_of_a_follower_in_its_own_well() -> None:
+    """Bulk on the source: C_o/(kappa + sigma) in place of C_o."""
+    solution = stepped(SOURCE_FOLLOWER, "source", 1e-7)
+    g_s = float(np.ravel(solution.devices["main"].slopes.source_conductance)[0])
+    load = float(np.ravel(solution.output_capacitance)[0])
+    tau = load / (g_s * (DEVICE.kappa + DEVICE.drain_coupling))
+    assert float(np.ravel(solution["settling_time"])[0]) == pytest.approx(tau * np.log(1e3), rel=1e-4)
+
+
+@pytest.mark.parametrize("step", [0.2, 1.4])
+def test_the_range_after_a_step_moves_with_the_input(step: float) -> None:
+    """Drain-driven follower: a step of the drain moves the output by sigma times it and the upper end by all of it."""
+    solution = stepped(DRAIN_FOLLOWER, "rail", step)
+    levels = solution.levels
+    out, low, high = (float(np.ravel(x)[0]) for x in (levels.output, levels.output_low, levels.output_high))
+    moved = [out + DEVICE.drain_coupling * s for s in (step, -step)]
+    expected = max(
+        low - out, out - high, *(max(low - m, m - (high + s)) for m, s in zip(moved, (step, -step), strict=True))
+    )
+    found = next(s for s in shortfalls(solution) if (s.device, s.what) == ("output", "range"))
+    assert float(np.ravel(found.short_by)[0]) == pytest.approx(expected, abs=1e-12)
+
+
+def test_the_range_after_a_step_of_a_common_gate() -> None:
+    """A step of the source moves the lower end by all of it and the output by the gain."""
+    step = 0.002
+    solution = stepped(COMMON_GATE, "rail", step)
+    levels = solution.levels
+    gain = float(np.ravel(solution.signed_gain())[0])
+    out, low, high = (float(np.ravel(x)[0]) for x in (levels.output, levels.output_low, levels.output_high))
+    expected = max(
+        low - out, out - high, *(max(low + s - (out + gain * s), out + gain * s - high) for s in (step, -step))
+    )
+    found = next(s for s in shortfalls(solution) if (s.device, s.what) == ("output", "range"))
+    assert float(np.ravel(found.short_by)[0]) == pytest.approx(expected, rel=1e-9)
