@@ -5,13 +5,14 @@ from __future__ import annotations
 import threading
 from collections.abc import Callable, Mapping, Sequence
 from pathlib import Path
-from typing import TYPE_CHECKING, ClassVar
+from typing import TYPE_CHECKING, Any, ClassVar
 
 from textual.app import App
 from textual.binding import BindingType
 from textual.driver import Driver
 from textual.filter import LineFilter
 from textual.message import Message
+from textual.screen import Screen
 
 from worksheet.model.problem import Problem
 from worksheet.session.recovery import Journal
@@ -140,6 +141,10 @@ class BookApp(App[int]):
         """Colours of the roles before a theme is on."""
         return dict(self.themes[self._first_theme()].theme().variables)
 
+    def get_default_screen(self) -> Screen[Any]:
+        """The first picture, where there is something to wait for."""
+        return FirstScreen(self.first_picture) if callable(self._given) else super().get_default_screen()
+
     def on_mount(self) -> None:
         """The project's screen, and the work behind it."""
         for one in self.themes.values():
@@ -147,11 +152,7 @@ class BookApp(App[int]):
         self.theme = self._first_theme()
         self.set_keymap(self.keys.changed())
         if callable(self._given):
-            picture = self.first_picture()
-            self.push_screen(FirstScreen(picture))
             self.set_timer(_PATIENCE, self._load)
-            if picture is not None:
-                self.call_after_refresh(self._load)
         else:
             self._begin(self._given)
 
@@ -179,7 +180,10 @@ class BookApp(App[int]):
         """Show the first picture, where the screens proper are not there yet."""
         if isinstance(self.screen, FirstScreen):
             self.screen.show_picture(message.picture)
-            self.call_after_refresh(self._load)
+
+    def on_first_screen_shown(self) -> None:
+        """The first picture is on the screen."""
+        self._load()
 
     def on_book_app_opened(self, message: BookApp.Opened) -> None:
         """The book is there: the project's screen, and the keys that were pressed before it came."""
@@ -197,10 +201,7 @@ class BookApp(App[int]):
 
         self.session, self.snapshot = session, session.snapshot()
         self.journal = Journal(self.terminal.state / "typing", session.root)
-        if isinstance(self.screen, FirstScreen):
-            self.switch_screen(BookScreen())
-        else:
-            self.push_screen(BookScreen())
+        self.push_screen(BookScreen())
         self.work()
         threading.Thread(target=self._look, name="look", daemon=True).start()
         self.call_after_refresh(self._offer_left)

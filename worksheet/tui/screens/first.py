@@ -2,8 +2,11 @@
 
 from __future__ import annotations
 
+from collections.abc import Callable
+
 from textual import events
 from textual.app import ComposeResult
+from textual.message import Message
 from textual.screen import Screen
 
 from worksheet.tui.first_picture import Picture
@@ -17,10 +20,13 @@ _PARTS = {"title": "title", "heading": "heading", "blocks": "body", "detail": "d
 class FirstScreen(Screen[None]):
     """The book at a glance, before anything can be done with it."""
 
-    def __init__(self, picture: Picture | None = None) -> None:
-        """Take the picture, where it is there already."""
+    class Shown(Message):
+        """The picture has been drawn."""
+
+    def __init__(self, made: Callable[[], Picture | None]) -> None:
+        """Take what gives the picture, where it is made already."""
         super().__init__()
-        self._picture = picture
+        self._made = made
         self.pressed: list[str] = []
 
     def compose(self) -> ComposeResult:
@@ -31,14 +37,16 @@ class FirstScreen(Screen[None]):
 
     def on_mount(self) -> None:
         """Show what is there."""
-        if self._picture is not None:
-            self.show_picture(self._picture)
+        picture = self._made()
+        if picture is not None:
+            self.show_picture(picture)
 
     def show_picture(self, picture: Picture) -> None:
         """Show what has been made."""
         for part, widget in _PARTS.items():
             lines: list[Line] = [tuple(Span(text, role) for text, role in line) for line in picture[part]]
             self.query_one(f"#{widget}", Lines).show(lines)
+        self.call_after_refresh(self.post_message, self.Shown())
 
     def on_key(self, event: events.Key) -> None:
         """Keep it for the screen that comes."""
