@@ -8,6 +8,7 @@ from functools import cached_property
 from worksheet.engine.symbolic.algebra import Setting, of
 from worksheet.engine.symbolic.neglects import LINEAR, NEGLECTS, SLEWING
 from worksheet.engine.symbolic.point import Leaf, Point
+from worksheet.solver.algebra_print import Piece, pieces
 from worksheet.solver.holds import Hold
 from worksheet.solver.inversion import relevant
 from worksheet.solver.stated import Case, Stated
@@ -63,6 +64,12 @@ class Present:
 
     def _point(self, setting: Setting) -> Point:
         return Point(of(setting), self.stated.number, None if self._nominal is None else self._nominal.point)
+
+    def pieces(self, key: str, names: frozenset[str]) -> list[Piece]:
+        """What is printed of a level's definition when some neglects are made."""
+        algebra = of(self.setting.neglecting(names))
+        found = algebra.definition(key)
+        return [] if found is None else pieces(algebra.symbol(key), found)
 
     def effects(self, metric: str) -> tuple[Effect, ...]:
         """What each neglect that changes a metric at all does to its value."""

@@ -32,6 +32,7 @@ class Solutions:
     dropped: tuple[str, ...] = ()
 
 
+@lru_cache(maxsize=4096)
 def solve(expression: Any, value: Any, symbol: Any) -> Solutions:
     """Solve expression = value for a symbol.
 
@@ -126,13 +127,29 @@ def _rational(equation: Any, symbol: Any) -> list[Any] | None:
     return list(sympy.polys.polyroots.roots_quadratic(sympy.Poly(coefficients[:3], symbol)))
 
 
+def _with_real_roots(expression: Any) -> Any:
+    """An expression with a positive letter for every root of open sign: it counts only where it is real."""
+    import sympy
+
+    roots = {p for p in expression.atoms(sympy.Pow) if p.exp == _half() and p.is_positive is None}
+    return expression.xreplace({p: sympy.Dummy(positive=True) for p in roots})
+
+
+def _flat_roots(expression: Any) -> Any:
+    """An expression whose roots of reciprocals are reciprocals of roots."""
+    return expression.replace(
+        lambda e: e.is_Pow and abs(e.exp) == _half() and e.base.is_Pow and e.base.exp == -1,
+        lambda e: e.base.base ** (-e.exp),
+    )
+
+
 def _tidy(expression: Any) -> Any:
     """A short expression in the shorter of its two usual forms: one fraction, or a sum of terms."""
     import sympy
 
     if sympy.count_ops(expression) > _SMALL:
         return expression
-    whole = sympy.factor_terms(sympy.cancel(expression))
+    whole = _flat_roots(sympy.factor_terms(sympy.cancel(expression)))
     top, bottom = sympy.fraction(whole)
     if bottom == 1 or bottom.is_Add or not top.is_Add:
         return whole
@@ -222,10 +239,10 @@ def _physical(found: list[Any], symbol: Any) -> Solutions:
     kept, dropped = [], []
     for solution in found:
         short = sympy.count_ops(solution) <= _SMALL  # of a long one sympy would search long for its sign
-        if short and solution.is_nonpositive:
+        if short and _with_real_roots(solution).is_nonpositive:
             dropped.append(f"{symbol.name} would be negative")
         elif short and solution.is_real is False:
             dropped.append(f"{symbol.name} would not be real")
         else:
-            kept.append(solution)
+            kept.append(_flat_roots(solution) if short else solution)
     return Solutions(tuple(kept), tuple(dropped))

@@ -5,7 +5,7 @@ It also tells which leaves do nothing there, so that the algebra is written with
 
 from __future__ import annotations
 
-from collections.abc import Mapping
+from collections.abc import Callable, Mapping
 from dataclasses import dataclass
 from typing import Any, Protocol
 
@@ -18,7 +18,7 @@ from worksheet.engine.solution import NumericSolution
 from worksheet.engine.symbolic.algebra import Setting, neutral
 from worksheet.model import metrics
 from worksheet.model.process_keys import CORNER_CHANGES
-from worksheet.model.sheet import Condition, DeviceModel, Process, Sheet, Value
+from worksheet.model.sheet import Condition, DeviceModel, Process, Sheet, Target, Value
 from worksheet.stages.circuit import Circuit
 from worksheet.stages.stage import Stage, Transistor
 
@@ -47,6 +47,7 @@ _CONSTANTS = {
     "constant.elementary_charge": ELEMENTARY_CHARGE,
     "deviations": metrics.deviations(metrics.DEFAULT_YIELD),
 }
+_PROJECT_FILE = "biasbook.toml"
 _SOURCES = {"deviations": f"normal law, yield {metrics.DEFAULT_YIELD}"}
 
 
@@ -107,6 +108,11 @@ class Case(Protocol):
         ...
 
     @property
+    def external(self) -> Callable[[str, str], Array]:
+        """Gives SHEET.NAME of another sheet at these conditions. [SI]"""
+        ...
+
+    @property
     def inputs(self) -> Inputs:
         """The engine's inputs."""
         ...
@@ -126,6 +132,10 @@ class Case(Protocol):
 
     def stated(self, name: str) -> Value | None:
         """What the sheet states under a name."""
+        ...
+
+    def figure(self, target: Target) -> Array:
+        """Values of a target that has a formula, over the conditions. [its own unit]"""
         ...
 
     def model(self, device: Transistor) -> DeviceModel:
@@ -227,7 +237,7 @@ class Stated:
             return Origin("process", process.file, process.lines.get(key), key)
         if key == "nominal_temperature" or (key in ("supply", "temperature") and self._on_sheet(key) is None):
             name = "nominal" if key == "nominal_temperature" else key
-            return Origin("conditions", key=f"conditions.{name}")
+            return Origin("conditions", _PROJECT_FILE, key=f"conditions.{name}")
         owner, _, rest = key.partition(".")
         if rest and owner in self._devices and rest.partition(".")[0] in ("process", "corner"):
             return self._process_origin(self._devices[owner], rest)

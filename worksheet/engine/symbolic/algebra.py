@@ -12,7 +12,7 @@ from functools import cached_property, lru_cache
 from typing import TYPE_CHECKING, Any
 
 from worksheet.engine.symbolic import laws, metric, settling, voltages
-from worksheet.engine.symbolic.definition import Definition
+from worksheet.engine.symbolic.definition import AbsentError, Definition
 from worksheet.engine.symbolic.neglects import DRIVE, SWITCHES
 from worksheet.engine.symbolic.vocabulary import AT_NOMINAL, Word, canonical, word
 from worksheet.model import metrics
@@ -130,7 +130,10 @@ class Algebra:
         """
         key = canonical(self.circuit, key)
         if key not in self._definitions:
-            self._definitions[key] = _plain(self._define(key))
+            try:
+                self._definitions[key] = _plain(self._define(key))
+            except AbsentError as absent:
+                self._definitions[key] = Definition(key, None, missing=absent.reason)
         return self._definitions[key]
 
     def _define(self, key: str) -> Definition | None:
@@ -162,6 +165,27 @@ class Algebra:
             return key
         same = self.key(found.expression)
         return key if same is None else self.alias(same)
+
+    def opened(self, expression: Any, stop: Callable[[str], bool]) -> Any:
+        """An expression with every level opened that `stop` does not hold back, and what is then common cancelled.
+
+        Args:
+            expression: In this algebra's symbols.
+            stop: Tells of a level's key whether it stays.
+        """
+        import sympy
+
+        while True:
+            keys = {s: self.key(s) for s in expression.free_symbols}
+            found = {s: self.definition(k) for s, k in keys.items() if k is not None and not stop(k)}
+            plain = {
+                s: d.expression
+                for s, d in found.items()
+                if d is not None and d.root is None and d.expression is not None
+            }
+            if not plain:
+                return sympy.factor(sympy.cancel(expression))
+            expression = expression.xreplace(plain)
 
     def depends(self, key: str, on: str, held: frozenset[str] = frozenset()) -> bool:
         """Whether a level moves with another when `held` levels stay."""

@@ -9,6 +9,15 @@ from typing import Any
 from worksheet.model.metrics import Reason
 
 
+class AbsentError(Exception):
+    """A level that does not exist for a circuit, with the reason."""
+
+    def __init__(self, reason: Reason) -> None:
+        """Keep the reason."""
+        super().__init__(reason.text)
+        self.reason = reason
+
+
 class Pick(Enum):
     """Which root of an equation is meant."""
 
@@ -17,7 +26,7 @@ class Pick(Enum):
     SLOWEST = "the root nearest to zero"
     ONLY = "the positive root"
     LAST = "the last time at which both sides are equal"
-    GREATEST = "the positive root, or 0, or the limit, where the value is greatest"
+    GREATEST = "the positive root, or 0, or the limit, where the value is greatest,"
 
 
 @dataclass(frozen=True, eq=False, slots=True)

@@ -8,7 +8,7 @@ from functools import cached_property, lru_cache
 from typing import TYPE_CHECKING, Any
 
 from worksheet.engine.symbolic import settling, voltages
-from worksheet.engine.symbolic.definition import Definition, Pick, Root
+from worksheet.engine.symbolic.definition import AbsentError, Definition, Pick, Root
 from worksheet.engine.symbolic.neglects import FACTOR_MISMATCH, FLICKER, OTHER_MISMATCH, OTHER_NOISE
 from worksheet.engine.symbolic.network import Coefficients, noise_integral, squared_magnitude
 from worksheet.model import metrics
@@ -128,7 +128,7 @@ class SymbolicSolution:
     def _static(self, top: Any, bottom: Any) -> Any:
         """A ratio at zero frequency, common factors taken out."""
         if bottom == 0:
-            return Definition("", None, missing=Reason.UNLIMITED)
+            raise AbsentError(Reason.UNLIMITED)
         return _reduced(top, bottom) if len(self.network.nodes) > 1 else top / bottom
 
     def signed_gain(self) -> Any:
@@ -137,8 +137,7 @@ class SymbolicSolution:
 
     def dc_gain(self) -> Any:
         """abs(H(0)). [V/V]"""
-        gain = self.signed_gain()
-        return gain if isinstance(gain, Definition) else abs(gain)
+        return abs(self.signed_gain())
 
     def output_resistance(self) -> Any:
         """Z_o(0). [ohm]"""
@@ -146,12 +145,18 @@ class SymbolicSolution:
 
     def supply_rejection(self) -> Any:
         """abs(A_in/A_supply). [V/V]"""
-        ratio = self._static(self.network.transfer[0], self.network.supply_path)
-        return ratio if isinstance(ratio, Definition) else abs(ratio)
+        return abs(self._static(self.network.transfer[0], self.network.supply_path))
 
     def input_capacitance(self) -> Any:
         """[F]"""
         return self.network.input_capacitance
+
+    def check_response(self) -> None:
+        """Raise AbsentError where there is no gain at all, or no conductance at the output, to refer a response to."""
+        if self.network.transfer[0] == 0:
+            raise AbsentError(Reason.NO_GAIN)
+        if self.network.denominator[0] == 0:
+            raise AbsentError(Reason.NOT_A_NUMBER)
 
     @cached_property
     def numerator(self) -> Coefficients:
@@ -171,7 +176,8 @@ class SymbolicSolution:
     def _crossing(self, of: Callable[[Any, Any, Any, Any], Any], static: Any) -> Definition:
         """The frequency of a condition on the squares of numerator and denominator."""
         if static == 0:
-            return Definition("", None, missing=Reason.UNLIMITED)
+            raise AbsentError(Reason.UNLIMITED)
+        self.check_response()
         n, d = self.numerator, self.denominator
         present = tuple(k for k, c in enumerate(n) if c != 0)
         law = _crossing_law(of, present, len(d))
@@ -209,6 +215,7 @@ class SymbolicSolution:
         import sympy
 
         x = sympy.Symbol("x", positive=True)
+        self.check_response()
         n, d = self.numerator, self.denominator
         top, bottom = squared_magnitude(n, x), squared_magnitude(d, x)
         if len(d) == 2:
@@ -244,6 +251,8 @@ class SymbolicSolution:
         return self.noise_sources_of()
 
     def _source(self, owner: str, white: Any, flicker: Any, exponent: Any) -> SymbolicSource:
+        if self.network.transfer[0] == 0:
+            raise AbsentError(Reason.NO_GAIN)
         referred = self._static(self.network.noise(owner)[0], self.network.transfer[0]) ** 2
         return SymbolicSource(owner, white, flicker, exponent, referred)
 

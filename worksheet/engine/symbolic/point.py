@@ -61,19 +61,8 @@ class Point:
         return self._known[key]
 
     def _defined(self, found: Definition) -> Any:
-        import sympy
-
-        if found.expression is None:
-            return None
-        values = {}
-        for key in self.algebra.inputs(found):
-            value = self.exact(key)
-            if value is None:
-                return None
-            values[self.algebra.symbol(key)] = value
-        if found.holds is not None and found.holds.xreplace(values) != sympy.true:
-            return None
-        return evaluated(found.expression, found.root, values)
+        values = {self.algebra.symbol(key): self.exact(key) for key in self.algebra.inputs(found)}
+        return None if any(value is None for value in values.values()) else _on(found, values)
 
     def value(self, expression: Any) -> float | None:
         """An expression in the algebra's symbols, None where it has no real number."""
@@ -231,3 +220,17 @@ def _last(root: Root, values: Mapping[Any, Any]) -> float | None:
 def evaluated_float(expression: Any, numbers: Mapping[Any, float]) -> float | None:
     """An expression on numbers by symbol, None where it has no real one."""
     return real(evaluated(expression, None, {symbol: _float(value) for symbol, value in numbers.items()}))
+
+
+def evaluated_definition(found: Definition, numbers: Mapping[Any, float | None]) -> float | None:
+    """A definition on numbers by symbol, None where it has no real one."""
+    values = {symbol: _float(value) for symbol, value in numbers.items() if value is not None}
+    return real(_on(found, values))
+
+
+def _on(found: Definition, values: Mapping[Any, Any]) -> Any:
+    import sympy
+
+    if found.expression is None or (found.holds is not None and found.holds.xreplace(dict(values)) != sympy.true):
+        return None
+    return evaluated(found.expression, found.root, values)

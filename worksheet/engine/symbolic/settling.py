@@ -30,6 +30,7 @@ def define(solution: SymbolicSolution) -> Definition:
 def _linear(solution: SymbolicSolution) -> Definition:
     import sympy
 
+    solution.check_response()
     tolerance, n, d = solution.a.symbol("settling_tolerance"), solution.numerator, solution.denominator
     if len(d) == 2:
         tau = d[1] / d[0]

@@ -1,0 +1,141 @@
+"""Algebra as lines for a terminal: of one number, of a bound, of a stage's metrics."""
+
+from __future__ import annotations
+
+from collections.abc import Iterator
+
+from worksheet.model import metrics
+from worksheet.model.sheet_keys import DESIGN
+from worksheet.report import wording
+from worksheet.report.table import Column, Table, lines, wrapped
+from worksheet.solver.algebra_print import wrap
+from worksheet.solver.explanation import Explanation, Given
+from worksheet.solver.hand import HandBound
+from worksheet.solver.present import Effect
+from worksheet.solver.stage_algebra import metric_formula
+from worksheet.solver.stated import Origin
+from worksheet.stages.stage import Stage
+
+_INDENT = "  "
+
+
+def explanation(found: Explanation, width: int, use_unicode: bool = True) -> Iterator[str]:
+    """Everything about one number.
+
+    Args:
+        found: Its algebra.
+        width: Columns of the terminal.
+        use_unicode: Whether Greek letters and drawn fractions may be used.
+    """
+    value = wording.number(found.value, found.unit, found.reason)
+    yield from wrapped(f"{found.title} {found.symbol} = {value} at {wording.condition(found.at)}", width)
+    if found.origin is not None:
+        yield from wrapped(f"from {origin(found.origin)}", width, _INDENT)
+    yield ""
+    yield from (f"{_INDENT}{line}" for line in found.text(width - len(_INDENT), use_unicode))
+    if found.given:
+        yield ""
+        yield from lines(_given(found.given), width, _INDENT)
+    if found.relation:
+        yield ""
+        yield from wrapped(f"Behind it: {found.relation}", width)
+    for remark in found.remarks:
+        yield from wrapped(f"{'Holds' if found.in_range else 'Out of range'}: {remark}", width)
+    yield from _neglects(found, width)
+
+
+def _given(given: tuple[Given, ...]) -> Table:
+    columns = (
+        Column("symbol"),
+        Column("value", right=True),
+        Column("what", flexible=True),
+        Column("from", flexible=True),
+    )
+    rows = tuple((g.symbol, wording.number(g.value, g.unit), g.title, _from(g)) for g in given)
+    return Table(columns, rows)
+
+
+def _from(given: Given) -> str:
+    return f"follows: {given.key}" if given.origin is None else origin(given.origin)
+
+
+def origin(found: Origin) -> str:
+    """Where a number came from: "sheets/buffer.toml:12 assume.load_capacitance, floor plan, rev 3 (estimate)"."""
+    place = f"{found.file}:{found.line}" if found.line is not None else found.file
+    words = " ".join(part for part in (place, found.key) if part)
+    if found.kind in ("constant", "proposed", "default", "moved", "linked"):
+        words = f"{found.kind} {words}".rstrip()
+    said = ", ".join(part for part in (words, found.source) if part)
+    return f"{said} ({found.trust})" if found.trust else said
+
+
+def _neglects(found: Explanation, width: int) -> Iterator[str]:
+    if not found.neglects:
+        return
+    yield ""
+    yield "What a neglect would change"
+    yield from (f"{_INDENT}{effect.name}: {share(effect)}" for effect in found.neglects)
+    simple = found.simplified
+    if simple is None:
+        return
+    yield ""
+    names = ", ".join(e.name for e in simple.neglects)
+    off = "" if simple.share is None else f", {simple.share:+.2%} off"
+    yield from wrapped(f"Without {names}: {wording.number(simple.value, found.unit)}{off}", width)
+    yield from (f"{_INDENT}{line}" for line in simple.lines if len(line) + len(_INDENT) <= width)
+
+
+def share(effect: Effect) -> str:
+    """What a neglect changes: "+1.2 %"; of what is held, per change of the unknown."""
+    if effect.share is None:
+        return "no value would be left"
+    number = f"{effect.share * 100:+.3g} %"
+    return f"{number} of the metric for each 100 % of the unknown" if effect.moving else number
+
+
+def bound(found: HandBound, symbol: str, side: str, value: str, width: int, indent: str = "") -> Iterator[str]:
+    """The algebra of a bound.
+
+    Args:
+        found: The algebra.
+        symbol: The unknown's symbol.
+        side: "low" or "high".
+        value: The hand value as text, with its unit.
+        width: Columns of the terminal.
+        indent: Put before every line.
+    """
+    sign = "≥" if side == "low" else "≤"
+    said = "" if found.exact else f" = {value} by hand"
+    yield from algebra(f"{symbol} {sign} {found.formula}{said}", width, indent)
+    for line in found.where:
+        yield from algebra(line, width, indent + _INDENT)
+    shares = {e.name: f"{e.name} ({share(e)})" for e in found.effects}
+    if found.neglects:
+        names = "; ".join(shares.get(name, name) for name in found.neglects)
+        yield from wrapped(f"neglects {names}", width, indent + _INDENT)
+
+
+def stage(found: Stage, width: int, every: bool = False) -> Iterator[str]:
+    """The formulas of a stage, metric by metric.
+
+    Args:
+        found: The stage.
+        width: Columns of the terminal.
+        every: Whether to show what each metric asks of every design variable, or of the first that it bounds.
+    """
+    symbols = {key.name: key.symbol for key in DESIGN}
+    yield from wrapped("Formulas (n, bulk on the rail, ideal current source with g_L and C_b, long channel)", width)
+    for metric in metrics.all_metrics():
+        if found.absent_metric(metric.key) is not None:
+            continue
+        formula = metric_formula(found, metric.key, every=every)
+        yield from algebra(f"{metric.key}: {formula.line()}", width, _INDENT)
+        for turned in formula.inverted:
+            tail = f", {turned.where}" if turned.where else ""
+            left_out = f" (neglects {', '.join(turned.neglects)})" if turned.neglects else ""
+            yield from algebra(f"{symbols[turned.unknown]} = {turned.formula}{tail}{left_out}", width, _INDENT * 2)
+
+
+def algebra(line: str, width: int, indent: str = "") -> Iterator[str]:
+    """A line of algebra as lines no wider than `width` columns, broken after operators."""
+    yield from (indent + part for part in wrap(line, width - len(indent), _INDENT * 2))
