@@ -10,15 +10,18 @@ from worksheet.report import wording
 from worksheet.report.table import wrapped
 from worksheet.review.fragility import Fragile
 from worksheet.solver.results import Bound, Window
+from worksheet.tui.explained import WORST, Explained, name_of
 from worksheet.tui.helping import of_subject
-from worksheet.tui.pages import words
+from worksheet.tui.pages import algebra_page, words
 from worksheet.tui.pages.parts import Facts, design, region_text
 from worksheet.tui.rows import HEAD, LABEL, PLAIN, QUIET, Page, Row, Span, heading, line
 
 _NAME = 30
 
 
-def page(facts: Facts, kind: str, name: str, fragile: Sequence[Fragile], asked: Window | None) -> Page:
+def page(
+    facts: Facts, kind: str, name: str, fragile: Sequence[Fragile], asked: Window | None, found: Explained | None
+) -> Page:
     """Rows about one number of a sheet.
 
     Args:
@@ -26,14 +29,17 @@ def page(facts: Facts, kind: str, name: str, fragile: Sequence[Fragile], asked: 
         kind, name: What the number is, as a row's subject.
         fragile: The ranking of the sheet's inputs at the nominal condition.
         asked: The window of another unknown, where the user asked for one.
+        found: Its algebra, None while it is being looked for.
     """
     target = name.partition(":")[2] if kind == "bound" else name
     made: list[Row] = list(_about(facts, kind, name))
-    if kind in ("metric", "bound"):
+    if kind in ("metric", "bound", "figure"):
         made += _achieved(facts, target)
+    made += algebra_page.rows(facts, found)
+    if kind in ("metric", "bound", "figure"):
         made += _windows(facts, target, asked)
         made += _moved_by(facts, [one for one in fragile if one.target == target])
-    else:
+    elif kind != algebra_page.EXPLAIN:
         made += _window(facts, name)
         made += _moves(facts, [one for one in fragile if one.name.rpartition(".")[2] == name])
     return Page(tuple(made), tuple(row.key for row in made if row.key.startswith("part.")))
@@ -61,7 +67,8 @@ def _achieved(facts: Facts, name: str) -> Iterator[Row]:
     if target is not None:
         text = f"{words.metric(target, target.worst)} {words.worst_place(target.worst_at, target.worst_with)}"
         spans = line(Span("worst", LABEL, 10), facts.text(text), words.verdict_span(target.verdict))
-        yield Row("worst", (spans,), copied=(name, text, target.verdict))
+        subject = (algebra_page.EXPLAIN, name_of(name, WORST))
+        yield Row("worst", (spans,), subject=subject, copied=(name, text, target.verdict))
         wanted = wording.limits(target.target, target.unit)
         yield Row("wanted", (line(Span("wanted", LABEL, 10), facts.text(wanted)),), copied=(name, wanted))
 

@@ -10,8 +10,10 @@ from worksheet.review.fragility import Fragile
 from worksheet.session.session import Session
 from worksheet.session.snapshot import Snapshot
 from worksheet.solver.results import Window
+from worksheet.stages import catalogue
 from worksheet.tui import commands
-from worksheet.tui.pages import behind_page
+from worksheet.tui.explained import Explained, explained, name_of
+from worksheet.tui.pages import algebra_page, behind_page
 from worksheet.tui.pages.parts import Facts
 from worksheet.tui.recompute import Recompute, Stamped
 from worksheet.tui.rows import HEAD, QUIET, line
@@ -26,6 +28,13 @@ class AlgebraScreen(Place):
 
     PLACE = commands.ALGEBRA
     BINDINGS = bindings(commands.ALGEBRA)
+
+    class Made(Message):
+        """The algebra of a number has been found."""
+
+        def __init__(self, stamped: Stamped[Explained]) -> None:
+            super().__init__()
+            self.stamped = stamped
 
     class Ranked(Message):
         """The ranking of the sheet's inputs has been worked out."""
@@ -47,10 +56,16 @@ class AlgebraScreen(Place):
         self.name_of_sheet = name
         self.trail: list[Subject] = [(kind, subject)]
         self._fragile: Sequence[Fragile] = ()
+        self._explained: Explained | None = None
+        self._explaining: tuple[int, str, int] | None = None
         self._asked: Window | None = None
         self._wanted: int | None = None
         self._ranks: Recompute[Sequence[Fragile]] = Recompute(self._ranked)
         self._solves: Recompute[Window | None] = Recompute(self._solved)
+        self._explains: Recompute[Explained] = Recompute(self._made)
+
+    def _made(self, stamped: Stamped[Explained]) -> None:
+        self.post_message(self.Made(stamped))
 
     def _ranked(self, stamped: Stamped[Sequence[Fragile]]) -> None:
         self.post_message(self.Ranked(stamped))
@@ -69,14 +84,36 @@ class AlgebraScreen(Place):
         solved = book.needed.solved if book.needed is not None and book.needed.name == name else None
         facts = Facts(snapshot, name, result, solved, self.columns, book.signs, {}, book.hands_for(name))
         kind, subject = self.trail[-1]
-        self.ledger.show(behind_page.page(facts, kind, subject, self._fragile, self._asked))
-        trail = " < ".join(one.partition(":")[2] or one for _, one in reversed(self.trail))
+        self._explain(facts.columns)
+        page = behind_page.page(facts, kind, subject, self._fragile, self._asked, self._explained)
+        self.ledger.show(page)
+        trail = " < ".join(_shown(one) for _, one in reversed(self.trail))
         self.query_one("#title", Lines).show([line(facts.text(name, HEAD), facts.text(trail, QUIET), gap=2)])
         if self._wanted != snapshot.revision:
             self._wanted = snapshot.revision
             session = book.session
             self._ranks.want(snapshot.revision, lambda: ranking(session, snapshot, name))
         self.show_foot()
+
+    def _explain(self, columns: int) -> None:
+        """Have the algebra found, where it is not that of this number, this book and this width."""
+        asked = (self.snapshot.revision, number_of(*self.trail[-1], self.snapshot, self.name_of_sheet), columns - 2)
+        if asked == self._explaining:
+            return
+        if self._explaining is None or asked[1] != self._explaining[1]:
+            self._explained = None
+        self._explaining = asked
+        session, snapshot, name, plain = self.book.session, self.snapshot, self.name_of_sheet, self.book.signs.plain
+        self._explains.want(asked[0], lambda: explained(session, snapshot, name, asked, plain=plain))
+
+    def on_algebra_screen_made(self, message: AlgebraScreen.Made) -> None:
+        """Show it, unless another one is asked for by now."""
+        stamped = message.stamped
+        if stamped.error:
+            self.say(f"The algebra cannot be found: {stamped.error}", wrong=True)
+        if stamped.value is not None and stamped.value.asked == self._explaining:
+            self._explained = stamped.value
+            self.show_book()
 
     def on_ledger_moved(self) -> None:
         """Other commands may hold here."""
@@ -105,6 +142,7 @@ class AlgebraScreen(Place):
         """Begin nothing more."""
         self._ranks.stop()
         self._solves.stop()
+        self._explains.stop()
 
     # Commands
 
@@ -112,7 +150,7 @@ class AlgebraScreen(Place):
         """There is an input to follow, or a target to solve."""
         held = super().holds()
         row = self.ledger.row
-        if row is not None and row.subject[0] in ("variable", "metric"):
+        if row is not None and row.subject[0] in ("variable", "metric", algebra_page.EXPLAIN):
             held.add("row")
         if self.trail[-1][0] in ("metric", "bound"):
             held.add("target")
@@ -148,6 +186,23 @@ class AlgebraScreen(Place):
             session, snapshot, name = self.book.session, self.snapshot, self.name_of_sheet
             self.say(f"solving for {unknown}...")
             self._solves.want(snapshot.revision, lambda: window_for(session, snapshot, name, unknown))
+
+
+def number_of(kind: str, name: str, snapshot: Snapshot, sheet: str) -> str:
+    """The number that a row is about, as the algebra knows it: explained.name_of."""
+    if kind == algebra_page.EXPLAIN:
+        return name
+    if kind == "bound":
+        name = name.partition(":")[2]
+    if kind == "operating":
+        stage = catalogue.find(snapshot.project.sheets[sheet].stage) if sheet in snapshot.project.sheets else None
+        name = f"{stage.transistors[0].name if stage is not None else 'main'}.{name}"
+    return name_of(name)
+
+
+def _shown(subject: str) -> str:
+    """A number of the trail as it is called."""
+    return (subject.partition(":")[2] or subject).removesuffix("@0")
 
 
 def ranking(session: Session, snapshot: Snapshot, name: str) -> Sequence[Fragile]:
