@@ -19,7 +19,7 @@ _SYMBOL, _NUMBER = 10, 13
 
 def rows(facts: Facts, found: Explained | None) -> Iterator[Row]:
     """Rows about the algebra of a number; a line that says so while it is being looked for."""
-    yield heading("part.algebra", "Algebra", facts.columns, facts.signs.across, _note(found))
+    yield heading("part.algebra", "Algebra", facts.columns, facts.signs.across, facts.signs.text(_note(found)))
     if found is None:
         yield Row("algebra.working", (line(facts.text("looking for the algebra...", QUIET)),), stops=False)
     elif found.found is None:
