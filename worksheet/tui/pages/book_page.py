@@ -6,7 +6,7 @@ from collections.abc import Iterator
 
 from worksheet.model.problem import Problem
 from worksheet.report import wording
-from worksheet.review.results import MET, MISSED, UNKNOWN, WAIVED, BudgetReview, Review, SheetReview
+from worksheet.review.results import MET, MISSED, UNKNOWN, WAIVED, BudgetReview, Review, SheetReview, TargetReview
 from worksheet.session.snapshot import Snapshot
 from worksheet.stages import catalogue
 from worksheet.tui import rows
@@ -129,18 +129,19 @@ def detail_lines(result: SheetReview | None, problems: tuple[Problem, ...], room
     stage = catalogue.find(sheet.stage)
     parts = [sheet.title, stage.title.lower() if stage is not None else "", f"{sheet.count} of it", sheet.owner]
     out = [line(Span(signs.text(", ".join(part for part in parts if part)), HEAD))]
-    for one in result.targets[: max(room - 1, 0)]:
-        where = words.worst_place(one.worst_at, one.worst_with)
-        out.append(
-            line(
-                Span(signs.text(one.target.name), LABEL, 20),
-                words.verdict_span(one.verdict, 8),
-                Span(wording.margin(one.margin), PLAIN, 8, right=True),
-                Span(signs.text(f"{words.metric(one, one.worst)} {where}"), PLAIN),
-                Span(signs.text(f"wanted {wording.limits(one.target, one.unit)}"), QUIET),
-            )
-        )
+    out += [_detail(one, signs) for one in result.targets[: max(room - 1, 0)]]
     return out
+
+
+def _detail(one: TargetReview, signs: Signs) -> Line:
+    return line(
+        Span(signs.text(one.target.name), LABEL, 20),
+        words.verdict_span(one.verdict, 7),
+        Span(wording.margin(one.margin), PLAIN, 7, right=True),
+        Span(signs.text(words.metric(one, one.worst)), PLAIN, 10, right=True),
+        Span(signs.text(f"wanted {wording.limits(one.target, one.unit)}"), PLAIN, 22),
+        Span(signs.text(words.worst_place(one.worst_at, one.worst_with)), QUIET),
+    )
 
 
 def budget_lines(budgets: tuple[BudgetReview, ...], signs: Signs) -> list[Line]:
