@@ -3,6 +3,7 @@
 import pyte
 from hypothesis import given
 from hypothesis import strategies as st
+from rich.cells import cell_len
 
 from worksheet.tui.driver import Picture
 
@@ -15,10 +16,17 @@ frames = st.lists(st.lists(pieces, min_size=1, max_size=4), min_size=1, max_size
 
 
 def sent(frame: list[tuple[int, int, str, str]]) -> str:
-    """A frame as the toolkit writes one."""
+    """A frame as the toolkit writes one: never beyond the right edge."""
     return "".join(
-        f"\x1b[{row};{column}H\x1b[{style}m{text[: COLUMNS // 2]}\x1b[0m" for row, column, style, text in frame
+        f"\x1b[{row};{column}H\x1b[{style}m{fitting(text, column)}\x1b[0m" for row, column, style, text in frame
     )
+
+
+def fitting(text: str, column: int) -> str:
+    """As much of a text as has room from a column on."""
+    while cell_len(text) > COLUMNS - column + 1:
+        text = text[:-1]
+    return text
 
 
 def shown(writes: list[str]) -> list[list[pyte.screens.Char]]:

@@ -92,20 +92,19 @@ class SheetScreen(Place):
     def _show_title(self, facts: Facts) -> None:
         data = facts.data
         result = facts.result
-        said = [facts.text(self.name_of_sheet, HEAD), facts.text(str(data.get("stage", "")), LABEL)]
-        said.append(facts.text(words.typed(data.get("device")), LABEL))
-        said.append(facts.text(words.typed(data.get("state")) or "draft", PLAIN))
+        said = [facts.text(self.name_of_sheet, HEAD), facts.text(str(data.get("title", "")), PLAIN)]
+        said.append(facts.text(words.typed(data.get("state")) or "draft", LABEL))
         if self.name_of_sheet not in self.snapshot.names:
             said.append(Span("is not there any more", words.VERDICT_ROLES["missed"]))
         elif result is not None:
             counts = ((result.count(v), v) for v in words.VERDICT_ROLES)
             said += [Span(f"{n} {v}", words.VERDICT_ROLES[v]) for n, v in counts if n]
+        kind = f"{data.get('stage', '')}, {words.typed(data.get('device'))}"
         stale = self.book.results is None or self.book.results.revision != self.snapshot.revision
-        title = facts.text(str(data.get("title", "")), QUIET)
         tail = Span("working..." if stale else f"step {self.step_kind}", LABEL)
         read_only = [Span("for reading only", LABEL)] if self.snapshot.read_only else []
         margins = words.margin_strip(() if result is None else result.targets, self.app.size.width - 16)
-        shown = [line(*said, *read_only, title, gap=2), line(tail, *margins, gap=2)]
+        shown = [line(*said, *read_only, facts.text(kind, QUIET), gap=2), line(tail, *margins, gap=2)]
         self.query_one("#title", Lines).show(shown)
 
     def on_ledger_moved(self) -> None:
