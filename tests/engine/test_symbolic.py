@@ -44,7 +44,12 @@ def compare(kind: tuple[str, str, str], seed: object, folder: Path) -> int:
 @pytest.mark.parametrize("kind", KINDS, ids="-".join)
 def test_engines_agree(kind: tuple[str, str, str], tmp_path: Path) -> None:
     """Bulk, bias source, velocity saturation, levels, steps and drive resistance are drawn with the rest."""
-    assert sum(compare(kind, seed, tmp_path / str(seed)) for seed in ("a", "b", "c")) >= 60
+    compared = 0
+    for seed in "abcdef":
+        compared += compare(kind, seed, tmp_path / seed)
+        if compared >= 120:
+            break
+    assert compared >= 120
 
 
 @pytest.mark.full

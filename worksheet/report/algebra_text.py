@@ -31,8 +31,10 @@ def explanation(found: Explanation, width: int, use_unicode: bool = True) -> Ite
     yield from wrapped(f"{found.title} {found.symbol} = {value} at {wording.condition(found.at)}", width)
     if found.origin is not None:
         yield from wrapped(f"from {origin(found.origin)}", width, _INDENT)
-    yield ""
-    yield from (f"{_INDENT}{line}" for line in found.text(width - len(_INDENT), use_unicode))
+    printed = found.text(width - len(_INDENT), use_unicode)
+    if printed:
+        yield ""
+    yield from (f"{_INDENT}{line}" for line in printed)
     if found.given:
         yield ""
         yield from lines(_given(found.given), width, _INDENT)

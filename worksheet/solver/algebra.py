@@ -54,7 +54,7 @@ def explain(case: Case, key: str, condition_index: int = 0) -> Explanation:
     if target is not None and target.formula is not None:
         return _formula(present, key, target.formula, target.unit)
     owner = key.partition(".")[0]
-    if "." in key and "/" not in key and _linked(present, key):
+    if _linked(present, key):
         return _leaf(present, key, key, key, "")
     if key in case.sheet.own:
         unit = case.sheet.own[key].unit
@@ -74,6 +74,8 @@ def explain(case: Case, key: str, condition_index: int = 0) -> Explanation:
 
 def _linked(present: Present, key: str) -> bool:
     """Whether a key names a number of another sheet that one of this sheet's formulas takes."""
+    if "." not in key:
+        return False
     values = (
         *present.case.sheet.assume.values(),
         *present.case.sheet.choose.values(),

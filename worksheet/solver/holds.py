@@ -52,8 +52,8 @@ def noise_factor(circuit: Circuit) -> Hold:
 
 
 def corner_of_flicker() -> Hold:
-    """The pole up to which flicker noise is counted."""
-    return Hold("upper end of flicker noise", frozenset({"pole_frequency"}))
+    """The frequency up to which flicker noise is counted."""
+    return Hold("upper end of flicker noise", frozenset({"noise_until"}))
 
 
 def inversions(circuit: Circuit) -> list[Hold]:

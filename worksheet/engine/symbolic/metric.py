@@ -7,7 +7,7 @@ from dataclasses import dataclass, replace
 from functools import cached_property, lru_cache
 from typing import TYPE_CHECKING, Any
 
-from worksheet.engine.symbolic import settling, voltages
+from worksheet.engine.symbolic import crossing, settling, voltages
 from worksheet.engine.symbolic.definition import AbsentError, Definition, Pick, Root
 from worksheet.engine.symbolic.neglects import FACTOR_MISMATCH, FLICKER, OTHER_MISMATCH, OTHER_NOISE
 from worksheet.engine.symbolic.network import Coefficients, noise_integral, squared_magnitude
@@ -36,13 +36,19 @@ def define(a: Algebra, key: str) -> Definition:
 
 @dataclass(frozen=True, eq=False, slots=True)
 class SymbolicSource:
-    """A source of noise current: white density [A^2/Hz], and abs(Z(0)/H(0))^2 [ohm^2]."""
+    """A source of noise current: white density [A^2/Hz], flicker at 1 Hz, and its numerator to the output, squared."""
 
     owner: str
     white: Any
     flicker: Any
     exponent: Any
-    referred: Any
+    weight: Any
+    _solution: SymbolicSolution
+
+    @property
+    def referred(self) -> Any:
+        """abs(Z(0)/H(0))^2. [ohm^2]"""
+        return self._solution.referred(self.owner)
 
 
 class SymbolicDevice:
@@ -180,11 +186,11 @@ class SymbolicSolution:
         self.check_response()
         n, d = self.numerator, self.denominator
         present = tuple(k for k, c in enumerate(n) if c != 0)
-        law = _crossing_law(of, present, len(d))
+        law = crossing.law(of, present, len(d))
         if law.expression is None:
             return law
-        own = {_coefficients("n", len(n))[k]: n[k] for k in present}
-        own |= dict(zip(_coefficients("d", len(d)), d, strict=True))
+        own = {crossing.coefficients("n", len(n))[k]: n[k] for k in present}
+        own |= dict(zip(crossing.coefficients("d", len(d)), d, strict=True))
         root = law.root
         if root is not None:
             root = replace(root, left=root.left.xreplace(own))
@@ -192,11 +198,11 @@ class SymbolicSolution:
 
     def bandwidth(self) -> Definition:
         """Lowest frequency of -3 dB. [Hz]"""
-        return self._crossing(_fallen, self.network.denominator[0])
+        return self._crossing(crossing.fallen, self.network.denominator[0])
 
     def unity_gain_frequency(self) -> Definition:
         """Lowest frequency of unit magnitude. [Hz]"""
-        found = self._crossing(_at_one, 1)
+        found = self._crossing(crossing.at_one, 1)
         return replace(found, holds=abs(self.numerator[0]) > abs(self.denominator[0]))
 
     def pole_frequency(self) -> Definition:
@@ -229,36 +235,35 @@ class SymbolicSolution:
         """[s]"""
         return settling.define(self)
 
-    def noise_sources_of(self, neglecting: bool = True) -> Sequence[SymbolicSource]:
-        """Every source of noise current, or those that are not neglected."""
+    @property
+    def noise_sources(self) -> Sequence[SymbolicSource]:
+        """Every source of noise current that is not neglected: all transistors, and the drive resistance."""
         a, sources = self.a, []
+        alone = OTHER_NOISE in a.setting.neglects
         for d in a.circuit.devices:
-            if neglecting and d.name != MAIN and OTHER_NOISE in a.setting.neglects:
+            if alone and d.name != MAIN:
                 continue
             owner = a.circuit.stage.transistors[0] if d in a.circuit.stage.transistors else d
             exponent = a.process(owner, "flicker_exponent")  # the stage's own transistors are of one type
             flicker = a.of(d, "flicker_density") if a.has(f"{d.name}.process.flicker") else 0
             sources.append(self._source(d.name, a.of(d, "white_density"), flicker, exponent))
-        drive = a.circuit.driven_through_resistance and not (neglecting and OTHER_NOISE in a.setting.neglects)
-        if drive:
+        if a.circuit.driven_through_resistance and not alone:
             thermal = 4 * a.leaf("constant.boltzmann") * a.leaf("temperature")
             sources.append(self._source(RESISTOR, thermal / a.symbol("drive_resistance"), 0, 1))
         return tuple(sources)
 
-    @property
-    def noise_sources(self) -> Sequence[SymbolicSource]:
-        """Every source of noise current that is not neglected."""
-        return self.noise_sources_of()
-
     def _source(self, owner: str, white: Any, flicker: Any, exponent: Any) -> SymbolicSource:
+        return SymbolicSource(owner, white, flicker, exponent, self.network.noise(owner)[0] ** 2, self)
+
+    def referred(self, owner: str) -> Any:
+        """abs(Z(0)/H(0))^2 of a source of noise current. AbsentError where there is no gain. [ohm^2]"""
         if self.network.transfer[0] == 0:
             raise AbsentError(Reason.NO_GAIN)
-        referred = self._static(self.network.noise(owner)[0], self.network.transfer[0]) ** 2
-        return SymbolicSource(owner, white, flicker, exponent, referred)
+        return self._static(self.network.noise(owner)[0], self.network.transfer[0]) ** 2
 
     def referred_to_input(self, device: SymbolicDevice) -> Any:
         """abs(Z(0)/H(0))^2 of a transistor's current. [V^2/A^2]"""
-        return next(s.referred for s in self.noise_sources_of(neglecting=False) if s.owner == device.device.name)
+        return self.referred(device.device.name)
 
     @property
     def white_noise_power(self) -> Any:
@@ -275,14 +280,14 @@ class SymbolicSolution:
         """Frequency where flicker equals white. [Hz]"""
         import sympy
 
-        white = sum(s.referred * s.white for s in self.noise_sources)
+        white = sum(s.weight * s.white for s in self.noise_sources)
         loud = [s for s in self.noise_sources if s.flicker != 0]
         if not loud:
             return sympy.S.Zero
         if len({s.exponent for s in loud}) == 1:
-            return (sum(s.referred * s.flicker for s in loud) / white) ** (1 / loud[0].exponent)
+            return (sum(s.weight * s.flicker for s in loud) / white) ** (1 / loud[0].exponent)
         f = sympy.Symbol("f", positive=True)
-        flicker = sum(s.referred * s.flicker * f**-s.exponent for s in loud)
+        flicker = sum(s.weight * s.flicker * f**-s.exponent for s in loud)
         return Definition("", f, Root(f, flicker, white, Pick.ONLY))
 
 
@@ -291,51 +296,6 @@ def _reduced(top: Any, bottom: Any) -> Any:
     import sympy
 
     return sympy.factor_terms(sympy.cancel(top / bottom))
-
-
-def _coefficients(letter: str, count: int) -> tuple[Any, ...]:
-    """Symbols for the coefficients of a polynomial; a denominator's first one is positive."""
-    import sympy
-
-    first = sympy.Symbol(f"{letter}_0", positive=True) if letter == "d" else sympy.Symbol(f"{letter}_0", real=True)
-    return (first, *(sympy.Symbol(f"{letter}_{k}", real=True) for k in range(1, count)))
-
-
-def _fallen(top: Any, bottom: Any, n: Any, d: Any) -> Any:
-    """0 where the squared magnitude has fallen to half of its value at zero frequency."""
-    return 2 * d**2 * top - n**2 * bottom
-
-
-def _at_one(top: Any, bottom: Any, n: Any, d: Any) -> Any:  # noqa: ARG001
-    """0 where the magnitude is 1."""
-    return top - bottom
-
-
-@lru_cache(maxsize=64)
-def _crossing_law(of: Callable[[Any, Any, Any, Any], Any], present: tuple[int, ...], count: int) -> Definition:
-    """The frequency of a condition for coefficients as symbols; written out where it is linear in omega^2.
-
-    Args:
-        of: The condition on numerator and denominator squared, and on their first coefficients.
-        present: Powers of s that the numerator has.
-        count: How many coefficients the denominator has.
-    """
-    import sympy
-
-    x = sympy.Symbol("x", positive=True)
-    every, d = _coefficients("n", max(present, default=0) + 1), _coefficients("d", count)
-    n = [c if k in present else 0 for k, c in enumerate(every)]
-    equation = of(squared_magnitude(n, x), squared_magnitude(d, x), n[0], d[0])
-    poly = sympy.Poly(sympy.expand(equation), x)
-    if poly.degree() == 1:
-        slope, static = poly.all_coeffs()
-        top, bottom = sympy.fraction(sympy.cancel(static / -slope))
-        usual = dict.fromkeys((*every, *d), 1) | {every[0]: 3, d[-1]: 7}  # a gain above 1, a pole below the zero
-        sign = 1 if top.subs(usual) > 0 else -1
-        return Definition("", sympy.sqrt(sign * top) / (2 * sympy.pi * sympy.sqrt(sign * bottom)))
-    terms = [c * x ** k[0] for k, c in sorted(poly.terms())]
-    root = Root(x, sum(terms), sympy.S.Zero, Pick.LOWEST_POSITIVE)
-    return Definition("", sympy.sqrt(x) / (2 * sympy.pi), root)
 
 
 def _white_noise_power(a: Algebra) -> Definition:
@@ -364,8 +324,7 @@ def _flicker_noise_power(a: Algebra) -> Definition:
     import sympy
 
     solution = SymbolicSolution(a)
-    start = a.symbol("noise_from")
-    stop = sympy.Max(a.symbol("pole_frequency"), start, evaluate=False)
+    start, stop = a.symbol("noise_from"), a.symbol("noise_until")
     total: Any = 0
     for source in solution.noise_sources:
         if source.flicker == 0:
@@ -377,6 +336,15 @@ def _flicker_noise_power(a: Algebra) -> Definition:
     return Definition("flicker_noise_power", total, source="flicker density from noise_from to the pole frequency")
 
 
+def _noise_until(a: Algebra) -> Definition:
+    import sympy
+
+    ends = a.symbol("pole_frequency"), a.symbol("noise_from")
+    return Definition(
+        "noise_until", sympy.Max(*ends, evaluate=False), source="up to the pole; nothing where it is lower"
+    )
+
+
 def _output_capacitance(a: Algebra) -> Definition:
     found = a.network.node_capacitance("out")
     return Definition("output_capacitance", found, source="all capacitance that hangs on the output node")
@@ -385,6 +353,7 @@ def _output_capacitance(a: Algebra) -> Definition:
 OF_CIRCUIT: dict[str, Callable[[Algebra], Definition]] = {
     "white_noise_power": _white_noise_power,
     "flicker_noise_power": _flicker_noise_power,
+    "noise_until": _noise_until,
     "output_capacitance": _output_capacitance,
 }
 """Levels of the circuit that metrics are written in."""

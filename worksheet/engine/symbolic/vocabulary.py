@@ -79,6 +79,7 @@ _CIRCUIT = (
     Word("output_capacitance", "C_o", "Capacitance that hangs on the output node", "F"),
     Word("white_noise_power", "P_w", "White noise power at the output", "V^2"),
     Word("flicker_noise_power", "P_f", "Flicker noise power at the output", "V^2"),
+    Word("noise_until", "f_h", "Frequency up to which flicker noise is counted", "Hz"),
     Word("output_at_rail", "V_orail", "Output for a gate at the rail", "V", positive=False),
     Word("settling_rise", "t_r", "Settling of a rising step", "s"),
     Word("settling_fall", "t_f", "Settling of a falling step", "s"),
