@@ -100,6 +100,19 @@ PROJECT = Table(
             ),
             names="a metric that adds up over sheets",
         ),
+        Table(
+            "requirement",
+            "What the specification asks of the chip, by number: one that no target's id names is listed in reviews.",
+            entry=Key(
+                "requirement",
+                "Requirement",
+                "What is required, in words; a target covers it by carrying its number as id.",
+                Kind.TEXT,
+                moves_results=False,
+                example="Bandwidth of the element buffer",
+            ),
+            names="the number of a requirement",
+        ),
     ),
 )
 """The whole project file."""

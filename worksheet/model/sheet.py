@@ -205,7 +205,10 @@ class Process:
 
 @dataclass(frozen=True, slots=True)
 class ProjectFile:
-    """biasbook.toml: `processes`, `temperatures` [K] and `supplies` [V] span the conditions; `budgets` in SI units."""
+    """biasbook.toml: `processes`, `temperatures` [K] and `supplies` [V] span the conditions; `budgets` in SI units.
+
+    `requirements` maps the number of a requirement to what it says.
+    """
 
     file: str
     title: str
@@ -216,4 +219,5 @@ class ProjectFile:
     supplies: tuple[float, ...]
     nominal: Condition
     budgets: Mapping[str, float]
+    requirements: Mapping[str, str] = field(default_factory=dict)
     lines: Mapping[str, int] = field(default_factory=dict, compare=False)

@@ -31,6 +31,7 @@ def review(result: Review) -> Plain:
         "met": result.met,
         "sheets": [sheet(s) for s in result.sheets],
         "budget": [budget(b) for b in result.budgets],
+        "uncovered": [{"id": number, "text": said} for number, said in result.uncovered.items()],
         "problems": problems(result.problems),
     }
 

@@ -48,6 +48,11 @@ def text(result: Review, width: int, *, details: bool = False) -> Iterator[str]:
         yield ""
         yield "Budgets, all blocks times their count"
         yield from lines(_budgets(result), width, "  ")
+    if result.uncovered:
+        yield ""
+        yield "Requirements that no target names"
+        for number, said in result.uncovered.items():
+            yield from wrapped(f"{number}: {clean(said)}", width, "  ")
     yield ""
     if any(v.what == "max_voltage" for sheet in result.sheets for v in sheet.validity):
         yield from wrapped(wording.CAUTION, width)

@@ -140,7 +140,10 @@ class BudgetReview:
 
 @dataclass(frozen=True)
 class Review:
-    """A whole project against its targets and budgets."""
+    """A whole project against its targets and budgets.
+
+    `uncovered` maps each requirement that no target's id names to what it says.
+    """
 
     title: str
     sheets: tuple[SheetReview, ...] = ()
@@ -149,6 +152,7 @@ class Review:
     conditions: int = 0
     nominal: Condition | None = None
     bad: tuple[str, ...] = field(default=())
+    uncovered: Mapping[str, str] = field(default_factory=dict)
 
     @property
     def met(self) -> bool:

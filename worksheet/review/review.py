@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import datetime
-from collections.abc import Callable
+from collections.abc import Callable, Mapping
 from dataclasses import dataclass
 
 from worksheet.model.problem import Problem
@@ -63,7 +63,19 @@ def review(
         conditions=len(project.file.processes) * len(project.file.temperatures) * len(project.file.supplies),
         nominal=nominal,
         bad=bad,
+        uncovered=uncovered(project),
     )
+
+
+def uncovered(project: Project) -> Mapping[str, str]:
+    """Requirements of the project file whose number is no target's id, by number.
+
+    Targets of a sheet that cannot be read cover nothing.
+    """
+    if project.file is None:
+        return {}
+    covered = {target.id for sheet in project.sheets.values() for target in sheet.targets.values()}
+    return {number: text for number, text in project.file.requirements.items() if number not in covered}
 
 
 def solve(evaluator: Evaluator, name: str) -> tuple[Points | None, list[Problem]]:

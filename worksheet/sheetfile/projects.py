@@ -1,4 +1,4 @@
-"""The project file read into a ProjectFile: conditions and budgets."""
+"""The project file read into a ProjectFile: conditions, budgets and requirements."""
 
 from __future__ import annotations
 
@@ -22,6 +22,8 @@ from worksheet.sheetfile.values import READERS, missing, number, part_of, subtab
 _LIMIT = "max"  # the one key of a budget
 _BUDGET = part_of(PROJECT, "budget")
 _BUDGET_KEY = cast(Key, _BUDGET.entry)
+_REQUIREMENT = part_of(PROJECT, "requirement")
+_REQUIREMENT_KEY = cast(Key, _REQUIREMENT.entry)
 
 
 def build(reader: Reader, source: Source) -> ProjectFile | None:
@@ -34,6 +36,7 @@ def build(reader: Reader, source: Source) -> ProjectFile | None:
         reader.report("process", f"Found {found(process)}, which cannot name a process file: {reason}.")
     conditions = _conditions(reader, data)
     budgets = _budgets(reader, data)
+    requirements = _requirements(reader, data)
     if reader.problems:
         return None
     return ProjectFile(
@@ -46,6 +49,7 @@ def build(reader: Reader, source: Source) -> ProjectFile | None:
         supplies=conditions["supply"],
         nominal=conditions["nominal"],
         budgets=MappingProxyType(budgets),
+        requirements=MappingProxyType(requirements),
         lines=MappingProxyType(source.places.lines),
     )
 
@@ -85,6 +89,14 @@ def _budgets(reader: Reader, data: Mapping[str, Any]) -> dict[str, float]:
         if limit is not None:
             budgets[name] = limit
     return budgets
+
+
+def _requirements(reader: Reader, data: Mapping[str, Any]) -> dict[str, str]:
+    """What [requirement] states, by number."""
+    read = READERS[_REQUIREMENT_KEY.kind]
+    stated = subtable(reader, data.get(_REQUIREMENT.name, {}), _REQUIREMENT.name)
+    texts = {name: read(reader, _REQUIREMENT_KEY, raw, below(_REQUIREMENT.name, name)) for name, raw in stated.items()}
+    return {clean(name): text for name, text in texts.items() if text is not None}
 
 
 def _limit(reader: Reader, raw: object, where: str, dimension: Dimension) -> float | None:
