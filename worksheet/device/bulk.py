@@ -73,11 +73,13 @@ def source_voltage(parameters: Parameters, u: Number, gate: Number, drain: Numbe
     bend = rest * excess * np.sqrt(safe)
     wanted = gate - p.threshold - rest + safe + body * np.sqrt(safe)
     x = np.sqrt(np.maximum(wanted, safe))
+    done = np.zeros(np.shape(x), dtype=bool)  # what has arrived stays: a number must not depend on its neighbours
     for _ in range(_STEPS):
         error = x * x + body * x + bend / x - wanted
         step = error / np.maximum(2.0 * x + body - bend / (x * x), 1e-3)
-        x = np.maximum(x - step, 0.1 * x)
-        if np.all(np.abs(step) <= 1e-16 * x):
+        x = np.where(done, x, np.maximum(x - step, 0.1 * x))
+        done = done | (np.abs(step) <= 1e-16 * x)
+        if done.all():
             break
     return np.asarray(np.where(psi > 0, x * x - safe, flat))
 

@@ -38,4 +38,5 @@ def flicker_density(parameters: Parameters, transconductance: Array) -> Number:
     p = parameters
     if not np.any(p.flicker):
         return 0.0
-    return transconductance**2 * p.flicker / (p.gate_capacitance * p.width * p.length)
+    density = transconductance**2 * p.flicker / (p.gate_capacitance * p.width * p.length)
+    return np.where(np.asarray(p.flicker) == 0.0, 0.0, density)

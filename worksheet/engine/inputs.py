@@ -6,7 +6,7 @@ front (samples, trial points, sheets of the same circuit) broadcast.
 
 from __future__ import annotations
 
-from collections.abc import Mapping
+from collections.abc import Callable, Mapping
 from dataclasses import dataclass
 
 import numpy as np
@@ -31,8 +31,8 @@ class Inputs:
         drive_resistance: [ohm]; read only where the circuit is driven through one.
         well_capacitance: [F]; read only with the bulk on the source.
         bias_overhead, saturation_margin, settling_tolerance, noise_from: [-], [V], [-], [Hz]
-        step_size: Step at the input, None for small steps. [V]
-        input_level, output_level: From ground, None where not assumed. [V]
+        step_size: Step at the input, None or 0 for small steps. [V]
+        input_level, output_level: From ground, None or NaN where not assumed. [V]
     """
 
     circuit: Circuit
@@ -57,6 +57,14 @@ class Inputs:
     def thermal(self) -> Number:
         """U_T. [V]"""
         return thermal_voltage(self.temperature)
+
+
+def given_or(given: Number | None, otherwise: Callable[[], Array]) -> Array:
+    """What is given, and where nothing is (None or NaN) what is found instead."""
+    if given is None:
+        return otherwise()
+    missing = np.isnan(given)
+    return np.where(missing, otherwise(), given) if missing.any() else np.asarray(given)
 
 
 def nominal(value: Number) -> Array:

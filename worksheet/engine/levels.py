@@ -10,11 +10,12 @@ from dataclasses import dataclass
 from functools import cached_property
 
 import numpy as np
+from numpy.typing import NDArray
 
 from worksheet.device import bulk, charge
 from worksheet.device.arrays import Array, Number
 from worksheet.device.transistor import saturation_voltage
-from worksheet.engine.inputs import Inputs, nominal
+from worksheet.engine.inputs import Inputs, given_or, nominal
 from worksheet.stages.circuit import Circuit
 from worksheet.stages.stage import BIAS, GROUND, IN, OUT, SUPPLY, Transistor
 
@@ -65,26 +66,27 @@ class Levels:
 
     @cached_property
     def assumed_output(self) -> Array | None:
-        """The output level that is assumed, in the frame. [V]"""
+        """The output level that is assumed, in the frame; None or NaN where none is. [V]"""
         return None if self._in.output_level is None else self.turn(self._in.output_level)
 
     @cached_property
     def _input_given_or_found(self) -> Array | None:
         """Level of a source- or drain-driven input. [V]"""
-        if self._in.input_level is not None:
-            return self.turn(self._in.input_level)
         if self._above[0] == IN:
-            return np.asarray(self._in.supply)
+            return given_or(self._assumed_input, lambda: np.asarray(self._in.supply))
         if self._below[0] == IN:
-            return self._held(self._source_input_room / 2.0)
+            return given_or(self._assumed_input, lambda: self._held(self._source_input_room / 2.0))
         return None
+
+    @cached_property
+    def _assumed_input(self) -> Array | None:
+        """The input level that is assumed, in the frame; None or NaN where none is. [V]"""
+        return None if self._in.input_level is None else self.turn(self._in.input_level)
 
     @cached_property
     def _source_input_room(self) -> Array:
         """Highest level of a source-driven input for the output that is given, or else for any output. [V]"""
-        highest = (
-            self.assumed_output if self.assumed_output is not None else self._in.supply - self._stack(self._above[1])
-        )
+        highest = given_or(self.assumed_output, lambda: self._in.supply - self._stack(self._above[1]))
         return np.asarray(highest - self._stack(self._below[1]))
 
     def _fixed(self, node: str) -> Array:
@@ -132,19 +134,24 @@ class Levels:
         if level is not None:
             return level
         if self._circuit.stage.holds_input:
-            if self.assumed_output is not None:
-                return self.gate_for_output(self.assumed_output)
-            return self._held(self.gate_for_output((self.output_low + self.output_high) / 2.0))
+            return given_or(self._assumed_input, lambda: given_or(self._gate_for_assumed, self._found_gate))
         return self.gates[self._circuit.stage.transistors[0].name]
+
+    @cached_property
+    def _gate_for_assumed(self) -> Array | None:
+        """The gate of a follower whose output is assumed; None or NaN where it is not. [V]"""
+        return None if self.assumed_output is None else self.gate_for_output(self.assumed_output)
+
+    def _found_gate(self) -> Array:
+        """The gate of a follower that stands in the middle of its range at the nominal condition. [V]"""
+        return self._held(self.gate_for_output((self.output_low + self.output_high) / 2.0))
 
     @cached_property
     def output(self) -> Array:
         """Output level in the frame. [V]"""
-        if self.assumed_output is not None:
-            return self.assumed_output
         if self._circuit.stage.holds_input:
-            return self.output_for_gate(self.input)
-        return self._held((self.output_low + self.output_high) / 2.0)
+            return given_or(self.assumed_output, lambda: self.output_for_gate(self.input))
+        return given_or(self.assumed_output, lambda: self._held((self.output_low + self.output_high) / 2.0))
 
     @cached_property
     def empty(self) -> Array:
@@ -152,12 +159,14 @@ class Levels:
 
         Zero or negative where a level exists.
         """
-        short = np.full((), -np.inf)
-        stage = self._circuit.stage
-        if self._in.output_level is None and not (stage.holds_input and self._in.input_level is not None):
-            short = np.maximum(short, nominal(self.output_low - self.output_high))
-        if self._below[0] == IN and self._in.input_level is None:
-            short = np.maximum(short, nominal(-self._source_input_room))
+        none = np.full((), -np.inf)
+        out_is_sought = _missing(self._in.output_level)
+        if self._circuit.stage.holds_input:
+            out_is_sought = out_is_sought & _missing(self._in.input_level)
+        short = np.where(out_is_sought, nominal(self.output_low - self.output_high), none)
+        if self._below[0] == IN:
+            in_is_sought = _missing(self._in.input_level)
+            short = np.maximum(short, np.where(in_is_sought, nominal(-self._source_input_room), none))
         return short
 
     @cached_property
@@ -239,6 +248,11 @@ class Levels:
     def range_moves(self, step: Number) -> tuple[Number, Number]:
         """By how much the lower and the upper end of the output range move when the input moves. [V]"""
         return (step if self._below[0] == IN else 0.0), (step if self._above[0] == IN else 0.0)
+
+
+def _missing(level: Number | None) -> NDArray[np.bool_]:
+    """Where a level is not assumed."""
+    return np.ones((), dtype=np.bool_) if level is None else np.isnan(nominal(level))
 
 
 @dataclass(frozen=True, eq=False, slots=True)

@@ -56,6 +56,17 @@ def missing_where(values: Number, *rules: tuple[ArrayLike, Reason]) -> Measured:
     return Measured(np.where(reasons == Reason.NONE, array, np.nan), reasons)
 
 
+def either(mask: ArrayLike, first: Measured, second: Measured) -> Measured:
+    """The first where a mask holds, the second elsewhere."""
+    values = np.where(mask, first.values, second.values)
+    if first.reasons is None and second.reasons is None:
+        return Measured(values)
+    none = np.zeros((), dtype=np.int8)
+    parts = [none if part.reasons is None else part.reasons for part in (first, second)]
+    reasons = np.where(mask, *parts)
+    return Measured(values, reasons if reasons.any() else None)
+
+
 def with_reasons_of(values: Number, parts: Sequence[Measured], *rest: tuple[ArrayLike, Reason]) -> Measured:
     """Plain values; where one is missing, the reason of the first part that is missing there, else the first of `rest`.
 

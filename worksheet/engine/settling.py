@@ -70,14 +70,22 @@ def _last_crossing(weights: Complex, constants: Complex, tolerance: Array) -> Ar
     rates = np.where(constants == 0, np.inf, 1.0 / np.where(constants == 0, 1.0, constants))
     fine = np.all((rates.real > 0) & np.isfinite(weights), axis=0)
     rates, weights = np.where(fine, rates, 1.0), np.where(fine, weights, 1.0)
-    error = _Error(weights, np.where(np.isfinite(rates.real), rates, 1.0), tolerance)
-    low, high, never = error.bracket_of_two() if len(weights) == 2 else error.bracket_by_scan()
+    rates = np.where(np.isfinite(rates.real), rates, 1.0)
+    rings = np.any(rates.imag != 0, axis=0)
+    settled = np.full(rings.shape, np.nan)
+    for part in (rings, ~rings):  # apart: a number must not depend on whether its neighbours ring
+        if part.any():
+            settled[part] = _last(_Error(weights[:, part], rates[:, part], tolerance[part]), len(weights))
+    return np.where(fine, settled, np.nan).reshape(shape)
+
+
+def _last(error: _Error, poles: int) -> Array:
+    low, high, never = error.bracket_of_two() if poles == 2 else error.bracket_by_scan()
     for _ in range(_BISECTIONS):
         middle = 0.5 * (low + high)
         outside = error.excess(middle[None])[0] > 0
         low, high = np.where(outside, middle, low), np.where(outside, high, middle)
-    settled = np.where(never, 0.0, 0.5 * (low + high))
-    return np.where(fine, settled, np.nan).reshape(shape)
+    return np.where(never, 0.0, 0.5 * (low + high))
 
 
 class _Error:

@@ -17,7 +17,7 @@ from worksheet.engine import polynomial as poly
 from worksheet.engine import settling
 from worksheet.engine.inputs import Inputs
 from worksheet.engine.levels import Levels
-from worksheet.engine.measured import Measured, missing_where, with_reasons_of
+from worksheet.engine.measured import Measured, either, missing_where, with_reasons_of
 from worksheet.engine.nodal import Network
 from worksheet.engine.operating import Operating, operating_points
 from worksheet.model import metrics
@@ -214,22 +214,23 @@ class NumericSolution:
     def settling_time(self) -> Measured:
         """[s]"""
         step = self.inputs.step_size
-        if step is None:
-            settled = settling.linear(self.network.transfer, self.network.denominator, self.inputs.settling_tolerance)
-            return missing_where(settled, (self._static[0] == 0, Reason.NO_GAIN), (np.isnan(settled), Reason.UNSTABLE))
-        if not self.inputs.circuit.stage.source_output:
-            return missing_where(
-                settling.drain_step(
-                    step,
-                    self["dc_gain"],
-                    self["slew_rate"],
-                    1.0 / (_TWO_PI * self["pole_frequency"]),
-                    self.inputs.settling_tolerance,
-                )
-            )
-        return self._source_settling(step)
+        large = np.zeros((), dtype=bool) if step is None else np.asarray(step) > 0
+        if step is None or not large.any():
+            return self._small_step()
+        stepped = self._source_step(step) if self.inputs.circuit.stage.source_output else self._drain_step(step)
+        return stepped if large.all() else either(large, stepped, self._small_step())
 
-    def _source_settling(self, step: Number) -> Measured:
+    def _small_step(self) -> Measured:
+        settled = settling.linear(self.network.transfer, self.network.denominator, self.inputs.settling_tolerance)
+        return missing_where(settled, (self._static[0] == 0, Reason.NO_GAIN), (np.isnan(settled), Reason.UNSTABLE))
+
+    def _drain_step(self, step: Number) -> Measured:
+        tau = 1.0 / (_TWO_PI * self["pole_frequency"])
+        return missing_where(
+            settling.drain_step(step, self["dc_gain"], self["slew_rate"], tau, self.inputs.settling_tolerance)
+        )
+
+    def _source_step(self, step: Number) -> Measured:
         main, circuit = self.transistors[0], self.inputs.circuit
         p = main.parameters
         drive = (main.kappa if circuit.stage.drive == "gate" else p.drain_coupling) * step
@@ -343,14 +344,20 @@ def _flicker_span(start: Number, stop: Number, exponent: Number) -> Array:
 def _corner(white: Array, flicker: Sequence[tuple[Array, Array]]) -> Array:
     """f with sum of a f^-alpha = white: closed form for one exponent, else Newton's iteration in ln f."""
     total = sum((a for a, _ in flicker), np.zeros(()))
-    exponent = flicker[0][1]
-    f = (total / white) ** (1.0 / exponent)
-    if all(np.array_equal(exponent, other) for _, other in flicker):
-        return np.where(total == 0, 0.0, f)
-    x = np.log(f)
+    exponent, one = flicker[-1][1], np.ones((), dtype=bool)
+    for a, other in reversed(flicker[:-1]):  # that of the first source that has any
+        exponent = np.where(a > 0, other, exponent)
+    for a, other in flicker:
+        one = one & ((a == 0) | (other == exponent))
+    f = np.where(total == 0, 0.0, (total / white) ** (1.0 / exponent))
+    return f if one.all() else np.where(one | (total == 0), f, _corner_of_several(white, flicker, np.log(f)))
+
+
+def _corner_of_several(white: Array, flicker: Sequence[tuple[Array, Array]], start: Array) -> Array:
+    x = start
     for _ in range(60):
         parts = [a * np.exp(-alpha * x) for a, alpha in flicker]
         level = sum(parts, np.zeros(()))
         slope = sum((alpha * part for (_, alpha), part in zip(flicker, parts, strict=True)), np.zeros(()))
         x = x + np.clip(np.log(level / white) * level / slope, -50.0, 50.0)
-    return np.where(total == 0, 0.0, np.exp(x))
+    return np.exp(x)

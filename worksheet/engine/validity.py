@@ -70,16 +70,16 @@ def _ranges(solution: NumericSolution) -> Iterator[Shortfall]:
 
 def _output(solution: NumericSolution) -> Array:
     levels, step = solution.levels, solution.inputs.step_size
-    worst = _outside(levels.output, levels.output_low, levels.output_high, 0.0, 0.0)
+    still = worst = _outside(levels.output, levels.output_low, levels.output_high, 0.0, 0.0)
     if step is None:
-        return worst
+        return still
     for sign in (1.0, -1.0):
         low_moves, high_moves = levels.range_moves(sign * step)
         moved = _output_after(solution, sign * step)
         worst = np.maximum(
             worst, _outside(moved, levels.output_low + low_moves, levels.output_high + high_moves, 0.0, 0.0)
         )
-    return worst
+    return np.where(np.asarray(step) > 0, worst, still)
 
 
 def _output_after(solution: NumericSolution, step: Number) -> Array:
