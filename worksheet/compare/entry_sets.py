@@ -12,13 +12,15 @@ from typing import Any
 
 from worksheet.compare.same import same
 from worksheet.compare.taking import edits
-from worksheet.model.sheet_keys import COLLISION, EVIDENCE, WAIVER
+from worksheet.model.sheet_keys import ACCEPTANCE, COLLISION, EVIDENCE, REMARK, WAIVER
 from worksheet.sheetfile.document import KeyPath
 from worksheet.sheetfile.edit import AddEntry, Edit
 
 _ABOUT = {
     EVIDENCE.name: ("metric", "found_by", "at", "reference"),
     WAIVER.name: ("target",),
+    REMARK.name: ("by", "text", "about"),
+    ACCEPTANCE.name: ("by", "basis"),
     COLLISION.name: ("key",),
 }
 _ONCE = {WAIVER.name}  # two sides that each add one for the same thing contradict each other

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import datetime
 from collections.abc import Iterator, Mapping
 from dataclasses import dataclass
 from typing import Any
@@ -14,7 +15,8 @@ from worksheet.model.sheet_keys import ASSUMPTIONS, BIAS_KEYS, SHEET, SOLVE_KEYS
 from worksheet.project.links import values_of
 from worksheet.stages import catalogue
 
-_BESIDE = ("low", "high", "standard_error", "source", "trust", "note")
+_BESIDE = ("low", "high", "standard_error", "source", "trust", "note", "checked_by", "checked")
+_ENTRIES = {"evidence": "evidence", "waiver": "waivers", "remark": "remarks", "acceptance": "acceptances"}
 
 
 @dataclass(frozen=True, slots=True)
@@ -53,7 +55,9 @@ def of_project(file: ProjectFile) -> Stated:
         "conditions.nominal.supply": (file.nominal.supply, _unit(SUPPLY)),
     }
     texts = {name: (getattr(file, name), "") for name in ("title", "owner", "process")}
-    return {**texts, **conditions, **{f"budget.{name}.max": (value, "") for name, value in file.budgets.items()}}
+    budgets = {f"budget.{name}.max": (value, "") for name, value in file.budgets.items()}
+    requirements = {f"requirement.{number}": (text, "") for number, text in file.requirements.items()}
+    return {**texts, **conditions, **budgets, **requirements}
 
 
 def of_process(process: Process) -> Stated:
@@ -72,7 +76,7 @@ def of_process(process: Process) -> Stated:
 
 
 def of_sheet(sheet: Sheet) -> Stated:
-    """What a sheet states: its keys, values with what stands beside them, targets, evidence and waivers."""
+    """What a sheet states: its keys, values with what stands beside them, targets, evidence, waivers, remarks and acceptances."""
     stage = catalogue.find(sheet.stage)
     design: tuple[Key, ...] = () if stage is None else stage.design_keys(sheet.bias.ideal)
     units = {key.name: _unit(key) for key in (*design, *ASSUMPTIONS, *BIAS_KEYS)}
@@ -86,10 +90,9 @@ def of_sheet(sheet: Sheet) -> Stated:
         found[f"solve.{how.name}"] = (getattr(sheet.solve, how.name), _unit(how))
     for name, target in sheet.targets.items():
         found.update(_fields(f"target.{name}", target, {"name", "line"}))
-    for number, evidence in enumerate(sheet.evidence):
-        found.update(_fields(f"evidence.{number}", evidence, {"line"}))
-    for number, waiver in enumerate(sheet.waivers):
-        found.update(_fields(f"waiver.{number}", waiver, {"line"}))
+    for array, attribute in _ENTRIES.items():
+        for number, entry in enumerate(getattr(sheet, attribute)):
+            found.update(_fields(f"{array}.{number}", entry, {"line"}))
     return {key: entry for key, entry in found.items() if entry[0] not in (None, "", ())}
 
 
@@ -110,9 +113,13 @@ def _value(key: str, value: Value, unit: str) -> dict[str, tuple[Any, str]]:
     if stated is None and value.numbers:
         stated = list(value.numbers)
     beside = {
-        f"{key}.{name}": (getattr(value, name), unit) for name in _BESIDE if getattr(value, name) not in (None, "")
+        f"{key}.{name}": (_text(one), unit) for name in _BESIDE if (one := getattr(value, name)) not in (None, "")
     }
     return {key: (stated, unit), **beside}
+
+
+def _text(stated: Any) -> Any:
+    return str(stated) if isinstance(stated, datetime.date) else stated
 
 
 def _unit(key: Key) -> str:

@@ -48,7 +48,7 @@ class Key:
         default: Taken where the key is left out; None where there is none.
         required: Whether leaving it out is an error.
         choices: For Kind.CHOICE.
-        annotated: May be a table {value, low, high, source, trust, note, standard_error} instead of a bare value.
+        annotated: May be a table {value, low, high, source, trust, ...} (ANNOTATIONS) instead of a bare value.
         formula: May be {formula = "..."}.
         listed: May be a list of values.
         where: Where such a number is found; for process parameters.
@@ -164,6 +164,14 @@ ANNOTATIONS = Table(
             "One standard deviation of the value, from the fit that gave it.",
             moves_results=False,
         ),
+        Key(
+            "checked_by",
+            "Checked by",
+            "Who looked the value up again and stands by it, when a block changes hands.",
+            Kind.TEXT,
+            moves_results=False,
+        ),
+        Key("checked", "Checked", "The day the value was looked up again.", Kind.DATE, moves_results=False),
     ),
 )
 """The one description of the table that may stand in place of a bare value."""

@@ -22,6 +22,7 @@ class Value:
         low, high: Range it may turn out to have. [unit of the key]
         standard_error: One standard deviation. [unit of the key]
         source, trust, note: What the user said about it; "" where nothing.
+        checked_by, checked: Who looked it up again, and when.
         unit: Unit as written; matters for own names only.
         text: The value as typed.
         line: Line in its file, counted from 1.
@@ -37,6 +38,8 @@ class Value:
     source: str = ""
     trust: str = ""
     note: str = ""
+    checked_by: str = ""
+    checked: datetime.date | None = None
     unit: str = ""
     text: str = ""
     line: int | None = field(default=None, compare=False)
@@ -106,6 +109,37 @@ class Waiver:
 
 
 @dataclass(frozen=True, slots=True)
+class Remark:
+    """What somebody has to say about a sheet or one of its values (`about`, a dotted key; "" for the sheet)."""
+
+    by: str
+    text: str
+    about: str = ""
+    to: str = ""
+    dated: datetime.date | None = None
+    settled: datetime.date | None = None
+    settled_by: str = ""
+    answer: str = ""
+    line: int | None = field(default=None, compare=False)
+
+    @property
+    def open(self) -> bool:
+        """Whether it still wants an answer."""
+        return self.settled is None
+
+
+@dataclass(frozen=True, slots=True)
+class Acceptance:
+    """Who accepted a sheet, for the inputs that the digest `basis` stands for."""
+
+    by: str
+    basis: str
+    dated: datetime.date | None = None
+    note: str = ""
+    line: int | None = field(default=None, compare=False)
+
+
+@dataclass(frozen=True, slots=True)
 class Collision:
     """A key that two sides of a merge changed differently, to be settled. Values as TOML, "" for none."""
 
@@ -166,6 +200,8 @@ class Sheet:
     targets: Mapping[str, Target] = field(default_factory=dict)
     evidence: tuple[Evidence, ...] = ()
     waivers: tuple[Waiver, ...] = ()
+    remarks: tuple[Remark, ...] = ()
+    acceptances: tuple[Acceptance, ...] = ()
     collisions: tuple[Collision, ...] = ()
     lines: Mapping[str, int] = field(default_factory=dict, compare=False)
 

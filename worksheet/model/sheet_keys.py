@@ -406,6 +406,56 @@ WAIVER = Table(
     repeated=True,
 )
 
+REMARK = Table(
+    "remark",
+    "What somebody has to say or to ask about the sheet or one of its values, open until it is settled.",
+    keys=(
+        Key("by", "By", "Who says it.", Kind.TEXT, required=True, moves_results=False, example="M. Sandoe"),
+        Key(
+            "text",
+            "Text",
+            "What is said or asked.",
+            Kind.TEXT,
+            required=True,
+            moves_results=False,
+            example="Is the load still that of the old floor plan?",
+        ),
+        Key(
+            "about",
+            "About",
+            "The dotted key it is about, such as assume.load_capacitance; left out: the whole sheet.",
+            Kind.TEXT,
+            moves_results=False,
+            example="target.bandwidth",
+        ),
+        Key("to", "To", "Who is asked to answer.", Kind.TEXT, moves_results=False),
+        Key("dated", "Dated", "The day it was said.", Kind.DATE, moves_results=False),
+        Key("settled", "Settled", "The day it was settled; left out while it is open.", Kind.DATE, moves_results=False),
+        Key("settled_by", "Settled by", "Who settled it.", Kind.TEXT, moves_results=False),
+        Key("answer", "Answer", "What came of it.", Kind.TEXT, moves_results=False),
+    ),
+    repeated=True,
+)
+
+ACCEPTANCE = Table(
+    "acceptance",
+    "Who accepted the block, and for which inputs: when these move, an accepted sheet falls back to for-review.",
+    keys=(
+        Key("by", "By", "Who accepted the block.", Kind.TEXT, required=True, moves_results=False),
+        Key(
+            "basis",
+            "Basis",
+            "The sheet's digest then: another one now means that the accepted inputs have moved.",
+            Kind.TEXT,
+            required=True,
+            moves_results=False,
+        ),
+        Key("dated", "Dated", "The day the block was accepted.", Kind.DATE, moves_results=False),
+        Key("note", "Note", "On what grounds, or with what reservations.", Kind.TEXT, moves_results=False),
+    ),
+    repeated=True,
+)
+
 COLLISION = Table(
     "collision",
     "Where two people gave one key different values, to be settled; the file holds what the first one gave.",
@@ -512,12 +562,15 @@ SHEET = Table(
         ),
         EVIDENCE,
         WAIVER,
+        REMARK,
+        ACCEPTANCE,
         COLLISION,
     ),
 )
 """The whole sheet. In [assume] and [choose] the stage adds its design variables (stages.stage.Stage.design_keys)."""
 
 __all__ = [
+    "ACCEPTANCE",
     "ASSUMPTIONS",
     "AT",
     "BIAS_KEYS",
@@ -530,6 +583,7 @@ __all__ = [
     "OWN",
     "OWN_CONDITIONS",
     "PROPOSE",
+    "REMARK",
     "SHEET",
     "SOLVE_KEYS",
     "TARGET_KEYS",

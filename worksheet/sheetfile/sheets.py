@@ -31,7 +31,14 @@ from worksheet.sheetfile.taken import (
     refusal,
     taken,
 )
-from worksheet.sheetfile.targets import read_collisions, read_evidence, read_targets, read_waivers
+from worksheet.sheetfile.targets import (
+    read_acceptances,
+    read_collisions,
+    read_evidence,
+    read_remarks,
+    read_targets,
+    read_waivers,
+)
 from worksheet.sheetfile.values import READERS, subtable, table
 from worksheet.stages import catalogue
 from worksheet.stages.stage import MAIN, Stage
@@ -63,6 +70,8 @@ def build(reader: Reader, source: Source, name: str) -> Sheet | None:
     targets, dimensions = read_targets(reader, keys.stage, own, data.get(TARGET, {}))
     evidence = read_evidence(reader, keys.stage, dimensions, data)
     waivers = read_waivers(reader, dimensions, data)
+    remarks = read_remarks(reader, data)
+    acceptances = read_acceptances(reader, data)
     collisions = read_collisions(reader, data)
     values = {ASSUME: assume, CHOOSE: choose, OWN: own, BIAS: bias.values if bias else {}}
     formulas.check_values(reader, keys, values)
@@ -81,6 +90,8 @@ def build(reader: Reader, source: Source, name: str) -> Sheet | None:
         targets=MappingProxyType(targets),
         evidence=evidence,
         waivers=waivers,
+        remarks=remarks,
+        acceptances=acceptances,
         collisions=collisions,
         lines=MappingProxyType(source.places.lines),
         **{key: value for key, value in fields.items() if key in _FIELDS},

@@ -1,19 +1,19 @@
 """Targets, evidence and waivers: what is wanted of a sheet's metrics, what was found of them, and what was forgiven.
 
-The collisions that a merge left are read here too, as entries of the same form.
+Remarks, acceptances and the collisions that a merge left are read here too, as entries of the same form.
 """
 
 from __future__ import annotations
 
-from collections.abc import Iterable, Mapping
-from typing import Any, cast
+from collections.abc import Callable, Iterable, Iterator, Mapping
+from typing import Any, TypeVar, cast
 
 from worksheet.model import dimension as dim
 from worksheet.model import metrics
 from worksheet.model.dimension import Dimension
 from worksheet.model.keys import Key, Kind, Table
-from worksheet.model.sheet import Collision, Evidence, Target, Value, Waiver
-from worksheet.model.sheet_keys import COLLISION, EVIDENCE, SHEET, WAIVER
+from worksheet.model.sheet import Acceptance, Collision, Evidence, Remark, Target, Value, Waiver
+from worksheet.model.sheet_keys import ACCEPTANCE, COLLISION, EVIDENCE, REMARK, SHEET, WAIVER
 from worksheet.model.text import clean, nearest
 from worksheet.model.units import UnitError, parse_unit
 from worksheet.sheetfile.annotated import free_dimension, in_order
@@ -33,6 +33,7 @@ _LIMITS = ("min", "max")
 _FIGURE = ("formula", "unit")  # what a figure of the user's own says besides
 _YIELD = _KEYS["yield"]
 _DEVIATIONS = ("spread",)
+_Entry = TypeVar("_Entry", Acceptance, Collision, Remark)
 
 
 def read_targets(
@@ -196,13 +197,26 @@ def read_waivers(reader: Reader, targets: Dimensions, data: Mapping[str, Any]) -
 
 def read_collisions(reader: Reader, data: Mapping[str, Any]) -> tuple[Collision, ...]:
     """Every [[collision]]."""
-    collisions = []
-    for entry, where in _entries(reader, COLLISION, data):
+    return tuple(_plain(reader, COLLISION, Collision, data))
+
+
+def read_remarks(reader: Reader, data: Mapping[str, Any]) -> tuple[Remark, ...]:
+    """Every [[remark]]."""
+    return tuple(_plain(reader, REMARK, Remark, data))
+
+
+def read_acceptances(reader: Reader, data: Mapping[str, Any]) -> tuple[Acceptance, ...]:
+    """Every [[acceptance]]."""
+    return tuple(_plain(reader, ACCEPTANCE, Acceptance, data))
+
+
+def _plain(reader: Reader, part: Table, kind: Callable[..., _Entry], data: Mapping[str, Any]) -> Iterator[_Entry]:
+    """The entries of an array of tables without quantities."""
+    for entry, where in _entries(reader, part, data):
         before = reader.count
-        fields = table(reader, COLLISION, entry, where)
+        fields = table(reader, part, entry, where)
         if reader.count == before:
-            collisions.append(Collision(line=reader.places.line(where), **fields))
-    return tuple(collisions)
+            yield kind(line=reader.places.line(where), **fields)
 
 
 def _read(
