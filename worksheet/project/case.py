@@ -14,7 +14,6 @@ from typing import Any
 import numpy as np
 
 from worksheet.device.arrays import Array, Number
-from worksheet.device.parameters import Parameters, at_condition
 from worksheet.engine.inputs import Inputs
 from worksheet.engine.solution import NumericSolution
 from worksheet.model import formula as formulas
@@ -22,12 +21,12 @@ from worksheet.model import metrics
 from worksheet.model.formula import Formula, FormulaError
 from worksheet.model.keys import Key
 from worksheet.model.problem import Problem
-from worksheet.model.process_keys import DEVICE_PARAMETERS
 from worksheet.model.sheet import DeviceModel, Sheet, Target, Value
 from worksheet.model.sheet_keys import ASSUMPTIONS, BIAS_KEYS
 from worksheet.project.conditions import ConditionSet
+from worksheet.project.numbers import current_of, inputs_of
 from worksheet.stages import catalogue
-from worksheet.stages.circuit import Circuit
+from worksheet.stages.circuit import Circuit, circuit_of
 from worksheet.stages.stage import BIAS, Stage, Transistor
 
 Moves = Mapping[str, Number]
@@ -36,9 +35,8 @@ Moves = Mapping[str, Number]
 External = Callable[[str, str], Array]
 """Gives SHEET.NAME of another sheet at a case's conditions."""
 
-_NUMBERS = {key.name for key in DEVICE_PARAMETERS if key.dimension is not None}
 _DEFAULTS: dict[str, Key] = {key.name: key for key in ASSUMPTIONS}
-_BIAS = {key.name: key for key in BIAS_KEYS}
+_BIAS = {f"bias.{key.name}": key for key in BIAS_KEYS if key.dimension is not None}
 
 FUNCTIONS: Mapping[str, Callable[..., Any]] = {
     "sqrt": np.sqrt,
@@ -56,6 +54,12 @@ def _reduced(law: Callable[[Any, Any], Any], parts: tuple[Any, ...]) -> Any:
     for part in parts[1:]:
         total = law(total, part)
     return total
+
+
+def _outside(key: Key, values: Array) -> Any:
+    """Where values leave the range of their key."""
+    flat = [key.outside(x) is not None for x in np.ravel(values).tolist()]
+    return np.array(flat, dtype=bool).reshape(np.shape(values))
 
 
 class CaseError(Exception):
@@ -117,14 +121,9 @@ class Case:
     @cached_property
     def circuit(self) -> Circuit:
         """The stage with this sheet's options."""
-        main = self.model(self.stage.transistors[0])
-        return Circuit(
-            self.stage,
-            main.polarity,
-            self.sheet.bulk,
-            self.sheet.bias.ideal,
-            bool(np.any(np.asarray(self.value("drive_resistance")) > 0)),
-        )
+        main, resistance = self.model(self.stage.transistors[0]), self.value("drive_resistance")
+        driven = bool(np.any(np.asarray(resistance) > 0))
+        return circuit_of(self.stage, main.polarity, self.sheet.bulk, self.sheet.bias.ideal, driven)
 
     def model(self, device: Transistor) -> DeviceModel:
         """The process file's device behind one of the circuit's transistors."""
@@ -156,7 +155,7 @@ class Case:
         return sheet.assume.get(name) or sheet.choose.get(name) or sheet.own.get(name)
 
     def value(self, name: str) -> Number:
-        """A value of this sheet by name. [unit of the key], scalar or over conditions
+        """A value of this sheet by name, "bias.KEY" one of its ideal source. [unit of the key], scalar or over conditions
 
         Raises: CaseError where a formula fails or leaves its range; KeyError where there is no such name or it is open.
         """
@@ -171,6 +170,8 @@ class Case:
             return self.conditions.supply
         if name == "temperature":
             return self.conditions.temperature
+        if name in _BIAS:
+            return self._of_bias(_BIAS[name])
         stated = self.stated(name)
         if stated is not None and stated.formula is not None:
             return self._checked(self._where(name), stated, stated.formula, self._key(name))
@@ -183,12 +184,20 @@ class Case:
             raise KeyError(name)
         return float(default)
 
+    def _of_bias(self, key: Key) -> Number:
+        stated = self.sheet.bias.values.get(key.name)
+        if stated is None:
+            return float(key.default or 0.0)
+        if stated.formula is not None:
+            return self._checked(f"bias.{key.name}", stated, stated.formula, key)
+        return stated.number or 0.0
+
     def _checked(self, where: str, stated: Value, formula: Formula, key: Key | None) -> Number:
         """What a value's formula gives, held to the range of its key. `where` is its dotted key."""
         result = self.evaluate(formula, where)
         wrong = ~np.isfinite(result)
         if key is not None:
-            wrong = wrong | np.vectorize(lambda x: key.outside(float(x)) is not None)(result)
+            wrong = wrong | _outside(key, result)
         if np.any(wrong) and (self.strict or not self.moves):
             shape = np.broadcast_shapes(np.shape(wrong), (len(self.conditions),))
             place = int(np.argmax(np.broadcast_to(wrong, shape)))
@@ -248,75 +257,26 @@ class Case:
                 message = f"the formula {formula.text!r} gives no number: {error}"
                 raise CaseError(self._problem_at(where, None, message)) from error
 
-    def _bias(self, name: str) -> Number:
-        moved = self.moves.get(f"bias.{name}")
-        if moved is not None:
-            return moved
-        stated = self.sheet.bias.values.get(name)
-        if stated is None:
-            return float(_BIAS[name].default or 0.0)
-        if stated.formula is not None:
-            return self._checked(f"bias.{name}", stated, stated.formula, _BIAS[name])
-        return stated.number or 0.0
+    def process(self, device: Transistor) -> tuple[Mapping[str, Number], Mapping[str, Array]]:
+        """A transistor's process values by name, and what the corners change of them. [unit of the key]"""
+        model = self.model(device)
+        stated, prefix = self.conditions.numbers(model.name), f"process.{model.name}."
+        moved = {key.removeprefix(prefix): value for key, value in self.moves.items() if key.startswith(prefix)}
+        return {**stated, **moved} if moved else stated, self.conditions.changes(model.name)
 
-    def _process(self, model: DeviceModel) -> dict[str, Number]:
-        prefix = f"process.{model.name}."
-        return {
-            name: self.moves.get(prefix + name, value.number or 0.0)
-            for name, value in model.values.items()
-            if name in _NUMBERS
-        }
+    def given(self, name: str) -> Number | None:
+        """A value that a sheet may leave out altogether; None where it does. [unit of the key]"""
+        return self.value(name) if name in self.moves or self.stated(name) is not None else None
 
     @cached_property
     def current(self) -> Number:
         """Bias current over conditions, with its temperature law. [A]"""
-        exponent = self.value("bias_temperature_exponent")
-        current = self.value("bias_current")
-        if not np.any(exponent):
-            return current
-        nominal = self.conditions.nominal.temperature
-        return np.asarray(current * (np.asarray(self.value("temperature")) / nominal) ** exponent)
-
-    def parameters(self, device: Transistor) -> Parameters:
-        """One transistor's parameters over the conditions."""
-        model = self.model(device)
-        changes = self.conditions.changes(model.name)
-        intended = at_condition(
-            self._process(model),
-            changes,
-            self.value("temperature"),
-            self.conditions.process.reference_temperature,
-            self.value(device.key("width")),
-            self.value(device.key("length")),
-        )
-        if device.name not in self.shifts:
-            return intended
-        return replace(
-            intended,
-            threshold=intended.threshold + self.shifts[device.name],
-            specific_current=intended.specific_current * self.factors[device.name],
-        )
-
-    def _optional(self, name: str) -> Number | None:
-        return self.value(name) if name in self.moves or self.stated(name) is not None else None
+        return current_of(self)
 
     @cached_property
     def inputs(self) -> Inputs:
         """The engine's inputs. KeyError where something is left open and not filled."""
-        return Inputs(
-            circuit=self.circuit,
-            temperature=self.value("temperature"),
-            supply=self.value("supply"),
-            current=self.current,
-            devices={device.name: self.parameters(device) for device in self.circuit.devices},
-            load_capacitance=self.value("load_capacitance"),
-            ideal_conductance=self._bias("output_conductance"),
-            ideal_capacitance=self._bias("capacitance"),
-            **{name: self.value(name) for name in _PLAIN},
-            step_size=self._optional("step_size"),
-            input_level=self._optional("input_level"),
-            output_level=self._optional("output_level"),
-        )
+        return inputs_of(self)
 
     @cached_property
     def solution(self) -> NumericSolution:
@@ -332,12 +292,3 @@ class Case:
             target.formula, where, lambda name: solved[name] if metrics.find(name) is not None else None
         )
 
-
-_PLAIN = (
-    "drive_resistance",
-    "well_capacitance",
-    "bias_overhead",
-    "saturation_margin",
-    "settling_tolerance",
-    "noise_from",
-)

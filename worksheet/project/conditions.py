@@ -10,8 +10,10 @@ from itertools import product
 import numpy as np
 
 from worksheet.device.arrays import Array
-from worksheet.model.process_keys import CORNER_CHANGES
+from worksheet.model.process_keys import CORNER_CHANGES, DEVICE_PARAMETERS
 from worksheet.model.sheet import Condition, Process, ProjectFile, Sheet
+
+_NUMBERS = {key.name for key in DEVICE_PARAMETERS if key.dimension is not None}
 
 
 @dataclass(frozen=True, eq=False)
@@ -53,6 +55,17 @@ class ConditionSet:
                 if any(key.name in corner for corner in corners)
             }
         return self._changes[device]
+
+    @cached_property
+    def _numbers(self) -> dict[str, dict[str, float]]:
+        return {}
+
+    def numbers(self, device: str) -> Mapping[str, float]:
+        """The process values of a device by name, at the reference temperature. [unit of the key]"""
+        if device not in self._numbers:
+            values = self.process.devices[device].values
+            self._numbers[device] = {name: value.number or 0.0 for name, value in values.items() if name in _NUMBERS}
+        return self._numbers[device]
 
     def only_nominal(self) -> ConditionSet:
         """The nominal condition alone."""

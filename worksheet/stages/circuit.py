@@ -8,7 +8,7 @@ with it, the symbolic one sympy matrices.
 from __future__ import annotations
 
 from dataclasses import dataclass
-from functools import cached_property
+from functools import cached_property, lru_cache
 
 from worksheet.stages.stage import GROUND, IN, LINE, OUT, SUPPLY, Stage, Transistor
 
@@ -152,6 +152,12 @@ class Circuit:
     @cached_property
     def _channels(self) -> tuple[Transistor, ...]:
         return (*self.stage.transistors, self.stage.bias)
+
+
+@lru_cache(maxsize=256)
+def circuit_of(stage: Stage, polarity: str, bulk: str, ideal_bias: bool, driven_through_resistance: bool) -> Circuit:
+    """The circuit of that kind, the same object each time: what follows from its table is worked out once."""
+    return Circuit(stage, polarity, bulk, ideal_bias, driven_through_resistance)
 
 
 def _between(element: tuple[str, str], first: str, second: str, dynamic: bool) -> list[Term]:
