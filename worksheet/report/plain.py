@@ -2,11 +2,12 @@
 
 from __future__ import annotations
 
+import datetime
 from collections.abc import Sequence
 from typing import Any
 
 from worksheet.model.problem import Problem
-from worksheet.model.sheet import Condition
+from worksheet.model.sheet import Condition, Remark
 from worksheet.review.results import BudgetReview, Review, SheetReview, TargetReview
 
 SCHEMA = 1
@@ -42,7 +43,9 @@ def sheet(result: SheetReview) -> Plain:
         "sheet": result.sheet.name,
         "title": result.sheet.title,
         "stage": result.sheet.stage,
-        "state": result.sheet.state,
+        "state": result.state,
+        "stated_state": result.sheet.state,
+        "state_reason": result.state_reason,
         "count": result.sheet.count,
         "basis": result.basis,
         "choose": {k: {"value": c.value, "unit": c.unit, "origin": c.origin} for k, c in result.choices.items()},
@@ -55,7 +58,26 @@ def sheet(result: SheetReview) -> Plain:
         ],
         "targets": [target(t) for t in result.targets],
         "notes": [{"about": n.about, "text": n.text} for n in result.notes],
+        "remarks": [remark(r) for r in result.sheet.remarks],
     }
+
+
+def remark(said: Remark) -> Plain:
+    """What somebody said about a sheet, as data."""
+    return {
+        "by": said.by,
+        "text": said.text,
+        "about": said.about,
+        "to": said.to,
+        "dated": _day(said.dated),
+        "settled": _day(said.settled),
+        "settled_by": said.settled_by,
+        "answer": said.answer,
+    }
+
+
+def _day(dated: datetime.date | None) -> str | None:
+    return None if dated is None else dated.isoformat()
 
 
 def _number(value: float | None, unit: str, reason: str | None) -> Plain:

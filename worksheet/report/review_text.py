@@ -73,7 +73,7 @@ def _sheet(sheet: SheetReview, width: int) -> Iterator[str]:
     kind = stage.title.lower() if stage is not None else sheet.sheet.stage
     count = f", {sheet.sheet.count} of it" if sheet.sheet.count != 1 else ""
     title = f": {clean(sheet.sheet.title)}" if sheet.sheet.title else ""
-    yield from wrapped(f"{sheet.sheet.name}{title} ({kind}, {sheet.sheet.state}{count})", width)
+    yield from wrapped(f"{sheet.sheet.name}{title} ({kind}, {sheet.state}{count})", width)
     if sheet.targets:
         yield from lines(_targets(sheet, width), width, "  ")
     else:
@@ -82,9 +82,15 @@ def _sheet(sheet: SheetReview, width: int) -> Iterator[str]:
         said = _said(target, width)
         if said:
             yield from wrapped(f"{target.target.name}: {said}", width, "  ")
+    if sheet.state_reason is not None:
+        yield from wrapped(f"{sheet.state}: {clean(sheet.state_reason)}", width, "  ")
     yield from _validity(sheet, width)
     for note in sheet.notes:
         yield from wrapped(f"{note.about}: {note.text}", width, "  ")
+    for remark in sheet.sheet.remarks:
+        if remark.open:
+            about, to = (f" about {remark.about}" if remark.about else ""), (f", to {remark.to}" if remark.to else "")
+            yield from wrapped(clean(f"open remark{about} by {remark.by}{to}: {remark.text}"), width, "  ")
 
 
 def _targets(sheet: SheetReview, width: int) -> Table:

@@ -99,6 +99,8 @@ class SheetReview:
     Attributes:
         sheet: What its file states.
         basis: Digest of everything that can change its results.
+        state: How far the block is, as it holds; see review.state.
+        state_reason: Why that is not, or not surely, what the sheet states; None where it is.
         choices: Design variables by key.
         operating_point: By device, by key of model.operating; "region" too is there, as text.
         metrics: Nominal, by key.
@@ -109,6 +111,8 @@ class SheetReview:
 
     sheet: Sheet
     basis: str
+    state: str
+    state_reason: str | None
     choices: Mapping[str, Choice]
     operating_point: Mapping[str, Mapping[str, float | str | None]]
     metrics: Mapping[str, Number]

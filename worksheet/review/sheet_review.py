@@ -17,7 +17,7 @@ from worksheet.model import metrics, operating
 from worksheet.model.problem import Problem
 from worksheet.model.sheet import Condition, Target
 from worksheet.project.case import Case
-from worksheet.review import digest, judge, notes
+from worksheet.review import digest, judge, notes, state
 from worksheet.review.evidence import evidence_verdicts
 from worksheet.review.judge import Mask
 from worksheet.review.results import Choice, Invalid, Number, SheetReview, TargetReview
@@ -96,9 +96,12 @@ def review_points(points: Points, today: datetime.date) -> SheetReview:
     """
     case = points.case
     digits = digest.basis(case)
+    holds, reason = state.state_of(case.sheet, digits)
     return SheetReview(
         sheet=case.sheet,
         basis=digits,
+        state=holds,
+        state_reason=reason,
         choices=dict(_choices(case)),
         operating_point={name: dict(_operating(points, name)) for name in points.solution.devices},
         metrics=dict(_metrics(points)),
