@@ -9,7 +9,7 @@ from __future__ import annotations
 from collections.abc import Callable, Mapping
 from dataclasses import dataclass, field, replace
 from functools import cached_property
-from typing import Any
+from typing import Any, Protocol
 
 import numpy as np
 
@@ -22,12 +22,21 @@ from worksheet.model.formula import Formula, FormulaError
 from worksheet.model.keys import Key
 from worksheet.model.problem import Problem
 from worksheet.model.sheet import DeviceModel, Sheet, Target, Value
-from worksheet.model.sheet_keys import ASSUMPTIONS, BIAS_KEYS
+from worksheet.model.sheet_keys import ASSUMPTIONS, BIAS_KEYS, GEOMETRY
 from worksheet.project.conditions import ConditionSet
-from worksheet.project.numbers import current_of, inputs_of
+from worksheet.project.numbers import OPTIONAL, PLAIN, current_of, inputs_of
 from worksheet.stages import catalogue
 from worksheet.stages.circuit import Circuit, circuit_of
 from worksheet.stages.stage import BIAS, Stage, Transistor
+
+
+class Metrics(Protocol):
+    """Metrics by key, over the points of a case."""
+
+    def __getitem__(self, key: str) -> Array:
+        """A metric's values, NaN where there is none. [unit of the metric]"""
+        ...
+
 
 Moves = Mapping[str, Number]
 """Values that replace a sheet's own: a sheet name ("width", an own name), "bias.KEY" or "process.DEVICE.PARAMETER"."""
@@ -148,6 +157,18 @@ class Case:
     @cached_property
     def _known(self) -> dict[str, Number]:
         return {}
+
+    def resolve(self) -> None:
+        """Find every value that the engine takes. CaseError where one cannot be had."""
+        for name in self._taken:
+            self.value(name)
+        for name in OPTIONAL:
+            self.given(name)
+
+    @property
+    def _taken(self) -> tuple[str, ...]:
+        sizes = [device.key(name) for device in self.circuit.devices for name in GEOMETRY]
+        return (*PLAIN, "bias_temperature_exponent", "bias_current", "load_capacitance", *sizes, *_BIAS)
 
     def stated(self, name: str) -> Value | None:
         """What the sheet states under a name: assumption, choice or own name."""
@@ -283,7 +304,7 @@ class Case:
         """The solved stage."""
         return NumericSolution(self.inputs)
 
-    def figure(self, target: Target, solution: NumericSolution | None = None) -> Array:
+    def figure(self, target: Target, solution: Metrics | None = None) -> Array:
         """Values of a target that has a formula, over conditions; NaN where a metric is missing. [its own unit]"""
         assert target.formula is not None
         solved = solution or self.solution
@@ -291,4 +312,3 @@ class Case:
         return self.evaluate(
             target.formula, where, lambda name: solved[name] if metrics.find(name) is not None else None
         )
-

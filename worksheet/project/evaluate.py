@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Callable, Mapping
-from functools import partial
+from functools import cached_property, partial
 
 import numpy as np
 
@@ -12,6 +12,7 @@ from worksheet.engine.inputs import Inputs
 from worksheet.model import metrics
 from worksheet.model.problem import Problem
 from worksheet.project import conditions as sets
+from worksheet.project import links
 from worksheet.project.case import Case, CaseError
 from worksheet.project.conditions import ConditionSet
 from worksheet.project.discover import Project
@@ -36,13 +37,16 @@ class Evaluator:
         self._cases: dict[str, Case] = {}
         self._filled: dict[str, Mapping[str, float]] = {}
         self._linked: dict[tuple[str, ConditionSet], Case] = {}
-        self._sets: dict[str, ConditionSet] = {}
+        self._sets: dict[tuple[object, ...], ConditionSet] = {}
+        self._known: dict[str, Array] = {}
 
     def conditions(self, name: str) -> ConditionSet:
         """The conditions of a sheet, nominal first; sheets without their own share one set."""
         sheet = self.project.sheets[name]
         own = tuple(sheet.assume[key].numbers if key in sheet.assume else None for key in ("temperature", "supply"))
-        return self._sets.setdefault(str(own), sets.of_sheet(sheet, self._file, self._process))
+        if own not in self._sets:
+            self._sets[own] = sets.of_sheet(sheet, self._file, self._process)
+        return self._sets[own]
 
     def bare(self, name: str) -> Case:
         """A sheet's case with nothing proposed."""
@@ -82,12 +86,32 @@ class Evaluator:
                 )
             )
         own_supply = any("supply" in self.project.sheets[n].assume for n in (asking, name))
-        case = self._linked_case(name, wanted, own_supply)
-        if metrics.find(key) is not None:
-            values: Array = np.asarray(case.solution[key])
-        else:
-            values = np.asarray(case.value(key))
+        if wanted is self.conditions(name) and not own_supply:
+            if f"{name}.{key}" not in self._known:
+                self._known[f"{name}.{key}"] = _taken(self.case(name), key)
+            return self._known[f"{name}.{key}"]
+        values = _taken(self._linked_case(name, wanted, own_supply), key)
         return values if values.ndim == 0 else values[..., 1:]
+
+    def know(self, name: str, metrics_of: Callable[[str], Array]) -> None:
+        """Keep what other sheets take of a sheet that was solved in a batch.
+
+        Args:
+            name: The sheet.
+            metrics_of: Gives a metric as it is stated, over the sheet's conditions.
+        """
+        for key in self._wanted.get(name, ()):
+            self._known[f"{name}.{key}"] = metrics_of(key)
+
+    @cached_property
+    def _wanted(self) -> Mapping[str, frozenset[str]]:
+        """Metrics that formulas take of other sheets, by sheet."""
+        found: dict[str, set[str]] = {}
+        for full in links.names_used(self.project.sheets):
+            name, _, key = full.partition(".")
+            if metrics.find(key) is not None:
+                found.setdefault(name, set()).add(key)
+        return {name: frozenset(keys) for name, keys in found.items()}
 
     def _linked_case(self, name: str, wanted: ConditionSet, own_supply: bool) -> Case:
         key = (f"{name}:{own_supply}", wanted)
@@ -101,3 +125,8 @@ class Evaluator:
     def inputs(self, name: str) -> Inputs:
         """The engine's inputs of a sheet. CaseError where a value does not resolve."""
         return self.case(name).inputs
+
+
+def _taken(case: Case, key: str) -> Array:
+    """A metric or a value of a case, over its conditions. [SI]"""
+    return np.asarray(case.solution[key] if metrics.find(key) is not None else case.value(key))

@@ -6,7 +6,7 @@ loop.
 
 from __future__ import annotations
 
-from collections.abc import Iterator, Mapping
+from collections.abc import Iterable, Iterator, Mapping
 
 from worksheet.model import metrics
 from worksheet.model.formula import Formula
@@ -25,15 +25,11 @@ _CONDITIONS = ("supply", "temperature")
 
 def values_of(sheet: Sheet) -> dict[str, Value]:
     """All values that a sheet states, by dotted key."""
-    found: dict[str, Value] = {}
-    for table, values in (
-        ("assume", sheet.assume),
-        ("own", sheet.own),
-        ("choose", sheet.choose),
-        ("bias", sheet.bias.values),
-    ):
-        found.update({f"{table}.{name}": value for name, value in values.items()})
-    return found
+    return {f"{table}.{name}": value for table, values in _tables(sheet) for name, value in values.items()}
+
+
+def _tables(sheet: Sheet) -> tuple[tuple[str, Mapping[str, Value]], ...]:
+    return ("assume", sheet.assume), ("own", sheet.own), ("choose", sheet.choose), ("bias", sheet.bias.values)
 
 
 def names(sheet: Sheet) -> tuple[str, ...]:
@@ -48,9 +44,10 @@ def names(sheet: Sheet) -> tuple[str, ...]:
 
 def formulas_of(sheet: Sheet) -> Iterator[tuple[str, Formula, bool]]:
     """Every formula of a sheet: dotted key, formula, whether it may use the sheet's own metrics (a target's)."""
-    for key, value in values_of(sheet).items():
-        if value.formula is not None:
-            yield key, value.formula, False
+    for table, values in _tables(sheet):
+        for name, value in values.items():
+            if value.formula is not None:
+                yield f"{table}.{name}", value.formula, False
     for name, target in sheet.targets.items():
         if target.formula is not None:
             yield f"target.{name}", target.formula, True
@@ -157,7 +154,9 @@ def loops(sheets: Mapping[str, Sheet]) -> list[list[Node]]:
     """Every loop of values, each once, as the nodes along it with the first repeated at the end."""
     state: dict[Node, int] = {}
     found: list[list[Node]] = []
-    for root in [(name, key) for name, sheet in sheets.items() for key in values_of(sheet)]:
+    for root in [
+        (name, key) for name, sheet in sheets.items() for key, _, of_target in formulas_of(sheet) if not of_target
+    ]:
         if state.get(root):
             continue
         path: list[Node] = []
@@ -198,3 +197,19 @@ def sheets_needed(sheet: Sheet) -> tuple[str, ...]:
     """Other sheets that a sheet's formulas name, targets included."""
     found = [name.split(".", 1)[0] for _, formula, _ in formulas_of(sheet) for name in formula.names if "." in name]
     return tuple(dict.fromkeys(found))
+
+
+def waves(sheets: Mapping[str, Sheet], wanted: Iterable[str]) -> Iterator[list[str]]:
+    """Sheets in groups that can be solved one after the other, each after those that it takes values from.
+
+    Args:
+        sheets: All of the project.
+        wanted: Names of those that are to be solved.
+    """
+    needs = {name: set(sheets_needed(sheets[name])) for name in wanted}
+    while needs:
+        ready = [name for name, needed in needs.items() if not any(n in needs for n in needed if n != name)]
+        ready = ready or list(needs)  # values of two sheets may need each other without a loop
+        yield ready
+        for name in ready:
+            del needs[name]

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Mapping
 from dataclasses import replace
-from typing import Protocol
+from typing import Any, Protocol
 
 import numpy as np
 
@@ -68,6 +68,8 @@ class Named(Protocol):
 def inputs_of(named: Named) -> Inputs:
     """The engine's inputs, every number an array: bare floats would take other roads through powers than arrays do."""
     value = named.value
+    given: dict[str, Any] = {name: named.given(name) for name in OPTIONAL}
+    plain: dict[str, Any] = {name: _array(value(name)) for name in PLAIN}
     return Inputs(
         circuit=named.circuit,
         temperature=_array(value("temperature")),
@@ -77,8 +79,8 @@ def inputs_of(named: Named) -> Inputs:
         load_capacitance=_array(value("load_capacitance")),
         ideal_conductance=_array(value("bias.output_conductance")),
         ideal_capacitance=_array(value("bias.capacitance")),
-        **{name: _array(value(name)) for name in PLAIN},
-        **{name: None if (given := named.given(name)) is None else _array(given) for name in OPTIONAL},
+        **plain,
+        **{name: None if number is None else _array(number) for name, number in given.items()},
     )
 
 

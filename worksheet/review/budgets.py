@@ -3,21 +3,43 @@
 from __future__ import annotations
 
 from collections.abc import Mapping, Sequence
+from dataclasses import dataclass
 
 import numpy as np
 
 from worksheet.model import metrics
 from worksheet.review.results import MET, MISSED, UNKNOWN, BudgetReview
-from worksheet.review.sheet_review import Points
+from worksheet.review.solved import Points
 from worksheet.solver.goals import TOLERANCE
 
 
-def review_budgets(budgets: Mapping[str, float], sheets: Sequence[Points], complete: bool) -> tuple[BudgetReview, ...]:
+@dataclass(frozen=True, slots=True)
+class Spent:
+    """What one sheet, times its count, takes of a budget. [unit of the metric]"""
+
+    nominal: float
+    worst: float
+
+
+def spent(points: Points) -> dict[str, Spent]:
+    """What a solved sheet takes of every budget that there can be, by metric."""
+    count = points.case.sheet.count
+    found = {}
+    for metric in metrics.all_metrics():
+        if metric.additive:
+            values = points.measured(metric.key).values
+            found[metric.key] = Spent(count * float(values[0]), count * float(values.max()))
+    return found
+
+
+def review_budgets(
+    budgets: Mapping[str, float], sheets: Sequence[Mapping[str, Spent]], complete: bool
+) -> tuple[BudgetReview, ...]:
     """Judge every budget on the sum of the sheets' worst conditions.
 
     Args:
         budgets: Limits by metric. [unit of the metric]
-        sheets: All sheets that could be solved.
+        sheets: What each sheet that could be solved takes.
         complete: Whether these are all sheets of the project.
     Returns: one BudgetReview a budget; unknown where a sheet is missing, unless already missed
     """
@@ -25,9 +47,7 @@ def review_budgets(budgets: Mapping[str, float], sheets: Sequence[Points], compl
     for key, limit in budgets.items():
         metric = metrics.find(key)
         assert metric is not None  # the reader refuses unknown metrics
-        values = [(s.case.sheet.count, s.measured(s.solution.measure(key)).values) for s in sheets]
-        nominal = float(sum(count * v[0] for count, v in values))
-        worst = float(sum(count * np.max(v) for count, v in values))
+        nominal, worst = sum(s[key].nominal for s in sheets), sum(s[key].worst for s in sheets)
         over = worst > limit * (1 + TOLERANCE)
         known = complete and np.isfinite(worst)
         verdict = MISSED if over else MET if known else UNKNOWN

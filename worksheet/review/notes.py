@@ -2,12 +2,10 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable, Iterator
+from collections.abc import Iterator
 
 import numpy as np
 
-from worksheet.device.arrays import Array
-from worksheet.engine.solution import NumericSolution
 from worksheet.engine.validity import REVERSE_SHARE_LIMIT
 from worksheet.model import dimension as dim
 from worksheet.model.quantity import format_quantity
@@ -15,51 +13,44 @@ from worksheet.model.sheet_keys import GEOMETRY
 from worksheet.project.case import Case
 from worksheet.review.fitted_range import outside_fit
 from worksheet.review.results import Note
+from worksheet.review.solved import Points
 
 _FAR_BEYOND_POLE = 2.0
 _ON_GRID = 1e-6
 
 
-def of_points(solution: NumericSolution, case: Case, spread: Callable[[Array], Array]) -> Iterator[Note]:
-    """All remarks on a solved sheet.
-
-    Args:
-        solution, case: The solved sheet.
-        spread: Brings an array over its points.
-    """
-    yield from _reverse_shares(solution, case, spread)
-    yield from _feed_through(solution, spread)
-    yield from _off_grid(case)
-    yield from outside_fit(solution, case, spread)
-    if solution.inputs.circuit.driven_through_resistance and solution.inputs.step_size is not None:
+def of_points(points: Points) -> Iterator[Note]:
+    """All remarks on a solved sheet."""
+    yield from _reverse_shares(points)
+    yield from _feed_through(points)
+    yield from _off_grid(points.case)
+    yield from outside_fit(points.solution, points.case, points.spread)
+    if points.case.circuit.driven_through_resistance and points.case.given("step_size") is not None:
         yield Note(
             "settling_time",
             "the step is reckoned at the device's terminal: add the drive resistance's own time constant",
         )
 
 
-def _reverse_shares(solution: NumericSolution, case: Case, spread: Callable[[Array], Array]) -> Iterator[Note]:
-    for name, device in solution.devices.items():
-        shares = spread(device.reverse_share)
-        shares = np.where(np.isfinite(shares), shares, 0.0)
-        place = int(np.argmax(shares))
-        if shares[place] > REVERSE_SHARE_LIMIT:
-            at = case.conditions.conditions[place % len(case.conditions)]
+def _reverse_shares(points: Points) -> Iterator[Note]:
+    for name, shares in points.solved.reverse_shares.items():
+        if shares[points.number] > REVERSE_SHARE_LIMIT:
+            spread = points.spread(points.solution.devices[name].reverse_share)
+            at = points.condition(int(np.argmax(np.where(np.isfinite(spread), spread, 0.0))))
             yield Note(
                 f"{name}.drain_conductance",
-                f"understated by up to {shares[place]:.0%}: the {name} device is near the edge of saturation at "
+                f"understated by up to {shares[points.number]:.0%}: the {name} device is near the edge of saturation at "
                 f"{at.process}, "
                 f"{format_quantity(at.temperature, dim.TEMPERATURE)}, {format_quantity(at.supply, dim.VOLTAGE)}",
             )
 
 
-def _feed_through(solution: NumericSolution, spread: Callable[[Array], Array]) -> Iterator[Note]:
-    with np.errstate(invalid="ignore"):
-        ratio = spread(solution["bandwidth"] / solution["pole_frequency"])
-    if np.any(ratio > _FAR_BEYOND_POLE):
+def _feed_through(points: Points) -> Iterator[Note]:
+    ratio = points.solved.beyond_pole[points.number]
+    if ratio > _FAR_BEYOND_POLE:
         yield Note(
             "bandwidth",
-            f"up to {np.nanmax(ratio):.2g} times the pole frequency through feed-through; the pole is the safer number",
+            f"up to {ratio:.2g} times the pole frequency through feed-through; the pole is the safer number",
         )
 
 

@@ -3,36 +3,77 @@
 from __future__ import annotations
 
 import datetime
-from collections.abc import Callable, Mapping
-from dataclasses import dataclass
+from collections.abc import Callable, Iterator, Mapping, Sequence
+from dataclasses import dataclass, field
 
 from worksheet.model.problem import Problem
+from worksheet.project import links
 from worksheet.project.case import CaseError
 from worksheet.project.discover import Project
 from worksheet.project.evaluate import Evaluator
 from worksheet.review import budgets
 from worksheet.review.late import late_problems
 from worksheet.review.results import Review, SheetReview
-from worksheet.review.sheet_review import Points, level_problems, points_of, review_points
+from worksheet.review.sheet_review import level_problems, review_points
+from worksheet.review.solved import Points, solved_points, with_ranges
 
 
 @dataclass(frozen=True, eq=False, slots=True)
 class Reviewed:
-    """One sheet solved and reviewed, or why it cannot be."""
+    """One sheet solved and reviewed, or why it cannot be. `spent` is what it takes of each budget."""
 
-    points: Points | None
     result: SheetReview | None
+    spent: Mapping[str, budgets.Spent] = field(default_factory=dict)
     problems: tuple[Problem, ...] = ()
 
 
-Reviewer = Callable[[Evaluator, str, datetime.date], Reviewed]
-"""Solves and reviews the sheet of that name."""
+Reviewer = Callable[[Evaluator, Sequence[str], datetime.date], Mapping[str, Reviewed]]
+"""Solves and reviews the sheets of those names."""
 
 
-def reviewed(evaluator: Evaluator, name: str, today: datetime.date) -> Reviewed:
-    """Solve and review one sheet."""
-    points, problems = solve(evaluator, name)
-    return Reviewed(points, None if points is None else review_points(points, today), tuple(problems))
+def reviewed(evaluator: Evaluator, names: Sequence[str], today: datetime.date) -> dict[str, Reviewed]:
+    """Solve and review sheets, those of one circuit in one batch."""
+    found: dict[str, Reviewed] = {}
+    for name, points, problems in _solved(evaluator, names):
+        try:
+            if points is None:
+                found[name] = Reviewed(None, problems=problems)
+            else:
+                found[name] = Reviewed(review_points(points, today), budgets.spent(points))
+        except CaseError as error:  # a figure whose formula has no value
+            found[name] = Reviewed(None, problems=(error.problem,))
+    return found
+
+
+def solve(evaluator: Evaluator, name: str) -> tuple[Points | None, list[Problem]]:
+    """Solve one sheet over its points, or say why it cannot be."""
+    _, points, problems = next(iter(_solved(evaluator, (name,))))
+    return points, list(problems)
+
+
+_Solved = tuple[str, Points | None, tuple[Problem, ...]]
+
+
+def _solved(evaluator: Evaluator, names: Sequence[str]) -> Iterator[_Solved]:
+    """Sheets over their points, or why they cannot be solved; those that others take values from come first."""
+    for wave in links.waves(evaluator.project.sheets, names):
+        stated, held = [], []
+        for name in wave:
+            try:
+                case = evaluator.case(name)
+                problems, ranged = tuple(late_problems(case)), with_ranges(case)
+            except CaseError as error:
+                yield name, None, (error.problem,)
+                continue
+            if problems:
+                yield name, None, problems
+            else:
+                stated.append(case)
+                held.append(ranged)
+        for points in solved_points(stated, held):
+            problems = tuple(level_problems(points))
+            evaluator.know(points.case.sheet.name, points.stated)
+            yield points.case.sheet.name, None if problems else points, problems
 
 
 def review(
@@ -44,21 +85,22 @@ def review(
         project: As its files state it.
         evaluator: Its evaluator; None where the project file or process cannot be read.
         today: For waivers with an end.
-        reviewer: How a sheet is reviewed; a session hands out again what did not change.
+        reviewer: How sheets are reviewed; a session hands out again what did not change.
     Returns: Review; a bad sheet is among the problems and hides no other
     """
     if evaluator is None or project.file is None:
         return Review("", problems=project.problems, bad=project.bad)
-    every = [reviewer(evaluator, name, today) for name in project.sheets]
+    found = reviewer(evaluator, tuple(project.sheets), today)
+    every = [found[name] for name in project.sheets]
     problems = [*project.problems, *(problem for one in every for problem in one.problems)]
-    solved = [one.points for one in every if one.points is not None]
-    reviews = [one.result for one in every if one.result is not None]
-    bad = (*project.bad, *(name for name in project.sheets if name not in {p.case.sheet.name for p in solved}))
+    bad = (*project.bad, *(name for name in project.sheets if found[name].result is None))
     nominal = project.file.nominal
     return Review(
         title=project.file.title,
-        sheets=tuple(reviews),
-        budgets=budgets.review_budgets(project.file.budgets, solved, complete=not bad),
+        sheets=tuple(one.result for one in every if one.result is not None),
+        budgets=budgets.review_budgets(
+            project.file.budgets, [one.spent for one in every if one.spent], complete=not bad
+        ),
         problems=tuple(problems),
         conditions=len(project.file.processes) * len(project.file.temperatures) * len(project.file.supplies),
         nominal=nominal,
@@ -76,13 +118,3 @@ def uncovered(project: Project) -> Mapping[str, str]:
         return {}
     covered = {target.id for sheet in project.sheets.values() for target in sheet.targets.values()}
     return {number: text for number, text in project.file.requirements.items() if number not in covered}
-
-
-def solve(evaluator: Evaluator, name: str) -> tuple[Points | None, list[Problem]]:
-    """Solve one sheet over its points, or say why it cannot be."""
-    try:
-        points = points_of(evaluator.case(name))
-        problems = [*late_problems(points.case), *level_problems(points)]
-    except CaseError as error:
-        return None, [error.problem]
-    return (None, problems) if problems else (points, [])

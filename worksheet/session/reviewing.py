@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import datetime
-from collections.abc import Mapping
+from collections.abc import Mapping, Sequence
 
 from worksheet.model.sheet import Sheet
 from worksheet.project import links
@@ -34,13 +34,13 @@ class Reviewing:
     def review(self, project: Project, evaluator: Evaluator | None, today: datetime.date) -> Review:
         """Every sheet at every condition."""
 
-        def again(evaluator: Evaluator, name: str, today: datetime.date) -> Reviewed:
-            stated = (today, *stated_of(project, name))
-            known = self._reviewed.get(name)
-            if known is None or known[0] != stated:
-                known = (stated, reviewed(evaluator, name, today))
-                self._reviewed[name] = known
-            return known[1]
+        def again(evaluator: Evaluator, names: Sequence[str], today: datetime.date) -> Mapping[str, Reviewed]:
+            stated = {name: (today, *stated_of(project, name)) for name in names}
+            known = self._reviewed
+            changed = [name for name in names if name not in known or known[name][0] != stated[name]]
+            for name, anew in reviewed(evaluator, changed, today).items():
+                known[name] = (stated[name], anew)
+            return {name: known[name][1] for name in names}
 
         return review(project, evaluator, today, again)
 

@@ -2,11 +2,12 @@
 
 from __future__ import annotations
 
+from typing import Protocol
+
 import numpy as np
 
 from worksheet.device.arrays import Array
 from worksheet.engine.measured import Measured, with_reasons_of
-from worksheet.engine.solution import NumericSolution
 from worksheet.model import metrics
 from worksheet.model.metrics import Reason
 from worksheet.model.sheet import Target
@@ -21,7 +22,19 @@ TOLERANCE = 1e-9
 SIDES = ("low", "high")
 
 
-def measure(subject: Subject, target: Target, solution: NumericSolution) -> Measured:
+class Metrics(Protocol):
+    """Metrics by key: a solved stage, or one sheet's part of a solved batch."""
+
+    def measure(self, key: str) -> Measured:
+        """One metric with the reasons where it does not exist."""
+        ...
+
+    def __getitem__(self, key: str) -> Array:
+        """One metric's values."""
+        ...
+
+
+def measure(subject: Subject, target: Target, solution: Metrics) -> Measured:
     """What a target is about, over the solution's points: a metric, a bound at a yield, a figure. [its unit]"""
     metric = metrics.find(target.name)
     if target.formula is not None or metric is None:

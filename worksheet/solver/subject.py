@@ -99,7 +99,7 @@ class Subject(Protocol):
         """The process file's device behind a transistor."""
         ...
 
-    def figure(self, target: Target, solution: NumericSolution | None = None) -> Array:
+    def figure(self, target: Target, solution: Any = None) -> Array:
         """Values of a target with a formula. [its unit]"""
         ...
 
