@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import json
 from pathlib import Path
+from xml.etree import ElementTree
 
 import pytest
 
@@ -95,7 +96,38 @@ def test_stages_as_data_are_the_catalogue() -> None:
     assert driven["common-gate"] == ("source", "drain", ["gate"])
     assert driven["drain-follower"] == ("drain", "source", ["gate"])
     assert "supply_rejection" not in {m["metric"] for m in by_key["drain-follower"]["metrics"]}
-    assert json.loads(run("stages", "cascode", "--json").out)["stages"] == [by_key["cascode"]]
+
+
+@pytest.mark.parametrize("stage", ["common-source", "cascode"])
+def test_a_stage_comes_with_its_formulas(stage: str) -> None:
+    """Every metric in text, LaTeX and MathML, and what it asks of the design variables."""
+    (one,) = json.loads(run("stages", stage, "--json").out)["stages"]
+    (listed,) = [s for s in json.loads(run("stages", "--json").out)["stages"] if s["stage"] == stage]
+    assert one["formulas_hold_for"]
+    by_key = {metric["metric"]: metric for metric in one["metrics"]}
+    assert list(by_key) == [metric["metric"] for metric in listed["metrics"]]
+    for metric in one["metrics"]:
+        assert " = " in metric["formula"]
+        for latex in metric["latex"]:
+            assert latex.count("{") == latex.count("}")
+            assert latex.count(r"\left") == latex.count(r"\right")
+        assert [ElementTree.fromstring(m).tag for m in metric["mathml"]] == [
+            "{http://www.w3.org/1998/Math/MathML}math"
+        ] * len(metric["latex"])
+    asked = {(key, ask["of"]) for key, metric in by_key.items() for ask in metric["asks"]}
+    assert asked >= {("power", "bias_current"), ("dc_gain", "length"), ("offset", "width")}
+    (current,) = by_key["power"]["asks"]
+    assert (current["formula"], current["neglects"]) == ("power/V_DD", [])
+
+
+def test_formulas_are_drawn_in_the_signs_that_there_are(monkeypatch: pytest.MonkeyPatch) -> None:
+    page = run("stages", "common-gate").out
+    assert "         gₛ\n    A₀ = ─────────\n         g_d + g_L\n" in page
+    monkeypatch.setenv("LC_ALL", "C")
+    plain = run("stages", "common-gate").out
+    assert plain.isascii()
+    assert "            g_s\n    A_0 = ---------\n          g_d + g_L\n" in plain
+    assert max(len(line) for line in (*page.splitlines(), *plain.splitlines())) <= 80
 
 
 def test_an_unknown_stage_is_refused_with_the_nearest() -> None:

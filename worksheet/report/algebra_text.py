@@ -4,15 +4,15 @@ from __future__ import annotations
 
 from collections.abc import Iterator
 
-from worksheet.model import metrics
 from worksheet.model.sheet_keys import DESIGN
 from worksheet.report import wording
 from worksheet.report.table import Column, Table, lines, wrapped
+from worksheet.solver import stage_algebra
 from worksheet.solver.algebra_print import wrap
 from worksheet.solver.explanation import Explanation, Given
 from worksheet.solver.hand import HandBound
 from worksheet.solver.present import Effect
-from worksheet.solver.stage_algebra import metric_formula
+from worksheet.solver.stage_algebra import MetricFormula, metric_formula
 from worksheet.solver.stated import Origin
 from worksheet.stages.stage import Stage
 
@@ -117,25 +117,30 @@ def bound(found: HandBound, symbol: str, side: str, value: str, width: int, inde
         yield from wrapped(f"neglects {names}", width, indent + _INDENT)
 
 
-def stage(found: Stage, width: int, every: bool = False) -> Iterator[str]:
-    """The formulas of a stage, metric by metric.
+def stage(found: Stage, width: int, use_unicode: bool = True, every: bool = True) -> Iterator[str]:
+    """The formulas of a stage, metric by metric: what it is, and what it asks of the design variables.
 
     Args:
         found: The stage.
         width: Columns of the terminal.
+        use_unicode: Whether Greek letters and drawn fractions may be used.
         every: Whether to show what each metric asks of every design variable, or of the first that it bounds.
     """
+    yield from wrapped(stage_algebra.STATED_FOR, width, _INDENT)
+    for key in stage_algebra.formulas_of(found):
+        yield ""
+        yield from _metric(metric_formula(found, key, every=every), width, use_unicode)
+
+
+def _metric(formula: MetricFormula, width: int, use_unicode: bool) -> Iterator[str]:
     symbols = {key.name: key.symbol for key in DESIGN}
-    yield from wrapped("Formulas (n, bulk on the rail, ideal current source with g_L and C_b, long channel)", width)
-    for metric in metrics.all_metrics():
-        if found.absent_metric(metric.key) is not None:
-            continue
-        formula = metric_formula(found, metric.key, every=every)
-        yield from algebra(f"{metric.key}: {formula.line()}", width, _INDENT)
-        for turned in formula.inverted:
-            tail = f", {turned.where}" if turned.where else ""
-            left_out = f" (neglects {', '.join(turned.neglects)})" if turned.neglects else ""
-            yield from algebra(f"{symbols[turned.unknown]} = {turned.formula}{tail}{left_out}", width, _INDENT * 2)
+    yield f"{_INDENT}{formula.key}"
+    yield from (f"{_INDENT * 2}{line}" for line in formula.text(width - 2 * len(_INDENT), use_unicode))
+    for turned in formula.inverted:
+        tail = f", {turned.where}" if turned.where else ""
+        yield from algebra(f"{symbols[turned.unknown]} = {turned.formula}{tail}", width, _INDENT * 2)
+        if turned.neglects:
+            yield from wrapped(f"neglects {', '.join(turned.neglects)}", width, _INDENT * 3)
 
 
 def algebra(line: str, width: int, indent: str = "") -> Iterator[str]:

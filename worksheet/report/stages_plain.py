@@ -6,15 +6,27 @@ from typing import Any
 
 from worksheet.model import metrics
 from worksheet.report.plain import SCHEMA
+from worksheet.solver.stage_algebra import STATED_FOR, metric_formula
 from worksheet.stages.circuit import Circuit
 from worksheet.stages.stage import IN, LINE, OUT, Stage, Transistor
 
 Plain = dict[str, Any]
 
 
-def document(stages: tuple[Stage, ...]) -> Plain:
-    """Stages as one document."""
-    return {"schema": SCHEMA, "stages": [stage(s) for s in stages], "problems": []}
+def document(stages: tuple[Stage, ...], formulas: bool = False) -> Plain:
+    """Stages as one document.
+
+    Args:
+        stages: What is asked for.
+        formulas: Whether each metric comes with its formula and what that asks of the design variables.
+    """
+    found = [stage(s) for s in stages]
+    if formulas:
+        for plain, of in zip(found, stages, strict=True):
+            plain["formulas_hold_for"] = STATED_FOR
+            for one in plain["metrics"]:
+                one.update(formula(of, one["metric"]))
+    return {"schema": SCHEMA, "stages": found, "problems": []}
 
 
 def stage(found: Stage) -> Plain:
@@ -66,6 +78,20 @@ def metric(found: metrics.Metric) -> Plain:
         "unit": found.dimension.unit,
         "relation": found.relation,
         "help": found.help,
+    }
+
+
+def formula(found: Stage, key: str) -> Plain:
+    """A metric's formula in every form that it is printed in, and what it asks of each design variable."""
+    algebra = metric_formula(found, key, every=True)
+    return {
+        "formula": algebra.line(),
+        "latex": list(algebra.latex()),
+        "mathml": list(algebra.mathml()),
+        "asks": [
+            {"of": i.unknown, "formula": i.formula, "where": i.where or None, "neglects": list(i.neglects)}
+            for i in algebra.inverted
+        ],
     }
 
 

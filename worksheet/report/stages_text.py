@@ -5,11 +5,13 @@ from __future__ import annotations
 from collections.abc import Iterator
 
 from worksheet.model import metrics
-from worksheet.report import stages_plain
-from worksheet.report.table import Column, Table, lines, wrapped
+from worksheet.report import algebra_text, stages_plain
+from worksheet.report.table import Column, Table, can_show, lines, wrapped
 from worksheet.stages.stage import Stage
 
 _INDENT = "  "
+_DRAWN = "─√⋅π₀"
+"""Some of the signs that algebra is drawn with; where they can be shown, so can the others."""
 
 
 def listed(stages: tuple[Stage, ...], width: int) -> Iterator[str]:
@@ -54,3 +56,6 @@ def one(stage: Stage, width: int) -> Iterator[str]:
     for absent in dict.fromkeys(stage.absent_metric(m.key) for m in metrics.all_metrics()):
         if absent is not None:
             yield from wrapped(f"not here: {absent}", width, _INDENT)
+    yield ""
+    yield "Its formulas"
+    yield from algebra_text.stage(stage, width, use_unicode=can_show(_DRAWN))

@@ -72,6 +72,16 @@ def on(paper: Paper) -> Iterator[None]:
         _paper.reset(token)
 
 
+def can_show(text: str) -> bool:
+    """Whether the paper that is being laid out for has all of some characters."""
+    paper = _paper.get(_ORDINARY)
+    try:
+        text.encode("ascii" if paper.plain else paper.encoding)
+    except (UnicodeEncodeError, LookupError):
+        return False
+    return True
+
+
 @dataclass(frozen=True, slots=True)
 class Column:
     """One column: its heading, which side its cells lean to, and how it gives way when space is short.

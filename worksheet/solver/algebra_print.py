@@ -13,6 +13,7 @@ from collections.abc import Iterator, Sequence
 from typing import Any
 
 from worksheet.engine.symbolic.definition import Definition, Pick, Root
+from worksheet.solver import algebra_printers
 
 Piece = tuple[str, Any]
 """A caption ("" for none) and a sympy expression or relation."""
@@ -76,12 +77,10 @@ def as_text(parts: Sequence[Piece], width: int, use_unicode: bool = True) -> lis
 
 
 def _lines(part: Piece, width: int, use_unicode: bool) -> Iterator[str]:
-    import sympy
-
     caption, expression = part
     if caption:
         yield from textwrap.wrap(caption, width)
-    drawn = sympy.pretty(expression, use_unicode=use_unicode, wrap_line=False).splitlines()
+    drawn = algebra_printers.drawn(expression, use_unicode)
     if max(len(line) for line in drawn) <= width:
         yield from (line.rstrip() for line in drawn)
     else:  # a fraction that is torn apart cannot be read
@@ -94,7 +93,7 @@ def as_line(expression: Any) -> str:
 
     if isinstance(expression, sympy.Eq):
         return " = ".join(as_line(side) for side in expression.args)
-    return str(sympy.sstr(expression, order="rev-lex"))
+    return algebra_printers.line(expression)
 
 
 def wrap(text: str, width: int, hanging: str = "") -> list[str]:
@@ -117,19 +116,16 @@ def wrap(text: str, width: int, hanging: str = "") -> list[str]:
 
 def as_latex(parts: Sequence[Piece]) -> tuple[str, ...]:
     """Pieces as LaTeX, captions as text in it."""
-    import sympy
-
-    return tuple(rf"\text{{{caption} }} {sympy.latex(e)}" if caption else str(sympy.latex(e)) for caption, e in parts)
+    written = ((caption, algebra_printers.latex(e)) for caption, e in parts)
+    return tuple(rf"\text{{{caption} }} {e}" if caption else e for caption, e in written)
 
 
 def as_mathml(parts: Sequence[Piece]) -> tuple[str, ...]:
     """Pieces as presentation MathML, one element each, captions as text in it."""
-    import sympy
-
     printed = []
     for caption, expression in parts:
         words = f"<mtext>{caption}&#xA0;</mtext>" if caption else ""
-        written = sympy.mathml(expression, printer="presentation")
+        written = algebra_printers.mathml(expression)
         printed.append(_MATHML.format(f"<mrow>{words}{_ENTITY.sub(_character, written)}</mrow>"))
     return tuple(printed)
 

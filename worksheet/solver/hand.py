@@ -18,6 +18,7 @@ from worksheet.engine.symbolic.point import evaluated_float
 from worksheet.engine.symbolic.vocabulary import PER_WIDTH
 from worksheet.model import metrics
 from worksheet.model.sheet import Target
+from worksheet.solver.algebra_print import as_line
 from worksheet.solver.inversion import GEOMETRY, KEEP_INVERSION, HandFormula, hand_formula
 from worksheet.solver.present import Effect, Present, small
 from worksheet.solver.stated import Case, at
@@ -227,4 +228,4 @@ def _text(expression: Any, formula: HandFormula) -> str:
 
     supply = sympy.Symbol("supply", positive=True)
     named = {s: supply for s in expression.free_symbols if formula.algebra.key(s) == "supply"}
-    return str(sympy.sstr(expression.xreplace(named), order="rev-lex"))
+    return as_line(expression.xreplace(named))

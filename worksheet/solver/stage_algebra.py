@@ -5,16 +5,25 @@ from __future__ import annotations
 from collections.abc import Sequence
 from dataclasses import dataclass
 from itertools import islice
+from typing import Any
 
 from worksheet.engine.symbolic.algebra import Algebra, Setting, of
 from worksheet.model import metrics
-from worksheet.model.process_keys import CORNER_CHANGES
+from worksheet.model.dimension import NUMBER
+from worksheet.model.process_keys import CORNER_CHANGES, DEVICE_PARAMETERS
 from worksheet.model.sheet_keys import DESIGN
 from worksheet.solver import algebra_print
 from worksheet.solver.algebra_print import Piece
 from worksheet.solver.inversion import hand_formula
 from worksheet.stages.circuit import Circuit
 from worksheet.stages.stage import Stage
+
+STATED_FOR = (
+    "n-channel devices, long channel, typical corner, bulk on the rail, small steps, levels in the middle of their "
+    "range; the current source is ideal and has g_L and C_b, which the formulas turned round leave out. A metric's "
+    "key stands for the limit on it, y for the charge at the source end."
+)
+"""What the formulas of a stage hold for, and how they are to be read."""
 
 IDEALS = ("bias.output_conductance", "bias.capacitance")
 """What an ideal current source may still have."""
@@ -80,6 +89,15 @@ class MetricFormula:
         """The metric as LaTeX."""
         return algebra_print.as_latex(self._pieces)
 
+    def mathml(self) -> tuple[str, ...]:
+        """The metric as presentation MathML."""
+        return algebra_print.as_mathml(self._pieces)
+
+
+def formulas_of(stage: Stage) -> tuple[str, ...]:
+    """Keys of the metrics that a stage has a formula for: all of its metrics."""
+    return tuple(m.key for m in metrics.all_metrics() if stage.absent_metric(m.key) is None)
+
 
 def metric_formula(stage: Stage, key: str, ideal_bias: bool = True, every: bool = False) -> MetricFormula:
     """One metric of a stage for n-channel devices with the bulk on the rail.
@@ -104,9 +122,22 @@ def metric_formula(stage: Stage, key: str, ideal_bias: bool = True, every: bool 
 
 def _inverted(setting: Setting, metric: str, unknown: str) -> Inverted | None:
     formula = hand_formula(setting, metric, unknown)
-    if formula is None:
+    if formula is None or not _has_value(formula.whole()):
         return None
     short = formula.shorthand[0]
     where = "" if short is None else f"{short[0]} = {algebra_print.as_line(short[1])}"
     left_out = (*formula.neglects, *(hold.moving_with(unknown) for hold in formula.held))
     return Inverted(unknown, algebra_print.as_line(formula.branches[0]), where, left_out)
+
+
+def _has_value(expression: Any) -> bool:
+    """Whether every root that hangs on shares of a device alone is real, as at the shares that they are described with.
+
+    A follower's gain is below one at every current: a formula for its unity-gain frequency is none.
+    """
+    import sympy
+
+    usual = {k.symbol: sympy.Float(k.example) for k in DEVICE_PARAMETERS if k.dimension is NUMBER and k.example}
+    known = {s: usual[s.name] for s in expression.free_symbols if s.name in usual}
+    bases = (p.base for p in expression.atoms(sympy.Pow) if not p.exp.is_integer)
+    return not any(base.xreplace(known).is_negative for base in bases)

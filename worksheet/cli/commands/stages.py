@@ -37,7 +37,7 @@ def run(args: argparse.Namespace, output: Output) -> int:
             output.document(plain.only_problems(problems, stages=[]))
         return Status.BAD_INPUT
     if output.as_json:
-        output.document(stages_plain.document(found))
+        output.document(stages_plain.document(found, formulas=args.stage is not None))
     elif args.stage is None:
         output.lines(stages_text.listed(found, output.width))
     else:
