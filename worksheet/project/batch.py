@@ -45,6 +45,7 @@ class Batch:
         self.shifts: Mapping[str, Number] = {}
         self.factors: Mapping[str, Number] = {}
         self._stacked: dict[str, Number] = {}
+        self._measured: dict[str, Measured] = {}
 
     @property
     def shape(self) -> tuple[int, int]:
@@ -63,6 +64,14 @@ class Batch:
     def table(self, values: Number) -> Array:
         """Values over (rows, conditions), from any shape that broadcasts to it."""
         return np.broadcast_to(np.asarray(values), self.shape)
+
+    def measure(self, key: str) -> Measured:
+        """A metric over (rows, conditions). KeyError for an unknown one."""
+        if key not in self._measured:
+            measured = self.solution.measure(key)
+            reasons = None if measured.reasons is None else np.broadcast_to(measured.reasons, self.shape)
+            self._measured[key] = Measured(self.table(measured.values), reasons)
+        return self._measured[key]
 
     def value(self, name: str) -> Number:
         """A value by name over (rows, conditions or 1); of conditions that nothing moves, over (conditions,)."""
@@ -112,18 +121,18 @@ class Share:
 
     def measure(self, key: str) -> Measured:
         """One metric with the reasons where it does not exist. KeyError for an unknown metric."""
-        return part_of(self._batch, self._batch.solution.measure(key), self._place)
+        return part_of(self._batch.measure(key), self._place)
 
     def __getitem__(self, key: str) -> Array:
         return self.measure(key).values
 
 
-def part_of(batch: Batch, measured: Measured, place: slice) -> Measured:
-    """Some rows of a measured number."""
-    values = batch.table(measured.values)[place]
+def part_of(measured: Measured, place: slice) -> Measured:
+    """Some rows of a number that was measured over (rows, conditions)."""
+    values = measured.values[place]
     if measured.reasons is None:
         return Measured(values)
-    reasons = np.broadcast_to(measured.reasons, batch.shape)[place]
+    reasons = measured.reasons[place]
     return Measured(values, reasons if reasons.any() else None)
 
 

@@ -6,6 +6,7 @@ from collections.abc import Mapping
 from dataclasses import dataclass
 from functools import cached_property
 from itertools import product
+from typing import Any
 
 import numpy as np
 
@@ -40,6 +41,22 @@ class ConditionSet:
     def supply(self) -> Array:
         """[V], shape (conditions,)"""
         return np.array([c.supply for c in self.conditions])
+
+    @cached_property
+    def places(self) -> list[int]:
+        """The places of the conditions in an order that does not depend on how they are listed, the nominal one first."""
+        every = self.conditions
+        return [0, *sorted(range(1, len(every)), key=lambda k: every[k])]
+
+    @cached_property
+    def ordered(self) -> list[Condition]:
+        """The conditions in the order of `places`."""
+        return [self.conditions[k] for k in self.places]
+
+    @cached_property
+    def kept(self) -> dict[Any, Any]:
+        """For what others work out of these conditions and their process alone, to be had again."""
+        return {}
 
     @cached_property
     def _changes(self) -> dict[str, dict[str, Array]]:

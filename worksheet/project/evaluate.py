@@ -2,8 +2,8 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable, Mapping
-from functools import cached_property, partial
+from collections.abc import Callable, Iterable, Mapping
+from functools import partial
 
 import numpy as np
 
@@ -13,6 +13,7 @@ from worksheet.model import metrics
 from worksheet.model.problem import Problem
 from worksheet.project import conditions as sets
 from worksheet.project import links
+from worksheet.project.batch import batches
 from worksheet.project.case import Case, CaseError
 from worksheet.project.conditions import ConditionSet
 from worksheet.project.discover import Project
@@ -93,25 +94,21 @@ class Evaluator:
         values = _taken(self._linked_case(name, wanted, own_supply), key)
         return values if values.ndim == 0 else values[..., 1:]
 
-    def know(self, name: str, metrics_of: Callable[[str], Array]) -> None:
-        """Keep what other sheets take of a sheet that was solved in a batch.
-
-        Args:
-            name: The sheet.
-            metrics_of: Gives a metric as it is stated, over the sheet's conditions.
-        """
-        for key in self._wanted.get(name, ()):
-            self._known[f"{name}.{key}"] = metrics_of(key)
-
-    @cached_property
-    def _wanted(self) -> Mapping[str, frozenset[str]]:
-        """Metrics that formulas take of other sheets, by sheet."""
-        found: dict[str, set[str]] = {}
-        for full in links.names_used(self.project.sheets):
-            name, _, key = full.partition(".")
-            if metrics.find(key) is not None:
-                found.setdefault(name, set()).add(key)
-        return {name: frozenset(keys) for name, keys in found.items()}
+    def find_links(self, names: Iterable[str]) -> None:
+        """Work out in batches the metrics that sheets of those names take from others, nearer or further."""
+        wanted = links.metrics_taken(self.project.sheets, names)
+        for wave in links.waves(self.project.sheets, wanted):
+            cases = []
+            for name in wave:
+                try:
+                    self.case(name).resolve()
+                    cases.append(self.case(name))
+                except CaseError:
+                    continue  # whoever asks for it will hear
+            for batch in batches(cases):
+                for number, case in enumerate(batch.cases):
+                    for key in wanted[case.sheet.name]:
+                        self._known[f"{case.sheet.name}.{key}"] = batch.measure(key).values[batch.place(number)][0]
 
     def _linked_case(self, name: str, wanted: ConditionSet, own_supply: bool) -> Case:
         key = (f"{name}:{own_supply}", wanted)

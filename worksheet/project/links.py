@@ -213,3 +213,26 @@ def waves(sheets: Mapping[str, Sheet], wanted: Iterable[str]) -> Iterator[list[s
         yield ready
         for name in ready:
             del needs[name]
+
+
+def metrics_taken(sheets: Mapping[str, Sheet], names: Iterable[str]) -> dict[str, tuple[str, ...]]:
+    """Metrics that sheets take from others, nearer or further, by the name of the other.
+
+    Args:
+        sheets: All of the project.
+        names: Of the sheets that take them.
+    """
+    found: dict[str, dict[str, None]] = {}
+    asked, asking = set(), list(names)
+    while asking:
+        sheet = sheets.get(asking.pop())
+        if sheet is None or sheet.name in asked:
+            continue
+        asked.add(sheet.name)
+        for _, formula, _ in formulas_of(sheet):
+            for owner, dot, part in (name.partition(".") for name in formula.names):
+                if dot:
+                    asking.append(owner)
+                    if metrics.find(part) is not None and owner in sheets:
+                        found.setdefault(owner, {})[part] = None
+    return {name: tuple(keys) for name, keys in found.items()}

@@ -8,7 +8,7 @@ from typing import Any
 
 import numpy as np
 
-from worksheet.model.sheet import Condition, Value
+from worksheet.model.sheet import Value
 from worksheet.model.sheet_keys import SHEET
 from worksheet.project.case import Case
 from worksheet.project.links import formulas_of
@@ -16,6 +16,7 @@ from worksheet.project.links import formulas_of
 _LENGTH = 12
 _PROPOSED_DIGITS = 6
 _LINKED_DIGITS = 9
+_PLAIN = tuple(key.name for key in SHEET.keys if key.moves_results)
 
 
 def basis(case: Case) -> str:
@@ -24,32 +25,51 @@ def basis(case: Case) -> str:
 
     Numbers count by value: a proposed one to six digits, one from another sheet to nine.
     """
-    text = json.dumps(_content(case), sort_keys=True, separators=(",", ":"))
-    return hashlib.sha256(text.encode()).hexdigest()[:_LENGTH]
+    parts = {**_shared(case), **{key: _dumps(value) for key, value in _content(case).items()}}
+    text = ",".join(f'"{key}":{parts[key]}' for key in sorted(parts))
+    return hashlib.sha256(f"{{{text}}}".encode()).hexdigest()[:_LENGTH]
+
+
+_dumps = json.JSONEncoder(sort_keys=True, separators=(",", ":")).encode
+
+
+def _shared(case: Case) -> dict[str, str]:
+    """What sheets of the same devices and conditions have in common, as JSON by key; written once for all of them."""
+    conditions = case.conditions
+    names = tuple(dict.fromkeys(case.model(device).name for device in case.circuit.devices))
+    known = conditions.kept
+    if names not in known:
+        devices = {name: conditions.process.devices[name] for name in names}
+        used = {c.process for c in conditions.conditions}
+        content = {
+            "devices": {
+                name: [m.polarity, m.own_well, {k: _value(v) for k, v in m.values.items()}]
+                for name, m in devices.items()
+            },
+            "corners": {
+                corner: {name: dict(changes) for name, changes in of_devices.items() if name in devices}
+                for corner, of_devices in conditions.process.corners.items()
+                if corner in used
+            },
+            "reference_temperature": conditions.process.reference_temperature,
+            "conditions": [[c.process, c.temperature, c.supply] for c in conditions.ordered],
+        }
+        known[names] = {key: _dumps(value) for key, value in content.items()}
+    found: dict[str, str] = known[names]
+    return found
 
 
 def _content(case: Case) -> dict[str, Any]:
-    sheet, conditions = case.sheet, case.conditions
-    devices = {case.model(device).name: case.model(device) for device in case.circuit.devices}
-    used = {c.process for c in conditions.conditions}
+    """What is the sheet's own."""
+    sheet = case.sheet
     return {
-        **{key.name: getattr(sheet, key.name) for key in SHEET.keys if key.moves_results},
-        "devices": {
-            name: [m.polarity, m.own_well, {k: _value(v) for k, v in m.values.items()}] for name, m in devices.items()
-        },
-        "corners": {
-            corner: {name: dict(changes) for name, changes in of_devices.items() if name in devices}
-            for corner, of_devices in conditions.process.corners.items()
-            if corner in used
-        },
-        "reference_temperature": conditions.process.reference_temperature,
+        **{key: getattr(sheet, key) for key in _PLAIN},
         "bias": [sheet.bias.device, {k: _value(v) for k, v in sheet.bias.values.items()}],
         "assume": {k: _value(v) for k, v in sheet.assume.items()},
         "own": {k: _value(v) for k, v in sheet.own.items()},
         "choose": {k: _value(v) for k, v in sheet.choose.items() if not v.propose},
         "proposed": {k: _rounded(v, _PROPOSED_DIGITS) for k, v in case.filled.items()},
         "solve": [sheet.solve.keep, sheet.solve.inversion_coefficient, sheet.solve.over, sheet.solve.current_allowance],
-        "conditions": [[c.process, c.temperature, c.supply] for c in _ordered(case)[0]],
         "links": _links(case),
     }
 
@@ -59,16 +79,9 @@ def _value(value: Value) -> list[Any]:
     return [value.number, formula, sorted(value.numbers), value.low, value.high]
 
 
-def _ordered(case: Case) -> tuple[list[Condition], list[int]]:
-    """The conditions in an order that does not depend on how they are listed, nominal first; and their places."""
-    every = case.conditions.conditions
-    places = [0, *sorted(range(1, len(every)), key=lambda k: every[k])]
-    return [every[k] for k in places], places
-
-
 def _links(case: Case) -> dict[str, list[str]]:
     """Values taken from other sheets; a target's formula moves no result and does not count."""
-    places = _ordered(case)[1]
+    places = case.conditions.places
     names = {n for _, formula, of_target in formulas_of(case.sheet) if not of_target for n in formula.names if "." in n}
     return {
         name: [_rounded(x, _LINKED_DIGITS) for x in np.broadcast_to(values, (len(places),))[places]]

@@ -40,12 +40,11 @@ class Judgement:
 def missed_by_value(target: Target, values: Array) -> Mask:
     """Where values miss a target; False where there is no number."""
     low, high = limits(target)
-    missed = np.zeros(np.shape(values), dtype=bool)
-    with np.errstate(invalid="ignore"):
-        if low is not None:
-            missed |= values < low - TOLERANCE * abs(low)
-        if high is not None:
-            missed |= values > high + TOLERANCE * abs(high)
+    if low is None and high is None:
+        return np.zeros(np.shape(values), dtype=bool)
+    under = None if low is None else values < low - TOLERANCE * abs(low)
+    over = None if high is None else values > high + TOLERANCE * abs(high)
+    missed: Mask = over if under is None else under if over is None else under | over
     return missed
 
 
@@ -59,12 +58,25 @@ def margins(target: Target, values: Array) -> Array:
     return found
 
 
+def margin(target: Target, value: float) -> float | None:
+    """As margins, of one number; None where there is none. [-]"""
+    found = [
+        gap / abs(limit)
+        for gap, limit in (
+            (value - (target.minimum or 0.0), target.minimum),
+            ((target.maximum or 0.0) - value, target.maximum),
+        )
+        if limit
+    ]
+    return min(found, default=None)
+
+
 def _distance(target: Target, values: Array) -> Array:
     """What orders points from worst to best: the margin, or the plain distance where a limit is 0."""
-    found = np.full(np.shape(values), np.nan)
-    for limit, sign in ((target.minimum, 1.0), (target.maximum, -1.0)):
-        if limit is not None:
-            found = np.fmin(found, sign * (values - limit) / (abs(limit) or 1.0))
+    low, high = target.minimum, target.maximum
+    above = None if low is None else (values - low) / (abs(low) or 1.0)
+    below = None if high is None else -1.0 * (values - high) / (abs(high) or 1.0)
+    found: Array = below if above is None else above if below is None else np.minimum(above, below)
     return found
 
 
@@ -78,12 +90,12 @@ def judge(target: Target, measured: Measured, valid: Mask) -> Judgement:
     Returns: Judgement
     """
     values = measured.values
-    missed, unknown = missed_by_value(target, values), np.zeros(values.shape, dtype=bool)
-    absent = ~np.isfinite(values)
-    if absent.any():
-        lost, open_ = _judge_absent(target, measured, absent)
-        missed, unknown = missed | lost, unknown | open_
-    invalid = int(np.count_nonzero(~valid))
+    missed, absent = missed_by_value(target, values), ~np.isfinite(values)
+    invalid = len(values) - int(np.count_nonzero(valid))
+    if not invalid and not absent.any():
+        return Judgement(MISSED if missed.any() else MET, int(_distance(target, values).argmin()), 0, None)
+    lost, unknown = _judge_absent(target, measured, absent)
+    missed |= lost
     verdict = MISSED if (missed & valid).any() else UNKNOWN if invalid or (unknown & valid).any() else MET
     worst, reason = _worst(target, measured, valid, missed & absent, unknown)
     if reason is None and verdict == UNKNOWN and invalid:
@@ -98,7 +110,7 @@ def _judge_absent(target: Target, measured: Measured, absent: Mask) -> tuple[Mas
         return missed, absent
     sides = [side for side, limit in (("min", target.minimum), ("max", target.maximum)) if limit is not None]
     reasons = np.broadcast_to(Reason.NOT_A_NUMBER if measured.reasons is None else measured.reasons, absent.shape)
-    for number in np.unique(reasons[absent]):
+    for number in sorted(set(reasons[absent].tolist())):  # np.unique would load masked arrays
         means = {Reason(int(number)).verdict(side) for side in sides}
         where = absent & (reasons == number)
         missed |= where & (MISSED in means)

@@ -7,7 +7,6 @@ from collections.abc import Callable, Iterator, Mapping, Sequence
 from dataclasses import dataclass, field
 
 from worksheet.model.problem import Problem
-from worksheet.project import links
 from worksheet.project.case import CaseError
 from worksheet.project.discover import Project
 from worksheet.project.evaluate import Evaluator
@@ -55,25 +54,24 @@ _Solved = tuple[str, Points | None, tuple[Problem, ...]]
 
 
 def _solved(evaluator: Evaluator, names: Sequence[str]) -> Iterator[_Solved]:
-    """Sheets over their points, or why they cannot be solved; those that others take values from come first."""
-    for wave in links.waves(evaluator.project.sheets, names):
-        stated, held = [], []
-        for name in wave:
-            try:
-                case = evaluator.case(name)
-                problems, ranged = tuple(late_problems(case)), with_ranges(case)
-            except CaseError as error:
-                yield name, None, (error.problem,)
-                continue
-            if problems:
-                yield name, None, problems
-            else:
-                stated.append(case)
-                held.append(ranged)
-        for points in solved_points(stated, held):
-            problems = tuple(level_problems(points))
-            evaluator.know(points.case.sheet.name, points.stated)
-            yield points.case.sheet.name, None if problems else points, problems
+    """Sheets over their points, or why they cannot be solved."""
+    evaluator.find_links(names)
+    stated, held = [], []
+    for name in names:
+        try:
+            case = evaluator.case(name)
+            problems, ranged = tuple(late_problems(case)), with_ranges(case)
+        except CaseError as error:
+            yield name, None, (error.problem,)
+            continue
+        if problems:
+            yield name, None, problems
+        else:
+            stated.append(case)
+            held.append(ranged)
+    for points in solved_points(stated, held):
+        problems = tuple(level_problems(points))
+        yield points.case.sheet.name, None if problems else points, problems
 
 
 def review(

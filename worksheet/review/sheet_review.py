@@ -4,10 +4,10 @@ from __future__ import annotations
 
 import datetime
 from collections.abc import Iterator, Mapping, Sequence
+from math import isfinite
 
 import numpy as np
 
-from worksheet.device.arrays import Array
 from worksheet.engine.measured import Measured
 from worksheet.model import metrics, operating
 from worksheet.model.problem import Problem
@@ -81,9 +81,8 @@ def _validity(points: Points) -> Iterator[Invalid]:
             yield Invalid(shortfall.device, shortfall.what, float(by_condition[place]), "V", points.condition(place))
 
 
-def _first(values: Array) -> float | None:
-    number = float(values[0])
-    return number if np.isfinite(number) else None
+def _number(value: float) -> float | None:
+    return float(value) if isfinite(value) else None
 
 
 def _target(points: Points, target: Target, digits: str, today: datetime.date) -> TargetReview:
@@ -93,13 +92,13 @@ def _target(points: Points, target: Target, digits: str, today: datetime.date) -
     judgement = judge.judge(target, covered, points.valid[every])
     metric = metrics.find(target.name)
     unit = target.unit if target.formula is not None or metric is None else metric.dimension.unit
-    worst = None if judgement.worst is None else _first(covered.values[judgement.worst :])
-    margin = None if worst is None else _first(judge.margins(target, np.array([worst])))
+    worst = None if judgement.worst is None else _number(covered.values[judgement.worst])
+    margin = None if worst is None else judge.margin(target, worst)
     verdict, reason = waived(points.case.sheet.waivers, target, judgement.verdict, worst, today)
     return TargetReview(
         target=target,
         unit=unit,
-        nominal=_first(measured.values),
+        nominal=_number(measured.values[0]),
         worst=worst,
         worst_at=None if judgement.worst is None else points.condition(judgement.worst),
         worst_with={} if judgement.worst is None else points.moved(judgement.worst),

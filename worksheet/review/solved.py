@@ -5,6 +5,8 @@ from __future__ import annotations
 from collections.abc import Iterator, Mapping, Sequence
 from dataclasses import dataclass
 from functools import cached_property
+from math import isfinite
+from typing import Any
 
 import numpy as np
 
@@ -15,10 +17,13 @@ from worksheet.engine.validity import Shortfall, shortfalls
 from worksheet.model import metrics, operating
 from worksheet.model.metrics import Reason
 from worksheet.model.sheet import Condition, Target
-from worksheet.project.batch import Batch, Share, batches, part_of
+from worksheet.project.batch import Batch, Share, batches
 from worksheet.project.case import Case
 from worksheet.review.judge import Mask
 from worksheet.solver import goals, ranges
+
+
+_REASONS = {reason.value: reason.text or None for reason in Reason}
 
 
 class Solved:
@@ -51,12 +56,19 @@ class Solved:
     def firsts(self, name: str, values: Number) -> list[float | None]:
         """The nominal number of every sheet for a value of the solution, None where it is not finite. `name` is its own."""
         if name not in self._firsts:
-            column = self.batch.table(values)[self.batch.starts[:-1], 0]
-            numbers: list[float | None] = column.tolist()
-            if not np.isfinite(column).all():
-                numbers = [n if f else None for n, f in zip(numbers, np.isfinite(column).tolist(), strict=True)]
+            numbers: list[float | None] = self._first_column(values)
+            if not all(map(isfinite, numbers)):
+                numbers = [number if isfinite(number) else None for number in numbers]
             self._firsts[name] = numbers
         return self._firsts[name]
+
+    def _first_column(self, values: Number) -> list[Any]:
+        """The number of every sheet where all is stated and nominal."""
+        array = np.asarray(values)
+        if array.ndim == 2 and len(array) > 1:
+            found: list[Any] = array[self.batch.starts[:-1], 0].tolist()
+            return found
+        return [array.reshape(-1)[0].item()] * len(self.batch.cases)
 
     @cached_property
     def operating(self) -> dict[str, dict[str, list[float | None]]]:
@@ -82,8 +94,7 @@ class Solved:
     def _reasons(self, measured: Measured) -> list[str | None]:
         if measured.reasons is None:
             return [None] * len(self.batch.cases)
-        column = np.broadcast_to(measured.reasons, self.batch.shape)[self.batch.starts[:-1], 0]
-        return [Reason(number).text or None for number in column.tolist()]
+        return [_REASONS[number] for number in self._first_column(measured.reasons)]
 
     def greatest(self, values: Number) -> list[float]:
         """The greatest of a value over the points of every sheet; what is not finite counts as 0."""
@@ -146,27 +157,25 @@ class Points:
         """Metrics of this sheet over (ends of ranges, conditions)."""
         return Share(self.solved.batch, self.number)
 
-    def stated(self, metric: str) -> Array:
-        """A metric over the conditions, every value as it is stated. [unit of the metric]"""
-        return self.share[metric][0]
-
     def spread(self, values: Number) -> Array:
         """An array of the solution over this sheet's points."""
         return self.solved.batch.table(values)[self.place].reshape(-1)
 
     def measured(self, key: str) -> Measured:
         """A metric over this sheet's points."""
-        return self._flat(part_of(self.solved.batch, self.solution.measure(key), self.place))
+        return self._flat(self.share.measure(key))
 
     def target(self, target: Target) -> Measured:
         """What a target is about, over this sheet's points."""
         return self._flat(goals.measure(self.solved.batch.cases[self.number], target, self.share))
 
     def _flat(self, measured: Measured) -> Measured:
-        values = np.broadcast_to(measured.values, self.shape).reshape(-1)
+        values: Array = measured.values
+        if values.shape != self.shape:
+            values = np.broadcast_to(values, self.shape)
         if measured.reasons is None:
-            return Measured(values)
-        return Measured(values, np.broadcast_to(measured.reasons, self.shape).reshape(-1))
+            return Measured(values.reshape(-1))
+        return Measured(values.reshape(-1), np.broadcast_to(measured.reasons, self.shape).reshape(-1))
 
     @cached_property
     def valid(self) -> Mask:

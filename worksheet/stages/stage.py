@@ -9,6 +9,7 @@ from __future__ import annotations
 
 from collections.abc import Mapping
 from dataclasses import dataclass, field, replace
+from functools import cached_property
 from types import MappingProxyType
 
 from worksheet.model import metrics
@@ -115,6 +116,15 @@ class Stage:
 
     def design_keys(self, ideal_bias: bool) -> tuple[Key, ...]:
         """The design variables that a sheet of this stage may hold, in the order of a form."""
+        if ideal_bias not in self._design:
+            self._design[ideal_bias] = self._design_keys(ideal_bias)
+        return self._design[ideal_bias]
+
+    @cached_property
+    def _design(self) -> dict[bool, tuple[Key, ...]]:
+        return {}
+
+    def _design_keys(self, ideal_bias: bool) -> tuple[Key, ...]:
         keys = [key for key in DESIGN if key.name not in GEOMETRY]
         for device in self.devices(ideal_bias):
             own = [key for key in DESIGN if key.name in GEOMETRY] + [FINGERS]
