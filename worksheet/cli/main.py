@@ -13,7 +13,20 @@ from worksheet.cli.diagnostics import Status, say, tell
 from worksheet.cli.output import Output, close_quietly
 from worksheet.model.problem import Problem
 
-COMMANDS = ("open", "demo", "review", "solve", "stages", "start", "record", "history", "compare", "extract")
+COMMANDS = (
+    "open",
+    "demo",
+    "start",
+    "review",
+    "solve",
+    "stages",
+    "extract",
+    "record",
+    "history",
+    "compare",
+    "agenda",
+    "minutes",
+)
 """Modules of worksheet.cli.commands, in the order of the help."""
 
 

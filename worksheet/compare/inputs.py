@@ -76,7 +76,7 @@ def of_process(process: Process) -> Stated:
 
 
 def of_sheet(sheet: Sheet) -> Stated:
-    """What a sheet states: its keys, values with what stands beside them, targets, evidence, waivers, remarks and acceptances."""
+    """What a sheet states: keys, values with what stands beside them, targets, and every entry of a list of tables."""
     stage = catalogue.find(sheet.stage)
     design: tuple[Key, ...] = () if stage is None else stage.design_keys(sheet.bias.ideal)
     units = {key.name: _unit(key) for key in (*design, *ASSUMPTIONS, *BIAS_KEYS)}

@@ -116,6 +116,21 @@ def compared(root: Path, old: str | None, new: str, today: datetime.date) -> Com
     return Compared(before[0], after[0], compare(before[1], after[1]), problems)
 
 
+def state(root: Path, name: str, today: datetime.date) -> tuple[str, State] | Problem:
+    """One state of a project, reviewed.
+
+    Args:
+        root: The project folder.
+        name: A revision, or WORKING.
+        today: For waivers with an end.
+    Returns: (the revision's id or WORKING, the state)
+    """
+    if name == WORKING:
+        return WORKING, _reviewed(root, today)
+    found = repository_of(root)
+    return found if isinstance(found, Problem) else _state(found, root, name, today)
+
+
 def _state(found: Repository, root: Path, name: str, today: datetime.date) -> tuple[str, State] | Problem:
     if name == WORKING:
         return WORKING, _reviewed(root, today)
