@@ -4,10 +4,12 @@ from __future__ import annotations
 
 from collections.abc import Iterator, Mapping
 
+import numpy as np
+
 from worksheet.device.parameters import at_condition
 from worksheet.model import dimension as dim
 from worksheet.model.problem import Problem
-from worksheet.model.process_keys import DEVICE_PARAMETERS
+from worksheet.model.process_keys import CORNER_CHANGES, DEVICE_PARAMETERS
 from worksheet.model.quantity import format_quantity
 from worksheet.model.sheet import DeviceModel, Process, ProjectFile, Sheet
 from worksheet.model.sheet_keys import GEOMETRY
@@ -17,6 +19,8 @@ from worksheet.stages.stage import BIAS, Stage, Transistor
 
 TYPICAL = "typical"
 _SLACK = 1e-9
+_NUMBERS = tuple(key for key in DEVICE_PARAMETERS if key.dimension is not None)
+_COUPLING = tuple(key for key in CORNER_CHANGES if key.name in ("kappa_shift", "drain_coupling_factor"))
 
 
 def project_problems(file: ProjectFile, process: Process) -> Iterator[Problem]:
@@ -131,29 +135,29 @@ def coupling_problems(
     sheet: Sheet, device: Transistor, model: DeviceModel, process: Process, length: float
 ) -> Iterator[Problem]:
     """kappa within (0, 1] and kappa + sigma(L) at most 1, in every corner, at one length."""
-    numbers = {key.name: model.number(key.name) for key in DEVICE_PARAMETERS if key.dimension is not None}
     corners: Mapping[str, Mapping[str, Mapping[str, float]]] = {TYPICAL: {}, **process.corners}
-    for corner, devices in corners.items():
-        p = at_condition(
-            numbers,
-            devices.get(model.name, {}),
-            process.reference_temperature,
-            process.reference_temperature,
-            length,
-            length,
-        )
-        if not 0 < p.kappa <= 1:
+    changed = [devices.get(model.name, {}) for devices in corners.values()]
+    p = at_condition(
+        {key.name: model.number(key.name) for key in _NUMBERS},
+        {key.name: np.array([c.get(key.name, key.default) for c in changed], dtype=np.float64) for key in _COUPLING},
+        process.reference_temperature,
+        process.reference_temperature,
+        length,
+        length,
+    )
+    for corner, kappa, coupling in zip(corners, np.asarray(p.kappa), np.asarray(p.drain_coupling), strict=True):
+        if not 0 < kappa <= 1:
             yield _problem(
                 sheet,
                 "device",
-                f"kappa of {model.name} is {p.kappa:.4g} in corner {corner}, expected above 0 and at most 1",
+                f"kappa of {model.name} is {kappa:.4g} in corner {corner}, expected above 0 and at most 1",
             )
-        elif p.kappa + p.drain_coupling > 1 + _SLACK:
+        elif kappa + coupling > 1 + _SLACK:
             key = _key(sheet, device.key("length"))
             yield _problem(
                 sheet,
                 key,
-                f"kappa + drain coupling of {model.name} is {p.kappa + p.drain_coupling:.4g} at "
+                f"kappa + drain coupling of {model.name} is {kappa + coupling:.4g} at "
                 f"{format_quantity(length, dim.LENGTH)} in corner {corner}; "
-                f"expected at most 1 (kappa {p.kappa:.4g}, drain coupling {p.drain_coupling:.4g} from {process.file})",
+                f"expected at most 1 (kappa {kappa:.4g}, drain coupling {coupling:.4g} from {process.file})",
             )

@@ -111,9 +111,9 @@ def checked(project: Project) -> Project:
         if found:
             problems += found
             del sheets[sheet.name]
-    looped = links.loop_problems(project.sheets)
-    problems += looped
-    for loop in links.loops(project.sheets):
+    loops = links.loops(project.sheets)
+    problems += links.loop_problems(project.sheets, loops)
+    for loop in loops:
         for name, _ in loop:
             sheets.pop(name, None)
     _drop_dependents(sheets, project, problems)
@@ -190,6 +190,8 @@ def _unlisted(root: Path) -> Problem | None:
 
 
 def _leads_out(root: Path, path: Path, shown: str) -> Problem | None:
+    if path.parent in (root / SHEETS, root / PROCESSES) and not path.is_symlink() and inside(root, path.parent):
+        return None  # the folder was followed, and the file is no link
     if inside(root, path):
         return None
     return Problem(shown, None, "", "found a link that leads out of the project; expected a place inside it")

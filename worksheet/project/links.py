@@ -6,7 +6,7 @@ loop.
 
 from __future__ import annotations
 
-from collections.abc import Iterable, Iterator, Mapping
+from collections.abc import Iterable, Iterator, Mapping, Sequence
 
 from worksheet.model import metrics
 from worksheet.model.formula import Formula
@@ -179,10 +179,10 @@ def loops(sheets: Mapping[str, Sheet]) -> list[list[Node]]:
     return found
 
 
-def loop_problems(sheets: Mapping[str, Sheet]) -> list[Problem]:
-    """One problem a loop, at the first value along it, with the whole loop printed."""
+def loop_problems(sheets: Mapping[str, Sheet], found: Sequence[list[Node]]) -> list[Problem]:
+    """One problem a loop that was found, at the first value along it, with the whole loop printed."""
     problems = []
-    for loop in loops(sheets):
+    for loop in found:
         start = next(node for node in loop if node[1] != WHOLE)
         sheet = sheets[start[0]]
         turned = [*loop[loop.index(start) : -1], *loop[: loop.index(start)], start]

@@ -3,15 +3,17 @@
 from __future__ import annotations
 
 from collections.abc import Iterator, Sequence
-from typing import Any
+from typing import TYPE_CHECKING, Any
 
 from worksheet.model.keys import TRUST
 from worksheet.report import wording
 from worksheet.report.table import Column, Table, lines
-from worksheet.review.deeper import Deeper
-from worksheet.review.fragility import Fragile, Fragility
-from worksheet.review.results import Review
-from worksheet.review.yields import Yield
+
+if TYPE_CHECKING:
+    from worksheet.review.deeper import Deeper
+    from worksheet.review.fragility import Fragile, Fragility
+    from worksheet.review.results import Review
+    from worksheet.review.yields import Yield
 
 Plain = dict[str, Any]
 _SHOWN = 12

@@ -4,11 +4,13 @@ from __future__ import annotations
 
 from collections.abc import Mapping
 from dataclasses import dataclass, field
+from typing import TYPE_CHECKING
 
-from worksheet.project.evaluate import Evaluator
-from worksheet.review.fragility import Fragility, fragility
-from worksheet.review.results import Review
-from worksheet.review.yields import Yields, yields
+if TYPE_CHECKING:
+    from worksheet.project.evaluate import Evaluator
+    from worksheet.review.fragility import Fragility
+    from worksheet.review.results import Review
+    from worksheet.review.yields import Yields
 
 
 @dataclass(frozen=True, slots=True)
@@ -36,8 +38,11 @@ def deeper(review: Review, evaluator: Evaluator | None, wanted: Wanted) -> Deepe
         evaluator: Its project; None where that cannot be read.
         wanted: What is asked for.
     """
-    if evaluator is None:
+    if evaluator is None or wanted == Wanted():
         return Deeper()
+    from worksheet.review.fragility import fragility
+    from worksheet.review.yields import yields
+
     ranked, shares = {}, {}
     for sheet in review.sheets:
         name = sheet.sheet.name

@@ -5,6 +5,7 @@ from __future__ import annotations
 import datetime
 from functools import cached_property
 from pathlib import Path
+from typing import TYPE_CHECKING
 
 from worksheet.model.problem import Problem
 from worksheet.project.discover import SHEETS, Project, load
@@ -12,8 +13,11 @@ from worksheet.project.evaluate import Evaluator
 from worksheet.review.deeper import Deeper, Wanted, deeper
 from worksheet.review.results import Review
 from worksheet.review.review import review
-from worksheet.solver.propose import propose
 
+if TYPE_CHECKING:
+    from collections.abc import Mapping
+
+    from worksheet.project.case import Case
 
 class Workbook:
     """One state of a project on disk; a changed project gets a new workbook."""
@@ -32,7 +36,7 @@ class Workbook:
         """The project's evaluator; None where the project or process file cannot be read."""
         if self.project.file is None or self.project.process is None:
             return None
-        return Evaluator(self.project, propose)
+        return Evaluator(self.project, _proposed)
 
     def review(self, today: datetime.date) -> Review:
         """Every sheet at every condition. `today` decides which waivers have ended."""
@@ -41,6 +45,12 @@ class Workbook:
     def deeper(self, result: Review, wanted: Wanted) -> Deeper:
         """Fragility and yield beside a review of this workbook."""
         return deeper(result, self.evaluator, wanted)
+
+
+def _proposed(case: Case) -> Mapping[str, float]:
+    from worksheet.solver.propose import propose  # few sheets leave something open
+
+    return propose(case)
 
 
 def project_of_sheet(path: Path) -> tuple[Path, str] | Problem:

@@ -39,7 +39,6 @@ def run(args: argparse.Namespace, output: Output) -> int:
     """Review a project. 0: all met or waived and in budget; 1: not; 2: bad input."""
     import datetime
 
-    from worksheet.report import deeper, plain, review_text
     from worksheet.review.deeper import Wanted
     from worksheet.session.workbook import Workbook
 
@@ -48,8 +47,12 @@ def run(args: argparse.Namespace, output: Output) -> int:
     beside = workbook.deeper(result, Wanted(args.fragile, args.samples, args.seed))
     tell(result.problems)
     if output.as_json:
+        from worksheet.report import deeper, plain
+
         output.document(deeper.into_document(plain.review(result), beside))
     elif result.sheets or not result.problems:
+        from worksheet.report import deeper, review_text
+
         output.lines(review_text.text(result, output.width, details=args.details))
         output.lines(deeper.text(result, beside, output.width))
     if result.problems:
