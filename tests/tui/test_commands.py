@@ -6,13 +6,20 @@ from pathlib import Path
 import pytest
 
 from worksheet.tui import keymap
-from worksheet.tui.commands import ALGEBRA, BOOK, COMMANDS, MAP, PLACES, SHEET, find, of_place, shown_key
+from worksheet.tui.commands import ALGEBRA, BOOK, COMMANDS, MAP, MEETING, PLACES, SHEET, find, of_place, shown_key
 from worksheet.tui.screens.algebra import AlgebraScreen
 from worksheet.tui.screens.book import BookScreen
+from worksheet.tui.screens.meeting import MeetingScreen
 from worksheet.tui.screens.sheet import SheetScreen
 from worksheet.tui.screens.window_map import MapScreen
 
-SCREENS = {BOOK: BookScreen, SHEET: SheetScreen, ALGEBRA: AlgebraScreen, MAP: MapScreen}
+SCREENS = {
+    BOOK: BookScreen,
+    SHEET: SheetScreen,
+    ALGEBRA: AlgebraScreen,
+    MAP: MapScreen,
+    MEETING: MeetingScreen,
+}
 
 TAKEN_BY_OTHERS = {
     "ctrl+a",  # usual prefix of one terminal multiplexer

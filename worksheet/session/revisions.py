@@ -10,7 +10,7 @@ from pathlib import Path
 from worksheet.compare.compared import Comparison, State, compare
 from worksheet.history import own, repository, revisions
 from worksheet.history import record as recording
-from worksheet.history.outcome import Person, Refused
+from worksheet.history.outcome import Person, Refused, RefusedError
 from worksheet.history.repository import Repository
 from worksheet.history.revisions import Revision
 from worksheet.model.problem import Problem
@@ -40,6 +40,17 @@ def repository_of(root: Path) -> Repository | Problem:
         message = "there is no git repository around this project yet; `biasbook record` makes one"
         return Problem(str(root), None, "", message)
     return refusal(found, root) if isinstance(found, Refused) else found
+
+
+def identity(root: Path) -> str:
+    """Who works here, as git knows it; "" where it does not or there is no repository."""
+    found = repository_of(root)
+    if isinstance(found, Problem):
+        return ""
+    try:
+        return found.identity().name
+    except RefusedError:
+        return ""
 
 
 @dataclass(frozen=True, slots=True)

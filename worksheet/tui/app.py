@@ -119,7 +119,7 @@ class BookApp(App[int]):
         self.needed: Needed | None = None
         self.keys = keymap.read(terminal.configuration)
         self.own_problems: tuple[Problem, ...] = (*self.keys.problems, *theme_problems)
-        self._writing = guard.writing if guard is not None else threading.Lock()
+        self.writing = guard.writing if guard is not None else threading.Lock()
         self._reviews: Recompute[Results] = Recompute(lambda one: self._deliver(self.Reviewed(one)))
         self._solves: Recompute[Needed] = Recompute(lambda one: self._deliver(self.Solved(one)))
         self._explains: Recompute[Hands] = Recompute(lambda one: self._deliver(self.Explained(one)))
@@ -329,19 +329,19 @@ class BookApp(App[int]):
 
     def change(self, request: Request) -> Outcome:
         """Have something changed; it is on disk when this returns accepted."""
-        with self._writing:
+        with self.writing:
             outcome = self.session.apply(request)
         return self._after(outcome)
 
     def undo(self) -> Outcome:
         """Take the last change back."""
-        with self._writing:
+        with self.writing:
             outcome = self.session.undo()
         return self._after(outcome)
 
     def redo(self) -> Outcome:
         """Make it again."""
-        with self._writing:
+        with self.writing:
             outcome = self.session.redo()
         return self._after(outcome)
 

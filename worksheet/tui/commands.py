@@ -12,14 +12,15 @@ from __future__ import annotations
 from collections.abc import Iterator
 from dataclasses import dataclass
 
-BOOK, SHEET, ALGEBRA, MAP = "book", "sheet", "algebra", "map"
-EVERYWHERE = (BOOK, SHEET, ALGEBRA, MAP)
+BOOK, SHEET, ALGEBRA, MAP, MEETING = "book", "sheet", "algebra", "map", "meeting"
+EVERYWHERE = (BOOK, SHEET, ALGEBRA, MAP, MEETING)
 
 PLACES = {
     BOOK: "Project",
     SHEET: "Sheet",
     ALGEBRA: "Algebra",
     MAP: "Window map",
+    MEETING: "Review meeting",
 }
 """Names of the screens that commands belong to."""
 
@@ -236,12 +237,88 @@ COMMANDS = (
     Command("wider", "minus", "less_than_sign", "Wider", "Show more around the cross.", (MAP,), foot=3),
     Command("whole", "w", "home", "Whole", "Show everything near the sheet's present point again.", (MAP,), foot=4),
     Command(
+        "meeting",
+        "g",
+        "ctrl+g",
+        "Meeting",
+        "Walk through everything that wants a decision, and decide.",
+        (BOOK,),
+        foot=7,
+    ),
+    Command(
+        "look",
+        "enter",
+        "o",
+        "Open",
+        "Open the sheet at what the cursor is on; back returns to the meeting.",
+        (MEETING,),
+        "row",
+        foot=1,
+    ),
+    Command(
+        "accept",
+        "a",
+        "f4",
+        "Accept",
+        "Accept the block for the inputs that it has now.",
+        (MEETING,),
+        "row",
+        writes=True,
+        foot=2,
+    ),
+    Command(
+        "waive",
+        "w",
+        "f5",
+        "Waive",
+        "Accept this miss: for a value and until a day.",
+        (MEETING,),
+        "waivable",
+        writes=True,
+        foot=3,
+    ),
+    Command(
+        "send_back",
+        "b",
+        "f6",
+        "Send back",
+        "Make the block a draft again, with a remark that says what is wanted and of whom.",
+        (MEETING,),
+        "row",
+        writes=True,
+        foot=4,
+    ),
+    Command(
+        "settle",
+        "d",
+        "f7",
+        "Settle",
+        "Settle this remark with an answer.",
+        (MEETING,),
+        "remark",
+        writes=True,
+        foot=5,
+    ),
+    Command(
+        "kinds", "k", "ctrl+f", "Only", "Show one kind of thing only: missed, stale, waived, ...", (MEETING,), foot=6
+    ),
+    Command(
+        "minutes",
+        "m",
+        "f9",
+        "Minutes",
+        "End the meeting: write its minutes and record a revision.",
+        (MEETING,),
+        writes=True,
+        foot=7,
+    ),
+    Command(
         "undo",
         "z",
         "ctrl+u",
         "Undo",
         "Take back the last change, in whichever sheet it was.",
-        (BOOK, SHEET, MAP),
+        (BOOK, SHEET, MAP, MEETING),
         "undo",
         writes=True,
     ),
@@ -251,7 +328,7 @@ COMMANDS = (
         "ctrl+y",
         "Redo",
         "Make the change again that was taken back last.",
-        (BOOK, SHEET, MAP),
+        (BOOK, SHEET, MAP, MEETING),
         "redo",
         writes=True,
     ),
@@ -266,7 +343,15 @@ COMMANDS = (
     Command("theme", "t", "ctrl+t", "Theme", "Choose the colours; the choice is remembered.", EVERYWHERE),
     Command("reload", "l", "ctrl+l", "Read again", "Read the files again and draw the screen anew.", EVERYWHERE),
     Command("suspend", "ctrl+z", "S", "Suspend", "Go back to the shell; fg returns here.", EVERYWHERE),
-    Command("back", "escape", "backspace", "Back", "Go back to where you came from.", (SHEET, ALGEBRA, MAP), foot=10),
+    Command(
+        "back",
+        "escape",
+        "backspace",
+        "Back",
+        "Go back to where you came from.",
+        (SHEET, ALGEBRA, MAP, MEETING),
+        foot=10,
+    ),
     Command("leave", "q", "ctrl+x", "Leave", "Leave the program. Everything is on disk already.", EVERYWHERE, foot=10),
 )
 """All of them, in the order of the help page."""

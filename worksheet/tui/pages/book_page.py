@@ -60,7 +60,8 @@ def _row(
 ) -> tuple[Row, str]:
     """A block's row and the text that a search looks in."""
     data = snapshot.data(name)
-    stage, state = str(data.get("stage", "?")), str(data.get("state", "draft"))
+    stage = str(data.get("stage", "?"))
+    state = str(data.get("state", "draft")) if result is None else result.state
     lead = [Span(signs.text(name), VALUE, _NAME), Span(signs.text(stage), LABEL, _STAGE)]
     lead.append(Span(signs.text(state), PLAIN, _STATE))
     if result is None:

@@ -112,6 +112,12 @@ class BookScreen(Place):
         if self.present is not None:
             self.book.open_sheet(self.present)
 
+    def action_meeting(self) -> None:
+        """Walk through what wants a decision."""
+        from worksheet.tui.screens.meeting import MeetingScreen
+
+        self.app.push_screen(MeetingScreen())
+
     def action_new(self) -> None:
         """Start a sheet."""
         process = self.snapshot.project.process
