@@ -6,6 +6,7 @@ p-channel one, which is its mirror image. `Frame` turns them back.
 
 from __future__ import annotations
 
+from collections.abc import Callable
 from dataclasses import dataclass
 from functools import cached_property
 
@@ -23,9 +24,10 @@ from worksheet.stages.stage import BIAS, GROUND, IN, OUT, SUPPLY, Transistor
 class Levels:
     """Node voltages, ranges and device voltages of one circuit over its conditions. Built lazily from Inputs."""
 
-    def __init__(self, inputs: Inputs) -> None:
-        """Take the numbers; nothing is computed yet."""
+    def __init__(self, inputs: Inputs, at_nominal: Callable[[], Levels] | None = None) -> None:
+        """Take the numbers, and the same at the nominal condition where their first condition is another."""
         self._in = inputs
+        self._at_nominal = at_nominal
         self._circuit: Circuit = inputs.circuit
         self._below = self._circuit.stack_below(OUT)
         self._above = self._circuit.stack_above(OUT)
@@ -34,9 +36,10 @@ class Levels:
         """Between the frame and ground, either way. [V]"""
         return np.asarray(voltage if self._circuit.polarity == "n" else self._in.supply - voltage)
 
-    def _held(self, voltage: Number) -> Array:
+    def _held(self, find: Callable[[Levels], Array]) -> Array:
         """A frame voltage found at the nominal condition and held from ground over all conditions. [V]"""
-        return self.turn(nominal(self.turn(voltage)))
+        there = self if self._at_nominal is None else self._at_nominal()
+        return self.turn(nominal(there.turn(find(there))))
 
     @cached_property
     def drives(self) -> dict[str, Array]:
@@ -75,7 +78,7 @@ class Levels:
         if self._above[0] == IN:
             return given_or(self._assumed_input, lambda: np.asarray(self._in.supply))
         if self._below[0] == IN:
-            return given_or(self._assumed_input, lambda: self._held(self._source_input_room / 2.0))
+            return given_or(self._assumed_input, lambda: self._held(lambda at: at._source_input_room / 2.0))
         return None
 
     @cached_property
@@ -144,14 +147,14 @@ class Levels:
 
     def _found_gate(self) -> Array:
         """The gate of a follower that stands in the middle of its range at the nominal condition. [V]"""
-        return self._held(self.gate_for_output((self.output_low + self.output_high) / 2.0))
+        return self._held(lambda at: at.gate_for_output((at.output_low + at.output_high) / 2.0))
 
     @cached_property
     def output(self) -> Array:
         """Output level in the frame. [V]"""
         if self._circuit.stage.holds_input:
             return given_or(self.assumed_output, lambda: self.output_for_gate(self.input))
-        return given_or(self.assumed_output, lambda: self._held((self.output_low + self.output_high) / 2.0))
+        return given_or(self.assumed_output, lambda: self._held(lambda at: (at.output_low + at.output_high) / 2.0))
 
     @cached_property
     def empty(self) -> Array:

@@ -5,7 +5,7 @@ Everything is computed when it is first asked for and kept, so that a caller pay
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+from collections.abc import Callable, Sequence
 from dataclasses import dataclass
 from functools import cached_property
 
@@ -50,10 +50,15 @@ class Source:
 class NumericSolution:
     """One circuit solved over its conditions; indexing by a metric's key gives its values (NaN where missing)."""
 
-    def __init__(self, inputs: Inputs) -> None:
-        """Take the numbers; nothing is computed yet."""
+    def __init__(self, inputs: Inputs, at_nominal: Callable[[], Levels] | None = None) -> None:
+        """Take the numbers; nothing is computed yet.
+
+        Args:
+            inputs: The numbers.
+            at_nominal: The levels at the nominal condition, where that is not the first one.
+        """
         self.inputs = inputs
-        self.levels = Levels(inputs)
+        self.levels = Levels(inputs, at_nominal)
         self.devices = operating_points(inputs, self.levels)
         self.network = Network(inputs, self.devices)
         self._measured: dict[str, Measured] = {}

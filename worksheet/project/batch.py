@@ -52,6 +52,16 @@ class Batch:
         """(rows, conditions) of all cases."""
         return int(self.starts[-1]), len(self.conditions)
 
+    @property
+    def nominal_temperature(self) -> float:
+        """At which the bias current is stated. [K]"""
+        return self.conditions.nominal.temperature
+
+    @property
+    def reference_temperature(self) -> float:
+        """At which the process values hold. [K]"""
+        return self.conditions.process.reference_temperature
+
     @cached_property
     def solution(self) -> NumericSolution:
         """All cases solved."""

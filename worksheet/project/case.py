@@ -278,6 +278,16 @@ class Case:
                 message = f"the formula {formula.text!r} gives no number: {error}"
                 raise CaseError(self._problem_at(where, None, message)) from error
 
+    @property
+    def nominal_temperature(self) -> float:
+        """At which the bias current is stated. [K]"""
+        return self.conditions.nominal.temperature
+
+    @property
+    def reference_temperature(self) -> float:
+        """At which the process values hold. [K]"""
+        return self.conditions.process.reference_temperature
+
     def process(self, device: Transistor) -> tuple[Mapping[str, Number], Mapping[str, Array]]:
         """A transistor's process values by name, and what the corners change of them. [unit of the key]"""
         model = self.model(device)

@@ -43,6 +43,11 @@ class ConditionSet:
         return np.array([c.supply for c in self.conditions])
 
     @cached_property
+    def index(self) -> dict[Condition, int]:
+        """The place of each condition; of one that is stated twice, the first."""
+        return {c: k for k, c in reversed(list(enumerate(self.conditions)))}
+
+    @cached_property
     def places(self) -> list[int]:
         """The places of the conditions in an order that does not depend on how they are listed, the nominal one first."""
         every = self.conditions

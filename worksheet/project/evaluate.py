@@ -14,7 +14,7 @@ from worksheet.model.problem import Problem
 from worksheet.project import conditions as sets
 from worksheet.project import links
 from worksheet.project.batch import batches
-from worksheet.project.case import Case, CaseError
+from worksheet.project.case import Case, CaseError, External
 from worksheet.project.conditions import ConditionSet
 from worksheet.project.discover import Project
 
@@ -65,7 +65,17 @@ class Evaluator:
 
     def over(self, name: str, conditions: ConditionSet) -> Case:
         """A sheet's case over other conditions than its own, its proposals held."""
-        return Case(self.project.sheets[name], conditions, partial(self._external, name, conditions), self.filled(name))
+        own = self.conditions(name)
+        if all(c in own.index for c in conditions.conditions):  # what other sheets give is known there
+            places = [own.index[c] for c in conditions.conditions]
+            external: External = partial(self._picked, name, own, places)
+        else:
+            external = partial(self._external, name, conditions)
+        return Case(self.project.sheets[name], conditions, external, self.filled(name))
+
+    def _picked(self, asking: str, own: ConditionSet, places: list[int], name: str, key: str) -> Array:
+        values = self._external(asking, own, name, key)
+        return values if values.ndim == 0 or values.shape[-1] == 1 else values[..., places]
 
     def filled(self, name: str) -> Mapping[str, float]:
         """Proposals for what a sheet leaves open, found once. [unit of the key]"""
@@ -92,7 +102,7 @@ class Evaluator:
                 self._known[f"{name}.{key}"] = _taken(self.case(name), key)
             return self._known[f"{name}.{key}"]
         values = _taken(self._linked_case(name, wanted, own_supply), key)
-        return values if values.ndim == 0 else values[..., 1:]
+        return values if values.size == 1 else values[..., 1:]  # one number holds in every condition
 
     def find_links(self, names: Iterable[str]) -> None:
         """Work out in batches the metrics that sheets of those names take from others, nearer or further."""

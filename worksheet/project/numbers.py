@@ -11,7 +11,6 @@ import numpy as np
 from worksheet.device.arrays import Array, Number
 from worksheet.device.parameters import Parameters, at_condition
 from worksheet.engine.inputs import Inputs
-from worksheet.project.conditions import ConditionSet
 from worksheet.stages.circuit import Circuit
 from worksheet.stages.stage import Transistor
 
@@ -38,8 +37,13 @@ class Named(Protocol):
         ...
 
     @property
-    def conditions(self) -> ConditionSet:
-        """The conditions, the nominal one first."""
+    def nominal_temperature(self) -> Number:
+        """At which the bias current is stated. [K]"""
+        ...
+
+    @property
+    def reference_temperature(self) -> float:
+        """At which the process values hold. [K]"""
         ...
 
     @property
@@ -93,8 +97,8 @@ def current_of(named: Named) -> Number:
     exponent, current = named.value("bias_temperature_exponent"), named.value("bias_current")
     if not np.any(exponent):
         return current
-    nominal = named.conditions.nominal.temperature
-    return np.asarray(current * (_array(named.value("temperature")) / nominal) ** _array(exponent))
+    warmth = _array(named.value("temperature")) / named.nominal_temperature
+    return np.asarray(current * warmth ** _array(exponent))
 
 
 def _parameters(named: Named, device: Transistor) -> Parameters:
@@ -104,7 +108,7 @@ def _parameters(named: Named, device: Transistor) -> Parameters:
         {name: _array(number) for name, number in process.items()},
         changes,
         _array(named.value("temperature")),
-        named.conditions.process.reference_temperature,
+        named.reference_temperature,
         _array(named.value(device.key("width"))),
         _array(named.value(device.key("length"))),
     )

@@ -44,11 +44,15 @@ def deeper(review: Review, evaluator: Evaluator | None, wanted: Wanted) -> Deepe
     from worksheet.review.yields import yields
 
     ranked, shares = {}, {}
-    for sheet in review.sheets:
-        name = sheet.sheet.name
-        if wanted.fragile:
-            worst = {t.target.name: t.worst_at for t in sheet.targets if t.worst_at is not None}
-            ranked[name] = fragility(evaluator, name, worst)
-        if wanted.samples:
-            shares[name] = yields(evaluator, name, wanted.samples, wanted.seed)
+    if wanted.fragile:
+        ranked = fragility(
+            evaluator,
+            {
+                sheet.sheet.name: {t.target.name: t.worst_at for t in sheet.targets if t.worst_at is not None}
+                for sheet in review.sheets
+            },
+        )
+    if wanted.samples:
+        for sheet in review.sheets:
+            shares[sheet.sheet.name] = yields(evaluator, sheet.sheet.name, wanted.samples, wanted.seed)
     return Deeper(ranked, shares)

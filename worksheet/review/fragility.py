@@ -2,8 +2,8 @@
 
 from __future__ import annotations
 
-from collections.abc import Sequence
-from dataclasses import dataclass
+from collections.abc import Iterator, Mapping, Sequence
+from dataclasses import dataclass, replace
 
 import numpy as np
 
@@ -13,12 +13,14 @@ from worksheet.model.sheet import Condition, Target
 from worksheet.project.case import Case
 from worksheet.project.conditions import ConditionSet
 from worksheet.project.evaluate import Evaluator
+from worksheet.review import brackets
 from worksheet.review.inputs import Input, inputs_of
-from worksheet.solver import goals, roots
-from worksheet.solver.trials import Index, Mask
+from worksheet.review.probe import Place, Probe, Seen
+from worksheet.solver import goals
+from worksheet.solver.trials import Index
+from worksheet.stages.circuit import Circuit
 
 _SPAN = 10.0
-_STEPS = 24
 _TILT = 1e-5
 _FLAT = 1e-9
 
@@ -46,15 +48,6 @@ class Fragile:
     room: float | None
 
 
-@dataclass(frozen=True, slots=True)
-class Side:
-    """One limit of one target."""
-
-    target: Target
-    side: str
-    limit: float
-
-
 @dataclass(frozen=True)
 class Fragility:
     """The ranking at the nominal condition and at each target's worst one, and the inputs that stand at 0."""
@@ -64,26 +57,67 @@ class Fragility:
     not_ranked: tuple[str, ...]
 
 
-def fragility(evaluator: Evaluator, name: str, worst: dict[str, Condition]) -> Fragility:
-    """Rank every input of a sheet against every target.
+def fragility(evaluator: Evaluator, worst: Mapping[str, Mapping[str, Condition]]) -> dict[str, Fragility]:
+    """Rank every input of sheets against every target; sheets of one circuit are looked at together.
 
     Args:
         evaluator: The project.
-        name: The sheet.
-        worst: The worst condition of each target, by its name.
-    Returns: Fragility, least room first
+        worst: The worst condition of each target that has one, by sheet and target.
+    Returns: Fragility by sheet, least room first
     """
-    case = evaluator.case(name)
-    inputs = inputs_of(case)
-    nominal = case.conditions.only_nominal()
-    targets = tuple(case.sheet.targets.values())
-    at_worst: list[Fragile] = []
-    for at in dict.fromkeys(worst.values()):
-        mine = tuple(t for t in targets if worst.get(t.name) == at)
-        conditions = ConditionSet(nominal.process, (*nominal.conditions, at)) if at != nominal.nominal else nominal
-        at_worst += _ranked(evaluator.over(name, conditions), inputs, mine)
+    circuits: dict[Circuit, list[Place]] = {}
+    inputs = {}
+    for name, conditions in worst.items():
+        case = evaluator.case(name)
+        inputs[name] = inputs_of(case)
+        circuits.setdefault(case.circuit, []).extend(_places(evaluator, case, inputs[name], conditions))
+    rows: dict[tuple[str, int], list[Fragile]] = {}
+    for places in circuits.values():
+        for place, found in zip(places, _ranked(places), strict=True):
+            rows.setdefault((place.case.sheet.name, place.index), []).extend(found)
+    return {name: _of_sheet(evaluator.case(name), rows, inputs[name], worst[name]) for name in worst}
+
+
+def _places(
+    evaluator: Evaluator, case: Case, inputs: Sequence[Input], worst: Mapping[str, Condition]
+) -> Iterator[Place]:
+    """The nominal condition with every target, and each worst condition with the targets that are worst there."""
+    conditions, targets = case.conditions, case.sheet.targets
+    for at in dict.fromkeys((conditions.nominal, *worst.values())):
+        index = conditions.index[at]
+        both = conditions.conditions[:1] if index == 0 else (conditions.nominal, at)
+        pair = evaluator.over(case.sheet.name, ConditionSet(conditions.process, both))
+        moved = tuple(_there(case, item, index) for item in inputs if item.value != 0)
+        mine = targets if index == 0 else [name for name in targets if worst.get(name) == at]
+        yield Place(case, index, pair, moved, tuple(targets[name] for name in mine))
+
+
+def _there(case: Case, item: Input, index: int) -> Input:
+    """An input with the value that it has at a condition: temperature, supply and links have one at each."""
+    if index == 0 or not ("." in item.name or item.name in ("temperature", "supply")):
+        return item
+    if item.name in ("temperature", "supply"):
+        return replace(item, value=float(getattr(case.conditions.conditions[index], item.name)))
+    sheet, _, key = item.name.partition(".")
+    if sheet in ("assume", "choose", "own", "bias", "process"):
+        return item
+    values = np.asarray(case.external(sheet, key)).reshape(-1)
+    return replace(item, value=float(values[index if len(values) > 1 else 0]))
+
+
+def _of_sheet(
+    case: Case, rows: Mapping[tuple[str, int], list[Fragile]], inputs: Sequence[Input], worst: Mapping[str, Condition]
+) -> Fragility:
+    name, index = case.sheet.name, case.conditions.index
+    nominal = rows.get((name, 0), [])
+    at_worst = [
+        row
+        for place in sorted({index[at] for at in worst.values()})
+        for row in rows.get((name, place), [])
+        if row.target in worst and index[worst[row.target]] == place
+    ]
     return Fragility(
-        nominal=tuple(sorted(_ranked(evaluator.over(name, nominal), inputs, targets), key=_order)),
+        nominal=tuple(sorted(nominal, key=_order)),
         worst=tuple(sorted(at_worst, key=_order)),
         not_ranked=tuple(i.name for i in inputs if i.value == 0),
     )
@@ -93,166 +127,231 @@ def _order(row: Fragile) -> tuple[bool, float, float]:
     return row.room is None, row.room or 0.0, -abs(row.sensitivity or 0.0)
 
 
-def _ranked(case: Case, inputs: Sequence[Input], targets: Sequence[Target]) -> list[Fragile]:
-    """Rows of the inputs that move a target, at the case's last condition."""
-    ranked = [_at(case, i) for i in inputs if i.value != 0]
-    if not targets or not ranked:
-        return []
-    probe = _Probe(case, ranked)
-    slopes = _sensitivities(probe, targets)
-    sides = [
-        Side(t, side, limit)
-        for t in targets
-        for side, limit in zip(goals.SIDES, goals.limits(t), strict=True)
-        if limit is not None
-    ]
-    breaks = _breaks(probe, sides)
-    rows = []
-    for t, target in enumerate(targets):
-        for k, item in enumerate(ranked):
-            found = [breaks[s][k] for s, side in enumerate(sides) if side.target is target]
-            near = min((b for b in found if b is not None), key=lambda b: abs(b - item.value), default=None)
-            slope = float(slopes[t, k]) if np.isfinite(slopes[t, k]) else None
-            if near is None and (slope is None or abs(slope) < _FLAT):
-                continue
-            room = None if near is None else abs(near - item.value) / abs(item.value)
-            rows.append(
-                Fragile(
-                    target.name, item.name, item.value, item.unit, item.trust, item.standard_error, slope, near, room
-                )
-            )
-    return rows
+@dataclass(frozen=True, eq=False, slots=True)
+class _Pairs:
+    """Every input of every place of a probe, as arrays: its place, its number in the probe, its value and its range."""
+
+    place: Index
+    name: Index
+    value: Array
+    low: Array
+    high: Array
+    items: tuple[Input, ...]
+
+    def at(self, logarithm: Array, which: Index) -> Array:
+        """Values at a logarithm over the present value. [unit of the input]"""
+        return np.asarray(self.value[which] * np.exp(logarithm))
 
 
-def _at(case: Case, item: Input) -> Input:
-    """An input with the value that it has at the case's last condition."""
-    at = case.conditions.conditions[-1]
-    value = {"temperature": at.temperature, "supply": at.supply}.get(item.name, item.value)
-    return Input(item.name, item.move, value, item.unit, item.trust, item.standard_error, item.low, item.high)
+def _pairs(probe: Probe) -> _Pairs:
+    items = tuple(item for place in probe.places for item in place.inputs)
+    counts = [len(place.inputs) for place in probe.places]
+    spans = np.array([_span(item) for item in items]).reshape(-1, 2)
+    return _Pairs(
+        place=np.repeat(np.arange(len(counts)), counts),
+        name=np.concatenate(probe.name_of).astype(np.intp),
+        value=np.array([item.value for item in items]),
+        low=spans[:, 0],
+        high=spans[:, 1],
+        items=items,
+    )
 
 
-class _Probe:
-    """Targets at the case's last condition for single inputs moved to single values."""
-
-    def __init__(self, case: Case, inputs: Sequence[Input]) -> None:
-        self.case, self.inputs = case, inputs
-        self._values = np.array([i.value for i in inputs])
-
-    def measure(self, which: Index, values: Array, targets: Sequence[Target]) -> tuple[list[Measured], Mask]:
-        """Targets for trials that each move input `which` to `values`, and where such a device can exist."""
-        moves: dict[str, Array] = {}
-        for k, item in enumerate(self.inputs):
-            column = np.full((len(values), 1), self._values[k])
-            column[which == k, 0] = values[which == k]
-            if (which == k).any():
-                moves[item.move] = self._per_condition(item, column)
-        moved = self.case.moved(moves)
-        solution = moved.solution
-        found = []
-        for target in targets:
-            measured = goals.measure(moved, target, solution)
-            shape = (len(values), len(self.case.conditions))
-            reasons = None if measured.reasons is None else np.broadcast_to(measured.reasons, shape)[:, -1]
-            found.append(Measured(np.broadcast_to(measured.values, shape)[:, -1], reasons))
-        exists = np.ones(len(values), dtype=bool)
-        for p in moved.inputs.devices.values():
-            coupled = np.broadcast_to(np.asarray(p.kappa + p.drain_coupling), (len(values), len(self.case.conditions)))
-            exists &= coupled[:, -1] <= 1.0 + 1e-12
-        return found, exists
-
-    def _per_condition(self, item: Input, column: Array) -> Array:
-        """Temperature and supply move at the last condition alone; the nominal one keeps its own."""
-        count = len(self.case.conditions)
-        if item.name not in ("temperature", "supply") or count == 1:
-            return column
-        first = self.case.conditions.conditions[0]
-        own = first.temperature if item.name == "temperature" else first.supply
-        return np.concatenate([np.full_like(column, own), column], axis=1)
+def _span(item: Input) -> tuple[float, float]:
+    """Logarithms over the present value between which it is moved: a tenth to ten times, within its own limits."""
+    low, high, size = 1.0 / _SPAN, _SPAN, abs(item.value)
+    if item.value > 0:
+        low = max(low, (item.low or 0.0) / size)
+        high = min(high, np.inf if item.high is None else item.high / size)
+    if item.name.endswith((".kappa", ".drain_coupling")):
+        high = min(high, 1.0 / size)
+    return float(np.log(min(low, 1.0))), float(np.log(max(high, 1.0)))
 
 
-def _sensitivities(probe: _Probe, targets: Sequence[Target]) -> Array:
-    """d ln(metric)/d ln(input) by central differences, shape (targets, inputs)."""
-    count = len(probe.inputs)
-    which = np.tile(np.arange(count), 2)
-    base = np.array([i.value for i in probe.inputs])
-    found, _ = probe.measure(which, np.concatenate([base * np.exp(_TILT), base * np.exp(-_TILT)]), targets)
-    slopes = []
-    with np.errstate(all="ignore"):
-        for measured in found:
-            up, down = measured.values[:count], measured.values[count:]
-            slopes.append(np.log(up / down) / (2.0 * _TILT))
-    return np.array(slopes)
-
-
-def _breaks(probe: _Probe, sides: Sequence[Side]) -> list[list[float | None]]:
-    """For each side of a target and each input the nearest break value, None where there is none in the range."""
-    grids = [_grid(item) for item in probe.inputs]
-    which = np.repeat(np.arange(len(grids)), [len(g) for g in grids])
-    values = np.concatenate(grids)
-    slack, exists = _slacks(probe, which, values, sides)
-    found: list[list[float | None]] = [[None] * len(grids) for _ in sides]
-    brackets = [
-        (s, k, near, far)
-        for s in range(len(sides))
-        for k, grid in enumerate(grids)
-        for near, far in _changes(grid, slack[s, which == k], exists[which == k], probe.inputs[k].value)
-    ]
-    if not brackets:
-        return found
-    side_of, input_of = np.array([b[0] for b in brackets]), np.array([b[1] for b in brackets])
-    ends = np.sort(np.array([[b[2], b[3]] for b in brackets]), axis=1)
-    scale = np.array([probe.inputs[k].value for k in input_of])
-    low, high = ends[:, 0] / np.abs(scale), ends[:, 1] / np.abs(scale)
-    rows = np.arange(len(brackets))
-
-    def look(x: Array) -> tuple[Array, Index]:
-        gaps, _ = _slacks(probe, input_of, x * np.abs(scale), sides)
-        return gaps[side_of, rows], np.zeros(len(x), dtype=np.intp)
-
-    rising: Mask = np.asarray(look(high)[0] >= 0, dtype=np.bool_)
-    low, high, _, _ = roots.refined(look, low, high, rising)
-    edges = np.where(rising, high, low) * np.abs(scale)
-    for k, (s, i, _, _) in enumerate(brackets):
-        known, value = found[s][i], float(edges[k])
-        if known is None or abs(value - probe.inputs[i].value) < abs(known - probe.inputs[i].value):
-            found[s][i] = value
+def _ranked(places: Sequence[Place]) -> list[list[Fragile]]:
+    """Rows of each place: the inputs that move a target of it, at its condition."""
+    probe = Probe(places)
+    pairs = _pairs(probe)
+    if not len(pairs.place) or not probe.targets:
+        return [[] for _ in places]
+    pairs = _within_existence(probe, pairs)
+    slopes, moving = _sensitivities(probe, pairs)
+    breaks = _breaks(probe, pairs, moving)
+    found: list[list[Fragile]] = []
+    starts = np.searchsorted(pairs.place, np.arange(len(places) + 1)).tolist()
+    for number, place in enumerate(places):
+        mine = range(starts[number], starts[number + 1])
+        found.append([row for t in place.targets for row in _rows(t.name, mine, pairs, slopes[t.name], breaks[t.name])])
     return found
 
 
-def _slacks(probe: _Probe, which: Index, values: Array, sides: Sequence[Side]) -> tuple[Array, Mask]:
-    """Slack of each side with the verdict's tolerance added, shape (sides, trials), and where a device exists."""
-    targets = list(dict.fromkeys(side.target.name for side in sides))
-    by_name = {side.target.name: side.target for side in sides}
-    found, exists = probe.measure(which, values, [by_name[n] for n in targets])
-    measured = dict(zip(targets, found, strict=True))
-    return np.array(
-        [goals.slack(measured[s.target.name], s.limit, s.side) + (goals.TOLERANCE if s.limit else 0.0) for s in sides]
-    ), exists
+def _within_existence(probe: Probe, pairs: _Pairs) -> _Pairs:
+    """The same with ranges that end where kappa and drain coupling come to 1: beyond it there is no device."""
+
+    def room(which: Index, logarithm: Array) -> Array:
+        return probe.room(pairs.place[which], pairs.name[which], pairs.at(logarithm, which))
+
+    every = np.arange(len(pairs.place))
+    ends = []
+    for end in (pairs.low, pairs.high):
+        beyond = np.flatnonzero(room(every, end) < 0)
+        shorter = end.copy()
+        if len(beyond):
+            shorter[beyond] = brackets.drawn(lambda k, x, b=beyond: room(b[k], x), np.zeros(len(beyond)), end[beyond])
+        ends.append(shorter)
+    return replace(pairs, low=ends[0], high=ends[1])
 
 
-def _grid(item: Input) -> Array:
-    """Values to look at, the present one among them, a tenth to ten times of it within its limits."""
-    size = np.abs(item.value)
-    low, high = size / _SPAN, size * _SPAN
-    if item.value > 0:
-        low = max(low, item.low or 0.0)
-        high = min(high, item.high if item.high is not None else np.inf)
-    if item.name.endswith((".kappa", ".drain_coupling")):
-        high = min(high, 1.0)
-    down = np.geomspace(size, max(low, 1e-300), _STEPS + 1)[::-1] if low < size else np.array([size])
-    up = np.geomspace(size, high, _STEPS + 1)[1:] if high > size else np.array([])
-    return np.asarray(np.sign(item.value) * np.concatenate([down, up]))
+def _rows(
+    target: str, mine: range, pairs: _Pairs, slopes: Sequence[float], breaks: Sequence[float]
+) -> Iterator[Fragile]:
+    for k in mine:
+        item, slope, near = pairs.items[k], slopes[k], breaks[k]
+        broken = near == near  # noqa: PLR0124  not a number where nothing breaks
+        known = abs(slope) < np.inf
+        if broken or (known and abs(slope) >= _FLAT):
+            room = abs(near - item.value) / abs(item.value) if broken else None
+            yield Fragile(
+                target,
+                item.name,
+                item.value,
+                item.unit,
+                item.trust,
+                item.standard_error,
+                slope if known else None,
+                near if broken else None,
+                room,
+            )
 
 
-def _changes(grid: Array, slack: Array, exists: Mask, present: float) -> list[tuple[float, float]]:
-    """The nearest change of met to either side of the present value, as brackets."""
-    here = int(np.argmin(np.abs(grid - present)))
-    brackets = []
-    for direction in (1, -1):
-        k = here
-        while 0 <= k + direction < len(grid) and exists[k + direction]:
-            if (slack[k] >= 0) != (slack[k + direction] >= 0):
-                brackets.append((float(grid[k]), float(grid[k + direction])))
-                break
-            k += direction
-    return brackets
+def _sensitivities(probe: Probe, pairs: _Pairs) -> tuple[dict[str, list[float]], Index]:
+    """d ln(target)/d ln(input) by central differences, by target over pairs; and the pairs that move anything at all.
+
+    An input that changes no bit of any target, neither a little to either side nor at the ends of its range, is none
+    of theirs.
+    """
+    count = len(pairs.place)
+    every = np.arange(count)
+    ways = [np.full(count, _TILT), np.full(count, -_TILT), pairs.low, pairs.high, np.zeros(count)]
+    which = np.tile(every, len(ways))
+    order = np.argsort(pairs.place[which], kind="stable")
+    seen = _look(probe, pairs, which[order], np.concatenate(ways)[order])
+    back = np.empty_like(order)
+    back[order] = np.arange(len(order))
+    slopes, moves = {}, np.zeros(count, dtype=np.bool_)
+    for name, measured in seen.targets.items():
+        up, down, low, high, here = measured.values[back].reshape(len(ways), count)
+        with np.errstate(all="ignore"):
+            slopes[name] = (np.log(up / down) / (2.0 * _TILT)).tolist()
+        for there in (up, down, low, high):
+            moves |= ~((there == here) | (np.isnan(there) & np.isnan(here)))
+        if measured.reasons is not None:
+            reasons = measured.reasons[back].reshape(len(ways), count)
+            moves |= (reasons != reasons[-1]).any(axis=0)
+    return slopes, every[moves]
+
+
+def _look(probe: Probe, pairs: _Pairs, which: Index, logarithm: Array) -> Seen:
+    """Targets where pairs are moved, each to a logarithm over its present value."""
+    return probe.see(pairs.place[which], pairs.name[which], pairs.at(logarithm, which))
+
+
+def _breaks(probe: Probe, pairs: _Pairs, moving: Index) -> dict[str, list[float]]:
+    """The nearest break value of each target, over pairs; NaN where there is none."""
+    nearest = {name: np.full(len(pairs.place), np.nan) for name in probe.targets}
+    if len(moving):
+        found = _Brackets(probe, pairs, _sides(probe))
+        found.search(moving)
+        for name, pair, value in found.values():
+            distance = np.abs(value - pairs.value[pair])
+            known = np.abs(nearest[name][pair] - pairs.value[pair])
+            nearer = ~(known <= distance)
+            np.putmask(value, ~nearer, nearest[name][pair])
+            nearest[name][pair] = value
+    return {name: values.tolist() for name, values in nearest.items()}
+
+
+@dataclass(frozen=True, eq=False, slots=True)
+class _Side:
+    """One side of the targets of one name: its limit in each place, NaN where the place has none."""
+
+    target: str
+    side: str
+    limit: Array
+
+    def slack(self, measured: Measured, place: Index) -> Array:
+        """Slack with the verdict's tolerance added; met where zero or more."""
+        limit = self.limit[place]
+        return goals.slack(measured, limit, self.side) + np.where(limit == 0, 0.0, goals.TOLERANCE)
+
+
+def _sides(probe: Probe) -> list[_Side]:
+    sides = []
+    for name in probe.targets:
+        for number, side in enumerate(goals.SIDES):
+            targets = [next((t for t in place.targets if t.name == name), None) for place in probe.places]
+            limits = [None if target is None else goals.limits(target)[number] for target in targets]
+            if any(limit is not None for limit in limits):
+                sides.append(_Side(name, side, np.array([np.nan if x is None else x for x in limits])))
+    return sides
+
+
+class _Brackets:
+    """Brackets of all sides, pairs and directions, found on one grid and drawn together."""
+
+    def __init__(self, probe: Probe, pairs: _Pairs, sides: Sequence[_Side]) -> None:
+        self.probe, self.pairs, self.sides = probe, pairs, sides
+        none = np.zeros(0, dtype=np.intp)
+        self.side, self.pair, self.low, self.high = none, none, np.zeros(0), np.zeros(0)
+
+    def search(self, moving: Index) -> None:
+        """Look along the ranges of the pairs that move something."""
+        ends = np.stack([self.pairs.low[moving], self.pairs.high[moving]], axis=1)
+        places = ends[:, :, None] * brackets.STEPS  # (pairs, directions, steps)
+        shape = places.shape
+        seen = _look(self.probe, self.pairs, np.repeat(moving, shape[1] * shape[2]), places.reshape(-1))
+        exists = (seen.room >= 0).reshape(shape)
+        place = self.pairs.place[np.repeat(moving, shape[1] * shape[2])]
+        for number, side in enumerate(self.sides):
+            mine = np.flatnonzero(~np.isnan(side.limit[self.pairs.place[moving]]))
+            if len(mine):
+                met = (side.slack(seen.targets[side.target], place) >= 0).reshape(shape)
+                for way in (0, 1):
+                    self._enter(number, moving[mine], places[mine, way], met[mine, way], exists[mine, way])
+
+    def _enter(self, side: int, pair: Index, places: Array, met: Array, exists: Array) -> None:
+        first = brackets.first_change(met, exists)  # type: ignore[arg-type]
+        has = np.flatnonzero(first >= 0)
+        step = first[has]
+        self.side = np.concatenate([self.side, np.full(len(has), side)])
+        self.pair = np.concatenate([self.pair, pair[has]])
+        self.low = np.concatenate([self.low, places[has, step]])
+        self.high = np.concatenate([self.high, places[has, step + 1]])
+
+    def values(self) -> Iterator[tuple[str, Index, Array]]:
+        """Break values by side and direction: the target's name, the pairs and where each breaks."""
+        if not len(self.pair):
+            return
+        order = np.argsort(self.pair, kind="stable")
+        side, pair = self.side[order], self.pair[order]
+
+        def look(which: Index, logarithm: Array) -> Array:
+            place = self.pairs.place[pair[which]]
+            seen = _look(self.probe, self.pairs, pair[which], logarithm)
+            found = np.empty(len(which))
+            for number, one in enumerate(self.sides):
+                mine = side[which] == number
+                if mine.any():
+                    measured = seen.targets[one.target]
+                    reasons = None if measured.reasons is None else measured.reasons[mine]
+                    found[mine] = one.slack(Measured(measured.values[mine], reasons), place[mine])
+            return found
+
+        edges = brackets.drawn(look, self.low[order], self.high[order])
+        breaks = self.pairs.at(edges, pair)
+        down = edges < 0
+        for number, one in enumerate(self.sides):
+            for way in (down, ~down):
+                mine = (side == number) & way
+                if mine.any():
+                    yield one.target, pair[mine], breaks[mine]

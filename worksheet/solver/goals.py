@@ -6,7 +6,7 @@ from typing import Protocol
 
 import numpy as np
 
-from worksheet.device.arrays import Array
+from worksheet.device.arrays import Array, Number
 from worksheet.engine.measured import Measured, with_reasons_of
 from worksheet.model import metrics
 from worksheet.model.metrics import Reason
@@ -54,21 +54,21 @@ def limits(target: Target) -> tuple[float | None, float | None]:
     return low, high
 
 
-def slack(measured: Measured, limit: float, side: str) -> Array:
+def slack(measured: Measured, limit: Number, side: str) -> Array:
     """By how much values clear one limit: positive where met.
 
     Args:
         measured: Values over points.
-        limit: The limit, guard band counted. [unit of the target]
+        limit: The limit, guard band counted; one for all values, or one each. [unit of the target]
         side: "low" for a minimum, "high" for a maximum.
     Returns: ln(value/limit) where both are positive, else the relative (limit 0: plain) distance; +-FAR where there is
         no number. [-]
     """
     values = measured.values
     with np.errstate(all="ignore"):
-        plain = (values - limit) / (abs(limit) or 1.0)
-        ratio = np.log(values / limit) if limit > 0 else plain
-        room = np.where((values > 0) & (limit > 0), ratio, plain)
+        bound = np.asarray(limit)
+        plain = (values - bound) / np.where(bound == 0, 1.0, np.abs(bound))
+        room = np.where((values > 0) & (bound > 0), np.log(values / bound), plain)
         room = room if side == "low" else -room
     absent = ~np.isfinite(values)
     if absent.any():
