@@ -6,11 +6,24 @@ from pathlib import Path
 import pytest
 
 from worksheet.tui import keymap
-from worksheet.tui.commands import ALGEBRA, BOOK, COMMANDS, MAP, MEETING, PLACES, SHEET, find, of_place, shown_key
+from worksheet.tui.commands import (
+    ALGEBRA,
+    BOOK,
+    COMMANDS,
+    MAP,
+    MEETING,
+    PLACES,
+    SHEET,
+    TAKEOVER,
+    find,
+    of_place,
+    shown_key,
+)
 from worksheet.tui.screens.algebra import AlgebraScreen
 from worksheet.tui.screens.book import BookScreen
 from worksheet.tui.screens.meeting import MeetingScreen
 from worksheet.tui.screens.sheet import SheetScreen
+from worksheet.tui.screens.takeover import TakeoverScreen
 from worksheet.tui.screens.window_map import MapScreen
 
 SCREENS = {
@@ -19,6 +32,7 @@ SCREENS = {
     ALGEBRA: AlgebraScreen,
     MAP: MapScreen,
     MEETING: MeetingScreen,
+    TAKEOVER: TakeoverScreen,
 }
 
 TAKEN_BY_OTHERS = {

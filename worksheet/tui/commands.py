@@ -5,6 +5,8 @@ made from this table; a screen only has a method `action_NAME` for each of its c
 
 First keys are single letters and signs, which every multiplexer passes on; second keys are function and control keys.
 Control+A, control+B (prefixes of terminal multiplexers), control+S and control+Q (flow control) are given to none.
+
+Length: one entry a command, read as a table; a second file would only hide half of it.
 """
 
 from __future__ import annotations
@@ -12,8 +14,8 @@ from __future__ import annotations
 from collections.abc import Iterator
 from dataclasses import dataclass
 
-BOOK, SHEET, ALGEBRA, MAP, MEETING = "book", "sheet", "algebra", "map", "meeting"
-EVERYWHERE = (BOOK, SHEET, ALGEBRA, MAP, MEETING)
+BOOK, SHEET, ALGEBRA, MAP, MEETING, TAKEOVER = "book", "sheet", "algebra", "map", "meeting", "takeover"
+EVERYWHERE = (BOOK, SHEET, ALGEBRA, MAP, MEETING, TAKEOVER)
 
 PLACES = {
     BOOK: "Project",
@@ -21,6 +23,7 @@ PLACES = {
     ALGEBRA: "Algebra",
     MAP: "Window map",
     MEETING: "Review meeting",
+    TAKEOVER: "Taking over",
 }
 """Names of the screens that commands belong to."""
 
@@ -250,8 +253,8 @@ COMMANDS = (
         "enter",
         "o",
         "Open",
-        "Open the sheet at what the cursor is on; back returns to the meeting.",
-        (MEETING,),
+        "Open the sheet at what the cursor is on; back returns here.",
+        (MEETING, TAKEOVER),
         "row",
         foot=1,
     ),
@@ -294,7 +297,7 @@ COMMANDS = (
         "f7",
         "Settle",
         "Settle this remark with an answer.",
-        (MEETING,),
+        (MEETING, TAKEOVER),
         "remark",
         writes=True,
         foot=5,
@@ -313,12 +316,53 @@ COMMANDS = (
         foot=7,
     ),
     Command(
+        "take_over",
+        "h",
+        "f10",
+        "Take over",
+        "Be led through what is asked, new, stale and weak in this block before it is yours.",
+        (BOOK,),
+        "row",
+    ),
+    Command(
+        "checked",
+        "v",
+        "f5",
+        "Checked",
+        "Say that you looked this value up again, and how far it is to be trusted now.",
+        (TAKEOVER,),
+        "value",
+        writes=True,
+        foot=2,
+    ),
+    Command(
+        "ask",
+        "a",
+        "f4",
+        "Ask",
+        "Ask somebody about what the cursor is on; the question stays with the sheet until it is settled.",
+        (TAKEOVER,),
+        "row",
+        writes=True,
+        foot=3,
+    ),
+    Command(
+        "keep",
+        "m",
+        "f9",
+        "Make it yours",
+        "Become the one who answers for the block.",
+        (TAKEOVER,),
+        writes=True,
+        foot=5,
+    ),
+    Command(
         "undo",
         "z",
         "ctrl+u",
         "Undo",
         "Take back the last change, in whichever sheet it was.",
-        (BOOK, SHEET, MAP, MEETING),
+        (BOOK, SHEET, MAP, MEETING, TAKEOVER),
         "undo",
         writes=True,
     ),
@@ -328,7 +372,7 @@ COMMANDS = (
         "ctrl+y",
         "Redo",
         "Make the change again that was taken back last.",
-        (BOOK, SHEET, MAP, MEETING),
+        (BOOK, SHEET, MAP, MEETING, TAKEOVER),
         "redo",
         writes=True,
     ),

@@ -118,6 +118,13 @@ class BookScreen(Place):
 
         self.app.push_screen(MeetingScreen())
 
+    def action_take_over(self) -> None:
+        """Be led through a block before it is one's own."""
+        from worksheet.tui.screens.takeover import TakeoverScreen
+
+        if self.present is not None:
+            self.app.push_screen(TakeoverScreen(self.present))
+
     def action_new(self) -> None:
         """Start a sheet."""
         process = self.snapshot.project.process

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable, Iterable, Mapping
+from collections.abc import Iterable, Mapping
 from decimal import ROUND_CEILING, ROUND_FLOOR, Decimal
 from typing import Any, ClassVar
 
@@ -14,7 +14,7 @@ from worksheet.model.problem import Problem
 from worksheet.model.quantity import format_input
 from worksheet.model.sheet_keys import WAIVER
 from worksheet.review.agenda import Item, Why, agenda
-from worksheet.session import deciding, fields, meeting, revisions
+from worksheet.session import deciding, fields, meeting
 from worksheet.session.edits import ChangeSheet, Put
 from worksheet.tui import commands
 from worksheet.tui.dialogs.form import FormDialog, FormLine
@@ -23,17 +23,16 @@ from worksheet.tui.dialogs.pick import PickDialog
 from worksheet.tui.pages import meeting_page
 from worksheet.tui.recompute import Recompute, Stamped
 from worksheet.tui.recomputed import today
-from worksheet.tui.screens.forming import submit
-from worksheet.tui.screens.place import Place, bindings
+from worksheet.tui.screens.deciding import DecidingPlace
+from worksheet.tui.screens.place import bindings
 from worksheet.tui.widgets.ledger import Ledger
 from worksheet.tui.widgets.lines import Lines
 
 _DETAIL = 6
 _EVERYTHING = "everything"
-Made = Callable[[Mapping[str, str]], "ChangeSheet | str"]
 
 
-class MeetingScreen(Place):
+class MeetingScreen(DecidingPlace):
     """What wants a decision, block by block."""
 
     PLACE = commands.MEETING
@@ -43,7 +42,6 @@ class MeetingScreen(Place):
         super().__init__()
         self._only: Why | None = None
         self._start = meeting.Start({})
-        self._by: str | None = None
         self._closes = 0
         self._work: Recompute[meeting.Closed | Problem] = Recompute(self._deliver)
 
@@ -142,13 +140,16 @@ class MeetingScreen(Place):
         result = None if item is None or self.book.results is None else self.book.results.sheet(item.sheet)
         if item is None or result is None:
             return
+        if self.book.results is None or self.book.results.revision != self.snapshot.revision:
+            self.say("The results are still being worked out; a moment.", wrong=True)
+            return
         sheet, basis = item.sheet, result.basis
-        lines = [self._by_line(), FormLine("note", "On what grounds", "What the acceptance rests on; may stay empty.")]
+        lines = [FormLine("note", "On what grounds", "What the acceptance rests on; may stay empty.")]
 
         def made(texts: Mapping[str, str]) -> ChangeSheet | str:
             return deciding.accept(sheet, basis, texts["by"], today(), texts["note"])
 
-        self._form(f"Accept {sheet}", lines, made)
+        self.decide(f"Accept {sheet}", lines, made)
 
     def action_waive(self) -> None:
         """Accept the miss, for a value and until a day."""
@@ -161,7 +162,7 @@ class MeetingScreen(Place):
             for name in ("value", "until")
             if (place := fields.coming(self.snapshot, sheet, (WAIVER.name, 0, name), about)) is not None
         }
-        lines = [self._by_line(), FormLine("reason", "Why (needed)", "Why the miss is acceptable.")]
+        lines = [FormLine("reason", "Why (needed)", "Why the miss is acceptable.")]
         lines += [
             _line(name, place, self._worst(item, place) if name == "value" else "") for name, place in places.items()
         ]
@@ -179,7 +180,7 @@ class MeetingScreen(Place):
                         stated[name] = piece.value
             return deciding.waive(sheet, about, texts["by"], texts["reason"], today(), **stated)
 
-        self._form(f"Waive {about} of {sheet}", lines, made)
+        self.decide(f"Waive {about} of {sheet}", lines, made)
 
     def _worst(self, item: Item, place: fields.Place) -> str:
         """The worst value as one would type it, rounded so that the waiver covers it."""
@@ -199,7 +200,6 @@ class MeetingScreen(Place):
         sheet, about = item.sheet, self._key_of(item)
         owner = self.snapshot.project.sheets[sheet].owner
         lines = [
-            self._by_line(),
             FormLine("to", "To", "Who is asked.", owner),
             FormLine("text", "What is wanted (needed)", "What has to be done or answered before it comes back."),
         ]
@@ -209,7 +209,7 @@ class MeetingScreen(Place):
                 return "Say what is wanted."
             return deciding.send_back(sheet, texts["by"], texts["text"], today(), texts["to"], about)
 
-        self._form(f"Send {sheet} back", lines, made)
+        self.decide(f"Send {sheet} back", lines, made)
 
     @staticmethod
     def _key_of(item: Item) -> str:
@@ -220,13 +220,7 @@ class MeetingScreen(Place):
         item = self.present
         if item is None or item.number is None:
             return
-        sheet, number = item.sheet, item.number
-        lines = [self._by_line(), FormLine("answer", "Answer", "What came of it.")]
-
-        def made(texts: Mapping[str, str]) -> ChangeSheet | str:
-            return deciding.settle(sheet, number, texts["by"], texts["answer"], today())
-
-        self._form(f"Settle a remark on {sheet}", lines, made)
+        self.settle_remark(item.sheet, item.number)
 
     class Closed(Message):
         """The minutes are written, or it is known why not."""
@@ -273,29 +267,6 @@ class MeetingScreen(Place):
     def on_unmount(self) -> None:
         """Begin nothing more."""
         self._work.stop()
-
-    # Forms
-
-    def _by_line(self) -> FormLine:
-        if self._by is None:
-            self._by = revisions.identity(self.snapshot.project.root)
-        return FormLine("by", "By (needed)", "Who decides.", self._by)
-
-    def _form(self, title: str, lines: list[FormLine], made: Made) -> None:
-        def follow(texts: Mapping[str, str]) -> str:
-            if not texts["by"]:
-                return "Say who decides."
-            request = made(texts)
-            if isinstance(request, str):
-                return request
-            self._by = texts["by"]
-            return submit(self.book, request)
-
-        def done(accepted: bool | None) -> None:
-            if accepted:
-                self.say(self.snapshot.undo)
-
-        self.app.push_screen(FormDialog(title, lines, follow, self.book.signs), done)
 
 
 def rounded(value: float, way: str) -> float:
