@@ -15,7 +15,8 @@ the present value, because the nearest break counts.
 """
 
 _ROUNDS = 80
-_CLOSE = 1e-13
+CLOSE = 1e-12
+"""How narrow a bracket is drawn."""
 
 
 def first_change(met: Mask, exists: Mask) -> Index:
@@ -30,12 +31,13 @@ def first_change(met: Mask, exists: Mask) -> Index:
     return found
 
 
-def drawn(look: Callable[[Index, Array], Array], low: Array, high: Array) -> Array:
-    """Draw brackets together until they are as narrow as rounding lets them be.
+def drawn(look: Callable[[Index, Array], Array], low: Array, high: Array, close: float = CLOSE) -> Array:
+    """Draw brackets together until they are narrow.
 
     Args:
         look: Slack of some of the brackets at one place each; met where zero or more.
         low, high: Ends, met at one and not at the other.
+        close: How narrow.
     Returns: the end of each at which it is met
     Source: T. R. Chandrupatla, Advances in Engineering Software 28 (1997) 145-149: inverse quadratic steps, bisection
         where these cannot be trusted; written from memory.
@@ -56,9 +58,9 @@ def drawn(look: Callable[[Index, Array], Array], low: Array, high: Array) -> Arr
         b[k], f_b[k] = np.where(same, b[k], a[k]), np.where(same, f_b[k], f_a[k])
         a[k], f_a[k] = x, f
         width = np.abs(b[k] - a[k])
-        closest = _CLOSE / np.maximum(width, 1e-300)
+        closest = close / np.maximum(width, 1e-300)
         t[k] = np.clip(_step(a[k], b[k], c[k], f_a[k], f_b[k], f_c[k]), closest, 1.0 - closest)
-        open_ = k[(width > 2.5 * _CLOSE) & (f != 0)]
+        open_ = k[(width > 2.5 * close) & (f != 0)]
     return np.where(f_a >= 0, a, b)
 
 

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterator, Mapping, Sequence
+from collections.abc import Collection, Iterator, Mapping, Sequence
 from dataclasses import dataclass, replace
 
 import numpy as np
@@ -23,6 +23,7 @@ from worksheet.stages.circuit import Circuit
 _SPAN = 10.0
 _TILT = 1e-5
 _FLAT = 1e-9
+_BOUNDARY = 1e-9
 
 
 @dataclass(frozen=True, slots=True)
@@ -197,7 +198,8 @@ def _within_existence(probe: Probe, pairs: _Pairs) -> _Pairs:
         beyond = np.flatnonzero(room(every, end) < 0)
         shorter = end.copy()
         if len(beyond):
-            shorter[beyond] = brackets.drawn(lambda k, x, b=beyond: room(b[k], x), np.zeros(len(beyond)), end[beyond])
+            none = np.zeros(len(beyond))
+            shorter[beyond] = brackets.drawn(lambda k, x, b=beyond: room(b[k], x), none, end[beyond], _BOUNDARY)
         ends.append(shorter)
     return replace(pairs, low=ends[0], high=ends[1])
 
@@ -251,9 +253,11 @@ def _sensitivities(probe: Probe, pairs: _Pairs) -> tuple[dict[str, list[float]],
     return slopes, every[moves]
 
 
-def _look(probe: Probe, pairs: _Pairs, which: Index, logarithm: Array) -> Seen:
-    """Targets where pairs are moved, each to a logarithm over its present value."""
-    return probe.see(pairs.place[which], pairs.name[which], pairs.at(logarithm, which))
+def _look(
+    probe: Probe, pairs: _Pairs, which: Index, logarithm: Array, targets: Collection[str] | None = None
+) -> Seen:
+    """Targets where pairs are moved, each to a logarithm over its present value; all targets, or some."""
+    return probe.see(pairs.place[which], pairs.name[which], pairs.at(logarithm, which), targets)
 
 
 def _breaks(probe: Probe, pairs: _Pairs, moving: Index) -> dict[str, list[float]]:
@@ -336,15 +340,14 @@ class _Brackets:
         side, pair = self.side[order], self.pair[order]
 
         def look(which: Index, logarithm: Array) -> Array:
-            place = self.pairs.place[pair[which]]
-            seen = _look(self.probe, self.pairs, pair[which], logarithm)
+            place, of_side = self.pairs.place[pair[which]], side[which]
+            sides = [(self.sides[number], of_side == number) for number in np.flatnonzero(np.bincount(of_side))]
+            seen = _look(self.probe, self.pairs, pair[which], logarithm, {one.target for one, _ in sides})
             found = np.empty(len(which))
-            for number, one in enumerate(self.sides):
-                mine = side[which] == number
-                if mine.any():
-                    measured = seen.targets[one.target]
-                    reasons = None if measured.reasons is None else measured.reasons[mine]
-                    found[mine] = one.slack(Measured(measured.values[mine], reasons), place[mine])
+            for one, mine in sides:
+                measured = seen.targets[one.target]
+                reasons = None if measured.reasons is None else measured.reasons[mine]
+                found[mine] = one.slack(Measured(measured.values[mine], reasons), place[mine])
             return found
 
         edges = brackets.drawn(look, self.low[order], self.high[order])

@@ -6,7 +6,7 @@ moved and where to; every other value is the place's, and formulas follow.
 
 from __future__ import annotations
 
-from collections.abc import Callable, Iterator, Mapping, Sequence
+from collections.abc import Callable, Collection, Iterator, Mapping, Sequence
 from dataclasses import dataclass
 from functools import cached_property
 from typing import Any
@@ -101,19 +101,21 @@ class Probe:
     def _number(self, name: str) -> int:
         return self.names.setdefault(name, len(self.names))
 
-    def see(self, place: Index, name: Index, values: Array) -> Seen:
+    def see(self, place: Index, name: Index, values: Array, targets: Collection[str] | None = None) -> Seen:
         """Look at rows.
 
         Args:
             place: The place of each row; rows of one place stand together where its targets have formulas.
             name: The number of the input that is moved (see `names`), -1 for none.
             values: Where it is moved to. [unit of the input]
+            targets: Names of those wanted; all where None.
         """
+        wanted = [name for name in self.targets if targets is None or name in targets]
         parts = [slice(k, k + MOST_POINTS) for k in range(0, len(place), MOST_POINTS)]
-        seen = [self._see(_Rows(self, place[p], name[p], values[p])) for p in parts]
+        seen = [self._see(_Rows(self, place[p], name[p], values[p]), wanted) for p in parts]
         if len(seen) == 1:
             return seen[0]
-        joined = {key: _joined([s.targets[key] for s in seen]) for key in self.targets}
+        joined = {key: _joined([s.targets[key] for s in seen]) for key in wanted}
         return Seen(joined, np.concatenate([s.room for s in seen]))
 
     def room(self, place: Index, name: Index, values: Array) -> Array:
@@ -121,9 +123,9 @@ class Probe:
         rows = _Rows(self, place, name, values)
         return _room(inputs_of(rows), rows.count)
 
-    def _see(self, rows: _Rows) -> Seen:
+    def _see(self, rows: _Rows, wanted: Sequence[str]) -> Seen:
         solution = NumericSolution(inputs_of(rows), rows.levels_at_nominal)
-        targets = {name: self._target(name, rows, solution) for name in self.targets}
+        targets = {name: self._target(name, rows, solution) for name in wanted}
         return Seen(targets, _room(solution.inputs, rows.count))
 
     def _target(self, name: str, rows: _Rows, solution: NumericSolution) -> Measured:
