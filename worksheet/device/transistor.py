@@ -38,7 +38,9 @@ class Slopes:
     drain_bulk_capacitance: Array
 
 
-def slopes(parameters: Parameters, current: Number, kappa: Number, thermal: Number) -> Slopes:
+def slopes(
+    parameters: Parameters, current: Number, kappa: Number, thermal: Number, inversion: Number, q: Number
+) -> Slopes:
     """Conductances and capacitances in saturation, all from the one slope g_s.
 
     Args:
@@ -46,12 +48,12 @@ def slopes(parameters: Parameters, current: Number, kappa: Number, thermal: Numb
         current: Drain current. [A]
         kappa: Gate coupling at the operating point. [-]
         thermal: U_T. [V]
+        inversion: Current over specific current. [-]
+        q: Normalised charge at the source end. [-]
     Returns: Slopes
     Source: Enz and Vittoz 2006; g_d = sigma g_s + lambda_L I/L is the usual hand rule I/V_A. Valid: saturation.
     """
     p = parameters
-    inversion = current / p.specific
-    q = charge.charge_from_inversion(inversion, p.velocity)
     g_s = current * charge.slope_factor(inversion, p.velocity) / thermal
     g_m = kappa * g_s
     g_d = p.drain_coupling * g_s + p.length_modulation * current / p.length

@@ -42,21 +42,30 @@ class Levels:
         return self.turn(nominal(there.turn(find(there))))
 
     @cached_property
+    def specific(self) -> dict[str, Array]:
+        """I_spec of each transistor, by name. [A]"""
+        return {name: np.asarray(p.specific) for name, p in self._in.devices.items()}
+
+    @cached_property
+    def inversions(self) -> dict[str, Array]:
+        """I/I_spec of each transistor, by name. [-]"""
+        return {name: np.asarray(self._in.current / specific) for name, specific in self.specific.items()}
+
+    @cached_property
+    def charges(self) -> dict[str, Array]:
+        """Normalised charge at the source end of each transistor, by name. [-]"""
+        devices = self._in.devices
+        return {n: charge.charge_from_inversion(i, devices[n].velocity) for n, i in self.inversions.items()}
+
+    @cached_property
     def drives(self) -> dict[str, Array]:
         """u = 2 q + ln q at the source end of each transistor, by name. [-]"""
-        drives = {}
-        for name, p in self._in.devices.items():
-            q = charge.charge_from_inversion(self._in.current / p.specific, p.velocity)
-            drives[name] = charge.drive_from_charge(q)
-        return drives
+        return {name: charge.drive_from_charge(q) for name, q in self.charges.items()}
 
     @cached_property
     def saturation(self) -> dict[str, Array]:
         """V_DSsat of each transistor, by name. [V]"""
-        return {
-            name: saturation_voltage(self._in.current / p.specific, self._in.thermal)
-            for name, p in self._in.devices.items()
-        }
+        return {name: saturation_voltage(i, self._in.thermal) for name, i in self.inversions.items()}
 
     def wanted(self, device: Transistor) -> Array:
         """Drain-source voltage wanted of a device: V_DSsat and the margin; 0 of an ideal source. [V]"""

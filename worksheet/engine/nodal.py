@@ -47,7 +47,8 @@ class Network:
         sums: dict[tuple[str, str], list[Number]] = {}
         for term in self._circuit.terms:
             entry = sums.setdefault((term.row, term.column), [0.0, 0.0])
-            entry[term.dynamic] = entry[term.dynamic] + term.sign * self._value(term)
+            before, value = entry[term.dynamic], self._value(term)
+            entry[term.dynamic] = before + value if term.sign > 0 else before - value
         return {place: list(entry) for place, entry in sums.items()}
 
     @cached_property

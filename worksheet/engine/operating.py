@@ -32,20 +32,20 @@ class Operating:
         """Drain current. [A]"""
         return self._in.current
 
-    @cached_property
-    def specific_current(self) -> Number:
+    @property
+    def specific_current(self) -> Array:
         """I_spec. [A]"""
-        return self.parameters.specific
+        return self._levels.specific[self.name]
 
-    @cached_property
-    def inversion_coefficient(self) -> Number:
+    @property
+    def inversion_coefficient(self) -> Array:
         """IC. [-]"""
-        return self.current / self.specific_current
+        return self._levels.inversions[self.name]
 
-    @cached_property
+    @property
     def charge(self) -> Array:
         """Normalised charge at the source end. [-]"""
-        return charge.charge_from_inversion(self.inversion_coefficient, self.parameters.velocity)
+        return self._levels.charges[self.name]
 
     @cached_property
     def kappa(self) -> Array:
@@ -58,7 +58,8 @@ class Operating:
     @cached_property
     def slopes(self) -> Slopes:
         """Conductances and capacitances."""
-        return slopes(self.parameters, self.current, self.kappa, self._in.thermal)
+        inversion = self.inversion_coefficient
+        return slopes(self.parameters, self.current, self.kappa, self._in.thermal, inversion, self.charge)
 
     def __getattr__(self, name: str) -> Array:
         if name in Slopes.__slots__:

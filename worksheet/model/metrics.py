@@ -11,7 +11,7 @@ from statistics import NormalDist
 from typing import Any
 
 from worksheet.model import dimension as dim
-from worksheet.model.metric import Metric, Reason, Solution
+from worksheet.model.metric import Metric, Reason, Solution, SolvedDevice
 
 __all__ = [
     "DEFAULT_YIELD",
@@ -23,6 +23,7 @@ __all__ = [
     "deviations",
     "find",
     "keys",
+    "offset_variance",
     "register",
     "withdraw",
 ]
@@ -42,15 +43,20 @@ def deviations(yield_fraction: float) -> float:
     return NormalDist().inv_cdf((1.0 + yield_fraction) / 2.0)
 
 
-def _offset(s: Solution) -> Any:
-    return s.sqrt(
-        sum(
-            s.referred_to_input(d)
-            * ((d.transconductance * d.matching_threshold) ** 2 + (d.current * d.matching_factor) ** 2)
-            / (2 * d.width * d.length)
-            for d in s.transistors
-        )
+def offset_variance(s: Solution, d: SolvedDevice) -> Any:
+    """What one transistor adds to the square of the offset, referred to the input. [V^2]
+
+    Source: Pelgrom, Duinmaijer and Welbers 1989; a single device carries half the variance of a pair.
+    """
+    return (
+        s.referred_to_input(d)
+        * ((d.transconductance * d.matching_threshold) ** 2 + (d.current * d.matching_factor) ** 2)
+        / (2 * d.width * d.length)
     )
+
+
+def _offset(s: Solution) -> Any:
+    return s.sqrt(sum(offset_variance(s, d) for d in s.transistors))
 
 
 METRICS: tuple[Metric, ...] = (

@@ -17,6 +17,7 @@ if TYPE_CHECKING:
 
 Plain = dict[str, Any]
 _SHOWN = 12
+_LEAST_PART = 0.005
 
 
 def into_document(document: Plain, found: Deeper) -> Plain:
@@ -32,7 +33,8 @@ def into_document(document: Plain, found: Deeper) -> Plain:
             shares = found.yields[name]
             sheet.update(_share(shares.every))
             for target in sheet["targets"]:
-                target.update(_share(shares.targets.get(target["metric"])))
+                found_share = shares.targets.get(target["metric"])
+                target.update(_share(found_share), variance=_parts(found_share))
     return document
 
 
@@ -58,6 +60,10 @@ def _share(found: Yield | None) -> Plain:
     return {"yield": found.share, "yield_low": found.low, "yield_high": found.high}
 
 
+def _parts(found: Yield | None) -> list[Plain]:
+    return [] if found is None else [{"of": part.owner, "share": part.share} for part in found.parts]
+
+
 def text(review: Review, found: Deeper, width: int) -> Iterator[str]:
     """What would have to be true for each block to fail, weakest trust first, and yields."""
     for sheet in review.sheets:
@@ -72,12 +78,18 @@ def text(review: Review, found: Deeper, width: int) -> Iterator[str]:
             yield f"{name}: yield at the nominal condition, 95 % interval"
             rows = [(target, share) for target, share in shares.targets.items()]
             every = [("all targets", shares.every)] if shares.every is not None else []
-            columns = (Column("target", flexible=True), Column("yield", right=True), Column("interval", right=True))
+            columns = (
+                Column("target"),
+                Column("yield", right=True),
+                Column("interval", right=True),
+                Column("variance from", flexible=True),
+            )
             yield from lines(Table(columns, tuple(_yield_row(*row) for row in (*rows, *every))), width, "  ")
 
 
-def _yield_row(name: str, share: Yield) -> tuple[str, str, str]:
-    return name, f"{share.share:.2%}", f"{share.low:.2%} to {share.high:.2%}"
+def _yield_row(name: str, share: Yield) -> tuple[str, str, str, str]:
+    parts = ", ".join(f"{part.owner} {part.share:.0%}" for part in share.parts if part.share >= _LEAST_PART)
+    return name, f"{share.share:.2%}", f"{share.low:.2%} to {share.high:.2%}", parts
 
 
 def _weakest(found: Fragility) -> Table:
