@@ -6,6 +6,7 @@ import tomllib
 from pathlib import Path
 from typing import Any
 
+import pytest
 from textual.widgets import Input
 
 from tests.tui.driving import Drive, drive, shown
@@ -68,6 +69,7 @@ def test_what_is_wrong_is_said_while_typing_and_never_reaches_the_sheet(root: Pa
     assert list((root.parent / "state" / "typing").iterdir()) == []
 
 
+@pytest.mark.full
 def test_units_choices_and_names_are_completed(root: Path) -> None:
     async def steps(d: Drive) -> None:
         await d.sheet(NAME, "choose.bias_current")
@@ -137,6 +139,7 @@ def test_a_target_is_added_through_a_form_that_knows_the_keys(root: Path) -> Non
     drive(root, steps)
 
 
+@pytest.mark.full
 def test_an_own_name_comes_with_the_formula_that_uses_it(root: Path) -> None:
     async def steps(d: Drive) -> None:
         await d.sheet(NAME, "target.bandwidth")
@@ -161,6 +164,7 @@ def test_an_own_name_comes_with_the_formula_that_uses_it(root: Path) -> None:
     drive(root, steps)
 
 
+@pytest.mark.full
 def test_evidence_carries_the_basis_and_a_waiver_its_target(root: Path) -> None:
     async def steps(d: Drive) -> None:
         await d.sheet("sun_gate", "target.bandwidth")
@@ -180,6 +184,7 @@ def test_evidence_carries_the_basis_and_a_waiver_its_target(root: Path) -> None:
     drive(root, steps)
 
 
+@pytest.mark.full
 def test_the_condition_of_evidence_is_typed_and_changed_where_it_stands(root: Path) -> None:
     async def steps(d: Drive) -> None:
         screen = await d.sheet(NAME, "target.bandwidth")
@@ -206,6 +211,7 @@ def test_the_condition_of_evidence_is_typed_and_changed_where_it_stands(root: Pa
     drive(root, steps)
 
 
+@pytest.mark.full
 def test_removing_asks_about_names_that_nothing_would_use(root: Path) -> None:
     async def steps(d: Drive) -> None:
         await d.sheet("wind_cascode", "target.rate_margin")
@@ -317,6 +323,7 @@ def test_the_algebra_of_a_bound_comes_once_the_sheet_stands_still(root: Path) ->
     drive(root, steps)
 
 
+@pytest.mark.full
 def test_every_size_shows_the_sheet(root: Path) -> None:
     for size in ((60, 15), (80, 24), (120, 40), (250, 80)):
 
