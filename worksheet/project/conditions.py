@@ -54,6 +54,17 @@ class ConditionSet:
         return [0, *sorted(range(1, len(every)), key=lambda k: every[k])]
 
     @cached_property
+    def axes(self) -> dict[str, list[int]]:
+        """The places of conditions that differ from the nominal one in one thing alone, by that thing."""
+        nominal = self.nominal
+        found: dict[str, list[int]] = {"process": [], "temperature": [], "supply": []}
+        for place, other in enumerate(self.conditions):
+            differs = [name for name in found if getattr(other, name) != getattr(nominal, name)]
+            if len(differs) == 1:
+                found[differs[0]].append(place)
+        return found
+
+    @cached_property
     def ordered(self) -> list[Condition]:
         """The conditions in the order of `places`."""
         return [self.conditions[k] for k in self.places]

@@ -5,10 +5,11 @@ from __future__ import annotations
 from collections.abc import Iterator
 
 from worksheet.model import metrics, operating
+from worksheet.model.dimension import TEMPERATURE, VOLTAGE
 from worksheet.model.quantity import format_quantity
 from worksheet.report import wording
 from worksheet.report.table import Column, Table, lines
-from worksheet.review.results import SheetReview
+from worksheet.review.results import Cause, SheetReview
 
 _INDENT = "  "
 _DIGITS = 3
@@ -16,9 +17,35 @@ _DIGITS = 3
 
 def details(sheet: SheetReview, width: int) -> Iterator[str]:
     """Lines of one sheet, to stand below its targets."""
-    for table in (_choices(sheet), _operating_points(sheet), _metrics(sheet)):
+    for table in (_breaking(sheet), _choices(sheet), _operating_points(sheet), _metrics(sheet)):
         yield ""
         yield from lines(table, width, _INDENT)
+
+
+def _breaking(sheet: SheetReview) -> Table:
+    """Which conditions break each target first, and the single change that costs most."""
+    columns = (Column("target"), Column("breaks first at", flexible=True), Column("room", right=True), Column("mostly from"))
+    rows = []
+    for target in sheet.targets:
+        for number, one in enumerate(target.breaks_first):
+            name = target.target.name if number == 0 else ""
+            rows.append((name, wording.condition(one.at), _room(one.room), _cause(target.cause) if number == 0 else ""))
+    return Table(columns, tuple(rows))
+
+
+def _room(room: float | None) -> str:
+    return "none" if room is None else f"{room:+.1%}"
+
+
+def _cause(cause: Cause | None) -> str:
+    if cause is None:
+        return "-"
+    if cause.moved:
+        return f"range of {', '.join(cause.moved)}"
+    if cause.axis == "process":
+        return cause.at.process
+    dimension = TEMPERATURE if cause.axis == "temperature" else VOLTAGE
+    return f"{cause.axis} {format_quantity(getattr(cause.at, cause.axis), dimension, _DIGITS)}"
 
 
 def _choices(sheet: SheetReview) -> Table:

@@ -8,7 +8,7 @@ from typing import Any
 
 from worksheet.model.problem import Problem
 from worksheet.model.sheet import Condition, Remark
-from worksheet.review.results import BudgetReview, Review, SheetReview, TargetReview
+from worksheet.review.results import BudgetReview, Cause, Review, SheetReview, TargetReview
 
 SCHEMA = 1
 Plain = dict[str, Any]
@@ -107,10 +107,21 @@ def target(result: TargetReview) -> Plain:
         "margin": result.margin,
         "verdict": result.verdict,
         "reason": result.reason,
+        "breaks_first": [{"at": condition(b.at), "room": b.room} for b in result.breaks_first],
+        "cause": _cause(result.cause),
         "evidence": [
             {"value": e.value, "found_by": e.found_by, "stale": e.stale, "verdict": e.verdict} for e in result.evidence
         ],
     }
+
+
+def _cause(found: Cause | None) -> Plain | None:
+    if found is None:
+        return None
+    plain: Plain = {"axis": found.axis, "at": condition(found.at), "room": found.room}
+    if found.moved:
+        plain["with"] = dict(found.moved)
+    return plain
 
 
 def budget(result: BudgetReview) -> Plain:

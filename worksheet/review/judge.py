@@ -71,8 +71,8 @@ def margin(target: Target, value: float) -> float | None:
     return min(found, default=None)
 
 
-def _distance(target: Target, values: Array) -> Array:
-    """What orders points from worst to best: the margin, or the plain distance where a limit is 0."""
+def distance(target: Target, values: Array) -> Array:
+    """What orders points from worst to best: the margin, or the plain distance where a limit is 0. NaN: no number."""
     low, high = target.minimum, target.maximum
     above = None if low is None else (values - low) / (abs(low) or 1.0)
     below = None if high is None else -1.0 * (values - high) / (abs(high) or 1.0)
@@ -93,7 +93,7 @@ def judge(target: Target, measured: Measured, valid: Mask) -> Judgement:
     missed, absent = missed_by_value(target, values), ~np.isfinite(values)
     invalid = len(values) - int(np.count_nonzero(valid))
     if not invalid and not absent.any():
-        return Judgement(MISSED if missed.any() else MET, int(_distance(target, values).argmin()), 0, None)
+        return Judgement(MISSED if missed.any() else MET, int(distance(target, values).argmin()), 0, None)
     lost, unknown = _judge_absent(target, measured, absent)
     missed |= lost
     verdict = MISSED if (missed & valid).any() else UNKNOWN if invalid or (unknown & valid).any() else MET
@@ -101,6 +101,11 @@ def judge(target: Target, measured: Measured, valid: Mask) -> Judgement:
     if reason is None and verdict == UNKNOWN and invalid:
         reason = f"{invalid} of {len(values)} points are not valid"
     return Judgement(verdict, worst, invalid, reason)
+
+
+def reads_as_missed(target: Target, measured: Measured) -> Mask:
+    """Points whose number does not exist and counts as missed."""
+    return _judge_absent(target, measured, ~np.isfinite(measured.values))[0]
 
 
 def _judge_absent(target: Target, measured: Measured, absent: Mask) -> tuple[Mask, Mask]:
@@ -123,10 +128,10 @@ def _worst(target: Target, measured: Measured, valid: Mask, lost: Mask, unknown:
         if absent.any():
             first = int(np.argmax(absent))
             return first, measured.reason((first,)).text or Reason.NOT_A_NUMBER.text
-    distance = np.where(valid, _distance(target, measured.values), np.nan)
-    if np.isnan(distance).all():
+    room = np.where(valid, distance(target, measured.values), np.nan)
+    if np.isnan(room).all():
         if not valid.any():
             return None, "no condition is valid"
         place = int(np.argmax(valid))
         return place, measured.reason((place,)).text or None
-    return int(np.nanargmin(distance)), None
+    return int(np.nanargmin(room)), None

@@ -60,6 +60,31 @@ class EvidenceVerdict:
 
 
 @dataclass(frozen=True, slots=True)
+class Breaking:
+    """A condition of a target and its room there: relative, plain for a limit of 0; None for a number that is missing."""
+
+    at: Condition
+    room: float | None
+
+
+@dataclass(frozen=True, slots=True)
+class Cause:
+    """The single change from the nominal condition and the stated values that costs a target most room.
+
+    Attributes:
+        axis: "process", "temperature", "supply" or "range".
+        at: The condition with that change.
+        moved: With a range: the assumptions at an end of theirs, by name. [unit of the key]
+        room: What is left with that change alone.
+    """
+
+    axis: str
+    at: Condition
+    moved: Mapping[str, float]
+    room: float | None
+
+
+@dataclass(frozen=True, slots=True)
 class TargetReview:
     """One target against what is achieved. Numbers in SI units of the metric.
 
@@ -76,6 +101,8 @@ class TargetReview:
         reason: Why a number is missing or a verdict is what it is, None where it speaks for itself.
         judged: The verdict before any waiver.
         evidence: What simulations and benches found.
+        breaks_first: The conditions with the least room, the least first.
+        cause: What costs most room, None where nothing costs any.
     """
 
     target: Target
@@ -90,6 +117,8 @@ class TargetReview:
     reason: str | None
     judged: str
     evidence: tuple[EvidenceVerdict, ...] = ()
+    breaks_first: tuple[Breaking, ...] = ()
+    cause: Cause | None = None
 
 
 @dataclass(frozen=True)

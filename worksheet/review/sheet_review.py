@@ -14,6 +14,7 @@ from worksheet.model.problem import Problem
 from worksheet.model.sheet import Target
 from worksheet.project.case import Case
 from worksheet.review import digest, judge, notes, state
+from worksheet.review.breaking import breaks_first
 from worksheet.review.evidence import evidence_verdicts
 from worksheet.review.results import Choice, Invalid, Number, SheetReview, TargetReview
 from worksheet.review.solved import Points
@@ -95,6 +96,7 @@ def _target(points: Points, target: Target, digits: str, today: datetime.date) -
     worst = None if judgement.worst is None else _number(covered.values[judgement.worst])
     margin = None if worst is None else judge.margin(target, worst)
     verdict, reason = waived(points.case.sheet.waivers, target, judgement.verdict, worst, today)
+    first = breaks_first(points, target, measured)
     return TargetReview(
         target=target,
         unit=unit,
@@ -108,6 +110,8 @@ def _target(points: Points, target: Target, digits: str, today: datetime.date) -
         reason=reason or judgement.reason or _nominal_reason(measured),
         judged=judgement.verdict,
         evidence=evidence_verdicts(points.case.sheet, target, digits),
+        breaks_first=first.order,
+        cause=first.cause,
     )
 
 
