@@ -7,9 +7,11 @@ front (samples, trial points, sheets of the same circuit) broadcast.
 from __future__ import annotations
 
 from collections.abc import Callable, Mapping
-from dataclasses import dataclass
+from dataclasses import dataclass, fields, replace
+from typing import Any
 
 import numpy as np
+from numpy.typing import NDArray
 
 from worksheet.device.arrays import Array, Number
 from worksheet.device.constants import thermal_voltage
@@ -57,6 +59,25 @@ class Inputs:
     def thermal(self) -> Number:
         """U_T. [V]"""
         return thermal_voltage(self.temperature)
+
+
+def at_conditions(inputs: Inputs, conditions: NDArray[np.intp]) -> Inputs:
+    """The same at some of the conditions alone.
+
+    Args:
+        inputs: Over all conditions.
+        conditions: Indices of those wanted, the nominal one first, at which levels are found.
+    """
+
+    def chosen(value: Any) -> Any:
+        if isinstance(value, Parameters):
+            return replace(value, **{f.name: chosen(getattr(value, f.name)) for f in fields(value)})
+        many = isinstance(value, np.ndarray) and value.ndim > 0 and value.shape[-1] > 1
+        return value[..., conditions] if many else value
+
+    plain = {f.name: chosen(getattr(inputs, f.name)) for f in fields(inputs) if f.name not in ("circuit", "devices")}
+    devices = {name: chosen(parameters) for name, parameters in inputs.devices.items()}
+    return replace(inputs, devices=devices, **plain)
 
 
 def given_or(given: Number | None, otherwise: Callable[[], Array]) -> Array:

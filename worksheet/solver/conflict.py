@@ -52,7 +52,7 @@ def at_present(trials: Trials, free: Free) -> Conflict:
 
 
 def _possible(trials: Trials, free: Free, wanted: Sequence[int]) -> bool:
-    return Search(trials, free.space(), wanted).least().feasible
+    return Search(trials, free.space(), wanted).possible()
 
 
 def _minimal(trials: Trials, free: Free, targets: list[int], limits: list[int]) -> list[int]:

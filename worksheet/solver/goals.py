@@ -73,7 +73,7 @@ def slack(measured: Measured, limit: Number, side: str) -> Array:
     absent = ~np.isfinite(values)
     if absent.any():
         room = np.where(absent, _absent(measured, side), room)
-    return np.clip(room, -FAR, FAR)
+    return np.asarray(np.clip(room, -FAR, FAR))
 
 
 def _absent(measured: Measured, side: str) -> Array:

@@ -54,7 +54,7 @@ class Free:
 
     def space(self) -> Space:
         """The search space of these freedoms."""
-        return Space(self._first(), self._rest(), self.moves, self.room)
+        return Space(self._first(), self._rest(), self.moves, self.rooms)
 
     def _span(self, name: str) -> tuple[float, float]:
         if name == "bias_current":
@@ -114,14 +114,18 @@ class Free:
             moved[self.names[0]] = np.exp(first)
         return {**moved, **{name: moved[leader] for name, leader in self.followers.items()}}
 
-    def room(self, first: Array, rest: Array) -> Array:
-        """Slack of the process limits. [-]"""
-        total = np.full(len(first), np.inf)
+    def rooms(self, first: Array, rest: Array) -> Array:
+        """Slack of each process limit, shape (limits, trials). [-]"""
+        limits = []
         for name, values in self.moves(first, rest).items():
             variable = self.variables[name]
             if variable.bounded:
-                total = np.minimum(total, np.minimum(np.log(values / variable.low), np.log(variable.high / values)))
-        return total
+                limits += [np.log(values / variable.low), np.log(variable.high / values)]
+        return np.array(limits).reshape(len(limits), len(first))
+
+    def room(self, first: Array, rest: Array) -> Array:
+        """Slack of the process limits together. [-]"""
+        return np.asarray(np.min(self.rooms(first, rest), axis=0, initial=np.inf))
 
     def place(self, found: Found) -> dict[str, float]:
         """Values of the free variables at a place."""
@@ -195,10 +199,9 @@ def _compact(free: Free, search: Search, least: Found, allowance: float) -> dict
     cap = least.place[0] + np.log1p(allowance)
 
     def score(first: Array, rest: Array) -> Array:
-        area = np.log(gate_area(free.subject, free.moves(first, rest)))
-        return np.where(first <= cap + 1e-9, area, np.inf)
+        return np.asarray(np.log(gate_area(free.subject, free.moves(first, rest))))
 
-    found = search.least(score)
+    found = search.least(score, cap, least.place)
     return free.place(found) if found.feasible and found.place[0] <= cap + 1e-6 else None
 
 

@@ -1,7 +1,8 @@
 """The least of one quantity at which everything holds, over further free ones: a scan, then a zoom around the best.
 
 Coordinates are logarithms. Along the first one, slack is close to a straight line between samples, so that a window
-narrower than the scan is still seen; whatever is found is then refined on the true slack.
+narrower than the scan is still seen; whatever is found is then refined on the true slack. Few conditions bind: only
+those are solved while it looks, and whatever it comes to is then held against all of them.
 """
 
 from __future__ import annotations
@@ -9,20 +10,36 @@ from __future__ import annotations
 from collections.abc import Callable, Mapping, Sequence
 from dataclasses import dataclass
 from itertools import product
+from typing import Any
 
 import numpy as np
 
 from worksheet.device.arrays import Array
-from worksheet.solver.trials import Trials, holds
+from worksheet.solver import descent
+from worksheet.solver.trials import Mask, Trials, holds, tolerances
 
 Moves = Mapping[str, Array]
-_SCAN, _FINER, _LOCAL = 33, 8, 7
+_SCAN, _FINER, _LOCAL = 33, 8, 9
 _COARSE = {0: 1, 1: 41, 2: 13, 3: 9}
-_ZOOM_POINTS, _ZOOM_ROUNDS, _SHRINK = 5, 14, 0.5
-_BISECTIONS = 60
-_FARTHEST = 1e12
+_ZOOM = {1: (9, 12, 0.3), 2: (5, 18, 0.45), 3: (5, 18, 0.45)}
+"""Points along each further coordinate, rounds, and by how much each round is closer, by the number of them."""
+
+_BEFORE_DESCENT = 4
+"""Rounds after which a place that holds is improved along its slopes."""
+
 _WIDE_FIRST, _WIDE_REST = 61, {1: 41, 2: 9}
-_CLIMB_ROUNDS, _CLIMB_SHRINK = 24, 0.6
+_CLIMB_POINTS, _CLIMB_ROUNDS, _CLIMB_SHRINK = 5, 24, 0.6
+_FARTHEST = 1e12
+_CLOSE = 0.02
+"""Of a round's span, how close the first coordinate is found."""
+
+_LOOKS = 6
+_STEEPEST = 4.0
+"""The least first coordinate is taken to change no faster than this with the others."""
+
+_FIRST_LOOK = 64
+_GROWTHS = 12
+_PARTS, _DRAWN = 32, 1e-13
 
 
 @dataclass(frozen=True, eq=False, slots=True)
@@ -33,13 +50,14 @@ class Space:
         first: (low, high) of the quantity that is to be least, as logarithms.
         rest: The same of further free coordinates.
         moves: Values by name for coordinates: (first of shape (trials,), rest of shape (trials, coordinates)).
-        room: Slack of limits that no condition decides (process limits), for the same arguments; shape (trials,).
+        rooms: Slack of each limit that no condition decides (process limits), for the same arguments; shape (limits,
+            trials).
     """
 
     first: tuple[float, float]
     rest: tuple[tuple[float, float], ...]
     moves: Callable[[Array, Array], Moves]
-    room: Callable[[Array, Array], Array]
+    rooms: Callable[[Array, Array], Array]
 
 
 @dataclass(frozen=True, eq=False, slots=True)
@@ -56,66 +74,170 @@ class Search:
 
     def __init__(self, trials: Trials, space: Space, wanted: Sequence[int] | None = None) -> None:
         """Take the constraints (`wanted`: indices that count, all where None) and the space."""
-        self._trials, self._space = trials, space
+        self._all, self._space = trials, space
         self._wanted = list(range(len(trials.constraints))) if wanted is None else list(wanted)
         self._pick = [trials.constraints[k] for k in self._wanted]
+        self._allowed = np.append(0.5 * tolerances(self._pick), 1e-9)[:, None]
+        self._trials = trials
+        self._coarse: dict[Any, tuple[Array, Array]] = {}
 
     def slack(self, first: Array, rest: Array) -> Array:
         """Slack of the wanted constraints and, last, of the room; shape (constraints + 1, trials)."""
         cleared = self._trials.clear(self._space.moves(first, rest), self._wanted)
-        return np.concatenate([cleared.slack, self._space.room(first, rest)[None]])
+        return np.concatenate([cleared.slack, self._room(first, rest)[None]])
+
+    def _room(self, first: Array, rest: Array) -> Array:
+        return np.asarray(np.min(self._space.rooms(first, rest), axis=0, initial=np.inf))
 
     def feasible(self, slack: Array) -> Array:
         """Where everything holds, from the slack of all of them."""
         return np.asarray(holds(self._pick, slack[:-1]).all(axis=0) & (slack[-1] >= -1e-9))
 
-    def least(self, score: Callable[[Array, Array], Array] | None = None) -> Found:
+    def least(
+        self, score: Callable[[Array, Array], Array] | None = None, cap: float = np.inf, near: Array | None = None
+    ) -> Found:
         """The place with the least first coordinate, or with the least score.
 
         Args:
-            score: Of (first, rest) at the least feasible first coordinate of each rest; inf to leave a place out.
+            score: Of (first, rest); grows with the first coordinate.
+            cap: What the first coordinate may come to at the most.
+            near: A place to look at besides those of the scan, first coordinate first.
         Returns: Found; where nothing holds, the place with the greatest least slack
         """
         value = score if score is not None else (lambda first, _rest: first)
-        places = self._grid(self._space.rest, _COARSE.get(len(self._space.rest), 7))
-        best = self._best(places, value, None)
-        span = np.array(
-            [(high - low) / max(_COARSE.get(len(self._space.rest), 7) - 1, 1) for low, high in self._space.rest]
-        )
-        for _ in range(_ZOOM_ROUNDS if self._space.rest else 0):
-            around = [
-                (max(c - s, low), min(c + s, high))
-                for c, s, (low, high) in zip(best[1], span, self._space.rest, strict=True)
-            ]
-            places = np.concatenate([best[1][None], self._grid(around, _ZOOM_POINTS)])
-            best = self._best(places, value, best)
-            span = span * _SHRINK
-        return self._polished(best)
+        for _ in range(_GROWTHS):
+            self._trials = self._binding()
+            found = self._zoomed(value, cap, near)
+            if not self._learned(found.place[None], found.slack):
+                return found
+        self._trials = self._all
+        return self._zoomed(value, cap, near)
+
+    def possible(self) -> bool:
+        """Whether everything wanted holds anywhere."""
+        self._trials = self._binding()
+        places = self._coarse_places()
+        samples, slack = self._scanned(places)
+        good = self.feasible(slack)
+        if good.any():
+            k = int(np.argmax(np.where(good, slack.min(axis=0), -np.inf)))
+            place = np.array([samples.reshape(-1)[k], *places[k // samples.shape[1]]])
+            if not self._learned(place[None], 0.0):
+                return True
+        return self.least().feasible
 
     def greatest(self, index: int) -> Array | None:
         """The place with the most slack of one constraint among those where the wanted ones hold; None for none."""
         start = self.least()
         if not start.feasible:
             return None
+        for _ in range(_GROWTHS):
+            best, slack = self._climbed(start.place, index)
+            if not self._learned(best[None], slack, index):
+                return best
+            self._trials = self._binding()
+        self._trials = self._all
+        return self._climbed(start.place, index)[0]
+
+    def _binding(self) -> Trials:
+        """The constraints at the points that are known to bind somewhere; at first those that do at random places."""
+        known = self._all.binding
+        if not known:
+            spans = [self._space.first, *self._space.rest]
+            low, high = np.array(spans).T
+            lots = low + (high - low) * np.random.default_rng(0).random((_FIRST_LOOK, len(spans)))
+            self._learn(lots)
+        return self._all.at_points(known)
+
+    def _learn(self, places: Array) -> Array:
+        """Take in the points that bind at some places; the slack there, as `slack`."""
+        moves, room = self._space.moves(places[:, 0], places[:, 1:]), self._room(places[:, 0], places[:, 1:])
+        cleared = self._all.clear(moves)
+        self._all.binding.update(np.unique(cleared.worst).tolist())
+        return np.concatenate([cleared.slack, room[None]])
+
+    def _learned(self, place: Array, slack: float, index: int | None = None) -> bool:
+        """Whether over all points less is cleared at a place than was thought; these are then taken in."""
+        if self._trials is self._all:
+            return False
+        full = self._learn(place)
+        wanted = [*self._wanted, -1] if index is None else [index]
+        if index is not None and not self.feasible(full[[*self._wanted, -1]])[0]:
+            return True
+        short = full[wanted, 0].min() < slack - 1e-9 * (1.0 + abs(slack))
+        return bool(short and not (index is None and slack >= 0 and self.feasible(full[wanted])[0]))
+
+    def _coarse_places(self) -> Array:
+        return self._grid(self._space.rest, _COARSE.get(len(self._space.rest), 7))
+
+    def _zoomed(self, value: Callable[[Array, Array], Array], cap: float, near: Array | None) -> Found:
+        dimensions = len(self._space.rest)
+        count = _COARSE.get(dimensions, 7)
+        points, rounds, shrink = _ZOOM.get(dimensions, (5, 0, 0.5))
+        span = np.array([(high - low) / max(count - 1, 1) for low, high in self._space.rest])
+        best = self._best(self._coarse_places(), value, cap, None, float(np.max(span, initial=0.0)))
+        if near is not None:
+            at_near = self._best(near[None, 1:], value, cap, (float(near[0]), near[1:], 0.0), 1e-3)
+            best = min(at_near, best, key=lambda b: (b[2] < 0 or b[0] > cap + 1e-9, value(*_one(b))[0]))
+        for k in range(rounds):
+            if k >= _BEFORE_DESCENT and best[2] >= 0:
+                break
+            around = [
+                (max(c - s, low), min(c + s, high))
+                for c, s, (low, high) in zip(best[1], span, self._space.rest, strict=True)
+            ]
+            places = np.concatenate([best[1][None], self._grid(around, points)])
+            best = self._best(places, value, cap, best, float(span.max()))
+            span = span * shrink
+        if best[2] >= 0 and dimensions:
+            best = self._descended(best, value, cap, float(span.max()))
+        return self._polished(best)
+
+    def _descended(
+        self, best: tuple[float, Array, float], value: Callable[[Array, Array], Array], cap: float, reach: float
+    ) -> tuple[float, Array, float]:
+        """A place that the score falls to from the best of the zoom."""
+
+        def slack(places: Array) -> Array:
+            first, rest = places[:, 0], places[:, 1:]
+            every = self._trials.every(self._space.moves(first, rest), self._wanted)
+            capped = (cap - first)[None] if np.isfinite(cap) else np.zeros((0, len(first)))
+            return np.concatenate([every, self._space.rooms(first, rest), capped])
+
+        def restored(places: Array, reach: float) -> tuple[Array, Mask]:
+            span = max(reach, 1e-9)
+            known = (float(np.median(places[:, 0])), places[0, 1:], 0.0)
+            first, slack = self._least_first(places[:, 1:], known, span)
+            good: Mask = np.asarray((slack >= 0) & (first <= cap + 1e-9))
+            return np.column_stack([first, places[:, 1:]]), good
+
+        slope = descent.Slope(slack, lambda places: value(places[:, 0], places[:, 1:]), restored)
+        start = np.array([best[0], *best[1]])
+        end = descent.improved(slope, start, np.array([self._space.first, *self._space.rest]), reach)
+        return float(end[0]), end[1:], 0.0
+
+    def _climbed(self, start: Array, index: int) -> tuple[Array, float]:
+        """The place with the most slack of one constraint, and that slack."""
         bounds = [self._space.first, *self._space.rest]
         counts = [_WIDE_FIRST, *([_WIDE_REST.get(len(self._space.rest), 5)] * len(self._space.rest))]
         places = np.array(list(product(*(np.linspace(*b, n) for b, n in zip(bounds, counts, strict=True)))))
-        best = self._most(np.concatenate([start.place[None], places]), index)
+        best, most = self._most(np.concatenate([start[None], places]), index)
         span = np.array([(b[1] - b[0]) / max(n - 1, 1) for b, n in zip(bounds, counts, strict=True)])
         for _ in range(_CLIMB_ROUNDS):
             axes = [
-                np.clip(c + s * np.linspace(-1, 1, _ZOOM_POINTS), *b)
+                np.clip(c + s * np.linspace(-1, 1, _CLIMB_POINTS), *b)
                 for c, s, b in zip(best, span, bounds, strict=True)
             ]
-            best = self._most(np.concatenate([best[None], np.array(list(product(*axes)))]), index)
+            best, most = self._most(np.concatenate([best[None], np.array(list(product(*axes)))]), index)
             span = span * _CLIMB_SHRINK
-        return best
+        return best, most
 
-    def _most(self, places: Array, index: int) -> Array:
+    def _most(self, places: Array, index: int) -> tuple[Array, float]:
         first, rest = places[:, 0], places[:, 1:]
-        good = self.feasible(self.slack(first, rest))
-        slack = self._trials.clear(self._space.moves(first, rest), [index]).slack[0]
-        return np.asarray(places[int(np.argmax(np.where(good, slack, -np.inf)))])
+        cleared = self._trials.clear(self._space.moves(first, rest), [*self._wanted, index]).slack
+        good = self.feasible(np.concatenate([cleared[:-1], self._room(first, rest)[None]]))
+        k = int(np.argmax(np.where(good, cleared[-1], -np.inf)))
+        return np.asarray(places[k]), float(cleared[-1, k])
 
     def _grid(self, rest: Sequence[tuple[float, float]], count: int) -> Array:
         axes = [np.linspace(low, high, count) if high > low else np.array([low]) for low, high in rest]
@@ -123,89 +245,139 @@ class Search:
         return np.array(points).reshape(len(points), len(rest))
 
     def _best(
-        self, places: Array, value: Callable[[Array, Array], Array], known: tuple[float, Array, float] | None
+        self,
+        places: Array,
+        value: Callable[[Array, Array], Array],
+        cap: float,
+        known: tuple[float, Array, float] | None,
+        span: float,
     ) -> tuple[float, Array, float]:
-        """(first, rest, least slack) of the best of some places."""
-        first, slack = self._least_first(places, None if known is None or known[2] < 0 else known[0])
-        scores = np.where(slack >= 0, value(first, places), np.inf)
+        """(first, rest, least slack) of the best of some places, which lie within a span of the known one."""
+        first, slack = self._least_first(places, known, span)
+        scores = np.where((slack >= 0) & (first <= cap + 1e-9), value(first, places), np.inf)
         if np.isfinite(scores).any():
-            near = scores <= np.min(scores) + 1e-7 * (1 + abs(np.min(scores)))
-            k = int(np.flatnonzero(near)[0])
+            tied = scores <= np.min(scores) + 1e-7 * (1 + abs(np.min(scores)))
+            k = int(np.flatnonzero(tied)[0])
         else:
             k = int(np.argmax(slack))
         return float(first[k]), places[k], float(slack[k])
 
-    def _least_first(self, places: Array, around: float | None) -> tuple[Array, Array]:
+    def _least_first(self, places: Array, known: tuple[float, Array, float] | None, span: float) -> tuple[Array, Array]:
         """For each rest the least feasible first coordinate and 0, or the best one and its negative slack."""
+        key = None if known is not None else (frozenset(self._all.binding), places.tobytes(), span)
+        if key is None or key not in self._coarse:
+            found = self._looked_for(places, known, span)
+            if key is None:
+                return found
+            self._coarse[key] = found
+        return self._coarse[key]
+
+    def _looked_for(self, places: Array, known: tuple[float, Array, float] | None, span: float) -> tuple[Array, Array]:
         low, high = self._space.first
-        count = len(places)
-        if around is None:
-            start, step = np.full(count, low), (high - low) / (_SCAN - 1)
-            first, slack, step = self._look(places, start, step, _SCAN)
+        whole = (high - low) / (_SCAN - 1)
+        reach = _STEEPEST * span
+        if known is None or reach > 3 * whole:
+            samples, scanned = self._scanned(places)
+            read = _read(samples, scanned + self._allowed)
+            step = np.full(len(places), whole)
         else:
-            step = (high - low) / (_SCAN - 1)
-            start = np.full(count, np.clip(around - 3 * step, low, high))
-            first, slack, step = self._look(places, start, step, _LOCAL)
-        for _ in range(4):
-            start = np.clip(first - 2 * step, low, high)
-            first, slack, step = self._look(places, start, 4 * step / (_LOCAL - 1), _LOCAL)
+            step = np.full(len(places), max(2 * reach / (_LOCAL - 1), 1e-9))
+            read = self._look(places, np.full(len(places), known[0] - reach), step)
+        first, slack, missed = read
+        step = step / _FINER
+        enough = max(_CLOSE * span, 1e-10)
+        for _ in range(_LOOKS):
+            if np.all(step <= enough):
+                break
+            thought = slack >= 0
+            first, slack, missed = self._look(places, first - 2 * step, 4 * step / (_LOCAL - 1))
+            astray = missed | (thought & (slack < 0))
+            step = np.where(astray, 2.0 * step, 4 * step / (_LOCAL - 1) / _FINER)
         return first, slack
 
-    def _look(self, places: Array, start: Array, step: float, count: int) -> tuple[Array, Array, float]:
-        """Sample the first coordinate and interpolate: least feasible value, slack there, and the finer step."""
-        samples = np.minimum(start[:, None] + step * np.arange(count), self._space.first[1])
-        slack = self.slack(samples.reshape(-1), np.repeat(places, count, axis=0)).reshape(-1, len(places), count)
-        slack = np.clip(slack, -_FARTHEST, _FARTHEST)  # nothing can be interpolated towards infinity
-        grid = np.linspace(0, count - 1, (count - 1) * _FINER + 1)
-        base = np.minimum(grid.astype(int), count - 2)
-        share = grid - base
-        least = np.min(slack[..., base] * (1 - share) + slack[..., base + 1] * share, axis=0)
-        fine = samples[:, base] * (1 - share) + samples[:, base + 1] * share
-        good = least >= -1e-9
-        any_good = good.any(axis=1)
-        k = np.where(any_good, np.argmax(good, axis=1), np.argmax(least, axis=1))
-        rows = np.arange(len(places))
-        return fine[rows, k], np.where(any_good, 0.0, least[rows, k]), step / _FINER
+    def _scanned(self, places: Array) -> tuple[Array, Array]:
+        """Samples over the whole first coordinate at each place, and the slack of what is wanted at them, flat.
+
+        The coarse places are looked at once for all searches over the same freedoms.
+        """
+        samples = np.broadcast_to(np.linspace(*self._space.first, _SCAN), (len(places), _SCAN))
+        key = (self._space.first, self._space.rest, frozenset(self._all.binding), places.tobytes())
+        if key not in self._all.surveys:
+            first, rest = samples.reshape(-1), np.repeat(places, _SCAN, axis=0)
+            cleared = self._trials.clear(self._space.moves(first, rest))
+            self._all.surveys[key] = np.concatenate([cleared.slack, self._room(first, rest)[None]])
+        return samples, self._all.surveys[key][[*self._wanted, -1]]
+
+    def _look(self, places: Array, start: Array, step: Array) -> tuple[Array, Array, Mask]:
+        """Sample the first coordinate around each place; what _read says of it."""
+        low, high = self._space.first
+        samples = np.minimum(np.maximum(start, low)[:, None] + step[:, None] * np.arange(_LOCAL), high)
+        slack = self.slack(samples.reshape(-1), np.repeat(places, _LOCAL, axis=0))
+        first, least, at_end = _read(samples, slack + self._allowed)
+        return first, least, at_end & (first > low)
 
     def _polished(self, best: tuple[float, Array, float]) -> Found:
         """The exact least first coordinate near the best place, on the feasible side."""
         first, rest, _ = best
         low, high = self._space.first
-        reach = 1e-6
-        while True:
-            offsets = np.array([0.0, *(reach * np.array([-1.0, 1.0, 0.1, -0.1]))])
-            tried = np.clip(first + offsets, low, high)
-            slack = self.slack(tried, np.repeat(rest[None], len(tried), axis=0))
-            good = self.feasible(slack)
-            if good.any():
-                return self._bisected(float(np.min(tried[good])), rest)
-            if reach > 0.05:
-                k = int(np.argmax(slack.min(axis=0)))
-                return Found(np.array([tried[k], *rest]), False, float(slack[:, k].min()))
-            reach *= 4.0
+        reaches = 1e-6 * 4.0 ** np.arange(9)
+        offsets = np.concatenate([[0.0], *(r * np.array([-1.0, 1.0, 0.1, -0.1]) for r in reaches)])
+        tried = np.clip(first + offsets, low, high)
+        slack = self._along(tried, rest)
+        good = self.feasible(slack)
+        for k in range(len(reaches)):
+            so_far = slice(0, 5 + 4 * k)
+            if good[so_far].any():
+                return self._drawn(float(np.min(tried[so_far][good[so_far]])), rest)
+        k = int(np.argmax(slack.min(axis=0)))
+        return Found(np.array([tried[k], *rest]), False, float(slack[:, k].min()))
 
-    def _bisected(self, good: float, rest: Array) -> Found:
+    def _along(self, first: Array, rest: Array) -> Array:
+        """Slack at several values of the first coordinate."""
+        return self.slack(first, np.repeat(rest[None], len(first), axis=0))
+
+    def _drawn(self, good: float, rest: Array) -> Found:
         """Walk down from a feasible place to the end of its interval."""
         low = self._space.first[0]
-        reach, bad = 1e-6, None
-        while good > low and bad is None and reach < 1.0:
-            tried = max(good - reach, low)
-            if self._holds_at(tried, rest):
-                good = tried
-                reach *= 2.0
-            else:
-                bad = tried
-        for _ in range(_BISECTIONS if bad is not None else 0):
-            assert bad is not None
-            middle = 0.5 * (good + bad)
-            if good - bad < 1e-13:
+        below = np.maximum(good - 1e-9 * 2.0 ** np.arange(30), low)
+        while True:
+            held = self.feasible(self._along(below, rest))
+            missed = np.flatnonzero(np.logical_not(held))
+            if not len(missed):
+                good = float(below[-1])
                 break
-            if self._holds_at(middle, rest):
-                good = middle
-            else:
-                bad = middle
-        slack = self.slack(np.array([good]), rest[None])
+            bad = float(below[missed[0]])
+            good = float(below[missed[0] - 1]) if missed[0] > 0 else good
+            if good - bad < _DRAWN * max(1.0, abs(good)):
+                break
+            below = np.linspace(good, bad, _PARTS + 2)[1:-1]
+            if below[0] >= good or below[-1] <= bad:
+                break
+        slack = self._along(np.array([good]), rest)
         return Found(np.array([good, *rest]), True, float(slack.min()))
 
-    def _holds_at(self, first: float, rest: Array) -> bool:
-        return bool(self.feasible(self.slack(np.array([first]), rest[None]))[0])
+
+def _one(place: tuple[float, Array, float]) -> tuple[Array, Array]:
+    """A place as (first, rest) over one trial."""
+    return np.array([place[0]]), place[1][None]
+
+
+def _read(samples: Array, slack: Array) -> tuple[Array, Array, Mask]:
+    """Least feasible value between samples, slack there, and whether that is the first sample already."""
+    rows, count = samples.shape
+    slack = np.clip(slack, -_FARTHEST, _FARTHEST)  # nothing can be interpolated towards infinity
+    slack = slack.reshape(-1, rows, count)
+    grid = np.linspace(0, count - 1, (count - 1) * _FINER + 1)
+    base = np.minimum(grid.astype(int), count - 2)
+    share = grid - base
+    between = slack[..., base] * (1 - share) + slack[..., base + 1] * share
+    least = np.min(between, axis=0)
+    fine = samples[:, base] * (1 - share) + samples[:, base + 1] * share
+    good = least >= 0
+    any_good = good.any(axis=1)
+    k = np.where(any_good, np.argmax(good, axis=1), np.argmax(least, axis=1))
+    each, before = np.arange(rows), np.maximum(k - 1, 0)
+    here, short = np.maximum(between[:, each, k], 0.0), between[:, each, before]
+    back = np.where(short < 0, here / np.where(short < 0, here - short, 1.0), 1.0).min(axis=0)
+    first = fine[each, k] - np.where(any_good & (k > 0), back, 0.0) * (fine[each, k] - fine[each, before])
+    return first, np.where(any_good, 0.0, least[each, k]), any_good & (k == 0)
