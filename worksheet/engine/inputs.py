@@ -35,6 +35,7 @@ class Inputs:
         bias_overhead, saturation_margin, settling_tolerance, noise_from: [-], [V], [-], [Hz]
         step_size: Step at the input, None or 0 for small steps. [V]
         input_level, output_level: From ground, None or NaN where not assumed. [V]
+        upside_down: Where the stage is of p-channel devices; None for what the circuit says everywhere.
     """
 
     circuit: Circuit
@@ -54,6 +55,12 @@ class Inputs:
     step_size: Number | None = None
     input_level: Number | None = None
     output_level: Number | None = None
+    upside_down: NDArray[np.bool_] | bool | None = None
+
+    @property
+    def mirrored(self) -> NDArray[np.bool_]:
+        """Where the stage is the mirror image of what is drawn: p-channel ones."""
+        return np.asarray(self.circuit.polarity == "p" if self.upside_down is None else self.upside_down)
 
     @property
     def thermal(self) -> Number:

@@ -34,7 +34,11 @@ class Levels:
 
     def turn(self, voltage: Number) -> Array:
         """Between the frame and ground, either way. [V]"""
-        return np.asarray(voltage if self._circuit.polarity == "n" else self._in.supply - voltage)
+        mirrored = self._in.mirrored
+        if not mirrored.any():
+            return np.asarray(voltage)
+        turned = np.asarray(self._in.supply - voltage)
+        return turned if mirrored.all() else np.where(mirrored, turned, voltage)
 
     def _held(self, find: Callable[[Levels], Array]) -> Array:
         """A frame voltage found at the nominal condition and held from ground over all conditions. [V]"""

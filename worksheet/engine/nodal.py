@@ -26,6 +26,7 @@ class Network:
         """Take the element values; nothing is computed yet."""
         self._circuit = inputs.circuit
         self._devices = devices
+        self._mirrored = inputs.mirrored
         self._elements: dict[str, dict[str, Number]] = {
             LOAD: {"capacitance": inputs.load_capacitance},
             IDEAL: {"conductance": inputs.ideal_conductance, "capacitance": inputs.ideal_capacitance},
@@ -91,9 +92,14 @@ class Network:
     @cached_property
     def supply_transfer(self) -> Number:
         """Numerator at zero frequency of the transfer from the supply, the input held to ground."""
+        mirrored = self._mirrored
+        found = [self._from_supply(p) for p, some in (("n", not mirrored.all()), ("p", mirrored.any())) if some]
+        return found[0] if len(found) == 1 else np.where(mirrored, found[1], found[0])
+
+    def _from_supply(self, polarity: str) -> Number:
         right: dict[str, poly.Poly] = {}
         for (row, column), entry in self._sums.items():
-            if column in self._circuit.moving_with_supply:
+            if column in self._circuit.moved_by_supply(polarity):
                 right[row] = poly.add(right.get(row, []), [-entry[0]])
         return self._numerator(right)[0]
 

@@ -138,8 +138,11 @@ class NumericSolution:
 
     def _lower_end(self, end: Array | None, mirrored: Array | None) -> Array:
         """An end of a range from ground: in a p-channel stage the two ends change places."""
-        chosen = end if self.inputs.circuit.polarity == "n" else mirrored
-        return np.full((), np.nan) if chosen is None else self.levels.turn(chosen)
+        if end is None or mirrored is None:
+            return np.full((), np.nan)
+        down = self.inputs.mirrored
+        chosen = mirrored if down.all() else end if not down.any() else np.where(down, mirrored, end)
+        return self.levels.turn(chosen)
 
     @cached_property
     def _static(self) -> tuple[Array, Array]:

@@ -1,4 +1,4 @@
-"""Sheets of one circuit solved in one evaluation: their values stacked along a first axis.
+"""Sheets of one circuit, of either polarity, solved in one evaluation: their values stacked along a first axis.
 
 An evaluation costs much the same for one sheet as for fifty, so sheets that differ in numbers only share it. Every
 operation of the engine is elementwise; what a sheet gets from a batch is to the bit what it would get alone.
@@ -11,6 +11,7 @@ from functools import cached_property
 from typing import Any
 
 import numpy as np
+from numpy.typing import NDArray
 
 from worksheet.device.arrays import Array, Number
 from worksheet.engine.measured import Measured
@@ -36,9 +37,9 @@ class Batch:
     """
 
     def __init__(self, cases: Sequence[Case]) -> None:
-        """Take the cases: of equal circuit and conditions, with moves of shape (rows,), (rows, 1) or (rows, conditions)."""
+        """Take the cases: of equal circuit but for its polarity, of equal conditions, with moves of shape (rows,), (rows, 1) or (rows, conditions)."""
         self.cases = tuple(cases)
-        self.circuit: Circuit = cases[0].circuit
+        self.circuit: Circuit = cases[0].circuit.drawn
         self.conditions: ConditionSet = cases[0].conditions
         self.rows = [rows_of(case) for case in cases]
         self.starts = np.concatenate([[0], np.cumsum(self.rows)]).tolist()
@@ -51,6 +52,11 @@ class Batch:
     def shape(self) -> tuple[int, int]:
         """(rows, conditions) of all cases."""
         return int(self.starts[-1]), len(self.conditions)
+
+    @cached_property
+    def upside_down(self) -> NDArray[np.bool_]:
+        """Rows of cases of p-channel devices."""
+        return np.repeat([case.circuit.polarity == "p" for case in self.cases], self.rows)[:, None]
 
     @property
     def nominal_temperature(self) -> float:
@@ -150,7 +156,7 @@ def batches(cases: Iterable[Case]) -> Iterator[Batch]:
     """Cases sorted into batches, each of a size that is solved fast; the order within a batch is that of the cases."""
     groups: dict[tuple[Circuit, int], list[Case]] = {}
     for case in cases:
-        groups.setdefault((case.circuit, id(case.conditions)), []).append(case)
+        groups.setdefault((case.circuit.drawn, id(case.conditions)), []).append(case)
     for group in groups.values():
         part: list[Case] = []
         points = 0

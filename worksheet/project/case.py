@@ -279,6 +279,11 @@ class Case:
                 raise CaseError(self._problem_at(where, None, message)) from error
 
     @property
+    def upside_down(self) -> bool:
+        """Whether the stage is of p-channel devices."""
+        return self.circuit.polarity == "p"
+
+    @property
     def nominal_temperature(self) -> float:
         """At which the bias current is stated. [K]"""
         return self.conditions.nominal.temperature

@@ -7,6 +7,7 @@ from dataclasses import replace
 from typing import Any, Protocol
 
 import numpy as np
+from numpy.typing import NDArray
 
 from worksheet.device.arrays import Array, Number
 from worksheet.device.parameters import Parameters, at_condition
@@ -34,6 +35,11 @@ class Named(Protocol):
     @property
     def circuit(self) -> Circuit:
         """The circuit that the values belong to."""
+        ...
+
+    @property
+    def upside_down(self) -> NDArray[np.bool_] | bool:
+        """Where the stage is of p-channel devices."""
         ...
 
     @property
@@ -83,6 +89,7 @@ def inputs_of(named: Named) -> Inputs:
         load_capacitance=_array(value("load_capacitance")),
         ideal_conductance=_array(value("bias.output_conductance")),
         ideal_capacitance=_array(value("bias.capacitance")),
+        upside_down=named.upside_down,
         **plain,
         **{name: None if number is None else _array(number) for name, number in given.items()},
     )

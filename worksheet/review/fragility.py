@@ -71,7 +71,7 @@ def fragility(evaluator: Evaluator, worst: Mapping[str, Mapping[str, Condition]]
     for name, conditions in worst.items():
         case = evaluator.case(name)
         inputs[name] = inputs_of(case)
-        circuits.setdefault(case.circuit, []).extend(_places(evaluator, case, inputs[name], conditions))
+        circuits.setdefault(case.circuit.drawn, []).extend(_places(evaluator, case, inputs[name], conditions))
     rows: dict[tuple[str, int], list[Fragile]] = {}
     for places in circuits.values():
         for place, found in zip(places, _ranked(places), strict=True):

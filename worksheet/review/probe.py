@@ -27,7 +27,7 @@ from worksheet.project.case import Case
 from worksheet.project.numbers import OPTIONAL, inputs_of
 from worksheet.review.inputs import Input
 from worksheet.solver import goals
-from worksheet.solver.trials import Index
+from worksheet.solver.trials import Index, Mask
 from worksheet.stages.circuit import Circuit
 from worksheet.stages.stage import Transistor
 
@@ -91,7 +91,8 @@ class Probe:
     def __init__(self, places: Sequence[Place]) -> None:
         """Take the places; all of the same circuit."""
         self.places = tuple(places)
-        self.circuit: Circuit = places[0].case.circuit
+        self.circuit: Circuit = places[0].case.circuit.drawn
+        self.upside_down = np.array([place.case.upside_down for place in places])
         self.names: dict[str, int] = {}
         self.name_of = [np.array([self._number(item.move) for item in place.inputs]) for place in places]
         self.targets = tuple(dict.fromkeys(target.name for place in places for target in place.targets))
@@ -227,6 +228,12 @@ class _Rows:
         numbers = name[order]
         starts = np.searchsorted(numbers, np.arange(len(probe.names) + 1))
         self._moved = [order[starts[k] : starts[k + 1]] for k in range(len(probe.names))]
+
+    @property
+    def upside_down(self) -> Mask:
+        """Rows of places of p-channel devices."""
+        down: Mask = self.probe.upside_down[self.place][:, None]
+        return down
 
     @property
     def reference_temperature(self) -> float:

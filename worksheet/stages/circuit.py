@@ -98,9 +98,26 @@ class Circuit:
     @cached_property
     def moving_with_supply(self) -> frozenset[str]:
         """Known nodes that move when the supply does; in a p-channel stage's mirror image that is the ground node."""
-        rail = SUPPLY if self.polarity == "n" else GROUND
-        lines = {f"{LINE}:{d.name}" for d in self.devices if d.gate == LINE and self.line_rail(d) == rail}
-        return frozenset({rail} | lines)
+        return self.moved_by_supply(self.polarity)
+
+    def moved_by_supply(self, polarity: str) -> frozenset[str]:
+        """As moving_with_supply, were the stage of that polarity."""
+        if polarity not in self._moved_by_supply:
+            rail = SUPPLY if polarity == "n" else GROUND
+            lines = {f"{LINE}:{d.name}" for d in self.devices if d.gate == LINE and self.line_rail(d) == rail}
+            self._moved_by_supply[polarity] = frozenset({rail} | lines)
+        return self._moved_by_supply[polarity]
+
+    @cached_property
+    def _moved_by_supply(self) -> dict[str, frozenset[str]]:
+        return {}
+
+    @cached_property
+    def drawn(self) -> Circuit:
+        """The same of n-channel devices, as it is drawn: circuits that differ in polarity alone are solved as one."""
+        if self.polarity == "n":
+            return self
+        return circuit_of(self.stage, "n", self.bulk, self.ideal_bias, self.driven_through_resistance)
 
     @cached_property
     def terms(self) -> tuple[Term, ...]:
