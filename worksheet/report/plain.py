@@ -59,6 +59,9 @@ def sheet(result: SheetReview) -> Plain:
         "targets": [target(t) for t in result.targets],
         "notes": [{"about": n.about, "text": n.text} for n in result.notes],
         "remarks": [remark(r) for r in result.sheet.remarks],
+        "collisions": [
+            {"key": c.key, "base": c.base, "ours": c.ours, "theirs": c.theirs} for c in result.sheet.collisions
+        ],
     }
 
 

@@ -87,6 +87,9 @@ def _sheet(sheet: SheetReview, width: int) -> Iterator[str]:
     yield from _validity(sheet, width)
     for note in sheet.notes:
         yield from wrapped(f"{note.about}: {note.text}", width, "  ")
+    for collision in sheet.sheet.collisions:
+        given = f"ours {collision.ours or 'nothing'}, theirs {collision.theirs or 'nothing'}"
+        yield from wrapped(clean(f"unsettled merge: {collision.key}: {given}; the sheet holds ours"), width, "  ")
     for remark in sheet.sheet.remarks:
         if remark.open:
             about, to = (f" about {remark.about}" if remark.about else ""), (f", to {remark.to}" if remark.to else "")

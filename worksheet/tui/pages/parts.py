@@ -12,7 +12,17 @@ from typing import Any
 from worksheet.model.dimension import Dimension
 from worksheet.model.keys import ANNOTATIONS, Key
 from worksheet.model.quantity import format_quantity
-from worksheet.model.sheet_keys import BIAS_KEYS, EVIDENCE, OWN, SHEET, SOLVE_KEYS, TARGET_KEYS, WAIVER
+from worksheet.model.sheet_keys import (
+    ACCEPTANCE,
+    BIAS_KEYS,
+    EVIDENCE,
+    OWN,
+    REMARK,
+    SHEET,
+    SOLVE_KEYS,
+    TARGET_KEYS,
+    WAIVER,
+)
 from worksheet.report import wording
 from worksheet.report.table import wrapped
 from worksheet.review.results import SheetReview, TargetReview
@@ -241,6 +251,23 @@ def waivers(facts: Facts) -> Iterator[Row]:
     for k, entry in enumerate(stated if isinstance(stated, list) else []):
         if isinstance(entry, Mapping):
             yield _entry(facts, WAIVER.name, k, entry, WAIVER.keys, None)
+
+
+def remarks(facts: Facts) -> Iterator[Row]:
+    """What somebody has to say or to ask."""
+    stated = facts.data.get(REMARK.name)
+    for k, entry in enumerate(stated if isinstance(stated, list) else []):
+        if isinstance(entry, Mapping):
+            tail = Span("settled", QUIET) if "settled" in entry else Span("open", rows.UNKNOWN)
+            yield _entry(facts, REMARK.name, k, entry, REMARK.keys, tail)
+
+
+def acceptances(facts: Facts) -> Iterator[Row]:
+    """Who accepted the block, and whether for the inputs it has now."""
+    stated = facts.data.get(ACCEPTANCE.name)
+    for k, entry in enumerate(stated if isinstance(stated, list) else []):
+        if isinstance(entry, Mapping):
+            yield _entry(facts, ACCEPTANCE.name, k, entry, ACCEPTANCE.keys, _standing(facts, entry))
 
 
 def _standing(facts: Facts, entry: Mapping[str, Any]) -> Span | None:

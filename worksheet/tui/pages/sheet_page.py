@@ -10,7 +10,7 @@ from worksheet.report import wording
 from worksheet.report.table import wrapped
 from worksheet.solver.results import Bound, Window
 from worksheet.tui import rows
-from worksheet.tui.pages import parts, words
+from worksheet.tui.pages import merged_part, parts, words
 from worksheet.tui.pages.parts import Facts, design
 from worksheet.tui.rows import LABEL, PLAIN, QUIET, Page, Row, Span, heading, line
 
@@ -60,6 +60,8 @@ def _holds(facts: Facts) -> Iterator[Row]:
         said = f"{device} {_BROKEN[what]} by {short} at {wording.condition(worst.at)}"
         more = f", and at {len(entries) - 1} more" if len(entries) > 1 else ""
         yield from _said(facts, f"validity.{device}.{what}", f"not valid: {said}{more}", rows.MISSED)
+    if facts.result.state_reason is not None:
+        yield from _said(facts, "state", f"{facts.result.state}: {facts.result.state_reason}", rows.UNKNOWN)
     for k, note in enumerate(facts.result.notes):
         yield from _said(facts, f"note.{k}", f"{note.about}: {note.text}", PLAIN)
     if any(one.what == "max_voltage" for one in facts.result.validity):
@@ -156,6 +158,8 @@ def _cell(facts: Facts, number: float | str | None, value: operating.OperatingVa
 
 
 PARTS: tuple[tuple[str, str, Callable[[Facts], Iterator[Row]]], ...] = (
+    ("conflict", "Two sides of a merge", merged_part.conflicts),
+    ("collision", "What a merge left to be settled", merged_part.collisions),
     ("target", "Targets", parts.targets),
     ("holds", "What does not hold, and remarks", _holds),
     ("choose", "Choices", parts.choices),
@@ -166,6 +170,8 @@ PARTS: tuple[tuple[str, str, Callable[[Facts], Iterator[Row]]], ...] = (
     ("operating", "Operating point, nominal", _operating),
     ("evidence", "Evidence", parts.evidence),
     ("waiver", "Waivers", parts.waivers),
+    ("remark", "Remarks", parts.remarks),
+    ("acceptance", "Accepted", parts.acceptances),
     ("block", "The block", parts.block),
 )
 """Key, title and rows of each part."""

@@ -7,13 +7,15 @@ from typing import TYPE_CHECKING, Any
 
 from worksheet.model import metrics
 from worksheet.model.keys import ANNOTATIONS, Key
-from worksheet.model.sheet_keys import EVIDENCE, TARGET_KEYS, WAIVER
+from worksheet.model.sheet_keys import EVIDENCE, REMARK, TARGET_KEYS, WAIVER
 from worksheet.model.text import is_identifier
-from worksheet.session import fields
+from worksheet.session import fields, revisions
 from worksheet.session.edits import AddEntry, ChangeSheet, KeyPath, Piece, Put
 from worksheet.session.fields import Place as FieldPlace
 from worksheet.tui.dialogs.form import FormDialog, FormLine
 from worksheet.tui.dialogs.pick import Item, PickDialog
+from worksheet.tui.recomputed import today
+from worksheet.tui.screens.changing import path_of
 from worksheet.tui.screens.forming import submit
 
 if TYPE_CHECKING:
@@ -26,6 +28,7 @@ _KINDS = (
     Item("own", "Own name", "A number of your own and the formula that uses it."),
     Item("evidence", "Evidence", "What a simulation or a bench found."),
     Item("waiver", "Waiver", "A miss that is accepted, by whom and why."),
+    Item("remark", "Remark", "What is to be said or asked about the sheet or one of its values."),
 )
 _NOTES = ("low", "high", "source", "trust", "note")
 
@@ -135,6 +138,14 @@ def _waiver(screen: SheetScreen) -> None:
     _entry(screen, "waiver", WAIVER.keys, "target", {"target": _subject(screen)})
 
 
+def _remark(screen: SheetScreen) -> None:
+    row = screen.ledger.row
+    about = ".".join(map(str, found)) if row is not None and (found := path_of(row)) else ""
+    person = revisions.identity(screen.snapshot.project.root)
+    texts = {"by": person, "about": about, "dated": today().isoformat()}
+    _entry(screen, "remark", REMARK.keys, "about", texts)
+
+
 def _subject(screen: SheetScreen) -> str:
     row = screen.ledger.row
     return row.subject[1] if row is not None and row.key.startswith("target.") else ""
@@ -238,4 +249,11 @@ def _table(data: Mapping[str, Any], name: str) -> list[str]:
     return list(table) if isinstance(table, Mapping) else []
 
 
-_KINDS_DONE = {"target": _target, "assume": _assume, "own": _own, "evidence": _evidence, "waiver": _waiver}
+_KINDS_DONE = {
+    "target": _target,
+    "assume": _assume,
+    "own": _own,
+    "evidence": _evidence,
+    "waiver": _waiver,
+    "remark": _remark,
+}

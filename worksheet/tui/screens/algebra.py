@@ -210,7 +210,11 @@ def ranking(session: Session, snapshot: Snapshot, name: str) -> Sequence[Fragile
     from worksheet.review.fragility import fragility
 
     evaluator = session.evaluator(snapshot)
-    return () if evaluator is None or name not in snapshot.project.sheets else fragility(evaluator, {name: {}})[name].nominal
+    return (
+        ()
+        if evaluator is None or name not in snapshot.project.sheets
+        else fragility(evaluator, {name: {}})[name].nominal
+    )
 
 
 def window_for(session: Session, snapshot: Snapshot, name: str, unknown: str) -> Window | None:

@@ -184,6 +184,6 @@ def path_of(row: Row) -> KeyPath | None:
     table, _, name = row.key.partition(".")
     if table in ("target", "assume", "own", "choose"):
         return (table, name)
-    if table in ("evidence", "waiver"):
+    if table in ("evidence", "waiver", "remark", "acceptance"):
         return (table, int(name))
     return None

@@ -21,6 +21,9 @@ from worksheet.tui.widgets.in_place import InPlace
 from worksheet.tui.widgets.ledger import Ledger
 from worksheet.tui.widgets.lines import Lines
 
+REMOVABLE = ("target", "assume", "own", "choose", "evidence", "waiver", "remark", "acceptance")
+"""Parts whose rows can be taken out of the sheet."""
+
 _WIDE = 116
 """Columns from which on the stage has a column of its own."""
 
@@ -93,7 +96,8 @@ class SheetScreen(Place):
         data = facts.data
         result = facts.result
         said = [facts.text(self.name_of_sheet, HEAD), facts.text(str(data.get("title", "")), PLAIN)]
-        said.append(facts.text(words.typed(data.get("state")) or "draft", LABEL))
+        state = words.typed(data.get("state")) or "draft" if result is None else result.state
+        said.append(facts.text(state, LABEL))
         if self.name_of_sheet not in self.snapshot.names:
             said.append(Span("is not there any more", words.VERDICT_ROLES["missed"]))
         elif result is not None:
@@ -130,11 +134,13 @@ class SheetScreen(Place):
         if row is not None:
             if row.subject[0] in ("metric", "variable", "bound", "operating"):
                 held.add("number")
-            if row.key.partition(".")[0] in ("target", "assume", "own", "choose", "evidence", "waiver"):
+            if row.key.partition(".")[0] in REMOVABLE:
                 held.add("removable")
         needed = self.book.needed
         if needed is not None and needed.name == self.name_of_sheet and needed.proposal:
             held.add("proposal")
+        if self.snapshot.data(self.name_of_sheet).get("collision") or self.snapshot.sides(self.name_of_sheet):
+            held.add("merge")
         return held
 
     # Changing a value where it stands
@@ -189,6 +195,12 @@ class SheetScreen(Place):
     def action_remove(self) -> None:
         """Take out what the cursor is on."""
         changing.remove(self)
+
+    def action_settle_merge(self) -> None:
+        """Settle what a merge left."""
+        from worksheet.tui.screens.merging import settle
+
+        settle(self)
 
     def action_rename(self) -> None:
         """Give the sheet another name."""
