@@ -10,6 +10,7 @@ from __future__ import annotations
 import math
 import re
 from decimal import Context, Decimal
+from functools import lru_cache
 from typing import NamedTuple
 
 from worksheet.model.dimension import DIMENSIONS, NUMBER, TEMPERATURE, Dimension
@@ -33,6 +34,9 @@ _LEVEL = Context(prec=40)
 _ZERO_CELSIUS = Decimal("273.15")
 _CELSIUS_SPAN = (1.0, 1e6)  # [K]; below, a rounded text would fall under absolute zero; beyond, the shift is lost
 _NUMBER = re.compile(r"(?P<digits>[+-]?(?:[0-9]+(?:\.[0-9]*)?|\.[0-9]+))(?:[eE](?P<power>[+-]?[0-9]+))?")
+_USUAL = re.compile(
+    r"(?P<digits>[0-9]{1,20}(?:\.[0-9]{1,20})?)(?:e(?P<power>[+-]?[0-9]{1,3}))? (?P<unit>[^\s0-9,'_]\S{0,20})"
+)
 _LONGEST_POWER = 5
 _LARGEST_LEVEL = 6000.0
 _KINDS = {bool: "true or false", list: "a list", dict: "a table", type(None): "nothing"}
@@ -75,6 +79,10 @@ def parse(value: object, dimension: Dimension) -> float:
     Returns: the value in SI base units of `dimension`.
     Raises: QuantityError, for anything that is not unmistakably such a quantity.
     """
+    if isinstance(value, str):
+        plain = _usual(value, dimension)
+        if plain:
+            return plain
     expected = f"{dimension.phrase}, for example {_quoted(dimension)}"
     if isinstance(value, str):
         parts = _split(value, expected)
@@ -158,6 +166,28 @@ def format_input(value: float, dimension: Dimension) -> str:
 
 
 # Reading
+
+
+def _usual(text: str, dimension: Dimension) -> float | None:
+    """The value of a text of the usual form, "2.5 uA", or None: most texts are, and need none of the questions below."""
+    found = _USUAL.fullmatch(text)
+    decade = None if found is None else _usual_decade(found["unit"], dimension)
+    if found is None or decade is None:
+        return None
+    result = float(f"{found['digits']}e{int(found['power'] or 0) + decade}")
+    return result if 0.0 < result < math.inf else None
+
+
+@lru_cache(maxsize=512)
+def _usual_decade(text: str, dimension: Dimension) -> int | None:
+    """The power of ten of a whole unit that fits; None for one that asks for more than a power."""
+    if text == "m" or is_bare_prefix(text):
+        return None
+    try:
+        unit = parse_unit(text)
+    except UnitError:
+        return None
+    return unit.decade if unit.kind == "product" and unit.exponents == dimension.exponents else None
 
 
 def _split(text: str, expected: str) -> _Parts:
