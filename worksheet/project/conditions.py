@@ -14,6 +14,7 @@ from worksheet.device.arrays import Array
 from worksheet.model.process_keys import CORNER_CHANGES, DEVICE_PARAMETERS
 from worksheet.model.sheet import Condition, Process, ProjectFile, Sheet
 
+_AXES = ("process", "temperature", "supply")
 _NUMBERS = {key.name for key in DEVICE_PARAMETERS if key.dimension is not None}
 
 
@@ -54,15 +55,15 @@ class ConditionSet:
         return [0, *sorted(range(1, len(every)), key=lambda k: every[k])]
 
     @cached_property
-    def axes(self) -> dict[str, list[int]]:
-        """The places of conditions that differ from the nominal one in one thing alone, by that thing."""
-        nominal = self.nominal
-        found: dict[str, list[int]] = {"process": [], "temperature": [], "supply": []}
+    def single_changes(self) -> tuple[list[int], list[str]]:
+        """The places of conditions that differ from the nominal one in one thing alone, and in which."""
+        nominal, places, axes = self.nominal, [], []
         for place, other in enumerate(self.conditions):
-            differs = [name for name in found if getattr(other, name) != getattr(nominal, name)]
+            differs = [name for name in _AXES if getattr(other, name) != getattr(nominal, name)]
             if len(differs) == 1:
-                found[differs[0]].append(place)
-        return found
+                places.append(place)
+                axes += differs
+        return places, axes
 
     @cached_property
     def ordered(self) -> list[Condition]:

@@ -8,9 +8,11 @@ temperature or supply with everything else nominal and as it is stated, or the e
 from __future__ import annotations
 
 from dataclasses import dataclass
+from math import isfinite
 
 import numpy as np
 
+from worksheet.device.arrays import Array
 from worksheet.engine.measured import Measured
 from worksheet.model.sheet import Target
 from worksheet.review.judge import distance, reads_as_missed
@@ -45,38 +47,38 @@ def breaks_first(points: Points, target: Target, measured: Measured) -> First:
         return First()
     room = distance(target, measured.values)
     if measured.reasons is not None:
-        room = np.where(reads_as_missed(target, measured), -np.inf, room)
-    if not points.valid.all():
-        room = np.where(points.valid, room, np.nan)
+        room = np.where(reads_as_missed(target, measured), -np.inf, np.where(np.isnan(room), np.inf, room))
+    if not points.all_valid:
+        room = np.where(points.valid, room, np.inf)
     table = room.reshape(points.shape)
-    least = table[0] if len(table) == 1 else np.fmin.reduce(table, axis=0)
+    least = table[0] if len(table) == 1 else np.minimum.reduce(table, axis=0)
     order = least.argsort(kind="stable")
     rising = least[order]
-    steps = [0, *(np.flatnonzero(rising[1:] > rising[:-1])[: MOST - 1] + 1).tolist()]  # of equals the first alone
-    found = [Breaking(points.condition(int(order[k])), _number(rising[k])) for k in steps if rising[k] == rising[k]]
+    steps = [0, *((rising[1:] > rising[:-1]).nonzero()[0][: MOST - 1] + 1).tolist()]  # of equals the first alone
+    places, rooms = order[steps].tolist(), rising[steps].tolist()
+    found = [Breaking(points.condition(k), _number(r)) for k, r in zip(places, rooms, strict=True) if r < np.inf]
     return First(tuple(found), _cause(points, table))
 
 
-def _cause(points: Points, table: np.ndarray[tuple[int, int], np.dtype[np.float64]]) -> Cause | None:
+def _cause(points: Points, table: Array) -> Cause | None:
     """The single change from what is nominal and stated that costs most; None where none costs anything."""
-    stated, best, least = table[0], None, table[0, 0]
-    for axis, indices in points.case.conditions.axes.items():
-        if len(indices):
-            here = stated[indices]
-            k = int(np.nanargmin(here)) if not np.isnan(here).all() else 0
-            if here[k] < least:
-                best, least = (axis, indices[k], 0), here[k]
+    stated, least, best = table[0], table[0, 0], None
+    places, axes = points.case.conditions.single_changes
+    if places:
+        here = stated[places]
+        k = here.argmin()
+        if here[k] < least:
+            best, least = (axes[k], places[k], 0), here[k]
     if len(table) > 1:
-        ends = table[:, 0]
-        k = int(np.nanargmin(ends)) if not np.isnan(ends).all() else 0
-        if ends[k] < least:
-            best, least = (RANGE, 0, k), ends[k]
+        vertex = int(table[:, 0].argmin())
+        if table[vertex, 0] < least:
+            best, least = (RANGE, 0, vertex), table[vertex, 0]
     if best is None:
         return None
     axis, condition, vertex = best
     moved = points.moved(vertex * points.shape[1]) if vertex else {}
-    return Cause(axis, points.condition(condition), moved, _number(least))
+    return Cause(axis, points.condition(condition), moved, _number(float(least)))
 
 
 def _number(value: float) -> float | None:
-    return float(value) if np.isfinite(value) else None
+    return value if isfinite(value) else None

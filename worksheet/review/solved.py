@@ -182,9 +182,14 @@ class Points:
         """Points at which everything holds."""
         return self.solved.valid[self.place].reshape(-1)
 
+    @cached_property
+    def all_valid(self) -> bool:
+        """Whether everything holds everywhere."""
+        return bool(self.valid.all())
+
     def broken(self) -> Iterator[Shortfall]:
         """What does not hold somewhere, over (ends of ranges, conditions)."""
-        if not self.valid.all():
+        if not self.all_valid:
             for shortfall, where in self.solved.shortfalls:
                 if where[self.place].any():
                     yield Shortfall(shortfall.device, shortfall.what, shortfall.short_by[self.place])
