@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import datetime
 from pathlib import Path
 
 from tests.support import write_project
@@ -113,6 +114,9 @@ bias_length = "1 um"
 [target]
 dc_gain = { min = "20 dB" }
 """
+
+TODAY = datetime.date(2026, 12, 1)
+"""A day on which reviews of these books are made."""
 
 BUFFER, OTHER = "buffer", "amplifier"
 """Names of the sheet that tests spoil, and of the one that must be reviewed whatever becomes of the first."""

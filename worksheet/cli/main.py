@@ -24,6 +24,7 @@ COMMANDS = (
     "record",
     "history",
     "compare",
+    "merge",
     "agenda",
     "minutes",
 )
