@@ -24,7 +24,12 @@ def details(sheet: SheetReview, width: int) -> Iterator[str]:
 
 def _breaking(sheet: SheetReview) -> Table:
     """Which conditions break each target first, and the single change that costs most."""
-    columns = (Column("target"), Column("breaks first at", flexible=True), Column("room", right=True), Column("mostly from"))
+    columns = (
+        Column("target"),
+        Column("breaks first at", flexible=True),
+        Column("room", right=True),
+        Column("mostly from"),
+    )
     rows = []
     for target in sheet.targets:
         for number, one in enumerate(target.breaks_first):

@@ -47,9 +47,9 @@ def run(args: argparse.Namespace, output: Output) -> int:
     beside = workbook.deeper(result, Wanted(args.fragile, args.samples, args.seed))
     tell(result.problems)
     if output.as_json:
-        from worksheet.report import deeper, plain
+        from worksheet.report import deeper_plain, plain
 
-        output.document(deeper.into_document(plain.review(result), beside))
+        output.document(deeper_plain.into_document(plain.review(result), beside))
     elif result.sheets or not result.problems:
         from worksheet.report import deeper, review_text
 
