@@ -11,7 +11,7 @@ from worksheet.device.arrays import Array
 from worksheet.solver import roots
 from worksheet.solver.results import Bound, Region, Window
 from worksheet.solver.subject import scalar
-from worksheet.solver.trials import PROCESS, Index, Mask, Trials, holds, tolerances
+from worksheet.solver.trials import PROCESS, Cleared, Index, Mask, Trials, holds, tolerances
 from worksheet.solver.variables import Variable
 
 Line = Callable[[Array], Mapping[str, Array]]
@@ -19,6 +19,7 @@ Line = Callable[[Array], Mapping[str, Array]]
 
 _A_DECADE = 12
 _LEAST, _MOST = 40, 120
+_GROWTHS = 4
 _JUMP = 1e-7
 """More slack than this at the last value that meets: the metric jumps or stops existing there."""
 
@@ -71,9 +72,10 @@ def windows(trials: Trials, axes: Sequence[Axis]) -> list[Window | None]:
     line = _Lines(trials, axes)
     places = [axis.places() for axis in axes]
     owner = np.repeat(np.arange(len(axes)), [len(xs) for xs in places])
-    met = holds(trials.constraints, trials.clear(line(owner, np.concatenate(places))).slack)
+    cleared = trials.clear(line(owner, np.concatenate(places)))
+    met = holds(trials.constraints, cleared.slack)
     parts = [np.asarray(met[:, owner == k]) for k in range(len(axes))]
-    crossings = _crossings(trials, line, places, parts)
+    crossings = _crossings(trials, line, places, parts, [_part(cleared, owner == k) for k in range(len(axes))])
     return [_window(trials, axis, mask, found) for axis, mask, found in zip(axes, parts, crossings, strict=True)]
 
 
@@ -116,34 +118,106 @@ def _window(trials: Trials, axis: Axis, met: Mask, crossings: list[Crossing]) ->
     )
 
 
-def _crossings(trials: Trials, line: _Lines, places: Sequence[Array], met: Sequence[Mask]) -> list[list[Crossing]]:
-    """Every change of every constraint along every axis, refined all at once."""
+def _part(cleared: Cleared, mine: Mask) -> Cleared:
+    return Cleared(cleared.slack[:, mine], cleared.worst[:, mine])
+
+
+@dataclass(frozen=True, eq=False, slots=True)
+class _Brackets:
+    """Changes of constraints between neighbouring places.
+
+    Attributes:
+        rows: The constraint of each.
+        owner: The axis of each.
+        places: Logarithms of the neighbour below, the low end, the high end and the neighbour above, shape (4,
+            brackets); NaN where there is no neighbour.
+        gaps: Slack there, tolerance included.
+        points: Points that were the worst at the ends.
+    """
+
+    rows: Index
+    owner: Index
+    places: Array
+    gaps: Array
+    points: frozenset[int]
+
+
+def _brackets(trials: Trials, places: Sequence[Array], met: Sequence[Mask], cleared: Sequence[Cleared]) -> _Brackets:
     changes = [np.nonzero(mask[:, 1:] != mask[:, :-1]) for mask in met]
-    owner = np.repeat(np.arange(len(met)), [len(rows) for rows, _ in changes])
-    found: list[list[Crossing]] = [[] for _ in met]
-    if not len(owner):
-        return found
     rows = np.concatenate([rows for rows, _ in changes])
-    low = np.log(np.concatenate([xs[at] for xs, (_, at) in zip(places, changes, strict=True)]))
-    high = np.log(np.concatenate([xs[at + 1] for xs, (_, at) in zip(places, changes, strict=True)]))
-    rising: Mask = np.concatenate([mask[which, at + 1] for mask, (which, at) in zip(met, changes, strict=True)])
-    needed = sorted(set(rows.tolist()))
-    index = np.searchsorted(needed, rows)
+    xs, gaps, points = [], [], set[int]()
+    for values, found, (which, at) in zip(places, cleared, changes, strict=True):
+        padded = np.concatenate([[np.nan], np.log(values), [np.nan]])
+        slack = np.pad(found.slack, ((0, 0), (1, 1)), constant_values=np.nan)
+        xs.append(np.array([padded[at + k] for k in range(4)]).reshape(4, -1))
+        gaps.append(np.array([slack[which, at + k] for k in range(4)]).reshape(4, -1))
+        points |= set(found.worst[which, at].tolist()) | set(found.worst[which, at + 1].tolist())
+    owner = np.repeat(np.arange(len(met)), [len(rows) for rows, _ in changes])
     allowed = tolerances(trials.constraints)[rows]
+    return _Brackets(rows, owner, np.hstack(xs), np.hstack(gaps) + allowed, frozenset(points))
 
-    def look(x: Array) -> tuple[Array, Index]:
-        cleared = trials.clear(line(owner, np.exp(x)), needed)
-        at = np.arange(len(x))
-        return cleared.slack[index, at] + allowed, np.asarray(cleared.worst[index, at])
 
-    low, high, gap_low, gap_high = roots.refined(look, low, high, rising)
-    chosen = np.where(rising, high, low)
-    _, point = look(chosen)
-    edge = np.abs(np.where(rising, gap_high, gap_low)) > _JUMP
-    for k, axis in enumerate(owner):
-        item = Crossing(int(rows[k]), float(np.exp(chosen[k])), int(point[k]), bool(rising[k]), bool(edge[k]))
+def _crossings(
+    trials: Trials, line: _Lines, places: Sequence[Array], met: Sequence[Mask], cleared: Sequence[Cleared]
+) -> list[list[Crossing]]:
+    """Every change of every constraint along every axis, refined all at once at the points that bind there."""
+    found: list[list[Crossing]] = [[] for _ in met]
+    brackets = _brackets(trials, places, met, cleared)
+    if not len(brackets.rows):
+        return found
+    rising: Mask = np.asarray(brackets.gaps[2] >= 0)
+    every = _Looking(trials, line, brackets)
+    at, gaps, points = brackets.places, brackets.gaps, set(brackets.points)
+    for growth in range(_GROWTHS + 1):
+        near = _Looking(trials.at_points(points), line, brackets) if growth < _GROWTHS else every
+        at, gaps = roots.refined(near.gap, at, gaps)
+        chosen = np.where(rising, at[2], at[1])
+        gap, worst = every.look(np.arange(len(chosen)), chosen)
+        missed: Mask = np.asarray(gap < 0)
+        if not missed.any():
+            break
+        points |= set(worst[missed].tolist())
+        at, gaps = _widened(brackets, at, gaps, missed, gap)
+    edge = np.abs(gap) > _JUMP
+    for k, axis in enumerate(brackets.owner):
+        value = float(np.exp(chosen[k]))
+        item = Crossing(int(brackets.rows[k]), value, int(worst[k]), bool(rising[k]), bool(edge[k]))
         found[int(axis)].append(item)
     return found
+
+
+def _widened(brackets: _Brackets, at: Array, gaps: Array, missed: Mask, gap: Array) -> tuple[Array, Array]:
+    """Brackets of which some turned out to be missed at the end that was thought to be met: these reach back to it."""
+    at, gaps = at.copy(), gaps.copy()
+    for k in np.flatnonzero(missed):
+        met, unmet, beyond, behind = (2, 1, 3, 0) if brackets.gaps[2, k] >= 0 else (1, 2, 0, 3)
+        at[unmet, k], gaps[unmet, k] = at[met, k], gap[k]
+        at[[met, beyond], k], gaps[[met, beyond], k] = (
+            brackets.places[[met, beyond], k],
+            brackets.gaps[[met, beyond], k],
+        )
+        at[behind, k] = gaps[behind, k] = np.nan
+    return at, gaps
+
+
+class _Looking:
+    """Slack of each bracket's constraint at places of its axis."""
+
+    def __init__(self, trials: Trials, line: _Lines, brackets: _Brackets) -> None:
+        self._trials, self._line, self._brackets = trials, line, brackets
+        self._allowed = tolerances(trials.constraints)[brackets.rows]
+
+    def look(self, which: Index, x: Array) -> tuple[Array, Index]:
+        """Slack with its tolerance and worst point, for brackets by number at places."""
+        rows = self._brackets.rows[which]
+        needed = np.unique(rows)
+        cleared = self._trials.clear(self._line(self._brackets.owner[which], np.exp(x)), needed.tolist())
+        row, at = np.searchsorted(needed, rows), np.arange(len(x))
+        return cleared.slack[row, at] + self._allowed[which], np.asarray(cleared.worst[row, at])
+
+    def gap(self, which: Index, x: Array) -> Array:
+        """As look, the slack alone."""
+        return self.look(which, x)[0]
 
 
 def _bound(trials: Trials, axis: Axis, crossing: Crossing) -> Bound:
