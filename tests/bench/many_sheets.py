@@ -1,7 +1,8 @@
 """A project of many sheets to measure on: all stages, both polarities, both kinds of current source, ranges and links.
 
 Invented, and the same for the same numbers. The sheets are as a team writes them: most of an amplifier's stages, values
-with their source and trust, four to six targets, a range in every third, a value from another sheet in every fifth.
+with their source and trust, four to six targets, a range in every third, a value from another sheet in every fifth,
+evidence in two of five, and as long as those of the sample project.
 """
 
 from __future__ import annotations
@@ -29,8 +30,8 @@ _STAGES = ("source-follower", "common-source", "common-gate", "drain-follower", 
 _DRAIN_OUTPUTS = ("common-source", "common-gate", "cascode")
 _OTHER = {"nfet": "pfet", "nfet_deep": "pfet", "pfet": "nfet"}
 _SPECIFIC = {"nfet": 0.501e-6, "nfet_deep": 0.501e-6, "pfet": 0.122e-6}
-_STEP, _RANGE, _LINK, _FIGURE, _RESISTANCE = 0.15, 0.33, 0.2, 0.2, 0.1
-"""How many of the sheets have a step, a range, a link, a figure of their own, a resistance before the input."""
+_STEP, _RANGE, _LINK, _FIGURE, _RESISTANCE, _EVIDENCE = 0.15, 0.33, 0.2, 0.2, 0.1, 0.4
+"""How many of the sheets have a step, a range, a link, a figure of their own, a resistance before the input, evidence."""
 
 
 def write(folder: Path, sheets: int, conditions: int) -> Path:
@@ -85,7 +86,7 @@ def _sheet(rng: random.Random, number: int) -> str:
     width = round(rng.uniform(2, 60), 2)
     current = _SPECIFIC[device] * width / length * inversion
     lines = [
-        f"# Block {number} of the benchmark.",
+        f"# Block {number} of the benchmark: what it drives, what limits it and what was agreed stands beside the numbers.",
         "schema = 1",
         f'title = "Block {number}"',
         f'stage = "{stage}"',
@@ -93,6 +94,10 @@ def _sheet(rng: random.Random, number: int) -> str:
         f'bulk = "{bulk}"',
         f"count = {rng.choice((1, 1, 1, 2, 8))}",
         'owner = "nobody"',
+        'state = "draft"',
+        'notes = """',
+        "First sizes, from the inversion that the noise allows; the layout has not been drawn.",
+        'To be looked at again when the load is known."""',
         "",
         "[bias]",
         f'device = "{bias if transistor else "ideal"}"',
@@ -123,7 +128,24 @@ def _sheet(rng: random.Random, number: int) -> str:
             f'bias_width = "{max(0.24, round(current / _SPECIFIC[bias] * bias_length / 2, 2))} um"',
             f'bias_length = "{bias_length} um"',
         ]
-    return "\n".join([*lines, "", "[target]", *_targets(rng, stage, current, figure)]) + "\n"
+    return "\n".join([*lines, "", "[target]", *_targets(rng, stage, current, figure), *_evidence(rng)]) + "\n"
+
+
+def _evidence(rng: random.Random) -> list[str]:
+    if rng.random() > _EVIDENCE:
+        return []
+    return [
+        "",
+        "[[evidence]]",
+        'metric = "bandwidth"',
+        f'value = "{rng.uniform(0.2, 3):.3g} MHz"',
+        'found_by = "simulation"',
+        "dated = 2026-10-21",
+        'basis = "9f2c61d0a3be"',
+        'at = { process = "slow", temperature = "125 °C", supply = "1.62 V" }',
+        'by = "nobody"',
+        'reference = "run 118, netlist tag r3"',
+    ]
 
 
 def _load(rng: random.Random, number: int) -> str:
@@ -141,9 +163,9 @@ def _targets(rng: random.Random, stage: str, current: float, figure: bool) -> li
     gain = {"source-follower": 'min = 0.6, max = "1"', "drain-follower": "max = 0.05"}.get(stage, 'min = "20 dB"')
     lines = [
         f'dc_gain = {{ {gain.replace(chr(34) + "1" + chr(34), "1.0")}, id = "B-{rng.randrange(100)}" }}',
-        f'bandwidth = {{ min = "{10 ** rng.uniform(3.5, 6):.3g} Hz", source = "system specification", guard = 0.05 }}',
-        f'power = {{ max = "{current * 1e6 * rng.uniform(1.9, 3):.4g} uW", source = "power budget" }}',
-        f'output_noise = {{ max = "{rng.choice((200, 500, 1500))} uV", at = "nominal" }}',
+        f'bandwidth = {{ min = "{10 ** rng.uniform(3.5, 6):.3g} Hz", source = "system specification", guard = 0.05, why = "two time constants within a sample" }}',
+        f'power = {{ max = "{current * 1e6 * rng.uniform(1.9, 3):.4g} uW", id = "P-{rng.randrange(100)}", source = "power budget, revision C" }}',
+        f'output_noise = {{ max = "{rng.choice((200, 500, 1500))} uV", at = "nominal", source = "noise budget, revision C" }}',
     ]
     if rng.random() < 0.5:
         lines.append('offset_limit = { max = "15 mV", yield = 0.997 }')

@@ -110,13 +110,24 @@ class Batch:
 
     def process(self, device: Transistor) -> tuple[Mapping[str, Number], Mapping[str, Array]]:
         """A transistor's process values and what the corners change of them, of each row's own type."""
-        found = [case.process(device) for case in self.cases]
-        numbers, changes = found[0]
-        if all(n is numbers and c is changes for n, c in found):
-            return numbers, changes
-        stacked = {name: self._stack([n[name] for n, _ in found]) for name in numbers}
-        names = dict.fromkeys(name for _, c in found for name in c)
-        return stacked, {name: self._stack([c.get(name, _UNCHANGED[name]) for _, c in found]) for name in names}
+        kinds: dict[tuple[int, int], int] = {}  # most cases share what their type of device has
+        kind_of, found = [], []
+        for numbers, changes in (case.process(device) for case in self.cases):
+            kind = kinds.setdefault((id(numbers), id(changes)), len(found))
+            if kind == len(found):
+                found.append((numbers, changes))
+            kind_of.append(kind)
+        if len(found) == 1:
+            return found[0]
+        if any(isinstance(value, np.ndarray) for numbers, _ in found for value in numbers.values()):
+            stacked: dict[str, Number] = {n: self._stack([found[k][0][n] for k in kind_of]) for n in found[0][0]}
+        else:
+            rows = np.repeat(kind_of, self.rows)
+            stacked = {n: np.array([numbers[n] for numbers, _ in found])[rows][:, None] for n in found[0][0]}
+        names = dict.fromkeys(name for _, changes in found for name in changes)
+        none = np.ones(len(self.conditions))
+        changed = {n: np.array([changes.get(n, _UNCHANGED[n] * none) for _, changes in found]) for n in names}
+        return stacked, {name: table[np.repeat(kind_of, self.rows)] for name, table in changed.items()}
 
     def _stack(self, values: Sequence[Number]) -> Array:
         if all(isinstance(value, (float, int)) for value in values):

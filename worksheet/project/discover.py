@@ -85,9 +85,10 @@ def load(root: Path, reading: Reading = FROM_DISK) -> Project:
     bad: list[str] = []
     unlisted = _unlisted(root)
     problems = [*problems, *([unlisted] if unlisted is not None else [])]
+    followed = inside(root, root / SHEETS)
     for path in reading.sheets(root):
         shown = f"{SHEETS}/{path.name}"
-        refused = _leads_out(root, path, shown)
+        refused = None if followed and not path.is_symlink() else _leads_out(root, path, shown)
         sheet, found = (None, [refused]) if refused is not None else reading.sheet(path, shown)
         problems = [*problems, *found]
         if sheet is None:
@@ -190,8 +191,6 @@ def _unlisted(root: Path) -> Problem | None:
 
 
 def _leads_out(root: Path, path: Path, shown: str) -> Problem | None:
-    if path.parent in (root / SHEETS, root / PROCESSES) and not path.is_symlink() and inside(root, path.parent):
-        return None  # the folder was followed, and the file is no link
     if inside(root, path):
         return None
     return Problem(shown, None, "", "found a link that leads out of the project; expected a place inside it")

@@ -1,9 +1,13 @@
-"""What a review says, as frozen data: one type a thing, always whole, for every front end and format."""
+"""What a review says, as frozen data: one type a thing, always whole, for every front end and format.
+
+What there are thousands of is a named tuple, which is made in a third of the time.
+"""
 
 from __future__ import annotations
 
 from collections.abc import Mapping
 from dataclasses import dataclass, field
+from typing import NamedTuple
 
 from worksheet.model.problem import Problem
 from worksheet.model.sheet import Condition, Sheet, Target
@@ -12,8 +16,7 @@ MET, MISSED, UNKNOWN, WAIVED = "met", "missed", "unknown", "waived"
 """Verdicts."""
 
 
-@dataclass(frozen=True, slots=True)
-class Number:
+class Number(NamedTuple):
     """A number with its unit, or the reason why there is none. `value` in SI units."""
 
     value: float | None
@@ -21,8 +24,7 @@ class Number:
     reason: str | None = None
 
 
-@dataclass(frozen=True, slots=True)
-class Choice:
+class Choice(NamedTuple):
     """A design variable: its number and whether it was "chosen", "assumed" or "proposed". SI units."""
 
     value: float
@@ -30,8 +32,7 @@ class Choice:
     origin: str
 
 
-@dataclass(frozen=True, slots=True)
-class Invalid:
+class Invalid(NamedTuple):
     """A device or level that does not hold at one condition. `short_by` in `unit`."""
 
     device: str
@@ -41,16 +42,14 @@ class Invalid:
     at: Condition
 
 
-@dataclass(frozen=True, slots=True)
-class Note:
+class Note(NamedTuple):
     """A remark of the program beside a number: what it is about, and what to know."""
 
     about: str
     text: str
 
 
-@dataclass(frozen=True, slots=True)
-class EvidenceVerdict:
+class EvidenceVerdict(NamedTuple):
     """One piece of evidence against its target. Numbers in SI units of the metric."""
 
     value: float
@@ -59,16 +58,14 @@ class EvidenceVerdict:
     verdict: str
 
 
-@dataclass(frozen=True, slots=True)
-class Breaking:
+class Breaking(NamedTuple):
     """A condition of a target and its room there: relative, plain for a limit of 0; None for a number that is missing."""
 
     at: Condition
     room: float | None
 
 
-@dataclass(frozen=True, slots=True)
-class Cause:
+class Cause(NamedTuple):
     """The single change from the nominal condition and the stated values that costs a target most room.
 
     Attributes:
