@@ -188,6 +188,17 @@ def test_figures_own_names_and_formulas(tmp_path: Path) -> None:
     assert "merit" in explainable(case)
 
 
+def test_a_name_written_with_a_prefix_is_shown_in_what_its_number_is_in(tmp_path: Path) -> None:
+    project, process, sheet = follower()
+    sheet["own"] = {"hold": "2 pF"}
+    sheet["assume"]["load_capacitance"] = {"formula": "hold/2"}
+    case = case_of(tmp_path, (project, process, sheet))
+    assert case is not None
+    (given,) = explain(case, "load_capacitance").given
+    for found in (explain(case, "hold"), given):
+        assert (found.value, found.unit) == (2e-12, "F")
+
+
 def test_a_number_of_another_sheet(tmp_path: Path) -> None:
     project, process, sheet = follower()
     second = {**sheet, "assume": {"load_capacitance": {"formula": "2*first.input_capacitance"}}}

@@ -30,6 +30,7 @@ def document(solved: Solved, hand: Hand) -> Plain:
         "recommended": point(solved.recommended),
         "compact": point(solved.compact),
         "proposed": dict(solved.proposed),
+        "self_loading": {target: dict(enough) for target, enough in solved.self_loading.items()},
         "conflict": conflict(solved.conflict),
         "problems": [],
     }
@@ -82,6 +83,7 @@ def conflict(found: Conflict | None) -> Plain | None:
         "variable": found.variable,
         "targets": list(found.targets),
         "gives_way": dict(found.gives_way),
+        "wanted": dict(found.wanted),
         "reachable_with": dict(found.reachable_with),
         "explain": found.explain,
     }

@@ -36,11 +36,13 @@ class Needs:
         root: The project folder.
         case: The sheet over its conditions.
         solved: What is needed, narrowed to a target or an unknown where one was named.
+        asked: The target and the unknown that were named, None for all.
     """
 
     root: Path
     case: Case
     solved: Solved
+    asked: tuple[str | None, str | None] = (None, None)
 
     @classmethod
     def of(
@@ -82,13 +84,10 @@ class Needs:
         try:
             extra = needed.window_of(needed.trials_of(case, over), unknown) if unknown is not None else None
         except KeyError:
-            names = [
-                *variables(case),
-                INVERSION.name,
-                *(k.name for k in case.stage.assumption_keys(case.sheet.bulk)),
-                *case.sheet.own,
-            ]
-            return [_unknown(case, "unknown", str(unknown), names)]
+            assumed = (k.name for k in case.stage.assumption_keys(case.sheet.bulk))
+            names = [*variables(case), INVERSION.name, *assumed, *case.sheet.own]
+            known = [n for n in names if n in variables(case) or on_request(case, n) is not None]
+            return [_unknown(case, "unknown", str(unknown), known)]
         except CaseError as error:
             return [error.problem]
         solved = needed.solve(case, over)
@@ -98,7 +97,7 @@ class Needs:
                 n: replace(w, bounds=tuple(b for b in w.bounds if b.target == target)) for n, w in windows.items()
             }
             windows = {n: w for n, w in windows.items() if w.bounds or unknown is not None}
-        return cls(root, case, replace(solved, needed=windows))
+        return cls(root, case, replace(solved, needed=windows), (target, unknown))
 
     @property
     def title(self) -> str:

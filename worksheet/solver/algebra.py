@@ -23,6 +23,7 @@ from worksheet.solver.algebra_print import pieces
 from worksheet.solver.explanation import Explanation, Given
 from worksheet.solver.present import Present
 from worksheet.solver.stated import Case, Origin, at
+from worksheet.solver.subject import own_unit
 
 _WHAT = {
     "saturation": "{name} is not saturated: its drain-source voltage falls short by {short}",
@@ -57,7 +58,7 @@ def explain(case: Case, key: str, condition_index: int = 0) -> Explanation:
     if _linked(present, key):
         return _leaf(present, key, key, key, "")
     if key in case.sheet.own:
-        unit = case.sheet.own[key].unit
+        unit = own_unit(case.sheet.own[key])
         stated = case.sheet.own[key].formula
         return _formula(present, key, stated, unit) if stated is not None else _leaf(present, key, key, key, unit)
     if metrics.find(key) is not None and case.stage.absent_metric(key) is not None:
@@ -251,7 +252,7 @@ def _named(present: Present, name: str, figure: bool) -> Given:
         return Given(name, name, index, name, _external(present, name), "", Origin("linked", key=name))
     number, origin = present.stated.number(name), present.stated.origin(name)
     if name in case.sheet.own:
-        return Given(name, name, index, name, number, case.sheet.own[name].unit, origin)
+        return Given(name, name, index, name, number, own_unit(case.sheet.own[name]), origin)
     word = present.point.algebra.word(name)
     return Given(name, name, index, word.title, number, word.unit, origin)
 

@@ -14,7 +14,7 @@ from worksheet.solver.subject import scalar
 from worksheet.solver.trials import Trials, holds
 from worksheet.solver.variables import variables
 
-_HELPERS = ("length", "load_capacitance", "bias_current", "width")
+_HELPERS = ("length", "load_capacitance", "bias_current", "width", "bias_length", "bias_width")
 
 
 def conflict(trials: Trials, free: Free) -> Conflict:
@@ -38,6 +38,7 @@ def conflict(trials: Trials, free: Free) -> Conflict:
         gives_way=gives,
         reachable_with=_reachable(trials, free),
         explain=_explain(involved, bool(alone)),
+        wanted={name: _limit(trials, _own(trials, name)) for name in involved},
     )
 
 
@@ -65,9 +66,24 @@ def _minimal(trials: Trials, free: Free, targets: list[int], limits: list[int]) 
     return kept
 
 
+def _own(trials: Trials, name: str) -> int:
+    """The constraint that a target is asked to give way at: the first of its limits."""
+    return next(k for k, c in enumerate(trials.constraints) if c.name == name)
+
+
+def _limit(trials: Trials, index: int) -> float:
+    """The limit of a target's constraint, guard band counted. [its unit]"""
+    constraint = trials.constraints[index]
+    assert constraint.target is not None  # only targets are asked to give way
+    low, high = goals.limits(constraint.target)
+    limit = low if constraint.side == "low" else high
+    assert limit is not None  # a constraint is made for limits that exist only
+    return limit
+
+
 def _best(trials: Trials, free: Free, name: str, others: list[int], limits: list[int]) -> float | None:
     """Best reachable value of a target with all others held, None where those exclude each other. [its unit]"""
-    own = next(k for k, c in enumerate(trials.constraints) if c.name == name)
+    own = _own(trials, name)
     place = Search(trials, free.space(), [*others, *limits]).greatest(own)
     if place is None:
         return None
@@ -92,8 +108,17 @@ def _reachable(trials: Trials, free: Free) -> dict[str, float]:
         wider = Free(free.subject, every, (*free.names, name))
         found = Search(trials, wider.space()).least()
         if found.feasible:
-            return {name: wider.place(found)[name]}
+            return {name: _nearest(trials, wider, name, wider.place(found)[name])}
     return {}
+
+
+def _nearest(trials: Trials, wider: Free, name: str, known: float) -> float:
+    """The value of a variable nearest to where it stands that makes everything possible, on the side of a known one."""
+    present = wider.variables[name].present
+    sign = 1.0 if known >= present else -1.0
+    space = wider.turned(name, sign, (float(np.log(present)), float(np.log(known))))
+    found = Search(trials, space).least()
+    return float(np.exp(sign * found.place[0])) if found.feasible else known
 
 
 def _explain(names: tuple[str, ...], alone: bool) -> str:

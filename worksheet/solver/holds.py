@@ -7,6 +7,7 @@ from dataclasses import dataclass
 from worksheet.stages.circuit import CAPACITANCES, Circuit
 from worksheet.stages.stage import MAIN
 
+_MOVING = " that move"
 _NOUNS = {"bias_current": "current", "load_capacitance": "load", "inversion_coefficient": "inversion"}
 
 
@@ -23,7 +24,12 @@ class Hold:
 
     def moving_with(self, unknown: str) -> str:
         """What holding it is called as a neglect."""
-        return f"{self.name} that {'move' if self.several else 'moves'} with {noun(unknown)}"
+        return f"{self.name}{_MOVING}{'' if self.several else 's'} with {noun(unknown)}"
+
+
+def is_moving(neglect: str) -> bool:
+    """Whether a neglect is called as something that is held."""
+    return _MOVING in neglect
 
 
 def noun(unknown: str) -> str:

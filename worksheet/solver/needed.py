@@ -7,7 +7,7 @@ from collections.abc import Callable, Mapping
 import numpy as np
 
 from worksheet.device.arrays import Array
-from worksheet.solver import conflict, propose, ranges
+from worksheet.solver import conflict, propose, ranges, self_loading
 from worksheet.solver import windows as window
 from worksheet.solver.results import Conflict, Solved, Window
 from worksheet.solver.subject import Subject, scalar
@@ -50,6 +50,7 @@ def solve(subject: Subject, over: str | None = None) -> Solved:
         compact=best.compact,
         conflict=found,
         proposed={name: scalar(subject.value(name)) for name in subject.open_keys},
+        self_loading=_self_loading(trials),
     )
 
 
@@ -61,6 +62,20 @@ def windows(trials: Trials) -> Mapping[str, Window]:
     batches = [plain, *([axis] for axis in followed)] if plain else [[axis] for axis in followed]
     found = {w.name: w for batch in batches for w in window.windows(trials, batch) if w is not None}
     return {axis.variable.name: found[axis.variable.name] for axis in axes if axis.variable.name in found}
+
+
+def _self_loading(trials: Trials) -> Mapping[str, Mapping[str, float]]:
+    """What would help targets that no current meets at the inversion that is kept."""
+    subject = trials.subject
+    if subject.sheet.solve.keep != "inversion":
+        return {}
+    axis = axis_of(subject, variables(subject)["bias_current"])
+    return self_loading.helped(trials, axis.line(axis.places()), kept_inversion(subject))
+
+
+def kept_inversion(subject: Subject) -> float:
+    """The inversion coefficient that is kept while the bias current is back-computed. [-]"""
+    return subject.sheet.solve.inversion_coefficient or inversion(subject)
 
 
 def _follows(subject: Subject, name: str) -> bool:
@@ -88,8 +103,7 @@ def line_of(
         return alone, (variable.low, variable.high), ""
     if subject.sheet.solve.keep != "inversion":
         return alone, (variable.low, variable.high), "geometry"
-    kept = subject.sheet.solve.inversion_coefficient or inversion(subject)
-    per_width = scalar(subject.value("length")) / (square_current(subject) * kept)
+    per_width = scalar(subject.value("length")) / (square_current(subject) * kept_inversion(subject))
 
     def with_width(values: Array) -> Mapping[str, Array]:
         return {"bias_current": values, "width": values * per_width}

@@ -123,6 +123,31 @@ class Free:
                 limits += [np.log(values / variable.low), np.log(variable.high / values)]
         return np.array(limits).reshape(len(limits), len(first))
 
+    def turned(self, name: str, sign: float, span: tuple[float, float]) -> Space:
+        """The same freedoms with another variable as what is to be least (sign 1) or greatest (sign -1).
+
+        Args:
+            name: A free variable that is a coordinate of its own, after the first.
+            sign: Which way.
+            span: Logarithms of its values between which it may lie.
+        """
+        own = 1 if self.by_inversion or self.by_area else 0
+        place = own + self._others().index(name)
+        plain = self._rest()
+
+        def back(first: Array, rest: Array) -> tuple[Array, Array]:
+            inner = np.insert(rest[:, 1:], place, sign * first, axis=1)
+            return rest[:, 0], inner
+
+        rest = (self._first(), *(r for k, r in enumerate(plain) if k != place))
+        low, high = sorted(sign * s for s in span)
+        return Space(
+            (low, high),
+            rest,
+            lambda first, rest: self.moves(*back(first, rest)),
+            lambda first, rest: self.rooms(*back(first, rest)),
+        )
+
     def room(self, first: Array, rest: Array) -> Array:
         """Slack of the process limits together. [-]"""
         return np.asarray(np.min(self.rooms(first, rest), axis=0, initial=np.inf))

@@ -84,6 +84,7 @@ class Conflict:
         variable: The variable on whose axis they do.
         targets: Their names.
         gives_way: Best reachable value of each with the others held; None where there is none. [unit of the target]
+        wanted: The limit of each that this value falls short of, guard band counted. [unit of the target]
         reachable_with: A value of another variable that would make it reachable, by name. [unit of the key]
         explain: In words.
     """
@@ -93,11 +94,17 @@ class Conflict:
     gives_way: Mapping[str, float | None]
     reachable_with: Mapping[str, float]
     explain: str
+    wanted: Mapping[str, float] = field(default_factory=dict)
 
 
 @dataclass(frozen=True)
 class Solved:
-    """Everything that solve says of one sheet."""
+    """Everything that solve says of one sheet.
+
+    Attributes:
+        self_loading: Targets for which no current is enough at the inversion that is kept: the smallest inversion
+            coefficient, and the largest length, at which one is. [unit of each key]
+    """
 
     sheet: str
     over: str
@@ -108,3 +115,4 @@ class Solved:
     compact: Point | None
     conflict: Conflict | None
     proposed: Mapping[str, float]
+    self_loading: Mapping[str, Mapping[str, float]] = field(default_factory=dict)

@@ -9,6 +9,7 @@ from worksheet.device.arrays import Array, Number
 from worksheet.engine.inputs import Inputs
 from worksheet.engine.solution import NumericSolution
 from worksheet.model.sheet import Condition, DeviceModel, Process, Sheet, Target, Value
+from worksheet.model.units import UnitError, parse_unit
 from worksheet.stages.circuit import Circuit
 from worksheet.stages.stage import Stage, Transistor
 
@@ -114,3 +115,11 @@ def scalar(value: Any) -> float:
         return float(value)
     flat: Sequence[float] = value.reshape(-1)
     return float(flat[0])
+
+
+def own_unit(value: Value) -> str:
+    """The SI unit of a name of the user's own, whose number is in it whatever prefix it was written with."""
+    try:
+        return parse_unit(value.unit).base if value.unit else ""
+    except UnitError:
+        return value.unit

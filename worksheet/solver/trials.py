@@ -149,9 +149,10 @@ class Trials:
         """
         shaped = {name: np.asarray(v)[:, None, None] for name, v in moves.items()}
         moved = self.subject.moved({**self.vertices, **shaped})
-        if self._only is None:
-            return moved, moved.solution
-        return moved, NumericSolution(at_conditions(moved.inputs, self._only))
+        with np.errstate(all="ignore"):  # what is tried may be out of all bounds
+            if self._only is None:
+                return moved, moved.solution
+            return moved, NumericSolution(at_conditions(moved.inputs, self._only))
 
     def clear(self, moves: Mapping[str, Array], only: Sequence[int] | None = None) -> Cleared:
         """Slack of constraints at trial points.

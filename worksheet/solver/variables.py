@@ -4,11 +4,12 @@ from __future__ import annotations
 
 from dataclasses import dataclass, replace
 
+from worksheet.model.dimension import DIMENSIONS, NUMBER, Dimension
 from worksheet.model.keys import Key
 from worksheet.model.quantity import parse
 from worksheet.model.sheet import DeviceModel
 from worksheet.model.sheet_keys import GEOMETRY, OWN, SOLVE_KEYS
-from worksheet.solver.subject import Subject, scalar
+from worksheet.solver.subject import Subject, own_unit, scalar
 
 _CURRENT_SPAN = (1e-6, 1e6)
 _CAPACITANCE_SPAN = (1e-6, 1e6)
@@ -80,7 +81,10 @@ def on_request(subject: Subject, name: str) -> Variable | None:
         return Variable(INVERSION, present, present * 1e-6, present * 1e6, bounded=False)
     key = next((k for k in subject.stage.assumption_keys(subject.sheet.bulk) if k.name == name and not k.listed), None)
     if key is None and name in subject.sheet.own:
-        key = replace(OWN, name=name, title=name, symbol=name)
+        unit = own_unit(subject.sheet.own[name])
+        known = next((d for d in DIMENSIONS if unit and d.unit == unit), NUMBER)
+        dimension = known if known.unit == unit else Dimension("own", unit, NUMBER.exponents, plain=False, example=unit)
+        key = replace(OWN, name=name, title=f"Own name {name}", symbol=name, dimension=dimension)
     if key is None or (subject.stated(name) is None and key.default is None):
         return None
     present = scalar(subject.value(name))

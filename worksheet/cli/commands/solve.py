@@ -53,5 +53,6 @@ def _show(found: Needs, output: Output) -> int:
     if output.as_json:
         output.document(solve_plain.document(found.solved, found.hand))
     else:
-        output.lines(solve_text.text(found.solved, found.title, found.keys, found.hand, output.width))
+        text = solve_text.text(found.solved, found.title, found.keys, found.hand, output.width, found.asked)
+        output.lines(text)
     return Status.FINE if found.solved.feasible else Status.NOT_MET
