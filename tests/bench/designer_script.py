@@ -57,7 +57,9 @@ def device_at(process: dict[str, Any], name: str, corner: str, temperature: floa
     return p
 
 
-def small_signal(p: dict[str, float], current: float, width: float, length: float, temperature: float) -> dict[str, float]:
+def small_signal(
+    p: dict[str, float], current: float, width: float, length: float, temperature: float
+) -> dict[str, float]:
     """Conductances, capacitances and noise of a saturated device."""
     thermal = K_B * temperature / Q_E
     specific = p["specific_current"] * width / length
@@ -86,7 +88,9 @@ def small_signal(p: dict[str, float], current: float, width: float, length: floa
     }
 
 
-def drain_current(p: dict[str, float], sigma: float, specific: float, gate: float, source: float, drain: float, thermal: float) -> float:
+def drain_current(
+    p: dict[str, float], sigma: float, specific: float, gate: float, source: float, drain: float, thermal: float
+) -> float:
     """Forward less reverse current of the charge model."""
 
     def charge(u: float) -> float:
@@ -160,11 +164,17 @@ class Script:
         middle = (low + supply - d["saturation"]) / 2
         if stage in ("source-follower", "drain-follower"):
             brentq(
-                lambda v: drain_current(p, d["sigma"], specific, v, middle, supply, thermal) / current - 1, 0.0, 3 * supply, xtol=1e-9
+                lambda v: drain_current(p, d["sigma"], specific, v, middle, supply, thermal) / current - 1,
+                0.0,
+                3 * supply,
+                xtol=1e-9,
             )
         else:
             brentq(
-                lambda v: drain_current(p, d["sigma"], specific, v, 0.0, middle, thermal) / current - 1, -0.5, 3 * supply, xtol=1e-9
+                lambda v: drain_current(p, d["sigma"], specific, v, 0.0, middle, thermal) / current - 1,
+                -0.5,
+                3 * supply,
+                xtol=1e-9,
             )
         own = sheet["bulk"] == "source"
         g_s = d["g_m"] + d["g_d"] if own else d["g_s"]
@@ -179,7 +189,9 @@ class Script:
             drive = -g_s if stage == "common-gate" else d["g_m"]
             feed = -d["c_gd"] if stage != "common-gate" else 0.0
             if stage == "cascode":
-                second = small_signal(p, current, number(choose["cascode_width"]), number(choose["cascode_length"]), temperature)
+                second = small_signal(
+                    p, current, number(choose["cascode_width"]), number(choose["cascode_length"]), temperature
+                )
                 g_o = d["g_d"] * second["g_d"] / (second["g_s"] + d["g_d"]) + g_l
         gain = abs(drive) / g_o
         tau, zero = c_o / g_o, feed / drive if drive else 0.0

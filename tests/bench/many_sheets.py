@@ -31,7 +31,7 @@ _DRAIN_OUTPUTS = ("common-source", "common-gate", "cascode")
 _OTHER = {"nfet": "pfet", "nfet_deep": "pfet", "pfet": "nfet"}
 _SPECIFIC = {"nfet": 0.501e-6, "nfet_deep": 0.501e-6, "pfet": 0.122e-6}
 _STEP, _RANGE, _LINK, _FIGURE, _RESISTANCE, _EVIDENCE = 0.15, 0.33, 0.2, 0.2, 0.1, 0.4
-"""How many of the sheets have a step, a range, a link, a figure of their own, a resistance before the input, evidence."""
+"""How many of the sheets have a step, a range, a link, a figure, a resistance before the input, evidence."""
 
 
 def write(folder: Path, sheets: int, conditions: int) -> Path:
@@ -86,7 +86,7 @@ def _sheet(rng: random.Random, number: int) -> str:
     width = round(rng.uniform(2, 60), 2)
     current = _SPECIFIC[device] * width / length * inversion
     lines = [
-        f"# Block {number} of the benchmark: what it drives, what limits it and what was agreed stands beside the numbers.",
+        f"# Block {number} of the benchmark: what it drives, what limits it and what was agreed stands beside.",
         "schema = 1",
         f'title = "Block {number}"',
         f'stage = "{stage}"',
@@ -161,11 +161,15 @@ def _load(rng: random.Random, number: int) -> str:
 
 def _targets(rng: random.Random, stage: str, current: float, figure: bool) -> list[str]:
     gain = {"source-follower": 'min = 0.6, max = "1"', "drain-follower": "max = 0.05"}.get(stage, 'min = "20 dB"')
+    gain = gain.replace(chr(34) + "1" + chr(34), "1.0")
+    speed, power = f"{10 ** rng.uniform(3.5, 6):.3g} Hz", f"{current * 1e6 * rng.uniform(1.9, 3):.4g} uW"
+    asked, noise = rng.randrange(100), rng.choice((200, 500, 1500))
+    why = 'guard = 0.05, why = "two time constants within a sample"'
     lines = [
-        f'dc_gain = {{ {gain.replace(chr(34) + "1" + chr(34), "1.0")}, id = "B-{rng.randrange(100)}" }}',
-        f'bandwidth = {{ min = "{10 ** rng.uniform(3.5, 6):.3g} Hz", source = "system specification", guard = 0.05, why = "two time constants within a sample" }}',
-        f'power = {{ max = "{current * 1e6 * rng.uniform(1.9, 3):.4g} uW", id = "P-{rng.randrange(100)}", source = "power budget, revision C" }}',
-        f'output_noise = {{ max = "{rng.choice((200, 500, 1500))} uV", at = "nominal", source = "noise budget, revision C" }}',
+        f'dc_gain = {{ {gain}, id = "B-{asked}" }}',
+        f'bandwidth = {{ min = "{speed}", source = "system specification", {why} }}',
+        f'power = {{ max = "{power}", id = "P-{asked}", source = "power budget, revision C" }}',
+        f'output_noise = {{ max = "{noise} uV", at = "nominal", source = "noise budget, revision C" }}',
     ]
     if rng.random() < 0.5:
         lines.append('offset_limit = { max = "15 mV", yield = 0.997 }')

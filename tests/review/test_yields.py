@@ -145,9 +145,7 @@ def test_what_a_sheet_says_of_its_own_assumptions_is_no_spread(tmp_path: Path) -
         text.replace("[choose]", "[assume]\nload_capacitance = { value = 1e-12, standard_error = 5e-13 }\n\n[choose]"),
         "utf-8",
     )
-    assert not any(
-        part["of"].startswith("assume") for part in counted(folder, samples=100)["slew_rate"]["variance"]
-    )
+    assert not any(part["of"].startswith("assume") for part in counted(folder, samples=100)["slew_rate"]["variance"])
 
 
 def test_a_threshold_moves_the_current_by_the_device_law(tmp_path: Path) -> None:

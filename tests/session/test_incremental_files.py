@@ -30,7 +30,11 @@ INSIDE = {
     "range": ((*LOAD, "high"), ("9 pF", "12 pF")),
     "link": (
         (*LOAD, "formula"),
-        ("2*drip_amplifier.input_capacitance + 1e-13", "bucket_buffer.load_capacitance/2", "supply_sense.slew_rate*1e-18"),
+        (
+            "2*drip_amplifier.input_capacitance + 1e-13",
+            "bucket_buffer.load_capacitance/2",
+            "supply_sense.slew_rate*1e-18",
+        ),
     ),
     "target": (("target", "bandwidth"), ({"min": "4 MHz"}, {"min": "40 kHz", "guard": 0.1})),
     "count": (("count",), (1, 7)),
@@ -40,7 +44,7 @@ INSIDE = {
 OUTSIDE = {
     "process/my_process.toml": (
         ('threshold = "0.45 V"', 'threshold = "0.43 V"'),
-        ('drain_coupling = 0.02', 'drain_coupling = { value = 0.025, source = "again", trust = "guess" }'),
+        ("drain_coupling = 0.02", 'drain_coupling = { value = 0.025, source = "again", trust = "guess" }'),
         ("threshold_shift", "# moved\nthreshold_shift"),
     ),
     "biasbook.toml": (
