@@ -9,6 +9,7 @@ import numpy as np
 
 from worksheet.device.arrays import Array
 from worksheet.solver import bias_size, ranges
+from worksheet.solver.bias_size import BiasSize
 from worksheet.solver.results import Point
 from worksheet.solver.search import Found, Search, Space
 from worksheet.solver.subject import Subject, scalar
@@ -31,11 +32,18 @@ class Free:
     """What a search may move, and how its coordinates turn into values.
 
     The first coordinate is what is to be least: the bias current, else the gate area, else the load capacitance.
+
+    Attributes:
+        subject: The sheet.
+        variables: Its design variables.
+        names: What may move.
+        bias: What goes with that of the current source's transistor, None where nothing does.
     """
 
     subject: Subject
     variables: Mapping[str, Variable]
     names: tuple[str, ...]
+    bias: BiasSize | None = None
 
     @property
     def followers(self) -> Mapping[str, str]:
@@ -112,14 +120,22 @@ class Free:
             moved["width"], moved["length"] = np.exp((first + rest[:, 0]) / 2.0), np.exp((first - rest[:, 0]) / 2.0)
         else:
             moved[self.names[0]] = np.exp(first)
-        return {**moved, **{name: moved[leader] for name, leader in self.followers.items()}}
+        moved |= {name: moved[leader] for name, leader in self.followers.items()}
+        return moved | self._bias_sizes(moved)
+
+    def _bias_sizes(self, moved: Mapping[str, Array]) -> dict[str, Array]:
+        if self.bias is None:
+            return {}
+        current, length = (moved.get(n, scalar(self.subject.value(n))) for n in ("bias_current", "length"))
+        count = len(next(iter(moved.values())))
+        return {name: np.broadcast_to(v, (count,)) for name, v in self.bias.sizes(current, length).items()}
 
     def rooms(self, first: Array, rest: Array) -> Array:
         """Slack of each process limit, shape (limits, trials). [-]"""
         limits = []
         for name, values in self.moves(first, rest).items():
             variable = self.variables[name]
-            if variable.bounded:
+            if variable.bounded and not (self.bias is not None and name in (self.bias.length_key, self.bias.width_key)):
                 limits += [np.log(values / variable.low), np.log(variable.high / values)]
         return np.array(limits).reshape(len(limits), len(first))
 
@@ -199,6 +215,17 @@ NO_BOUND = "no target bounds the bias current from below"
 
 def optimum(subject: Subject, trials: Trials) -> Optimum:
     """The recommended and the compact point of a sheet that has a number for everything."""
+    for _ in range(_ROUNDS):
+        found = _optimum(subject, trials)
+        points = [p.values for p in (found.recommended, found.compact) if p is not None]
+        wider = [w for w in (_steered(trials, {n: p[n] for n in found.free.names}) for p in points) if w is not None]
+        if not wider:
+            break
+        trials = wider[0]
+    return found
+
+
+def _optimum(subject: Subject, trials: Trials) -> Optimum:
     free = Free(subject, variables(subject), freedoms(subject))
     if not free.names:
         return Optimum(None, None, NOTHING_FREE, {}, free)
@@ -250,15 +277,21 @@ def propose(subject: Subject) -> Mapping[str, float]:
         n for n in subject.open_keys if (n not in following and not n.startswith(f"{BIAS}_")) or n == "bias_current"
     )
     filled = bias_size.starting_values(subject, searched)
+    filled |= {name: _led(subject, filled, leader) for name, leader in following.items()}
+    bias = bias_size.of(subject.with_filled(filled))
     for _ in range(_ROUNDS):
-        filled = {**filled, **{name: _led(subject, filled, leader) for name, leader in following.items()}}
-        sized = bias_size.sizes(subject.with_filled(filled))
-        settled = all(abs(sized[n] - filled.get(n, np.inf)) <= _SETTLED * sized[n] for n in sized)
-        filled = {**filled, **sized}
-        if not searched or (settled and sized):
+        if searched:
+            filled |= {} if bias is None else bias.at(subject.with_filled(filled))
+            filled |= _fill(subject.with_filled(filled), searched, bias)
+            filled |= {name: _led(subject, filled, leader) for name, leader in following.items()}
+        if bias is None:
             break
-        filled = {**filled, **_fill(subject.with_filled(filled), searched)}
-        if not sized:
+        known = subject.with_filled({**filled, **bias.at(subject.with_filled(filled))})
+        sized = bias.allowed(known)
+        settled = abs(sized.inversion - bias.inversion) <= _SETTLED * bias.inversion
+        bias = sized
+        filled |= bias.at(known)
+        if settled or not searched:
             break
     return {name: value for name, value in filled.items() if name in subject.open_keys}
 
@@ -267,24 +300,47 @@ def _led(subject: Subject, filled: Mapping[str, float], leader: str) -> float:
     return filled[leader] if leader in filled else scalar(subject.value(leader))
 
 
-def _fill(subject: Subject, names: tuple[str, ...]) -> dict[str, float]:
+def _fill(subject: Subject, names: tuple[str, ...], bias: BiasSize | None) -> dict[str, float]:
     trials = Trials(
-        subject, subject.sheet.solve.over, ranges.vertices(subject.sheet), ranges.waived_targets(subject.sheet)
+        subject, subject.sheet.solve.over, ranges.worst_points(subject), ranges.waived_targets(subject.sheet)
     )
     order: list[str] = [n for n in ("bias_current", "width", "length", "load_capacitance") if n in names]
     order += [n for n in names if n not in order]
-    free = Free(subject, variables(subject), tuple(order))
+    free = Free(subject, variables(subject), tuple(order), bias)
+    for _ in range(_ROUNDS):
+        place, feasible = _filled(free, trials)
+        wider = _steered(trials, place)
+        if wider is None or not feasible:
+            break
+        trials = wider
+    return place
+
+
+def _filled(free: Free, trials: Trials) -> tuple[dict[str, float], bool]:
+    """Values for what is free, and whether everything holds there."""
     search = Search(trials, free.space())
     found = search.least()
     if not found.feasible:
-        return free.place(found)
+        return free.place(found), False
     if not _bound_by_target(free, trials, found):
-        message = f"{names[0]} is left open and no target bounds it from below; choose it, or add a target that does"
-        raise subject.fail(names[0], message)
-    if free.by_inversion:
-        tied = _compact(free, search, found, 1e-6)
-        return tied if tied is not None else free.place(found)
-    return free.place(found)
+        name = free.names[0]
+        message = f"{name} is left open and no target bounds it from below; choose it, or add a target that does"
+        raise free.subject.fail(name, message)
+    tied = _compact(free, search, found, 1e-6) if free.by_inversion else None
+    return tied if tied is not None else free.place(found), True
+
+
+def _steered(trials: Trials, place: Mapping[str, float]) -> Trials | None:
+    """The same trials with the ends of many ranges to which a place's own signs point; None where it has them all.
+
+    Up to six ranges every end is among them. Beyond that a review looks at those that the signs at its point ask for,
+    which may be others than at the point where a search began.
+    """
+    if trials.over == "nominal" or len(trials.vertices) <= ranges.FULL_UP_TO:
+        return None
+    wider = ranges.merged(trials.vertices, ranges.worst_points(trials.subject.moved(place)))
+    many = {len(v) for v in wider.values()} != {len(v) for v in trials.vertices.values()}
+    return Trials(trials.subject, trials.over, wider, trials.waived) if many else None
 
 
 def _bound_by_target(free: Free, trials: Trials, found: Found) -> bool:

@@ -73,6 +73,13 @@ def worst_points(subject: Subject) -> dict[str, Array]:
     return {name: np.concatenate([alone[name], *([steered[name]] if steered else [])]) for name in alone}
 
 
+def merged(points: dict[str, Array], more: dict[str, Array]) -> dict[str, Array]:
+    """Points with those of others that are not among them, each once and in order. Both of shape (points, 1)."""
+    names = list(points)
+    rows = [tuple(row) for table in (points, more) for row in np.hstack([table[name] for name in names]).tolist()]
+    return _columns(names, list(dict.fromkeys(rows)))
+
+
 def _stated(sheet: Sheet, name: str) -> float:
     value = sheet.assume.get(name) or sheet.own[name]
     assert value.number is not None  # only plain numbers carry a range
