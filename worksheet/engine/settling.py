@@ -10,7 +10,9 @@ from worksheet.device import charge
 from worksheet.device.arrays import Array, Complex, Number
 from worksheet.engine import polynomial as poly
 
-_BISECTIONS = 60
+_ROUNDS, _HALVE = 80, 4
+"""Steps of false position (Illinois) to the last crossing; every fourth halves the bracket."""
+_CLOSE = 1e-14
 _LOGARITHMIC, _EVEN = 96, 400
 """Points in time at which the error of three or more poles is looked at: even ones only where it can ring."""
 _APART = 1e-7
@@ -81,10 +83,24 @@ def _last_crossing(weights: Complex, constants: Complex, tolerance: Array) -> Ar
 
 def _last(error: _Error, poles: int) -> Array:
     low, high, never = error.bracket_of_two() if poles == 2 else error.bracket_by_scan()
-    for _ in range(_BISECTIONS):
-        middle = 0.5 * (low + high)
-        outside = error.excess(middle[None])[0] > 0
-        low, high = np.where(outside, middle, low), np.where(outside, high, middle)
+    above, below = error.excess(low[None])[0], error.excess(high[None])[0]
+    last = np.zeros(low.shape)
+    done = never | ~(high - low > _CLOSE * high)
+    for k in range(_ROUNDS):
+        if done.all():
+            break
+        with np.errstate(all="ignore"):
+            middle = low + (high - low) * (above / (above - below))
+        stuck = ~((middle > low) & (middle < high)) | (k % _HALVE == _HALVE - 1)
+        middle = np.where(stuck, 0.5 * (low + high), middle)
+        excess = error.excess(middle[None])[0]
+        outside = excess > 0
+        to_low, to_high = (outside | (excess == 0)) & ~done, ~outside & ~done
+        below = np.where(to_high, excess, np.where(to_low & (last > 0), below / 2.0, below))
+        above = np.where(to_low, excess, np.where(to_high & (last < 0), above / 2.0, above))
+        low, high = np.where(to_low, middle, low), np.where(to_high, middle, high)
+        last = np.where(outside, 1.0, -1.0)
+        done = done | ~(high - low > _CLOSE * high)
     return np.where(never, 0.0, 0.5 * (low + high))
 
 

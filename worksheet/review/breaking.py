@@ -7,8 +7,8 @@ temperature or supply with everything else nominal and as it is stated, or the e
 
 from __future__ import annotations
 
-from dataclasses import dataclass
 from math import isfinite
+from typing import NamedTuple
 
 import numpy as np
 
@@ -26,8 +26,7 @@ RANGE = "range"
 """The cause that is no axis of the conditions: an assumption at an end of its range."""
 
 
-@dataclass(frozen=True, slots=True)
-class First:
+class First(NamedTuple):
     """The conditions that break a target first, the nearest to breaking in front, and what costs it most."""
 
     order: tuple[Breaking, ...] = ()

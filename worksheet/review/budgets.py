@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Mapping, Sequence
-from dataclasses import dataclass
+from typing import NamedTuple
 
 import numpy as np
 
@@ -13,8 +13,7 @@ from worksheet.review.solved import Points
 from worksheet.solver.goals import TOLERANCE
 
 
-@dataclass(frozen=True, slots=True)
-class Spent:
+class Spent(NamedTuple):
     """What one sheet, times its count, takes of a budget. [unit of the metric]"""
 
     nominal: float

@@ -5,7 +5,7 @@ A point is a condition, or a condition with assumptions at ends of their ranges.
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from typing import NamedTuple
 
 import numpy as np
 from numpy.typing import NDArray
@@ -20,8 +20,7 @@ from worksheet.solver.goals import TOLERANCE, limits
 Mask = NDArray[np.bool_]
 
 
-@dataclass(frozen=True, eq=False, slots=True)
-class Judgement:
+class Judgement(NamedTuple):
     """What a target's values over points come to.
 
     Attributes:

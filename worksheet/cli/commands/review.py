@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import argparse
+import os
 from pathlib import Path
 from typing import TYPE_CHECKING, Any
 
@@ -46,6 +47,7 @@ def run(args: argparse.Namespace, output: Output) -> int:
     from worksheet.session.workbook import Workbook
 
     gc.set_threshold(_COLLECT_AFTER)
+    os.environ.setdefault("OPENBLAS_NUM_THREADS", "1")  # matrices of three rows: starting threads is all they would do
     workbook = Workbook.read(Path(args.project))
     result = workbook.review(datetime.datetime.now().astimezone().date())
     beside = workbook.deeper(result, Wanted(args.fragile, args.samples, args.seed))
