@@ -93,7 +93,7 @@ def ratios(timed: dict[str, Command]) -> None:
 
 
 def one_pass(samples: int) -> None:
-    """A common source under a transistor, mismatch drawn, all targets of such a sheet, as plain numpy over whole arrays.
+    """A common source under a transistor, mismatch drawn, all targets of such a sheet: plain numpy over whole arrays.
 
     Written as one would for this one circuit: no search, no checks of validity but the saturation of both devices.
     """

@@ -37,7 +37,7 @@ def same(one: Reviewed, other: Reviewed) -> bool:
 
 
 def drawn(folder: Path, seed: int, sheets: int) -> Path:
-    """A project of one drawn process and sheets of every kind: bodies that move kappa, saturating carriers, two poles."""
+    """A project of one drawn process and sheets of every kind: kappa that moves, saturating carriers, two poles."""
     rng = random.Random(seed)
     project, process, _ = draw(rng, "cascode", "n", "transistor", want_invalid=False)
     for device in process["device"].values():

@@ -10,7 +10,7 @@ import json
 import random
 from collections.abc import Iterator
 from dataclasses import dataclass
-from itertools import product
+from itertools import pairwise, product
 from pathlib import Path
 from typing import Any
 
@@ -107,7 +107,7 @@ def reviewed(book: Book, *more: str) -> Document:
 def room(target: Document, value: float) -> float:
     """The relative distance to the limit, negative beyond it."""
     limit = target["max"] if target["min"] is None else target["min"]
-    return (value - limit) / abs(limit) * (1 if target["max"] is None else -1)
+    return float((value - limit) / abs(limit) * (1 if target["max"] is None else -1))
 
 
 def valid_rooms(book: Book, target: Document) -> dict[int, float] | None:
@@ -154,7 +154,7 @@ def check_breaking(book: Book, target: Document, rooms: dict[int, float]) -> Non
     order = sorted(rooms.values())
     listed = target["breaks_first"]
     assert near(listed[0]["room"], order[0])
-    for one, following in zip(listed, listed[1:], strict=False):
+    for one, following in pairwise(listed):
         assert one["room"] < following["room"]
     for one in listed:
         assert near(one["room"], rooms[book.conditions.index(one["at"])])

@@ -1,4 +1,4 @@
-"""Yields and what a variance is made of, against closed forms of the normal law, and the same however they are counted."""
+"""Yields and what a variance is made of against closed forms of the normal law, and the same however counted."""
 
 from __future__ import annotations
 
@@ -109,7 +109,7 @@ def normal(z: float) -> float:
 
 def agrees(target: Document, share: float) -> bool:
     """Within four standard deviations of a count."""
-    return abs(target["yield"] - share) <= 4.0 * math.sqrt(share * (1 - share) / COUNT)
+    return bool(abs(target["yield"] - share) <= 4.0 * math.sqrt(share * (1 - share) / COUNT))
 
 
 @pytest.mark.parametrize("z", [-1.5, 0.0, 0.7, 2.0])

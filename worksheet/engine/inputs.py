@@ -11,7 +11,7 @@ from dataclasses import dataclass, fields, replace
 from typing import Any
 
 import numpy as np
-from numpy.typing import NDArray
+from numpy.typing import ArrayLike, NDArray
 
 from worksheet.device.arrays import Array, Number
 from worksheet.device.constants import thermal_voltage
@@ -55,12 +55,14 @@ class Inputs:
     step_size: Number | None = None
     input_level: Number | None = None
     output_level: Number | None = None
-    upside_down: NDArray[np.bool_] | bool | None = None
+    upside_down: ArrayLike | None = None
 
     @property
     def mirrored(self) -> NDArray[np.bool_]:
         """Where the stage is the mirror image of what is drawn: p-channel ones."""
-        return np.asarray(self.circuit.polarity == "p" if self.upside_down is None else self.upside_down)
+        return np.asarray(
+            self.circuit.polarity == "p" if self.upside_down is None else self.upside_down, dtype=np.bool_
+        )
 
     @property
     def thermal(self) -> Number:

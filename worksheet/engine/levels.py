@@ -91,7 +91,7 @@ class Levels:
         if self._above[0] == IN:
             return given_or(self._assumed_input, lambda: np.asarray(self._in.supply))
         if self._below[0] == IN:
-            return given_or(self._assumed_input, lambda: self._held(lambda at: at._source_input_room / 2.0))
+            return given_or(self._assumed_input, lambda: self._held(lambda at: at.source_input_room / 2.0))
         return None
 
     @cached_property
@@ -100,7 +100,7 @@ class Levels:
         return None if self._in.input_level is None else self.turn(self._in.input_level)
 
     @cached_property
-    def _source_input_room(self) -> Array:
+    def source_input_room(self) -> Array:
         """Highest level of a source-driven input for the output that is given, or else for any output. [V]"""
         highest = given_or(self.assumed_output, lambda: self._in.supply - self._stack(self._above[1]))
         return np.asarray(highest - self._stack(self._below[1]))
@@ -182,7 +182,7 @@ class Levels:
         short = np.where(out_is_sought, nominal(self.output_low - self.output_high), none)
         if self._below[0] == IN:
             in_is_sought = _missing(self._in.input_level)
-            short = np.maximum(short, np.where(in_is_sought, nominal(-self._source_input_room), none))
+            short = np.maximum(short, np.where(in_is_sought, nominal(-self.source_input_room), none))
         return short
 
     @cached_property

@@ -85,7 +85,7 @@ def _last(error: _Error, poles: int) -> Array:
     low, high, never = error.bracket_of_two() if poles == 2 else error.bracket_by_scan()
     above, below = error.excess(low[None])[0], error.excess(high[None])[0]
     last = np.zeros(low.shape)
-    done = never | ~(high - low > _CLOSE * high)
+    done = np.asarray(never, dtype=np.bool_) | ~(high - low > _CLOSE * high)
     for k in range(_ROUNDS):
         if done.all():
             break

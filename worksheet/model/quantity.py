@@ -169,7 +169,7 @@ def format_input(value: float, dimension: Dimension) -> str:
 
 
 def _usual(text: str, dimension: Dimension) -> float | None:
-    """The value of a text of the usual form, "2.5 uA", or None: most texts are, and need none of the questions below."""
+    """The value of a text of the usual form, "2.5 uA", or None: most are, and need none of the questions below."""
     found = _USUAL.fullmatch(text)
     decade = None if found is None else _usual_decade(found["unit"], dimension)
     if found is None or decade is None:

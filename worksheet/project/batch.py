@@ -37,7 +37,12 @@ class Batch:
     """
 
     def __init__(self, cases: Sequence[Case]) -> None:
-        """Take the cases: of equal circuit but for its polarity, of equal conditions, with moves of shape (rows,), (rows, 1) or (rows, conditions)."""
+        """Take the cases.
+
+        Args:
+            cases: Of equal circuit but for its polarity, of equal conditions, with moves of shape (rows, 1) or
+                (rows, conditions), or plain numbers.
+        """
         self.cases = tuple(cases)
         self.circuit: Circuit = cases[0].circuit.drawn
         self.conditions: ConditionSet = cases[0].conditions
@@ -111,7 +116,7 @@ class Batch:
     def process(self, device: Transistor) -> tuple[Mapping[str, Number], Mapping[str, Array]]:
         """A transistor's process values and what the corners change of them, of each row's own type."""
         kinds: dict[tuple[int, int], int] = {}  # most cases share what their type of device has
-        kind_of, found = [], []
+        kind_of, found = [], list[tuple[Mapping[str, Number], Mapping[str, Array]]]()
         for numbers, changes in (case.process(device) for case in self.cases):
             kind = kinds.setdefault((id(numbers), id(changes)), len(found))
             if kind == len(found):

@@ -176,7 +176,7 @@ class Case:
         return sheet.assume.get(name) or sheet.choose.get(name) or sheet.own.get(name)
 
     def value(self, name: str) -> Number:
-        """A value of this sheet by name, "bias.KEY" one of its ideal source. [unit of the key], scalar or over conditions
+        """A value of this sheet by name, "bias.KEY" of its ideal source. [unit of the key], scalar or over conditions
 
         Raises: CaseError where a formula fails or leaves its range; KeyError where there is no such name or it is open.
         """

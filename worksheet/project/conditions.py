@@ -50,7 +50,7 @@ class ConditionSet:
 
     @cached_property
     def places(self) -> list[int]:
-        """The places of the conditions in an order that does not depend on how they are listed, the nominal one first."""
+        """The places of the conditions in an order that is not that of the lists, the nominal one first."""
         every = self.conditions
         return [0, *sorted(range(1, len(every)), key=lambda k: every[k])]
 

@@ -11,6 +11,8 @@ from types import MappingProxyType
 from worksheet.model.problem import Problem
 from worksheet.model.sheet import Process, ProjectFile, Sheet
 from worksheet.project import check, links
+from worksheet.project.chains import chain_problems
+from worksheet.project.variants import variant_problems
 from worksheet.sheetfile.paths import inside
 from worksheet.sheetfile.read import read_process, read_project, read_sheet
 
@@ -105,10 +107,15 @@ def checked(project: Project) -> Project:
     assert project.file is not None
     assert project.process is not None
     problems = list(check.project_problems(project.file, project.process))
+    problems += chain_problems(project.file, project.sheets, project.bad)
     sheets = dict(project.sheets)
     used = links.names_used(project.sheets)
     for sheet in project.sheets.values():
-        found = [*check.sheet_problems(sheet, project.process), *links.name_problems(sheet, project.sheets, used)]
+        found = [
+            *check.sheet_problems(sheet, project.process),
+            *variant_problems(sheet, project.process),
+            *links.name_problems(sheet, project.sheets, used),
+        ]
         if found:
             problems += found
             del sheets[sheet.name]

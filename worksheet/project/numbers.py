@@ -78,7 +78,8 @@ class Named(Protocol):
 def inputs_of(named: Named) -> Inputs:
     """The engine's inputs, every number an array: bare floats would take other roads through powers than arrays do."""
     value = named.value
-    given: dict[str, Any] = {name: named.given(name) for name in OPTIONAL}
+    stated = {name: named.given(name) for name in OPTIONAL}
+    given: dict[str, Any] = {name: None if number is None else _array(number) for name, number in stated.items()}
     plain: dict[str, Any] = {name: _array(value(name)) for name in PLAIN}
     return Inputs(
         circuit=named.circuit,
@@ -91,7 +92,7 @@ def inputs_of(named: Named) -> Inputs:
         ideal_capacitance=_array(value("bias.capacitance")),
         upside_down=named.upside_down,
         **plain,
-        **{name: None if number is None else _array(number) for name, number in given.items()},
+        **given,
     )
 
 

@@ -2,7 +2,7 @@
 
 The room at a condition is the relative distance to the nearer limit (for a limit of 0 the plain distance), the worst
 over the ranges of assumptions; the least room breaks first. A cause is looked for one by one: another process corner,
-temperature or supply with everything else nominal and as it is stated, or the ends of the ranges at the nominal condition.
+temperature or supply with everything else nominal and as stated, or the ends of the ranges at the nominal condition.
 """
 
 from __future__ import annotations

@@ -25,9 +25,17 @@ def basis(case: Case) -> str:
 
     Numbers count by value: a proposed one to six digits, one from another sheet to nine.
     """
-    parts = {**_shared(case), **{key: _dumps(value) for key, value in _content(case).items()}}
-    text = ",".join(f'"{key}":{parts[key]}' for key in sorted(parts))
-    return hashlib.sha256(f"{{{text}}}".encode()).hexdigest()[:_LENGTH]
+    shared, own = _shared(case), _content(case)
+    parts: list[str] = []
+    run: dict[str, Any] = {}  # of keys that follow each other and are the sheet's own
+    for key in sorted((*shared, *own)):
+        if key in own:
+            run[key] = own[key]
+            continue
+        parts += [_dumps(run)[1:-1], f'"{key}":{shared[key]}'] if run else [f'"{key}":{shared[key]}']
+        run = {}
+    parts += [_dumps(run)[1:-1]] if run else []
+    return hashlib.sha256(f"{{{','.join(parts)}}}".encode()).hexdigest()[:_LENGTH]
 
 
 _dumps = json.JSONEncoder(sort_keys=True, separators=(",", ":")).encode

@@ -4,12 +4,13 @@ from __future__ import annotations
 
 from collections.abc import Collection, Iterator, Mapping, Sequence
 from dataclasses import dataclass, replace
+from functools import partial
 
 import numpy as np
 
 from worksheet.device.arrays import Array
 from worksheet.engine.measured import Measured
-from worksheet.model.sheet import Condition, Target
+from worksheet.model.sheet import Condition
 from worksheet.project.case import Case
 from worksheet.project.conditions import ConditionSet
 from worksheet.project.evaluate import Evaluator
@@ -192,6 +193,9 @@ def _within_existence(probe: Probe, pairs: _Pairs) -> _Pairs:
     def room(which: Index, logarithm: Array) -> Array:
         return probe.room(pairs.place[which], pairs.name[which], pairs.at(logarithm, which))
 
+    def among(some: Index, which: Index, logarithm: Array) -> Array:
+        return room(some[which], logarithm)
+
     every = np.arange(len(pairs.place))
     ends = []
     for end in (pairs.low, pairs.high):
@@ -199,7 +203,7 @@ def _within_existence(probe: Probe, pairs: _Pairs) -> _Pairs:
         shorter = end.copy()
         if len(beyond):
             none = np.zeros(len(beyond))
-            shorter[beyond] = brackets.drawn(lambda k, x, b=beyond: room(b[k], x), none, end[beyond], _BOUNDARY)
+            shorter[beyond] = brackets.drawn(partial(among, beyond), none, end[beyond], _BOUNDARY)
         ends.append(shorter)
     return replace(pairs, low=ends[0], high=ends[1])
 
@@ -253,9 +257,7 @@ def _sensitivities(probe: Probe, pairs: _Pairs) -> tuple[dict[str, list[float]],
     return slopes, every[moves]
 
 
-def _look(
-    probe: Probe, pairs: _Pairs, which: Index, logarithm: Array, targets: Collection[str] | None = None
-) -> Seen:
+def _look(probe: Probe, pairs: _Pairs, which: Index, logarithm: Array, targets: Collection[str] | None = None) -> Seen:
     """Targets where pairs are moved, each to a logarithm over its present value; all targets, or some."""
     return probe.see(pairs.place[which], pairs.name[which], pairs.at(logarithm, which), targets)
 
@@ -341,7 +343,9 @@ class _Brackets:
 
         def look(which: Index, logarithm: Array) -> Array:
             place, of_side = self.pairs.place[pair[which]], side[which]
-            sides = [(self.sides[number], of_side == number) for number in np.flatnonzero(np.bincount(of_side))]
+            sides = [
+                (self.sides[number], of_side == number) for number in np.flatnonzero(np.bincount(of_side)).tolist()
+            ]
             seen = _look(self.probe, self.pairs, pair[which], logarithm, {one.target for one, _ in sides})
             found = np.empty(len(which))
             for one, mine in sides:

@@ -43,7 +43,8 @@ def missed_by_value(target: Target, values: Array) -> Mask:
         return np.zeros(np.shape(values), dtype=bool)
     under = None if low is None else values < low - TOLERANCE * abs(low)
     over = None if high is None else values > high + TOLERANCE * abs(high)
-    missed: Mask = over if under is None else under if over is None else under | over
+    found = [mask for mask in (under, over) if mask is not None]
+    missed: Mask = found[0] if len(found) == 1 else found[0] | found[1]
     return missed
 
 
@@ -75,7 +76,8 @@ def distance(target: Target, values: Array) -> Array:
     low, high = target.minimum, target.maximum
     above = None if low is None else (values - low) / (abs(low) or 1.0)
     below = None if high is None else -1.0 * (values - high) / (abs(high) or 1.0)
-    found: Array = below if above is None else above if below is None else np.minimum(above, below)
+    sides = [side for side in (above, below) if side is not None]
+    found: Array = sides[0] if len(sides) == 1 else np.minimum(*sides)
     return found
 
 

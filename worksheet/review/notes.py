@@ -39,8 +39,8 @@ def _reverse_shares(points: Points) -> Iterator[Note]:
             at = points.condition(int(np.argmax(np.where(np.isfinite(spread), spread, 0.0))))
             yield Note(
                 f"{name}.drain_conductance",
-                f"understated by up to {shares[points.number]:.0%}: the {name} device is near the edge of saturation at "
-                f"{at.process}, "
+                f"understated by up to {shares[points.number]:.0%}: the {name} device is near the edge of saturation "
+                f"at {at.process}, "
                 f"{format_quantity(at.temperature, dim.TEMPERATURE)}, {format_quantity(at.supply, dim.VOLTAGE)}",
             )
 

@@ -78,7 +78,7 @@ class Seen:
 
     Attributes:
         targets: By name of the target, over rows; rows of places that do not have it hold nothing of meaning.
-        room: By how much kappa and drain coupling stay below 1 together in all devices; below 0 there are no such devices.
+        room: By how much kappa and drain coupling stay below 1 together; below 0 there are no such devices.
     """
 
     targets: Mapping[str, Measured]
@@ -280,7 +280,8 @@ class _Rows:
         if not self._nominal or name not in _OF_CONDITION or not len(rows):
             return rows
         own = np.array([place.index == 0 for place in self.probe.places])
-        return rows[own[self.place[rows]]]
+        kept: Index = rows[own[self.place[rows]]]
+        return kept
 
     def _follow(self, name: str, number: int, place: Place, column: Array) -> None:
         """Work out a value with a formula where something that it follows is moved."""
@@ -293,7 +294,7 @@ class _Rows:
                 column[rows] = np.broadcast_to(found, (len(rows), len(place.pair.conditions)))[:, at]
 
     def moves(self, number: int, rows: Index, names: Sequence[str]) -> dict[str, Array]:
-        """Moves of a place's pair for rows of that place, of those inputs that move one of the names, or what it follows."""
+        """Moves of a place's pair for some of its rows, of inputs that move one of the names or what it follows."""
         place = self.probe.places[number]
         wanted = {*names, *(used for name in names for used in place.formulas.get(name, ()))}
         found: dict[str, Array] = {}

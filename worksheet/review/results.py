@@ -59,7 +59,7 @@ class EvidenceVerdict(NamedTuple):
 
 
 class Breaking(NamedTuple):
-    """A condition of a target and its room there: relative, plain for a limit of 0; None for a number that is missing."""
+    """A condition of a target and its room there: relative, plain for a limit of 0; None where a number is missing."""
 
     at: Condition
     room: float | None

@@ -22,7 +22,6 @@ from worksheet.project.case import Case
 from worksheet.review.judge import Mask
 from worksheet.solver import goals, ranges
 
-
 _REASONS = {reason.value: reason.text or None for reason in Reason}
 
 
@@ -54,15 +53,15 @@ class Solved:
         return ~broken
 
     def firsts(self, name: str, values: Number) -> list[float | None]:
-        """The nominal number of every sheet for a value of the solution, None where it is not finite. `name` is its own."""
+        """The nominal number of every sheet for a value of the solution, kept by name; None where it is not finite."""
         if name not in self._firsts:
-            numbers: list[float | None] = self._first_column(values)
+            numbers = self._first_column(values)
             if not all(map(isfinite, numbers)):
                 numbers = [number if isfinite(number) else None for number in numbers]
             self._firsts[name] = numbers
         return self._firsts[name]
 
-    def _first_column(self, values: Number) -> list[Any]:
+    def _first_column(self, values: Any) -> list[Any]:
         """The number of every sheet where all is stated and nominal."""
         array = np.asarray(values)
         if array.ndim == 2 and len(array) > 1:

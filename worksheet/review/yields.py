@@ -12,6 +12,7 @@ from __future__ import annotations
 from collections.abc import Iterator, Mapping, Sequence
 from dataclasses import dataclass
 from statistics import NormalDist
+from typing import Any
 
 import numpy as np
 
@@ -66,7 +67,7 @@ class Yields:
 
 @dataclass(frozen=True, eq=False, slots=True)
 class Spread:
-    """One thing that varies: the threshold [V] or the current factor [-] of a device, or a process parameter [its unit].
+    """One thing that varies: threshold [V] or current factor [-] of a device, or a process parameter [its unit].
 
     Attributes:
         owner: The device's name in the stage, or the parameter's qualified name.
@@ -109,9 +110,7 @@ def yields(evaluator: Evaluator, name: str, samples: int, seed: int) -> Yields:
         every += int(np.count_nonzero(together))
     parts = _parts(case, spreads)
     found = {
-        name: _closed_form(case, target, parts[name])
-        if _of_yield(target)
-        else wilson(met[name], samples, parts[name])
+        name: _closed_form(case, target, parts[name]) if _of_yield(target) else wilson(met[name], samples, parts[name])
         for name, target in case.sheet.targets.items()
     }
     return Yields(found, wilson(every, samples) if found else None)
@@ -211,8 +210,9 @@ def _parts(case: Case, spreads: Sequence[Spread]) -> dict[str, tuple[Part, ...]]
 
 def _of_offset(case: Case) -> Iterator[tuple[str, float]]:
     """What each transistor adds to the square of the offset, in closed form. [V^2]"""
-    for device in case.solution.transistors:
-        yield device.name, float(np.reshape(metrics.offset_variance(case.solution, device), -1)[0])
+    solution: Any = case.solution  # of plain arrays where the protocol has arrays or symbols
+    for device in solution.transistors:
+        yield device.name, float(np.reshape(metrics.offset_variance(solution, device), -1)[0])
 
 
 def _shares(variances: Iterator[tuple[str, float]]) -> tuple[Part, ...]:

@@ -64,7 +64,7 @@ def annotated(reader: Reader, key: Key, raw: object, where: str, *, propose: boo
     fields = _beside(reader, key, raw, where, stated)
     if reader.count > before:
         return None
-    return replace(stated, **fields)
+    return replace(stated, **fields) if fields else stated
 
 
 def _bare(reader: Reader, key: Key, raw: object, where: str, line: int | None, *, propose: bool) -> Value | None:
