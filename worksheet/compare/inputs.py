@@ -13,6 +13,7 @@ from worksheet.model.project_keys import SUPPLY, TEMPERATURE
 from worksheet.model.sheet import Process, ProjectFile, Sheet, Value
 from worksheet.model.sheet_keys import ASSUMPTIONS, BIAS_KEYS, SHEET, SOLVE_KEYS
 from worksheet.project.links import values_of
+from worksheet.project.variants import key_of_fingers
 from worksheet.stages import catalogue
 
 _BESIDE = ("low", "high", "standard_error", "source", "trust", "note", "checked_by", "checked")
@@ -57,7 +58,19 @@ def of_project(file: ProjectFile) -> Stated:
     texts = {name: (getattr(file, name), "") for name in ("title", "owner", "process")}
     budgets = {f"budget.{name}.max": (value, "") for name, value in file.budgets.items()}
     requirements = {f"requirement.{number}": (text, "") for number, text in file.requirements.items()}
-    return {**texts, **conditions, **budgets, **requirements}
+    return {**texts, **conditions, **budgets, **requirements, **_chains(file)}
+
+
+def _chains(file: ProjectFile) -> Stated:
+    found: dict[str, tuple[Any, str]] = {}
+    for name, chain in file.chains.items():
+        where = f"chain.{name}"
+        found[f"{where}.sheets"] = (list(chain.sheets), "")
+        found[f"{where}.title"] = (chain.title or None, "")
+        found[f"{where}.settling_tolerance"] = (chain.settling_tolerance, "")
+        for key, target in chain.targets.items():
+            found.update(_fields(f"{where}.{key}", target, {"name", "line"}))
+    return {key: entry for key, entry in found.items() if entry[0] is not None}
 
 
 def of_process(process: Process) -> Stated:
@@ -90,6 +103,11 @@ def of_sheet(sheet: Sheet) -> Stated:
         found[f"solve.{how.name}"] = (getattr(sheet.solve, how.name), _unit(how))
     for name, target in sheet.targets.items():
         found.update(_fields(f"target.{name}", target, {"name", "line"}))
+    for name, variant in sheet.variants.items():
+        for key, value in variant.changes.items():
+            found.update(_value(f"variant.{name}.{key}", value, value.unit or units.get(key, "")))
+        found.update({f"variant.{name}.{key_of_fingers(of)}": (count, "") for of, count in variant.fingers.items()})
+        found[f"variant.{name}.note"] = (variant.note, "")
     for array, attribute in _ENTRIES.items():
         for number, entry in enumerate(getattr(sheet, attribute)):
             found.update(_fields(f"{array}.{number}", entry, {"line"}))

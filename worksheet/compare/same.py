@@ -16,7 +16,7 @@ from worksheet.model.units import UnitError, parse_unit
 
 VALUE, FORMULA, NOTE = "value", "formula", "note"
 TARGET, OWN = "target", "own"
-_NUMBERS = {"assume", "choose", OWN, "bias", TARGET, "device", "corner", "conditions", "budget"}
+_NUMBERS = {"assume", "choose", OWN, "bias", TARGET, "device", "corner", "conditions", "budget", "variant", "chain"}
 
 
 def _keys(table: Table) -> Iterator[Key]:

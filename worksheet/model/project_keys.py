@@ -2,8 +2,11 @@
 
 from __future__ import annotations
 
+from dataclasses import replace
+
 from worksheet.model import dimension as dim
 from worksheet.model.keys import Key, Kind, Table
+from worksheet.model.shared_keys import SETTLING_TOLERANCE, TARGET_KEYS
 
 PROCESS_CORNER = Key(
     "process",
@@ -39,6 +42,54 @@ SUPPLY = Key(
 
 CONDITION = Table("at", "One condition.", keys=(PROCESS_CORNER, TEMPERATURE, SUPPLY))
 """One condition as an inline table (nominal, evidence at, ...); each key holds one value there."""
+
+CHAIN_METRICS = (
+    "dc_gain",
+    "bandwidth",
+    "output_noise",
+    "input_noise",
+    "settling_time",
+    "supply_current",
+    "power",
+    "gate_area",
+)
+"""Metrics that a chain of sheets has as well, under the same key and in the same unit."""
+
+CHAIN = Table(
+    "chain",
+    "Signal paths through several sheets, each with what it must achieve as a whole.",
+    entry=Table(
+        "",
+        "One chain.",
+        keys=(
+            Key("title", "Title", "What the path is, for people.", Kind.TEXT, moves_results=False),
+            Key(
+                "sheets",
+                "Sheets",
+                "The sheets along the path, in the order of the signal; a sheet at most as often as its count says.",
+                Kind.NAME,
+                listed=True,
+                required=True,
+                moves_results=False,
+                example='["element_buffer", "line_driver"]',
+            ),
+            replace(
+                SETTLING_TOLERANCE,
+                help="Share of the final change within which the end of the path counts as settled.",
+                annotated=False,
+                formula=False,
+                moves_results=False,
+            ),
+        ),
+        entry=Table(
+            "",
+            "A limit on what the whole path achieves.",
+            keys=tuple(key for key in TARGET_KEYS if key.name not in ("formula", "unit", "yield")),
+        ),
+        names=f"one of {', '.join(CHAIN_METRICS)}",
+    ),
+    names="a name of your own",
+)
 
 PROJECT = Table(
     "",
@@ -113,6 +164,7 @@ PROJECT = Table(
             ),
             names="the number of a requirement",
         ),
+        CHAIN,
     ),
 )
 """The whole project file."""

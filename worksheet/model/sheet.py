@@ -174,6 +174,20 @@ class Solve:
 
 
 @dataclass(frozen=True, slots=True)
+class Variant:
+    """A named set of changed values beside a sheet.
+
+    `changes` maps a key of [assume], [choose] or [own] to its Value; `fingers` a device's name to a whole number.
+    """
+
+    name: str
+    changes: Mapping[str, Value] = field(default_factory=dict)
+    fingers: Mapping[str, int] = field(default_factory=dict)
+    note: str = ""
+    line: int | None = field(default=None, compare=False)
+
+
+@dataclass(frozen=True, slots=True)
 class Sheet:
     """One circuit block as its file states it.
 
@@ -203,6 +217,7 @@ class Sheet:
     remarks: tuple[Remark, ...] = ()
     acceptances: tuple[Acceptance, ...] = ()
     collisions: tuple[Collision, ...] = ()
+    variants: Mapping[str, Variant] = field(default_factory=dict)
     lines: Mapping[str, int] = field(default_factory=dict, compare=False)
 
 
@@ -240,6 +255,18 @@ class Process:
 
 
 @dataclass(frozen=True, slots=True)
+class Chain:
+    """A signal path through sheets, in the order of the signal. `targets` maps a key of CHAIN_METRICS to its limits."""
+
+    name: str
+    sheets: tuple[str, ...]
+    title: str = ""
+    settling_tolerance: float = 1e-3
+    targets: Mapping[str, Target] = field(default_factory=dict)
+    line: int | None = field(default=None, compare=False)
+
+
+@dataclass(frozen=True, slots=True)
 class ProjectFile:
     """biasbook.toml: `processes`, `temperatures` [K] and `supplies` [V] span the conditions; `budgets` in SI units.
 
@@ -256,4 +283,5 @@ class ProjectFile:
     nominal: Condition
     budgets: Mapping[str, float]
     requirements: Mapping[str, str] = field(default_factory=dict)
+    chains: Mapping[str, Chain] = field(default_factory=dict)
     lines: Mapping[str, int] = field(default_factory=dict, compare=False)

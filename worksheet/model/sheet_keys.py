@@ -8,6 +8,7 @@ from __future__ import annotations
 from worksheet.model import dimension as dim
 from worksheet.model.keys import Key, Kind, Table
 from worksheet.model.project_keys import CONDITION, SUPPLY, TEMPERATURE
+from worksheet.model.shared_keys import AT, SETTLING_TOLERANCE, TARGET_KEYS
 
 DESIGN = (
     Key(
@@ -102,20 +103,7 @@ ASSUMPTIONS = (
         formula=True,
         example="200 mV",
     ),
-    Key(
-        "settling_tolerance",
-        "Settling tolerance",
-        "Share of the final change within which the output counts as settled.",
-        dimension=dim.NUMBER,
-        symbol="eps",
-        low_open=True,
-        high=0.5,
-        high_open=True,
-        default=1e-3,
-        annotated=True,
-        formula=True,
-        example="0.1 %",
-    ),
+    SETTLING_TOLERANCE,
     Key(
         "noise_from",
         "Noise from",
@@ -297,54 +285,6 @@ SOLVE_KEYS = (
     ),
 )
 
-AT = Key(
-    "at",
-    "At",
-    '"nominal", or every condition where left out.',
-    Kind.CHOICE,
-    choices=("all", "nominal"),
-    default="all",
-    moves_results=False,
-)
-
-TARGET_KEYS = (
-    Key("min", "At least", "The least value that is acceptable.", low=None, moves_results=False),
-    Key("max", "At most", "The greatest value that is acceptable.", low=None, moves_results=False),
-    AT,
-    Key(
-        "guard",
-        "Guard",
-        "Wanted beyond the limit, as a fraction of it.",
-        dimension=dim.NUMBER,
-        default=0.0,
-        example="0.1",
-        moves_results=False,
-    ),
-    Key(
-        "yield",
-        "Yield",
-        "Share of parts within the limit; for offset_limit.",
-        dimension=dim.NUMBER,
-        low_open=True,
-        high=1.0,
-        high_open=True,
-        default=0.9973,
-        moves_results=False,
-    ),
-    Key(
-        "formula",
-        "Formula",
-        "A figure of your own over this sheet's names and metrics.",
-        Kind.FORMULA,
-        moves_results=False,
-    ),
-    Key("unit", "Unit", "Unit of a figure of your own; text without a prefix.", Kind.TEXT, moves_results=False),
-    Key("id", "Requirement", "Number of the requirement in the specification.", Kind.TEXT, moves_results=False),
-    Key("source", "Source", "Where the target came from.", Kind.TEXT, moves_results=False),
-    Key("why", "Why", "What the target is for.", Kind.TEXT, moves_results=False),
-)
-"""What a target may say. min and max take the dimension of the metric."""
-
 EVIDENCE = Table(
     "evidence",
     "What a simulation or a bench found.",
@@ -486,6 +426,26 @@ COLLISION = Table(
     repeated=True,
 )
 
+VARIANT = Table(
+    "variant",
+    "Named sets of changed values, to be laid beside the sheet; they move nothing of the sheet itself.",
+    entry=Table(
+        "",
+        "One variant: what it changes of [assume], [choose] and [own], by plain name.",
+        keys=(Key("note", "Note", "What the variant is for, or what came of it.", Kind.TEXT, moves_results=False),),
+        entry=Key(
+            "change",
+            "Change",
+            "The value that the key of this name in [assume], [choose] or [own] has in the variant; no formula.",
+            annotated=True,
+            moves_results=False,
+            example="8 uA",
+        ),
+        names="a key of [assume], [choose] or [own]",
+    ),
+    names="a name of your own",
+)
+
 SHEET = Table(
     "",
     "One circuit block.",
@@ -560,6 +520,7 @@ SHEET = Table(
             entry=Table("", "A target.", keys=TARGET_KEYS),
             names="a metric, or a name of your own with a formula",
         ),
+        VARIANT,
         EVIDENCE,
         WAIVER,
         REMARK,
@@ -587,5 +548,6 @@ __all__ = [
     "SHEET",
     "SOLVE_KEYS",
     "TARGET_KEYS",
+    "VARIANT",
     "WAIVER",
 ]

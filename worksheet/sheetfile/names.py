@@ -9,10 +9,12 @@ from __future__ import annotations
 import re
 from collections.abc import Mapping
 from types import MappingProxyType
+from typing import cast
 
 from worksheet.model import metrics
 from worksheet.model.formula import RESERVED
-from worksheet.model.sheet_keys import SHEET
+from worksheet.model.keys import Table
+from worksheet.model.sheet_keys import SHEET, VARIANT
 from worksheet.model.text import clean, is_identifier
 from worksheet.stages import catalogue
 from worksheet.stages.stage import Stage
@@ -20,7 +22,11 @@ from worksheet.stages.stage import Stage
 _LABEL = re.compile(r"[^\W_]\w*(?:[-.]\w+)*|_\w+")
 _OWN = re.compile(r"[A-Za-z_][A-Za-z0-9_]*")
 _NUMBERS = ("bias", "assume", "choose", "solve")  # tables whose keys a formula reads, or looks as if it read
-_FIXED = frozenset(key.name for table in SHEET.tables if table.name in _NUMBERS for key in table.keys)
+_FIXED = frozenset(
+    key.name
+    for table in (*(one for one in SHEET.tables if one.name in _NUMBERS), cast(Table, VARIANT.entry))
+    for key in table.keys
+)
 _LONGEST = 100
 
 

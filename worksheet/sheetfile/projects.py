@@ -1,4 +1,4 @@
-"""The project file read into a ProjectFile: conditions, budgets and requirements."""
+"""The project file read into a ProjectFile: conditions, budgets, requirements and chains."""
 
 from __future__ import annotations
 
@@ -13,6 +13,7 @@ from worksheet.model.project_keys import PROJECT
 from worksheet.model.sheet import ProjectFile
 from worksheet.model.text import clean, nearest
 from worksheet.sheetfile.annotated import listed
+from worksheet.sheetfile.chains import read_chains
 from worksheet.sheetfile.locate import below
 from worksheet.sheetfile.names import label_problem
 from worksheet.sheetfile.reader import Reader, found
@@ -37,6 +38,7 @@ def build(reader: Reader, source: Source) -> ProjectFile | None:
     conditions = _conditions(reader, data)
     budgets = _budgets(reader, data)
     requirements = _requirements(reader, data)
+    chains = read_chains(reader, data)
     if reader.problems:
         return None
     return ProjectFile(
@@ -50,6 +52,7 @@ def build(reader: Reader, source: Source) -> ProjectFile | None:
         nominal=conditions["nominal"],
         budgets=MappingProxyType(budgets),
         requirements=MappingProxyType(requirements),
+        chains=MappingProxyType(chains),
         lines=MappingProxyType(source.places.lines),
     )
 

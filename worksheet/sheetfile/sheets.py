@@ -40,6 +40,7 @@ from worksheet.sheetfile.targets import (
     read_waivers,
 )
 from worksheet.sheetfile.values import READERS, subtable, table
+from worksheet.sheetfile.variants import read_variants
 from worksheet.stages import catalogue
 from worksheet.stages.stage import MAIN, Stage
 
@@ -68,6 +69,7 @@ def build(reader: Reader, source: Source, name: str) -> Sheet | None:
     own = _own(reader, data)
     solve = table(reader, PARTS[SOLVE], subtable(reader, data.get(SOLVE, {}), SOLVE), SOLVE)
     targets, dimensions = read_targets(reader, keys.stage, own, data.get(TARGET, {}))
+    variants = read_variants(reader, keys, own, choose, data)
     evidence = read_evidence(reader, keys.stage, dimensions, data)
     waivers = read_waivers(reader, dimensions, data)
     remarks = read_remarks(reader, data)
@@ -93,6 +95,7 @@ def build(reader: Reader, source: Source, name: str) -> Sheet | None:
         remarks=remarks,
         acceptances=acceptances,
         collisions=collisions,
+        variants=MappingProxyType(variants),
         lines=MappingProxyType(source.places.lines),
         **{key: value for key, value in fields.items() if key in _FIELDS},
     )

@@ -61,7 +61,7 @@ def read_targets(
             continue
         else:
             dimensions[name] = _unit(reader, entry, where)
-        target = _target(reader, name, entry, where, dimensions[name])
+        target = read_target(reader, name, entry, where, dimensions[name])
         if target is not None:
             targets[name] = target
     return targets, dimensions
@@ -99,10 +99,10 @@ def _unit(reader: Reader, entry: Mapping[str, Any], where: str) -> Dimension | N
     return free_dimension(unit.strip())
 
 
-def _target(
+def read_target(
     reader: Reader, name: str, entry: Mapping[str, Any], where: str, dimension: Dimension | None
 ) -> Target | None:
-    """One target."""
+    """One target, or None with its problems reported. `dimension` is that of its limits."""
     before = reader.count
     metric = metrics.find(name)
     fields: dict[str, Any] = {}
