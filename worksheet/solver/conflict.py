@@ -2,13 +2,13 @@
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+from collections.abc import Mapping, Sequence
 
 import numpy as np
 
 from worksheet.solver import goals
 from worksheet.solver.propose import Free
-from worksheet.solver.results import Conflict
+from worksheet.solver.results import Conflict, Window
 from worksheet.solver.search import Search
 from worksheet.solver.subject import scalar
 from worksheet.solver.trials import Trials, holds
@@ -31,25 +31,57 @@ def conflict(trials: Trials, free: Free) -> Conflict:
     alone = [k for k in targets if not _possible(trials, free, [k, *limits])]
     excluding = alone[:1] if alone else _minimal(trials, free, targets, limits)
     involved = tuple(dict.fromkeys(names[k] for k in excluding))
-    gives = {name: _best(trials, free, name, [k for k in targets if names[k] != name], limits) for name in involved}
+    own = {name: next(k for k in excluding if names[k] == name) for name in involved}
+    gives = {name: _best(trials, free, k, [i for i in targets if names[i] != name], limits) for name, k in own.items()}
     return Conflict(
         variable="bias_current" if free.by_inversion or not free.names else free.names[0],
         targets=involved,
         gives_way=gives,
         reachable_with=_reachable(trials, free),
         explain=_explain(involved, bool(alone)),
-        wanted={name: _limit(trials, _own(trials, name)) for name in involved},
+        wanted={name: _limit(trials, k) for name, k in own.items()},
     )
 
 
-def at_present(trials: Trials, free: Free) -> Conflict:
-    """What the sheet as it stands misses, where there is no recommended point to look for."""
+def at_present(trials: Trials, free: Free, windows: Mapping[str, Window]) -> Conflict:
+    """What the sheet as it stands misses, where there is no recommended point to look for.
+
+    Args:
+        trials: The sheet's constraints.
+        free: What a recommended point would be free in.
+        windows: What is needed of each variable.
+    """
     current = np.array([scalar(trials.subject.value("bias_current"))])
     met = holds(trials.constraints, trials.clear({"bias_current": current}).slack)[:, 0]
-    missed = tuple(dict.fromkeys(c.name for c, good in zip(trials.constraints, met, strict=True) if not good))
-    targets = tuple(name for name in missed if name in trials.subject.sheet.targets)
-    explain = f"the present point misses {', '.join(missed)}"
-    return Conflict("bias_current", targets, dict.fromkeys(targets), _reachable(trials, free), explain)
+    missed = [k for k, good in enumerate(met) if not good]
+    names = tuple(dict.fromkeys(trials.constraints[k].name for k in missed))
+    limits = list(range(trials.target_count, len(trials.constraints)))
+    targets = [k for k in missed if k < trials.target_count]
+    others = {k: [i for i in range(trials.target_count) if trials.constraints[i].name != trials.constraints[k].name]
+              for k in targets}  # fmt: skip
+    return Conflict(
+        variable="bias_current",
+        targets=tuple(dict.fromkeys(trials.constraints[k].name for k in targets)),
+        gives_way={
+            trials.constraints[k].name: _best(trials, free, k, others[k], limits) if free.names else None
+            for k in reversed(targets)
+        },
+        reachable_with=_alone(windows),
+        explain=f"the present point misses {', '.join(names)}",
+        wanted={trials.constraints[k].name: _limit(trials, k) for k in reversed(targets)},
+    )
+
+
+def _alone(windows: Mapping[str, Window]) -> dict[str, float]:
+    """The nearest value of one variable at which, moved alone, everything holds."""
+    for name, window in windows.items():
+        region = window.region
+        if region is None or window.cannot_help:
+            continue
+        nearest = region.low if region.low is not None and window.present < region.low else region.high
+        if nearest is not None:
+            return {name: nearest}
+    return {}
 
 
 def _possible(trials: Trials, free: Free, wanted: Sequence[int]) -> bool:
@@ -66,11 +98,6 @@ def _minimal(trials: Trials, free: Free, targets: list[int], limits: list[int]) 
     return kept
 
 
-def _own(trials: Trials, name: str) -> int:
-    """The constraint that a target is asked to give way at: the first of its limits."""
-    return next(k for k, c in enumerate(trials.constraints) if c.name == name)
-
-
 def _limit(trials: Trials, index: int) -> float:
     """The limit of a target's constraint, guard band counted. [its unit]"""
     constraint = trials.constraints[index]
@@ -81,9 +108,8 @@ def _limit(trials: Trials, index: int) -> float:
     return limit
 
 
-def _best(trials: Trials, free: Free, name: str, others: list[int], limits: list[int]) -> float | None:
-    """Best reachable value of a target with all others held, None where those exclude each other. [its unit]"""
-    own = _own(trials, name)
+def _best(trials: Trials, free: Free, own: int, others: list[int], limits: list[int]) -> float | None:
+    """Best reachable value of one side of a target with others held, None where those exclude each other. [its unit]"""
     place = Search(trials, free.space(), [*others, *limits]).greatest(own)
     if place is None:
         return None

@@ -20,7 +20,7 @@ _PROBE = 1e-7
 _ROUNDS = 40
 _LAST_REACH = 1e-8
 _SHARES = np.array([1.0, 0.5, 0.2, 0.05])
-_MOST_NEAR = 14
+_MOST_NEAR, _FEW_NEAR, _MANY = 14, 9, 5
 _SETTLED = 1e-10
 _FLAT, _MARGIN = 1e-9, 5e-10
 """By how much a step stays off every line."""
@@ -96,7 +96,7 @@ def _corner(slack: Array, slopes: Array, down: Array, reach: float, room: Array)
     least = slack + np.minimum(slopes * low, slopes * high).sum(axis=1)
     near: Index = np.flatnonzero(least < 0)
     near = near[np.argsort(slack[near])][: _MOST_NEAR * 3]
-    near = _distinct(slopes[near], slack[near], near)[:_MOST_NEAR]
+    near = _distinct(slopes[near], slack[near], near)[: _MOST_NEAR if count < _MANY else _FEW_NEAR]
     rows = np.concatenate([slopes[near], np.eye(count), -np.eye(count)])
     offsets = np.concatenate([slack[near], -low, high])
     chosen = np.array(list(combinations(range(len(rows)), count)))

@@ -35,17 +35,18 @@ def solve(subject: Subject, over: str | None = None) -> Solved:
     present = _present_meets(trials)
     none_to_find = best.recommended is None and best.reason in (propose.NO_BOUND, propose.NOTHING_FREE)
     feasible = best.recommended is not None or (none_to_find and present)
+    needed = windows(trials)
     found: Conflict | None = None
     if not feasible and not none_to_find:
         found = conflict.conflict(trials, best.free)
     elif not feasible:
-        found = conflict.at_present(trials, best.free)
+        found = conflict.at_present(trials, best.free, needed)
     return Solved(
         sheet=subject.sheet.name,
         over=trials.over,
         feasible=feasible,
         reason=best.reason,
-        needed=windows(trials),
+        needed=needed,
         recommended=best.recommended,
         compact=best.compact,
         conflict=found,
@@ -57,7 +58,7 @@ def solve(subject: Subject, over: str | None = None) -> Solved:
 def windows(trials: Trials) -> Mapping[str, Window]:
     """The window of every design variable that some target bounds, with the others held."""
     axes = [axis_of(trials.subject, variable) for variable in variables(trials.subject).values()]
-    followed = [axis for axis in axes if _follows(trials.subject, axis.variable.name)]
+    followed = [axis for axis in axes if _alone(trials, axis.variable.name)]
     plain = [axis for axis in axes if axis not in followed]
     batches = [plain, *([axis] for axis in followed)] if plain else [[axis] for axis in followed]
     found = {w.name: w for batch in batches for w in window.windows(trials, batch) if w is not None}
@@ -78,10 +79,10 @@ def kept_inversion(subject: Subject) -> float:
     return subject.sheet.solve.inversion_coefficient or inversion(subject)
 
 
-def _follows(subject: Subject, name: str) -> bool:
-    """Whether a variable's value is a formula, which others moving would change."""
-    stated = subject.stated(name)
-    return stated is not None and stated.formula is not None
+def _alone(trials: Trials, name: str) -> bool:
+    """Whether a variable must not be held while others move: it follows a formula, or has ends of a range."""
+    stated = trials.subject.stated(name)
+    return name in trials.vertices or (stated is not None and stated.formula is not None)
 
 
 def axis_of(subject: Subject, variable: Variable) -> Axis:

@@ -3,6 +3,8 @@
 Coordinates are logarithms. Along the first one, slack is close to a straight line between samples, so that a window
 narrower than the scan is still seen; whatever is found is then refined on the true slack. Few conditions bind: only
 those are solved while it looks, and whatever it comes to is then held against all of them.
+
+Length: one search; its steps share what it knows of the conditions that bind.
 """
 
 from __future__ import annotations
@@ -16,20 +18,20 @@ import numpy as np
 
 from worksheet.device.arrays import Array
 from worksheet.solver import descent
+from worksheet.solver.scan import FARTHEST, FINER, read
 from worksheet.solver.trials import Mask, Trials, holds, tolerances
 
 Moves = Mapping[str, Array]
-_SCAN, _FINER, _LOCAL = 33, 8, 9
+_SCAN, _LOCAL = 33, 9
 _COARSE = {0: 1, 1: 41, 2: 13, 3: 9}
 _ZOOM = {1: (9, 12, 0.3), 2: (5, 18, 0.45), 3: (5, 18, 0.45)}
 """Points along each further coordinate, rounds, and by how much each round is closer, by the number of them."""
 
-_BEFORE_DESCENT = 4
-"""Rounds after which a place that holds is improved along its slopes."""
+_BEFORE_DESCENT, _BEFORE_RAISING, _LEAST_REACH = 4, 7, 0.1
+"""Rounds after which a place that holds is improved along its slopes, and one that does not is brought nearer to it."""
 
 _WIDE_FIRST, _WIDE_REST = 61, {1: 41, 2: 9}
-_CLIMB_POINTS, _CLIMB_ROUNDS, _CLIMB_SHRINK = 5, 24, 0.6
-_FARTHEST = 1e12
+_CLIMB_POINTS, _CLIMB_ROUNDS, _CLIMB_SHRINK = 5, 8, 0.6
 _CLOSE = 0.02
 """Of a round's span, how close the first coordinate is found."""
 
@@ -180,7 +182,7 @@ class Search:
             at_near = self._best(near[None, 1:], value, cap, (float(near[0]), near[1:], 0.0), 1e-3)
             best = min(at_near, best, key=lambda b: (b[2] < 0 or b[0] > cap + 1e-9, value(*_one(b))[0]))
         for k in range(rounds):
-            if k >= _BEFORE_DESCENT and best[2] >= 0:
+            if k >= (_BEFORE_DESCENT if best[2] >= 0 else _BEFORE_RAISING):
                 break
             around = [
                 (max(c - s, low), min(c + s, high))
@@ -189,9 +191,36 @@ class Search:
             places = np.concatenate([best[1][None], self._grid(around, points)])
             best = self._best(places, value, cap, best, float(span.max()))
             span = span * shrink
+        if best[2] < 0:
+            best = self._raised(best, float(np.max(span, initial=_LEAST_REACH)))
         if best[2] >= 0 and dimensions:
             best = self._descended(best, value, cap, float(span.max()))
         return self._polished(best)
+
+    def _every(self, places: Array) -> Array:
+        """Slack of the wanted constraints at every point, and of every limit; shape (slacks, places)."""
+        first, rest = places[:, 0], places[:, 1:]
+        every = self._trials.every(self._space.moves(first, rest), self._wanted)
+        return np.concatenate([every, self._space.rooms(first, rest)])
+
+    def _raised(self, best: tuple[float, Array, float], reach: float) -> tuple[float, Array, float]:
+        """A place near the best of the zoom at which the least slack is greater, where nothing holds there."""
+
+        def every(places: Array) -> Array:
+            return self._every(places[:, 1:])
+
+        def restored(places: Array, _reach: float) -> tuple[Array, Mask]:
+            least = np.min(every(places), axis=0)
+            return np.column_stack([least, places[:, 1:]]), np.isfinite(least)
+
+        spans = np.array([(-FARTHEST, FARTHEST), self._space.first, *self._space.rest])
+        start = np.array([0.0, best[0], *best[1]])
+        start[0] = float(np.min(every(start[None])))
+        slope = descent.Slope(lambda places: every(places) - places[:, 0], lambda places: -places[:, 0], restored)
+        end = descent.improved(slope, start, spans, reach)
+        if end[0] <= best[2]:
+            return best
+        return float(end[1]), end[2:], 0.0 if end[0] >= 0 else float(end[0])
 
     def _descended(
         self, best: tuple[float, Array, float], value: Callable[[Array, Array], Array], cap: float, reach: float
@@ -199,10 +228,8 @@ class Search:
         """A place that the score falls to from the best of the zoom."""
 
         def slack(places: Array) -> Array:
-            first, rest = places[:, 0], places[:, 1:]
-            every = self._trials.every(self._space.moves(first, rest), self._wanted)
-            capped = (cap - first)[None] if np.isfinite(cap) else np.zeros((0, len(first)))
-            return np.concatenate([every, self._space.rooms(first, rest), capped])
+            capped = (cap - places[:, 0])[None] if np.isfinite(cap) else np.zeros((0, len(places)))
+            return np.concatenate([self._every(places), capped])
 
         def restored(places: Array, reach: float) -> tuple[Array, Mask]:
             span = max(reach, 1e-9)
@@ -221,7 +248,7 @@ class Search:
         bounds = [self._space.first, *self._space.rest]
         counts = [_WIDE_FIRST, *([_WIDE_REST.get(len(self._space.rest), 5)] * len(self._space.rest))]
         places = np.array(list(product(*(np.linspace(*b, n) for b, n in zip(bounds, counts, strict=True)))))
-        best, most = self._most(np.concatenate([start[None], places]), index)
+        best, most = self._most(np.concatenate([start[None], self._scan_best(index), places]), index)
         span = np.array([(b[1] - b[0]) / max(n - 1, 1) for b, n in zip(bounds, counts, strict=True)])
         for _ in range(_CLIMB_ROUNDS):
             axes = [
@@ -230,7 +257,27 @@ class Search:
             ]
             best, most = self._most(np.concatenate([best[None], np.array(list(product(*axes)))]), index)
             span = span * _CLIMB_SHRINK
-        return best, most
+
+        def score(places: Array) -> Array:
+            return np.asarray(-self._trials.clear(self._space.moves(places[:, 0], places[:, 1:]), [index]).slack[0])
+
+        def restored(places: Array, _reach: float) -> tuple[Array, Mask]:
+            good: Mask = np.asarray(self.feasible(self.slack(places[:, 0], places[:, 1:])), dtype=np.bool_)
+            return places, good
+
+        end = descent.improved(descent.Slope(self._every, score, restored), best, np.array(bounds), float(span.max()))
+        gained = -float(score(end[None])[0])
+        return (end, gained) if gained > most else (best, most)
+
+    def _scan_best(self, index: int) -> Array:
+        """The place of the scan where the wanted hold with the most slack of one constraint, if there is one."""
+        places = self._coarse_places()
+        samples, scanned = self._scanned(places)
+        good = self.feasible(scanned)
+        if not good.any():
+            return np.zeros((0, 1 + len(self._space.rest)))
+        k = int(np.argmax(np.where(good, self._survey(places)[index], -np.inf)))
+        return np.array([[samples.reshape(-1)[k], *places[k // _SCAN]]])
 
     def _most(self, places: Array, index: int) -> tuple[Array, float]:
         first, rest = places[:, 0], places[:, 1:]
@@ -278,13 +325,13 @@ class Search:
         reach = _STEEPEST * span
         if known is None or reach > 3 * whole:
             samples, scanned = self._scanned(places)
-            read = _read(samples, scanned + self._allowed)
+            seen = read(samples, scanned + self._allowed)
             step = np.full(len(places), whole)
         else:
             step = np.full(len(places), max(2 * reach / (_LOCAL - 1), 1e-9))
-            read = self._look(places, np.full(len(places), known[0] - reach), step)
-        first, slack, missed = read
-        step = step / _FINER
+            seen = self._look(places, np.full(len(places), known[0] - reach), step)
+        first, slack, missed = seen
+        step = step / FINER
         enough = max(_CLOSE * span, 1e-10)
         for _ in range(_LOOKS):
             if np.all(step <= enough):
@@ -292,7 +339,7 @@ class Search:
             thought = slack >= 0
             first, slack, missed = self._look(places, first - 2 * step, 4 * step / (_LOCAL - 1))
             astray = missed | (thought & (slack < 0))
-            step = np.where(astray, 2.0 * step, 4 * step / (_LOCAL - 1) / _FINER)
+            step = np.where(astray, 2.0 * step, 4 * step / (_LOCAL - 1) / FINER)
         return first, slack
 
     def _scanned(self, places: Array) -> tuple[Array, Array]:
@@ -301,19 +348,23 @@ class Search:
         The coarse places are looked at once for all searches over the same freedoms.
         """
         samples = np.broadcast_to(np.linspace(*self._space.first, _SCAN), (len(places), _SCAN))
+        return samples, self._survey(places)[[*self._wanted, -1]]
+
+    def _survey(self, places: Array) -> Array:
+        """Slack of all constraints and of the room over the whole first coordinate at each place."""
         key = (self._space.first, self._space.rest, frozenset(self._all.binding), places.tobytes())
         if key not in self._all.surveys:
-            first, rest = samples.reshape(-1), np.repeat(places, _SCAN, axis=0)
+            first, rest = np.tile(np.linspace(*self._space.first, _SCAN), len(places)), np.repeat(places, _SCAN, axis=0)
             cleared = self._trials.clear(self._space.moves(first, rest))
             self._all.surveys[key] = np.concatenate([cleared.slack, self._room(first, rest)[None]])
-        return samples, self._all.surveys[key][[*self._wanted, -1]]
+        return self._all.surveys[key]
 
     def _look(self, places: Array, start: Array, step: Array) -> tuple[Array, Array, Mask]:
         """Sample the first coordinate around each place; what _read says of it."""
         low, high = self._space.first
         samples = np.minimum(np.maximum(start, low)[:, None] + step[:, None] * np.arange(_LOCAL), high)
         slack = self.slack(samples.reshape(-1), np.repeat(places, _LOCAL, axis=0))
-        first, least, at_end = _read(samples, slack + self._allowed)
+        first, least, at_end = read(samples, slack + self._allowed)
         return first, least, at_end & (first > low)
 
     def _polished(self, best: tuple[float, Array, float]) -> Found:
@@ -360,24 +411,3 @@ class Search:
 def _one(place: tuple[float, Array, float]) -> tuple[Array, Array]:
     """A place as (first, rest) over one trial."""
     return np.array([place[0]]), place[1][None]
-
-
-def _read(samples: Array, slack: Array) -> tuple[Array, Array, Mask]:
-    """Least feasible value between samples, slack there, and whether that is the first sample already."""
-    rows, count = samples.shape
-    slack = np.clip(slack, -_FARTHEST, _FARTHEST)  # nothing can be interpolated towards infinity
-    slack = slack.reshape(-1, rows, count)
-    grid = np.linspace(0, count - 1, (count - 1) * _FINER + 1)
-    base = np.minimum(grid.astype(int), count - 2)
-    share = grid - base
-    between = slack[..., base] * (1 - share) + slack[..., base + 1] * share
-    least = np.min(between, axis=0)
-    fine = samples[:, base] * (1 - share) + samples[:, base + 1] * share
-    good = least >= 0
-    any_good = good.any(axis=1)
-    k = np.where(any_good, np.argmax(good, axis=1), np.argmax(least, axis=1))
-    each, before = np.arange(rows), np.maximum(k - 1, 0)
-    here, short = np.maximum(between[:, each, k], 0.0), between[:, each, before]
-    back = np.where(short < 0, here / np.where(short < 0, here - short, 1.0), 1.0).min(axis=0)
-    first = fine[each, k] - np.where(any_good & (k > 0), back, 0.0) * (fine[each, k] - fine[each, before])
-    return first, np.where(any_good, 0.0, least[each, k]), any_good & (k == 0)
