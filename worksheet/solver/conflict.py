@@ -131,7 +131,7 @@ def _reachable(trials: Trials, free: Free) -> dict[str, float]:
     for name in _HELPERS:
         if name in free.names or name not in every or name in free.subject.sheet.assume:
             continue
-        wider = Free(free.subject, every, (*free.names, name))
+        wider = Free(free.subject, every, (*free.names, name), apart=True)
         found = Search(trials, wider.space()).least()
         if found.feasible:
             return {name: _nearest(trials, wider, name, wider.place(found)[name])}

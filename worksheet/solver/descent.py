@@ -42,6 +42,9 @@ class Slope:
     restored: Callable[[Array, float], tuple[Array, Mask]]
 
 
+_Lines = tuple[Array, Array, Array, Mask]
+
+
 def improved(slope: Slope, start: Array, spans: Array, reach: float) -> Array:
     """A place with a lower score, where there is one nearby.
 
@@ -54,31 +57,40 @@ def improved(slope: Slope, start: Array, spans: Array, reach: float) -> Array:
     place, best = start, float(slope.score(start[None])[0])
     for _ in range(_ROUNDS):
         lines = _lines(slope, place)
-        step = _corner(*lines, reach, spans - place[:, None])
+        step = _corner(*lines[:3], reach, spans - place[:, None])
         if -step @ lines[2] < _SETTLED * (1.0 + abs(best)) or reach < _LAST_REACH:
             break
-        tried = np.clip(place + _SHARES[:, None] * step, *spans.T)
+        steps = np.concatenate([_bent(slope, place, step, lines, reach, spans)[None], _SHARES[:, None] * step])
+        tried = np.clip(place + steps, *spans.T)
         found, good = slope.restored(tried, reach)
         scores = np.where(good, slope.score(found), np.inf)
         k = int(np.argmin(scores))
         if scores[k] < best:
             place, best = found[k], float(scores[k])
-            reach = min(reach * (2.0, 0.5, 0.25, 0.1)[k], 1.0)
+            reach = min(reach * (2.0, 2.0, 0.5, 0.25, 0.1)[k], 1.0)
         else:
             reach *= 0.1
     return place
 
 
-def _lines(slope: Slope, place: Array) -> tuple[Array, Array, Array]:
-    """Slacks at a place, their slopes, shape (slacks, coordinates), and the score's slopes."""
+def _bent(slope: Slope, place: Array, step: Array, lines: _Lines, reach: float, spans: Array) -> Array:
+    """A step corrected for the bend of what it was reckoned from: the lines are moved to what its end clears."""
+    _, slopes, down, fine = lines
+    at_end = slope.slack(np.clip(place + step, *spans.T)[None])[fine, 0]
+    known = np.isfinite(at_end)
+    return _corner(at_end[known] - _MARGIN - slopes[known] @ step, slopes[known], down, reach, spans - place[:, None])
+
+
+def _lines(slope: Slope, place: Array) -> _Lines:
+    """Slacks at a place, their slopes, shape (slacks, coordinates), the score's slopes, and which slacks have any."""
     count = len(place)
     probes = np.concatenate([place[None], place + _PROBE * np.eye(count), place - _PROBE * np.eye(count)])
     slack, score = slope.slack(probes), slope.score(probes)
     with np.errstate(all="ignore"):
         slopes = (slack[:, 1 : 1 + count] - slack[:, 1 + count :]) / (2.0 * _PROBE)
     down = (score[1 : 1 + count] - score[1 + count :]) / (2.0 * _PROBE)
-    fine = np.isfinite(slopes).all(axis=1) & np.isfinite(slack[:, 0]) & (np.abs(slopes).max(axis=1) > _FLAT)
-    return slack[fine, 0] - _MARGIN, slopes[fine], down
+    fine: Mask = np.isfinite(slopes).all(axis=1) & np.isfinite(slack[:, 0]) & (np.abs(slopes).max(axis=1) > _FLAT)
+    return slack[fine, 0] - _MARGIN, slopes[fine], down, fine
 
 
 def _corner(slack: Array, slopes: Array, down: Array, reach: float, room: Array) -> Array:

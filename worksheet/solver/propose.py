@@ -38,12 +38,14 @@ class Free:
         variables: Its design variables.
         names: What may move.
         bias: What goes with that of the current source's transistor, None where nothing does.
+        apart: Whether width and length are coordinates of their own also where the current is not free.
     """
 
     subject: Subject
     variables: Mapping[str, Variable]
     names: tuple[str, ...]
     bias: BiasSize | None = None
+    apart: bool = False
 
     @property
     def followers(self) -> Mapping[str, str]:
@@ -58,7 +60,7 @@ class Free:
     @property
     def by_area(self) -> bool:
         """Whether width and length are free and the current is not: then gate area and aspect ratio are coordinates."""
-        return "bias_current" not in self.names and "width" in self.names and "length" in self.names
+        return not self.apart and {"width", "length"} <= set(self.names) and "bias_current" not in self.names
 
     def space(self) -> Space:
         """The search space of these freedoms."""

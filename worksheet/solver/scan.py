@@ -23,19 +23,41 @@ def read(samples: Array, slack: Array) -> tuple[Array, Array, Mask]:
         least one is the first sample already
     """
     rows, count = samples.shape
-    slack = np.clip(slack, -FARTHEST, FARTHEST)  # nothing can be interpolated towards infinity
-    slack = slack.reshape(-1, rows, count)
+    each = np.arange(rows)
+    slack = np.clip(slack, -FARTHEST, FARTHEST).reshape(-1, rows, count)  # nothing can be interpolated towards infinity
+    begins, ends = _stretches(slack[..., :-1], slack[..., 1:])
+    good = begins <= ends
+    any_good: Mask = np.asarray(good.any(axis=1))
+    at = np.argmax(good, axis=1)
+    first = samples[each, at] + begins[each, at] * (samples[each, at + 1] - samples[each, at])
+    if any_good.all():
+        return first, np.zeros(rows), np.asarray((at == 0) & (begins[each, at] <= 0))
+    best, least = _best(samples, slack)
+    at_end: Mask = np.asarray(any_good & (at == 0) & (begins[each, at] <= 0))
+    return np.where(any_good, first, best), np.where(any_good, 0.0, least), at_end
+
+
+def _stretches(left: Array, right: Array) -> tuple[Array, Array]:
+    """From where to where, between neighbouring samples, all constraints hold; begin past end where they do not.
+
+    Args:
+        left, right: Slack at both samples, shape (constraints, places, stretches).
+    Returns: begin and end as shares of the stretch, shape (places, stretches)
+    """
+    with np.errstate(all="ignore"):
+        crossing = left / (left - right)
+    begins = np.where(left >= 0, 0.0, np.where(right >= 0, crossing, 2.0)).max(axis=0)
+    ends = np.where(right >= 0, 1.0, np.where(left >= 0, crossing, -1.0)).min(axis=0)
+    return np.asarray(begins), np.asarray(ends)
+
+
+def _best(samples: Array, slack: Array) -> tuple[Array, Array]:
+    """Where the least slack is greatest, among the samples and some places between, and that slack."""
+    count = samples.shape[1]
     grid = np.linspace(0, count - 1, (count - 1) * FINER + 1)
     base = np.minimum(grid.astype(int), count - 2)
     share = grid - base
-    between = slack[..., base] * (1 - share) + slack[..., base + 1] * share
-    least = np.min(between, axis=0)
+    least = np.min(slack[..., base] * (1 - share) + slack[..., base + 1] * share, axis=0)
     fine = samples[:, base] * (1 - share) + samples[:, base + 1] * share
-    good = least >= 0
-    any_good = good.any(axis=1)
-    k = np.where(any_good, np.argmax(good, axis=1), np.argmax(least, axis=1))
-    each, before = np.arange(rows), np.maximum(k - 1, 0)
-    here, short = np.maximum(between[:, each, k], 0.0), between[:, each, before]
-    back = np.where(short < 0, here / np.where(short < 0, here - short, 1.0), 1.0).min(axis=0)
-    first = fine[each, k] - np.where(any_good & (k > 0), back, 0.0) * (fine[each, k] - fine[each, before])
-    return first, np.where(any_good, 0.0, least[each, k]), any_good & (k == 0)
+    k, each = np.argmax(least, axis=1), np.arange(len(samples))
+    return fine[each, k], np.minimum(least[each, k], -1e-300)
