@@ -13,14 +13,13 @@ from typing import NamedTuple
 import numpy as np
 
 from worksheet.device.arrays import Array
-from worksheet.engine.measured import Measured
-from worksheet.model.sheet import Target
-from worksheet.review.judge import distance, reads_as_missed
 from worksheet.review.results import Breaking, Cause
 from worksheet.review.solved import Points
 
 MOST = 3
 """Conditions that are listed; of those with the same room the first alone."""
+
+_DIGITS = 9
 
 RANGE = "range"
 """The cause that is no axis of the conditions: an assumption at an end of its range."""
@@ -33,28 +32,24 @@ class First(NamedTuple):
     cause: Cause | None = None
 
 
-def breaks_first(points: Points, target: Target, measured: Measured) -> First:
+def breaks_first(points: Points, room: Array, worst: int | None) -> First:
     """Find which valid conditions are nearest to breaking a target.
 
     Args:
         points: The solved sheet.
-        target: The target.
-        measured: What it is about, over the points.
-    Returns: nothing for a target that looks at the nominal condition alone
+        room: Of the target over its points, see judge.Judgement.
+        worst: The point that is worst; among conditions with the same room it is the one that is listed.
     """
-    if target.at == "nominal" or len(points.valid) == 1:
+    if len(room) == 1 or worst is None:
         return First()
-    room = distance(target, measured.values)
-    if measured.reasons is not None:
-        room = np.where(reads_as_missed(target, measured), -np.inf, np.where(np.isnan(room), np.inf, room))
-    if not points.all_valid:
-        room = np.where(points.valid, room, np.inf)
-    table = room.reshape(points.shape)
+    table = room.round(_DIGITS).reshape(points.shape)  # what differs by rounding alone is the same
     least = table[0] if len(table) == 1 else np.minimum.reduce(table, axis=0)
     order = least.argsort(kind="stable")
     rising = least[order]
     steps = [0, *((rising[1:] > rising[:-1]).nonzero()[0][: MOST - 1] + 1).tolist()]  # of equals the first alone
     places, rooms = order[steps].tolist(), rising[steps].tolist()
+    if least[worst % points.shape[1]] == rooms[0]:
+        places[0] = worst % points.shape[1]
     found = [Breaking(points.condition(k), _number(r)) for k, r in zip(places, rooms, strict=True) if r < np.inf]
     return First(tuple(found), _cause(points, table))
 

@@ -19,6 +19,8 @@ from worksheet.solver.goals import TOLERANCE, limits
 
 Mask = NDArray[np.bool_]
 
+NONE_VALID = "no condition is valid"
+
 
 class Judgement(NamedTuple):
     """What a target's values over points come to.
@@ -28,12 +30,15 @@ class Judgement(NamedTuple):
         worst: Index of the worst valid point, None where there is none.
         invalid: Number of points that are not valid.
         reason: Why, where the numbers do not say it.
+        room: Relative distance to the nearer limit over the points, plain for a limit of 0: -inf for a number that does
+            not exist and counts as missed, inf for any other that does not count.
     """
 
     verdict: str
     worst: int | None
     invalid: int
     reason: str | None
+    room: Array
 
 
 def missed_by_value(target: Target, values: Array) -> Mask:
@@ -91,22 +96,34 @@ def judge(target: Target, measured: Measured, valid: Mask) -> Judgement:
     Returns: Judgement
     """
     values = measured.values
-    missed, absent = missed_by_value(target, values), ~np.isfinite(values)
+    missed, room = missed_by_value(target, values), distance(target, values)
     invalid = len(values) - int(np.count_nonzero(valid))
-    if not invalid and not absent.any():
-        return Judgement(MISSED if missed.any() else MET, int(distance(target, values).argmin()), 0, None)
+    if not measured.complete:
+        return _incomplete(target, measured, valid, missed, room)
+    if invalid:
+        missed, room = missed & valid, np.where(valid, room, np.inf)
+    verdict = MISSED if missed.any() else UNKNOWN if invalid else MET
+    if invalid == len(values):
+        return Judgement(verdict, None, invalid, NONE_VALID, room)
+    reason = _some_invalid(invalid, len(values)) if verdict == UNKNOWN else None
+    return Judgement(verdict, int(room.argmin()), invalid, reason, room)
+
+
+def _incomplete(target: Target, measured: Measured, valid: Mask, missed: Mask, room: Array) -> Judgement:
+    """As judge, where some numbers do not exist."""
+    absent, invalid = ~np.isfinite(measured.values), int(np.count_nonzero(~valid))
     lost, unknown = _judge_absent(target, measured, absent)
-    missed |= lost
+    missed = missed | lost
     verdict = MISSED if (missed & valid).any() else UNKNOWN if invalid or (unknown & valid).any() else MET
-    worst, reason = _worst(target, measured, valid, missed & absent, unknown)
+    worst, reason = _worst(measured, valid, missed & absent, unknown, np.where(valid, room, np.nan))
     if reason is None and verdict == UNKNOWN and invalid:
-        reason = f"{invalid} of {len(values)} points are not valid"
-    return Judgement(verdict, worst, invalid, reason)
+        reason = _some_invalid(invalid, len(valid))
+    room = np.where(lost, -np.inf, np.where(absent, np.inf, room))
+    return Judgement(verdict, worst, invalid, reason, np.where(valid, room, np.inf))
 
 
-def reads_as_missed(target: Target, measured: Measured) -> Mask:
-    """Points whose number does not exist and counts as missed."""
-    return _judge_absent(target, measured, ~np.isfinite(measured.values))[0]
+def _some_invalid(invalid: int, points: int) -> str:
+    return f"{invalid} of {points} points are not valid"
 
 
 def _judge_absent(target: Target, measured: Measured, absent: Mask) -> tuple[Mask, Mask]:
@@ -124,15 +141,14 @@ def _judge_absent(target: Target, measured: Measured, absent: Mask) -> tuple[Mas
     return missed, unknown
 
 
-def _worst(target: Target, measured: Measured, valid: Mask, lost: Mask, unknown: Mask) -> tuple[int | None, str | None]:
+def _worst(measured: Measured, valid: Mask, lost: Mask, unknown: Mask, room: Array) -> tuple[int | None, str | None]:
     for absent in (lost & valid, unknown & valid):
         if absent.any():
             first = int(np.argmax(absent))
             return first, measured.reason((first,)).text or Reason.NOT_A_NUMBER.text
-    room = np.where(valid, distance(target, measured.values), np.nan)
     if np.isnan(room).all():
         if not valid.any():
-            return None, "no condition is valid"
+            return None, NONE_VALID
         place = int(np.argmax(valid))
         return place, measured.reason((place,)).text or None
     return int(np.nanargmin(room)), None

@@ -88,15 +88,17 @@ def _number(value: float) -> float | None:
 
 def _target(points: Points, target: Target, digits: str, today: datetime.date) -> TargetReview:
     measured = points.target(target)
-    every = slice(0, 1) if target.at == "nominal" else slice(None)
-    covered = Measured(measured.values[every], None if measured.reasons is None else measured.reasons[every])
-    judgement = judge.judge(target, covered, points.valid[every])
+    covered, valid = measured, points.valid
+    if target.at == "nominal":
+        reasons = None if measured.reasons is None or not measured.reasons[0] else measured.reasons[:1]
+        covered, valid = Measured(measured.values[:1], reasons), valid[:1]
+    judgement = judge.judge(target, covered, valid)
     metric = metrics.find(target.name)
     unit = target.unit if target.formula is not None or metric is None else metric.dimension.unit
     worst = None if judgement.worst is None else _number(covered.values[judgement.worst])
     margin = None if worst is None else judge.margin(target, worst)
     verdict, reason = waived(points.case.sheet.waivers, target, judgement.verdict, worst, today)
-    first = breaks_first(points, target, measured)
+    first = breaks_first(points, judgement.room, judgement.worst)
     return TargetReview(
         target=target,
         unit=unit,
