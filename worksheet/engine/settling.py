@@ -35,8 +35,22 @@ def linear(numerator: Sequence[Number], denominator: Sequence[Number], tolerance
             start = np.abs(1.0 - numerator[1] / np.asarray(numerator[0]) / tau)
             settled = tau * np.log(np.where(start > 0, start, tolerance) / tolerance)
             return np.where(np.isfinite(tau) & (tau >= 0), np.maximum(settled, 0.0), np.nan)
-        constants = _apart(constants)
-        return _last_crossing(_residues(numerator, constants), constants, np.asarray(tolerance))
+        return of_poles([numerator], constants, tolerance)[0]
+
+
+def of_poles(numerators: Sequence[Sequence[Number]], constants: Complex, tolerance: Number) -> tuple[Array, Array]:
+    """Settling of a product of transfer functions whose poles are known, by partial fractions.
+
+    Args:
+        numerators: Of every factor of H(s), coefficients lowest first.
+        constants: -1/pole of all poles along a first axis; 0 for a pole at infinity. [s]
+        tolerance: Share of the final change. [-]
+    Returns: [s] as linear, and the sum of the magnitudes of the weights [-]: its square times the rounding of a double
+        is what the error that is compared with the tolerance is uncertain by
+    """
+    constants = _apart(constants)
+    weights = _residues(numerators, constants)
+    return _last_crossing(weights, constants, np.asarray(tolerance)), np.sum(np.abs(weights), axis=0)
 
 
 def _apart(constants: Complex) -> Complex:
@@ -50,13 +64,15 @@ def _apart(constants: Complex) -> Complex:
     return constants
 
 
-def _residues(numerator: Sequence[Number], constants: Complex) -> Complex:
+def _residues(numerators: Sequence[Sequence[Number]], constants: Complex) -> Complex:
     """Weights c_k of the error sum c_k exp(-t/tau_k), relative to the final change."""
-    relative = [np.asarray(x / np.asarray(numerator[0])) for x in numerator]
+    relative = [[np.asarray(x / np.asarray(numerator[0])) for x in numerator] for numerator in numerators]
     weights = []
     for k, tau in enumerate(constants):
         inverse = np.where(tau == 0, 0.0, -1.0 / np.where(tau == 0, 1.0, tau))
-        weight = -poly.evaluate_complex(relative, inverse)
+        weight = -poly.evaluate_complex(relative[0], inverse)
+        for further in relative[1:]:
+            weight = weight * poly.evaluate_complex(further, inverse)
         for j, other in enumerate(constants):
             if j != k:
                 weight = weight / (1.0 - other / np.where(tau == 0, 1.0, tau))

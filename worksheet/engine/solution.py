@@ -298,7 +298,7 @@ class NumericSolution:
         total: Number = 0.0
         for source in self.noise_sources:
             at_dc = (source.numerator[0] / self._static[1]) ** 2
-            total = total + at_dc * source.flicker * _flicker_span(start, np.maximum(stop, start), source.exponent)
+            total = total + at_dc * source.flicker * flicker_span(start, np.maximum(stop, start), source.exponent)
         return total
 
     def noise_corner(self) -> Measured:
@@ -340,7 +340,7 @@ def _turning_points(numerator: Sequence[Number], denominator: Sequence[Number]) 
     return poly.positive_roots(difference[: 2 * len(numerator) - 3])
 
 
-def _flicker_span(start: Number, stop: Number, exponent: Number) -> Array:
+def flicker_span(start: Number, stop: Number, exponent: Number) -> Array:
     """Integral of f^-alpha from start to stop, exact also near alpha = 1. [Hz^(1-alpha)]"""
     rest = 1.0 - np.asarray(exponent)
     ratio = np.log(stop / start)
