@@ -34,7 +34,7 @@ from pathlib import Path
 for path in sorted(Path(sys.argv[1]).rglob("*.toml")):
     tomllib.loads(path.read_text("utf-8"))
 """
-REVIEW = "import sys; from worksheet.cli.main import main; sys.exit(main(sys.argv[1:]))"
+REVIEW = "import sys; from worksheet.cli.main import entry; sys.exit(entry())"
 SAMPLES = 100_000
 
 

@@ -3,6 +3,8 @@
 from __future__ import annotations
 
 import argparse
+import gc
+import os
 import sys
 from collections.abc import Sequence
 from importlib import import_module
@@ -97,5 +99,8 @@ def _bad_usage(message: str, output: Output) -> int:
 
 
 def entry() -> int:
-    """What the installed command calls."""
-    return main()
+    """What the installed command calls, in a process of its own: what that process can save itself stands here."""
+    os.environ.setdefault("OPENBLAS_NUM_THREADS", "1")  # matrices of three rows: threads would only be started and ended
+    status = main()
+    gc.freeze()  # leaving, Python looks through all that is left for loops, several times
+    return status

@@ -3,7 +3,6 @@
 from __future__ import annotations
 
 import argparse
-import os
 from pathlib import Path
 from typing import TYPE_CHECKING, Any
 
@@ -15,7 +14,7 @@ if TYPE_CHECKING:
 
 _MOST_SAMPLES = 1_000_000
 _COLLECT_AFTER = 100_000
-"""Objects made before loops among them are looked for: what a review makes stays, and looking costs a tenth of it."""
+"""Objects made before loops among them are looked for: what a review makes stays, and has none."""
 
 
 def add(subparsers: Any) -> None:
@@ -47,7 +46,6 @@ def run(args: argparse.Namespace, output: Output) -> int:
     from worksheet.session.workbook import Workbook
 
     gc.set_threshold(_COLLECT_AFTER)
-    os.environ.setdefault("OPENBLAS_NUM_THREADS", "1")  # matrices of three rows: starting threads is all they would do
     workbook = Workbook.read(Path(args.project))
     result = workbook.review(datetime.datetime.now().astimezone().date())
     beside = workbook.deeper(result, Wanted(args.fragile, args.samples, args.seed))
