@@ -9,7 +9,7 @@ from __future__ import annotations
 import html
 import re
 import textwrap
-from collections.abc import Iterator, Sequence
+from collections.abc import Iterator, Mapping, Sequence
 from typing import Any
 
 from worksheet.engine.symbolic.definition import Definition, Pick, Root
@@ -127,6 +127,27 @@ def as_mathml(parts: Sequence[Piece]) -> tuple[str, ...]:
         words = f"<mtext>{caption}&#xA0;</mtext>" if caption else ""
         written = algebra_printers.mathml(expression)
         printed.append(_MATHML.format(f"<mrow>{words}{_ENTITY.sub(_character, written)}</mrow>"))
+    return tuple(printed)
+
+
+def put_in(parts: Sequence[Piece], numbers: Mapping[str, str]) -> tuple[str, ...]:
+    """Pieces with numbers in the place of letters, as MathML; nothing is evaluated.
+
+    Args:
+        parts: What is printed of a definition.
+        numbers: Each letter's number with its unit, by the letter's name; a letter without one stays.
+    Returns: an element a piece, of the first its right side; none for a piece without a letter that has a number
+    """
+    import sympy
+
+    printed = []
+    for number, (caption, expression) in enumerate(parts):
+        shown = expression.rhs if number == 0 and isinstance(expression, sympy.Eq) else expression
+        if not any(symbol.name in numbers for symbol in shown.free_symbols) or shown.has(sympy.RootSum):
+            continue
+        words = "<mo>=</mo>" if number == 0 else f"<mtext>{caption}&#xA0;</mtext>" if caption else ""
+        written = _ENTITY.sub(_character, algebra_printers.mathml(shown, numbers))
+        printed.append(_MATHML.format(f"<mrow>{words}{written}</mrow>"))
     return tuple(printed)
 
 

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
 from functools import cached_property
 
@@ -101,6 +101,14 @@ class Explanation:
     def mathml(self) -> tuple[str, ...]:
         """The expression as presentation MathML, an element each."""
         return algebra_print.as_mathml(self._pieces)
+
+    def mathml_put_in(self, shown: Mapping[str, str]) -> tuple[str, ...]:
+        """The expression with numbers put in, as MathML; empty where one is missing or there is nothing to put in.
+
+        Args:
+            shown: Each number as it is to stand there, with its unit, by its symbol.
+        """
+        return algebra_print.put_in(self._pieces, shown)
 
     @cached_property
     def neglects(self) -> tuple[Effect, ...]:

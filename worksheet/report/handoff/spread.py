@@ -1,0 +1,57 @@
+"""The tables of a page as CSV (RFC 4180), a number or text a row, in SI base units, for spreadsheets and scripts."""
+
+from __future__ import annotations
+
+import csv
+import io
+import re
+from collections.abc import Iterator
+
+from worksheet.model.text import clean
+from worksheet.report.handoff.tree import Cell, Heading, Page, Table
+
+COLUMNS = ("page", "section", "table", "row", "quantity", "value", "unit", "text")
+
+_ACTS = ("=", "+", "-", "@", "\t", "\r")
+"""What makes a spreadsheet take a text for a formula."""
+
+_PLAIN = re.compile(r"[+-][\d.]+[\w %/°]*")
+"""A signed number with its unit, which is none."""
+
+
+def write(page: Page) -> str:
+    """The tables of a page as CSV."""
+    into = io.StringIO()
+    writer = csv.writer(into, lineterminator="\r\n")
+    writer.writerow(COLUMNS)
+    block = section = ""
+    levels = [node.level for node in page.nodes if isinstance(node, Heading)]
+    deep = max(levels, default=1)
+    for node in page.nodes:
+        if isinstance(node, Heading):
+            section = node.text
+            block = node.text if node.level < deep else block
+        elif isinstance(node, Table):
+            for row in _rows(node):
+                writer.writerow([harmless(block), harmless(section), harmless(node.caption), *row])
+    return into.getvalue()
+
+
+def _rows(node: Table) -> Iterator[tuple[str, ...]]:
+    for row in node.rows:
+        for title, cell in zip(node.columns[1:], row[1:], strict=True):
+            for quantity, value, unit, said in _entries(title, cell):
+                yield harmless(row[0].text), harmless(quantity), value, harmless(unit), harmless(said)
+
+
+def _entries(title: str, cell: Cell) -> Iterator[tuple[str, str, str, str]]:
+    for number in cell.numbers:
+        yield f"{title} {number.name}".strip(), repr(number.value), number.unit, cell.text
+    if not cell.numbers and cell.text not in ("", "-"):
+        yield title, "", "", cell.text
+
+
+def harmless(text: str) -> str:
+    """Text that no spreadsheet takes for a formula."""
+    text = clean(text)
+    return f"'{text}" if text.startswith(_ACTS) and not _PLAIN.fullmatch(text) else text
