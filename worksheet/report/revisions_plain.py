@@ -5,7 +5,8 @@ from __future__ import annotations
 from collections.abc import Iterator, Sequence
 from typing import Any
 
-from worksheet.compare.compared import Comparison, Result, SheetChange
+from worksheet.compare.cause import Cause
+from worksheet.compare.compared import Comparison, Need, Result, SheetChange
 from worksheet.compare.inputs import Moved
 from worksheet.history.revisions import Revision
 from worksheet.model.problem import Problem
@@ -15,6 +16,8 @@ from worksheet.report.table import Column, Table, lines, wrapped
 
 Plain = dict[str, Any]
 _ID = 10
+_SHOWN = 1e-6
+"""Relative: a remainder below is rounding."""
 
 
 def history(listed: Sequence[Revision]) -> Plain:
@@ -59,7 +62,26 @@ def _sheet(sheet: SheetChange) -> Plain:
         "status": sheet.status,
         "inputs": [_moved(m) for m in sheet.inputs],
         "results": [_result(r) for r in sheet.results],
+        "through": list(sheet.through),
+        "needed": [_need(n) for n in sheet.needed],
     }
+
+
+def _need(need: Need) -> Plain:
+    return {
+        "variable": need.variable,
+        "side": need.side,
+        "unit": need.unit,
+        "old": need.old,
+        "new": need.new,
+        "old_set_by": need.old_set_by or None,
+        "new_set_by": need.new_set_by or None,
+    }
+
+
+def _cause(cause: Cause) -> Plain:
+    parts = [{"key": part.key, "part": part.part} for part in cause.parts]
+    return {"parts": parts, "remainder": cause.remainder, "reason": cause.reason}
 
 
 def _result(result: Result) -> Plain:
@@ -70,6 +92,9 @@ def _result(result: Result) -> Plain:
         "new": result.new,
         "old_verdict": result.old_verdict,
         "new_verdict": result.new_verdict,
+        "old_margin": result.old_margin,
+        "new_margin": result.new_margin,
+        **({} if result.cause is None else {"cause": _cause(result.cause)}),
     }
 
 
@@ -84,10 +109,42 @@ def comparison_text(old: str, new: str, found: Comparison, width: int) -> Iterat
             yield from _stated(moved, width)
     for sheet in found.sheets:
         yield ""
-        yield f"{clean(sheet.sheet)} ({sheet.status})"
+        through = f", through {', '.join(sheet.through)}" if sheet.through else ""
+        yield from wrapped(clean(f"{sheet.sheet} ({sheet.status}{through})"), width)
         yield from _stated(sheet.inputs, width)
         if sheet.results and sheet.status in ("changed", "affected"):
             yield from lines(_results(sheet.results), width, "  ")
+            yield from _causes(sheet.results, width)
+        for need in sheet.needed:
+            yield from wrapped(_needed(need), width, "  ")
+
+
+def _causes(results: Sequence[Result], width: int) -> Iterator[str]:
+    """Why targets moved: what each input did to them, the greatest first."""
+    for r in results:
+        if r.cause is None or r.new_verdict is None:
+            continue
+        parts = [f"{one.key} {_signed(r, one.part)}" for one in r.cause.parts]
+        if r.cause.reason is not None:
+            parts.append(r.cause.reason)
+        elif r.new is not None and abs(r.cause.remainder) > _SHOWN * abs(r.new):
+            parts.append(f"together with what is not stated {_signed(r, r.cause.remainder)}")
+        if len(parts) > 1 or r.cause.reason is not None:
+            yield from wrapped(f"{r.metric}: {', '.join(parts)}", width, "  ")
+
+
+def _signed(result: Result, part: float) -> str:
+    text = wording.metric_number(result.metric, abs(part), result.unit, digits=3)
+    return f"{'+' if part >= 0 else '-'}{text}"
+
+
+def _needed(need: Need) -> str:
+    sign = "at least" if need.side == "low" else "at most"
+    ends = [
+        "no end" if value is None else f"{wording.number(value, need.unit)} ({by or 'process'})"
+        for value, by in ((need.old, need.old_set_by), (need.new, need.new_set_by))
+    ]
+    return f"needed {need.variable} {sign}: {ends[0]} -> {ends[1]}"
 
 
 def _stated(moved: Sequence[Moved], width: int) -> Iterator[str]:

@@ -104,7 +104,9 @@ class Compared:
     problems: tuple[Problem, ...]
 
 
-def compared(root: Path, old: str | None, new: str, today: datetime.date) -> Compared | Problem:
+def compared(
+    root: Path, old: str | None, new: str, today: datetime.date, deep: bool | None = None
+) -> Compared | Problem:
     """Compare two revisions of a project, or a revision with the files as they stand.
 
     Args:
@@ -112,6 +114,7 @@ def compared(root: Path, old: str | None, new: str, today: datetime.date) -> Com
         old: A revision; the newest one where None.
         new: A revision, or WORKING.
         today: For waivers with an end.
+        deep: Whether causes and needs are wanted, see compare.
     """
     found = repository_of(root)
     if isinstance(found, Problem):
@@ -124,7 +127,7 @@ def compared(root: Path, old: str | None, new: str, today: datetime.date) -> Com
     assert isinstance(before, tuple)
     assert isinstance(after, tuple)
     problems = (*before[1].review.problems, *after[1].review.problems)
-    return Compared(before[0], after[0], compare(before[1], after[1]), problems)
+    return Compared(before[0], after[0], compare(before[1], after[1], deep), problems)
 
 
 def state(root: Path, name: str, today: datetime.date) -> tuple[str, State] | Problem:
@@ -161,12 +164,12 @@ def _state(found: Repository, root: Path, name: str, today: datetime.date) -> tu
 
 def _reviewed(root: Path, today: datetime.date) -> State:
     workbook = Workbook.read(root)
-    return State(workbook.project, workbook.review(today))
+    return State(workbook.project, workbook.review(today), workbook.evaluator)
 
 
 def _digest(root: Path, today: datetime.date) -> str:
     """What moved since the newest revision and which verdicts turned, as plain lines for the message."""
-    found = compared(root, None, WORKING, today)
+    found = compared(root, None, WORKING, today, deep=False)
     if isinstance(found, Problem):
         return _first(Workbook.read(root).review(today))
     lines = [

@@ -89,7 +89,7 @@ def _asked(sheet: Sheet) -> Iterator[Step]:
 
 
 def _new(root: Path, name: str, today: datetime.date, since: str) -> Iterator[Step]:
-    found = revisions.compared(root, since, revisions.WORKING, today)
+    found = revisions.compared(root, since, revisions.WORKING, today, deep=False)
     if isinstance(found, Problem):
         return
     comparison = found.comparison

@@ -21,6 +21,11 @@ def add(subparsers: Any) -> None:
         "old", nargs="?", help="a hash or a prefix, a branch or tag, HEAD~1 (default: the newest revision)"
     )
     parser.add_argument("new", nargs="?", default="working", help='another one, or "working": the files as they stand')
+    parser.add_argument(
+        "--causes",
+        action=argparse.BooleanOptionalAction,
+        help="what each changed input did, and what is needed now (default: where at most 30 sheets moved)",
+    )
     parser.add_argument("--json", action="store_true", help="one JSON document on standard output")
     parser.set_defaults(command=run)
 
@@ -33,7 +38,7 @@ def run(args: argparse.Namespace, output: Output) -> int:
     from worksheet.session import revisions
 
     today = datetime.datetime.now().astimezone().date()
-    found = revisions.compared(Path(args.project), args.old, args.new, today)
+    found = revisions.compared(Path(args.project), args.old, args.new, today, args.causes)
     if isinstance(found, Problem):
         tell([found])
         if output.as_json:
