@@ -54,11 +54,15 @@ def improved(slope: Slope, start: Array, spans: Array, reach: float) -> Array:
         spans: Lowest and highest value of each coordinate, shape (coordinates, 2).
         reach: How far the first step may go along every coordinate but the first.
     """
-    place, best = start, float(slope.score(start[None])[0])
+    place, best = start, np.inf
+    found, good = slope.restored(start[None], reach)
+    if good[0]:
+        place, best = found[0], float(slope.score(found)[0])
     for _ in range(_ROUNDS):
         lines = _lines(slope, place)
         step = _corner(*lines[:3], reach, spans - place[:, None])
-        if -step @ lines[2] < _SETTLED * (1.0 + abs(best)) or reach < _LAST_REACH:
+        settled = np.isfinite(best) and -step @ lines[2] < _SETTLED * (1.0 + abs(best))
+        if settled or reach < _LAST_REACH:
             break
         steps = np.concatenate([_bent(slope, place, step, lines, reach, spans)[None], _SHARES[:, None] * step])
         tried = np.clip(place + steps, *spans.T)

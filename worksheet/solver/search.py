@@ -36,6 +36,7 @@ _CLOSE = 0.02
 """Of a round's span, how close the first coordinate is found."""
 
 _LOOKS = 6
+_BESIDE = 1e-9
 _STEEPEST = 4.0
 """The least first coordinate is taken to change no faster than this with the others."""
 
@@ -178,9 +179,6 @@ class Search:
         points, rounds, shrink = _ZOOM.get(dimensions, (5, 0, 0.5))
         span = np.array([(high - low) / max(count - 1, 1) for low, high in self._space.rest])
         best = self._best(self._coarse_places(), value, cap, None, float(np.max(span, initial=0.0)))
-        if near is not None:
-            at_near = self._best(near[None, 1:], value, cap, (float(near[0]), near[1:], 0.0), 1e-3)
-            best = min(at_near, best, key=lambda b: (b[2] < 0 or b[0] > cap + 1e-9, value(*_one(b))[0]))
         for k in range(rounds):
             if k >= (_BEFORE_DESCENT if best[2] >= 0 else _BEFORE_RAISING):
                 break
@@ -191,11 +189,33 @@ class Search:
             places = np.concatenate([best[1][None], self._grid(around, points)])
             best = self._best(places, value, cap, best, float(span.max()))
             span = span * shrink
-        if best[2] < 0:
-            best = self._raised(best, float(np.max(span, initial=_LEAST_REACH)))
-        if best[2] >= 0 and dimensions:
-            best = self._descended(best, value, cap, float(span.max()))
+        reach = float(np.max(span, initial=_LEAST_REACH))
+        best = best if best[2] >= 0 else self._raised(best, reach)
+        starts = [best, *([] if near is None else [(float(near[0]), near[1:], 0.0)])]
+        starts.sort(key=lambda b: (b[2] < 0 or b[0] > cap + 1e-6, float(value(np.array([b[0]]), b[1][None])[0])))
+        found = self._finished(starts[0], value, cap, reach)
+        if near is not None and _rank(found, value, cap) > (False, float(value(near[:1], near[None, 1:])[0])):
+            found = min(found, self._finished(starts[1], value, cap, reach), key=lambda f: _rank(f, value, cap))
+        if not found.feasible and (other := self._scan_least(value, cap)) is not None:
+            found = min(found, self._finished(other, value, cap, reach), key=lambda f: _rank(f, value, cap))
+        return found
+
+    def _finished(
+        self, best: tuple[float, Array, float], value: Callable[[Array, Array], Array], cap: float, reach: float
+    ) -> Found:
+        if best[2] >= 0 and self._space.rest:
+            best = self._descended(best, value, cap, reach)
         return self._polished(best)
+
+    def _scan_least(self, value: Callable[[Array, Array], Array], cap: float) -> tuple[float, Array, float] | None:
+        """The sample of the scan with the least score among those where all that is wanted does hold, if any does."""
+        places = self._coarse_places()
+        samples, scanned = self._scanned(places)
+        first, rest = samples.reshape(-1), np.repeat(places, _SCAN, axis=0)
+        good = np.logical_and(self.feasible(scanned), first <= cap + 1e-9)
+        scores = np.where(good, value(first, rest), np.inf)
+        k = int(np.argmin(scores))
+        return (float(first[k]), rest[k], 0.0) if np.isfinite(scores[k]) else None
 
     def _every(self, places: Array) -> Array:
         """Slack of the wanted constraints at every point, and of every limit; shape (slacks, places)."""
@@ -232,11 +252,15 @@ class Search:
             return np.concatenate([self._every(places), capped])
 
         def restored(places: Array, reach: float) -> tuple[Array, Mask]:
-            span = max(reach, 1e-9)
             known = (float(np.median(places[:, 0])), places[0, 1:], 0.0)
-            first, slack = self._least_first(places[:, 1:], known, span)
-            good: Mask = np.asarray((slack >= 0) & (first <= cap + 1e-9))
-            return np.column_stack([first, places[:, 1:]]), good
+            first, _ = self._least_first(places[:, 1:], known, max(reach, 1e-9))
+            tried = np.stack([first, first + _BESIDE, places[:, 0]])
+            rest = np.tile(places[:, 1:], (len(tried), 1))
+            holding = self.feasible(self.slack(tried.reshape(-1), rest)).reshape(tried.shape)
+            good = np.logical_and(holding, tried <= cap + 1e-9)
+            least = np.min(np.where(good, tried, np.inf), axis=0)
+            found: Mask = np.asarray(np.isfinite(least))
+            return np.column_stack([np.where(found, least, places[:, 0]), places[:, 1:]]), found
 
         slope = descent.Slope(slack, lambda places: value(places[:, 0], places[:, 1:]), restored)
         start = np.array([best[0], *best[1]])
@@ -408,6 +432,8 @@ class Search:
         return Found(np.array([good, *rest]), True, float(slack.min()))
 
 
-def _one(place: tuple[float, Array, float]) -> tuple[Array, Array]:
-    """A place as (first, rest) over one trial."""
-    return np.array([place[0]]), place[1][None]
+def _rank(found: Found, value: Callable[[Array, Array], Array], cap: float) -> tuple[bool, float]:
+    """Whether a place does not hold, and its score or by how much it is missed; the least is the best."""
+    if not found.feasible:
+        return True, -found.slack
+    return bool(found.place[0] > cap + 1e-6), float(value(found.place[:1], found.place[None, 1:])[0])
