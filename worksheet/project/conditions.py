@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping
+from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
 from functools import cached_property
 from itertools import product
@@ -116,7 +116,22 @@ def of_sheet(sheet: Sheet, project: ProjectFile, process: Process) -> ConditionS
         project.nominal.temperature if temperature is None else _nominal(project.nominal.temperature, temperatures),
         project.nominal.supply if supply is None else _nominal(project.nominal.supply, supplies),
     )
-    every = (Condition(*parts) for parts in product(project.processes, temperatures, supplies))
+    return _product(project.processes, temperatures, supplies, nominal, process)
+
+
+def of_project(project: ProjectFile, process: Process) -> ConditionSet:
+    """The conditions of a project, which are those of every sheet that states none of its own."""
+    return _product(project.processes, project.temperatures, project.supplies, project.nominal, process)
+
+
+def _product(
+    processes: Sequence[str],
+    temperatures: Sequence[float],
+    supplies: Sequence[float],
+    nominal: Condition,
+    process: Process,
+) -> ConditionSet:
+    every = (Condition(*parts) for parts in product(processes, temperatures, supplies))
     return ConditionSet(process, (nominal, *(c for c in dict.fromkeys(every) if c != nominal)))
 
 

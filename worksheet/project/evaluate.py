@@ -49,6 +49,20 @@ class Evaluator:
             self._sets[own] = sets.of_sheet(sheet, self._file, self._process)
         return self._sets[own]
 
+    @property
+    def shared(self) -> ConditionSet:
+        """The project's conditions, nominal first: those of every sheet that states none of its own."""
+        if (None, None) not in self._sets:
+            self._sets[None, None] = sets.of_project(self._file, self._process)
+        return self._sets[None, None]
+
+    def linked(self, name: str, wanted: ConditionSet) -> Case:
+        """A sheet's case for the conditions of a path that it lies in: its own nominal one, then one for each wanted.
+
+        A sheet on its own regulator is at its nominal supply there.
+        """
+        return self._linked_case(name, wanted, "supply" in self.project.sheets[name].assume)
+
     def bare(self, name: str) -> Case:
         """A sheet's case with nothing proposed."""
         conditions = self.conditions(name)

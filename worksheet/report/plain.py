@@ -4,10 +4,12 @@ from __future__ import annotations
 
 import datetime
 from collections.abc import Sequence
+from dataclasses import asdict
 from typing import Any
 
 from worksheet.model.problem import Problem
 from worksheet.model.sheet import Condition, Remark
+from worksheet.review.chained import ChainReview
 from worksheet.review.results import BudgetReview, Cause, Review, SheetReview, TargetReview
 
 SCHEMA = 1
@@ -32,6 +34,7 @@ def review(result: Review) -> Plain:
         "met": result.met,
         "sheets": [sheet(s) for s in result.sheets],
         "budget": [budget(b) for b in result.budgets],
+        "chains": [chain(c) for c in result.chains],
         "uncovered": [{"id": number, "text": said} for number, said in result.uncovered.items()],
         "problems": problems(result.problems),
     }
@@ -125,6 +128,33 @@ def _cause(found: Cause | None) -> Plain | None:
     if found.moved:
         plain["with"] = dict(found.moved)
     return plain
+
+
+def chain(result: ChainReview) -> Plain:
+    """One chain's review as data."""
+    stated = result.chain
+    return {
+        "chain": stated.name,
+        "title": stated.title,
+        "sheets": list(stated.sheets),
+        "settling_tolerance": stated.settling_tolerance,
+        "met": result.met,
+        "reason": result.reason,
+        "metrics": {
+            key: {
+                **_number(*found.nominal),
+                "low": found.low,
+                "low_at": condition(found.low_at),
+                "high": found.high,
+                "high_at": condition(found.high_at),
+            }
+            for key, found in result.metrics.items()
+        },
+        "targets": [target(t) for t in result.targets],
+        "takes": [asdict(share) for share in result.stages],
+        "invalid": result.invalid,
+        "notes": [{"about": n.about, "text": n.text} for n in result.notes],
+    }
 
 
 def budget(result: BudgetReview) -> Plain:

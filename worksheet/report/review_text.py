@@ -3,27 +3,13 @@
 from __future__ import annotations
 
 from collections.abc import Iterator
-from typing import TypeVar
 
 from worksheet.model.text import clean
-from worksheet.report import details_text, wording
+from worksheet.report import chains_text, details_text, wording
 from worksheet.report.table import Column, Table, lines, wrapped
+from worksheet.report.targets_text import WIDE, targets_table
 from worksheet.review.results import MET, MISSED, UNKNOWN, Review, SheetReview, TargetReview
 from worksheet.stages import catalogue
-
-_TARGETS = (
-    Column("target", flexible=True),
-    Column("wanted"),
-    Column("nominal", right=True),
-    Column("worst", right=True),
-    Column("where"),
-    Column("margin", right=True),
-    Column("verdict", toned=True),
-)
-_Cell = TypeVar("_Cell", str, Column)
-_WHERE = 4
-_WIDE = 110
-"""From this width on the table says where the worst value is; below, a line under it does for what is not met."""
 
 _DIGITS = 3
 
@@ -44,6 +30,9 @@ def text(result: Review, width: int, *, details: bool = False) -> Iterator[str]:
         yield from _sheet(sheet, width)
         if details:
             yield from details_text.details(sheet, width)
+    for chain in result.chains:
+        yield ""
+        yield from chains_text.chain(chain, width)
     if result.budgets:
         yield ""
         yield "Budgets, all blocks times their count"
@@ -75,7 +64,7 @@ def _sheet(sheet: SheetReview, width: int) -> Iterator[str]:
     title = f": {clean(sheet.sheet.title)}" if sheet.sheet.title else ""
     yield from wrapped(f"{sheet.sheet.name}{title} ({kind}, {sheet.state}{count})", width)
     if sheet.targets:
-        yield from lines(_targets(sheet, width), width, "  ")
+        yield from lines(targets_table(sheet.targets, width), width, "  ")
     else:
         yield "  no targets"
     for target in sheet.targets:
@@ -96,39 +85,15 @@ def _sheet(sheet: SheetReview, width: int) -> Iterator[str]:
             yield from wrapped(clean(f"open remark{about} by {remark.by}{to}: {remark.text}"), width, "  ")
 
 
-def _targets(sheet: SheetReview, width: int) -> Table:
-    rows = tuple(_row(target) for target in sheet.targets)
-    if width >= _WIDE:
-        return Table(_TARGETS, rows)
-    return Table(_without_where(_TARGETS), tuple(_without_where(row) for row in rows))
-
-
-def _without_where(row: tuple[_Cell, ...]) -> tuple[_Cell, ...]:
-    return row[:_WHERE] + row[_WHERE + 1 :]
-
-
 def _said(result: TargetReview, width: int) -> str:
     """Why a target is not met, where it is worst and which evidence is stale; "" where the table says enough."""
     stale = sum(e.stale for e in result.evidence)
     evidence = f"stale, found for other inputs: {stale} of {len(result.evidence)} pieces of evidence" if stale else ""
     if result.verdict == MET:
         return evidence
-    where = "" if width >= _WIDE or result.worst_at is None else f"worst at {wording.condition(result.worst_at)}"
+    where = "" if width >= WIDE or result.worst_at is None else f"worst at {wording.condition(result.worst_at)}"
     ends = ", ".join(f"{name} at an end of its range" for name in result.worst_with)
     return "; ".join(part for part in (result.reason, where, ends, evidence) if part)
-
-
-def _row(result: TargetReview) -> tuple[str, ...]:
-    target = result.target
-    return (
-        target.name,
-        wording.limits(target, result.unit),
-        wording.metric_number(target.name, result.nominal, result.unit, digits=_DIGITS),
-        wording.metric_number(target.name, result.worst, result.unit, digits=_DIGITS),
-        wording.condition(result.worst_at),
-        wording.margin(result.margin),
-        result.verdict.upper() if result.verdict in (MISSED, UNKNOWN) else result.verdict,
-    )
 
 
 def _validity(sheet: SheetReview, width: int) -> Iterator[str]:

@@ -7,10 +7,13 @@ from __future__ import annotations
 
 from collections.abc import Mapping
 from dataclasses import dataclass, field
-from typing import NamedTuple
+from typing import TYPE_CHECKING, NamedTuple
 
 from worksheet.model.problem import Problem
 from worksheet.model.sheet import Condition, Sheet, Target
+
+if TYPE_CHECKING:
+    from worksheet.review.chained import ChainReview
 
 MET, MISSED, UNKNOWN, WAIVED = "met", "missed", "unknown", "waived"
 """Verdicts."""
@@ -172,7 +175,7 @@ class BudgetReview:
 class Review:
     """A whole project against its targets and budgets.
 
-    `uncovered` maps each requirement that no target's id names to what it says.
+    `uncovered` maps each requirement that no target's id names to what it says; `chains` are those of the project file.
     """
 
     title: str
@@ -183,8 +186,10 @@ class Review:
     nominal: Condition | None = None
     bad: tuple[str, ...] = field(default=())
     uncovered: Mapping[str, str] = field(default_factory=dict)
+    chains: tuple[ChainReview, ...] = ()
 
     @property
     def met(self) -> bool:
-        """Whether every target is met or waived, every budget met and nothing wrong."""
-        return not self.problems and all(s.met for s in self.sheets) and all(b.verdict == MET for b in self.budgets)
+        """Whether every target is met or waived, every chain's too, every budget met and nothing wrong."""
+        blocks = all(s.met for s in self.sheets) and all(c.met for c in self.chains)
+        return not self.problems and blocks and all(b.verdict == MET for b in self.budgets)

@@ -3,10 +3,12 @@
 from __future__ import annotations
 
 import datetime
-from collections.abc import Callable, Iterator, Mapping, Sequence
+from collections.abc import Callable, Collection, Iterator, Mapping, Sequence
 from dataclasses import dataclass, field
+from typing import TYPE_CHECKING
 
 from worksheet.model.problem import Problem
+from worksheet.model.sheet import Chain
 from worksheet.project.case import CaseError
 from worksheet.project.discover import Project
 from worksheet.project.evaluate import Evaluator
@@ -15,6 +17,9 @@ from worksheet.review.late import late_problems
 from worksheet.review.results import Review, SheetReview
 from worksheet.review.sheet_review import level_problems, review_points
 from worksheet.review.solved import Points, solved_points, with_ranges
+
+if TYPE_CHECKING:
+    from worksheet.review.chained import ChainReview
 
 
 @dataclass(frozen=True, eq=False, slots=True)
@@ -28,6 +33,9 @@ class Reviewed:
 
 Reviewer = Callable[[Evaluator, Sequence[str], datetime.date], Mapping[str, Reviewed]]
 """Solves and reviews the sheets of those names."""
+
+Chainer = Callable[[Evaluator, Mapping[str, Chain], Collection[str]], "tuple[ChainReview, ...]"]
+"""Reviews chains, given the names of sheets that have problems."""
 
 
 def reviewed(evaluator: Evaluator, names: Sequence[str], today: datetime.date) -> dict[str, Reviewed]:
@@ -74,8 +82,21 @@ def _solved(evaluator: Evaluator, names: Sequence[str]) -> Iterator[_Solved]:
         yield points.case.sheet.name, None if problems else points, problems
 
 
+def chained(evaluator: Evaluator, chains: Mapping[str, Chain], bad: Collection[str]) -> tuple[ChainReview, ...]:
+    """Review the chains of a project; what that takes is loaded only where there are any."""
+    if not chains:
+        return ()
+    from worksheet.review.chains import review_chains
+
+    return review_chains(evaluator, chains, bad)
+
+
 def review(
-    project: Project, evaluator: Evaluator | None, today: datetime.date, reviewer: Reviewer = reviewed
+    project: Project,
+    evaluator: Evaluator | None,
+    today: datetime.date,
+    reviewer: Reviewer = reviewed,
+    chainer: Chainer = chained,
 ) -> Review:
     """Review a project.
 
@@ -84,6 +105,7 @@ def review(
         evaluator: Its evaluator; None where the project file or process cannot be read.
         today: For waivers with an end.
         reviewer: How sheets are reviewed; a session hands out again what did not change.
+        chainer: How chains are.
     Returns: Review; a bad sheet is among the problems and hides no other
     """
     if evaluator is None or project.file is None:
@@ -104,15 +126,18 @@ def review(
         nominal=nominal,
         bad=bad,
         uncovered=uncovered(project),
+        chains=chainer(evaluator, project.file.chains, frozenset(bad)),
     )
 
 
 def uncovered(project: Project) -> Mapping[str, str]:
-    """Requirements of the project file whose number is no target's id, by number.
+    """Requirements of the project file whose number is no target's id, of a sheet or a chain, by number.
 
     Targets of a sheet that cannot be read cover nothing.
     """
     if project.file is None:
         return {}
-    covered = {target.id for sheet in project.sheets.values() for target in sheet.targets.values()}
+    stated = [holder.targets for holder in project.sheets.values()]
+    stated += [holder.targets for holder in project.file.chains.values()]
+    covered = {target.id for targets in stated for target in targets.values()}
     return {number: text for number, text in project.file.requirements.items() if number not in covered}

@@ -3,15 +3,16 @@
 from __future__ import annotations
 
 import datetime
-from collections.abc import Mapping, Sequence
+from collections.abc import Collection, Mapping, Sequence
 
-from worksheet.model.sheet import Sheet
+from worksheet.model.sheet import Chain, Sheet
 from worksheet.project import links
 from worksheet.project.case import Case
 from worksheet.project.discover import Project
 from worksheet.project.evaluate import Evaluator
+from worksheet.review.chained import ChainReview
 from worksheet.review.results import Review
-from worksheet.review.review import Reviewed, review, reviewed
+from worksheet.review.review import Reviewed, chained, review, reviewed
 from worksheet.solver.propose import propose
 
 Stated = tuple[object, ...]
@@ -24,6 +25,7 @@ class Reviewing:
     def __init__(self) -> None:
         self._reviewed: dict[str, tuple[Stated, Reviewed]] = {}
         self._filled: dict[str, tuple[Stated, Mapping[str, float]]] = {}
+        self._chains: dict[str, tuple[Stated, ChainReview]] = {}
 
     def evaluator(self, project: Project) -> Evaluator | None:
         """An evaluator of a state, which takes proposals over from states before where nothing moved them."""
@@ -42,7 +44,21 @@ class Reviewing:
                 known[name] = (stated[name], anew)
             return {name: known[name][1] for name in names}
 
-        return review(project, evaluator, today, again)
+        return review(project, evaluator, today, again, lambda *found: self._chained(project, *found))
+
+    def _chained(
+        self, project: Project, evaluator: Evaluator, chains: Mapping[str, Chain], bad: Collection[str]
+    ) -> tuple[ChainReview, ...]:
+        """Chains, worked out again where a sheet of theirs, or what it takes values from, has changed."""
+        every = []
+        for name, chain in chains.items():
+            there = [sheet for sheet in chain.sheets if sheet in project.sheets]
+            stated = (chain, *(part for sheet in there for part in stated_of(project, sheet)))
+            stated = (*stated, tuple(sheet for sheet in chain.sheets if sheet in bad))
+            if name not in self._chains or self._chains[name][0] != stated:
+                self._chains[name] = (stated, chained(evaluator, {name: chain}, bad)[0])
+            every.append(self._chains[name][1])
+        return tuple(every)
 
     def _proposed(self, project: Project, case: Case) -> Mapping[str, float]:
         name = case.sheet.name
