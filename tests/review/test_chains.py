@@ -213,5 +213,5 @@ def test_the_text_shows_the_path(tmp_path: Path) -> None:
     out = run("review", str(tmp_path)).out
     assert "Chain path: Lamp to eye (first > second)" in out
     assert "MISSED" in out
-    assert "bandwidth lost" in out
+    assert "what is lost to it" in out
     assert all(len(line) <= 80 for line in out.splitlines())
