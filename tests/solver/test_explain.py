@@ -96,7 +96,8 @@ def test_an_origin_is_the_line_that_says_it(kind: tuple[str, str, str], tmp_path
             origin = given.origin
             if origin is not None and origin.line is not None:
                 line = (folder / origin.file).read_text("utf-8").splitlines()[origin.line - 1]
-                assert line.startswith(origin.key.rpartition(".")[2]), (origin, line)
+                name = origin.key.rpartition(".")[2]
+                assert line.startswith(name) or line == f"[{origin.key}]", (origin, line)
                 placed += 1
     assert placed >= 20
 

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Mapping, Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, field
 from functools import cached_property
 from itertools import product
 from typing import Any
@@ -20,10 +20,14 @@ _NUMBERS = {key.name for key in DEVICE_PARAMETERS if key.dimension is not None}
 
 @dataclass(frozen=True, eq=False)
 class ConditionSet:
-    """Conditions as arrays, the nominal one at index 0; the last axis of every result runs over them."""
+    """Conditions as arrays, the nominal one at index 0; the last axis of every result runs over them.
+
+    `lines` gives the line of any dotted key of the project's file, which states them.
+    """
 
     process: Process
     conditions: tuple[Condition, ...]
+    lines: Mapping[str, int] = field(default_factory=dict)
 
     def __len__(self) -> int:
         return len(self.conditions)
@@ -103,7 +107,7 @@ class ConditionSet:
 
     def only_nominal(self) -> ConditionSet:
         """The nominal condition alone."""
-        return ConditionSet(self.process, self.conditions[:1])
+        return ConditionSet(self.process, self.conditions[:1], self.lines)
 
 
 def of_sheet(sheet: Sheet, project: ProjectFile, process: Process) -> ConditionSet:
@@ -116,12 +120,13 @@ def of_sheet(sheet: Sheet, project: ProjectFile, process: Process) -> ConditionS
         project.nominal.temperature if temperature is None else _nominal(project.nominal.temperature, temperatures),
         project.nominal.supply if supply is None else _nominal(project.nominal.supply, supplies),
     )
-    return _product(project.processes, temperatures, supplies, nominal, process)
+    return _product(project.processes, temperatures, supplies, nominal, process, project.lines)
 
 
 def of_project(project: ProjectFile, process: Process) -> ConditionSet:
     """The conditions of a project, which are those of every sheet that states none of its own."""
-    return _product(project.processes, project.temperatures, project.supplies, project.nominal, process)
+    places = (project.processes, project.temperatures, project.supplies)
+    return _product(*places, project.nominal, process, project.lines)
 
 
 def _product(
@@ -130,9 +135,10 @@ def _product(
     supplies: Sequence[float],
     nominal: Condition,
     process: Process,
+    lines: Mapping[str, int],
 ) -> ConditionSet:
     every = (Condition(*parts) for parts in product(processes, temperatures, supplies))
-    return ConditionSet(process, (nominal, *(c for c in dict.fromkeys(every) if c != nominal)))
+    return ConditionSet(process, (nominal, *(c for c in dict.fromkeys(every) if c != nominal)), lines)
 
 
 def _nominal(stated: float, values: tuple[float, ...]) -> float:
@@ -151,4 +157,4 @@ def linked(wanted: ConditionSet, owner: ConditionSet, own_supply: bool) -> Condi
     """
     supply = owner.nominal.supply
     mapped = tuple(Condition(c.process, c.temperature, supply if own_supply else c.supply) for c in wanted.conditions)
-    return ConditionSet(owner.process, (owner.nominal, *mapped))
+    return ConditionSet(owner.process, (owner.nominal, *mapped), owner.lines)

@@ -69,6 +69,11 @@ class Conditions(Protocol):
         """The process file."""
         ...
 
+    @property
+    def lines(self) -> Mapping[str, int]:
+        """The line of each dotted key of the project's file."""
+        ...
+
     def changes(self, device: str) -> Mapping[str, Array]:
         """What the corners do to a device, over the conditions."""
         ...
@@ -237,7 +242,8 @@ class Stated:
             return Origin("process", process.file, process.lines.get(key), key)
         if key == "nominal_temperature" or (key in ("supply", "temperature") and self._on_sheet(key) is None):
             name = "nominal" if key == "nominal_temperature" else key
-            return Origin("conditions", _PROJECT_FILE, key=f"conditions.{name}")
+            full = f"conditions.{name}"
+            return Origin("conditions", _PROJECT_FILE, self.case.conditions.lines.get(full), full)
         owner, _, rest = key.partition(".")
         if rest and owner in self._devices and rest.partition(".")[0] in ("process", "corner"):
             return self._process_origin(self._devices[owner], rest)

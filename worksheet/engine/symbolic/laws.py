@@ -244,7 +244,7 @@ def _thermal_voltage(a: Algebra) -> Definition:
 
 def _current(a: Algebra) -> Definition:
     if not a.has("bias_temperature_exponent"):
-        return Definition("current", a.symbol("bias_current"))
+        return Definition("current", a.symbol("bias_current"), source="the current source sets it")
     warmth = a.leaf("temperature") / a.leaf("nominal_temperature")
     law = a.symbol("bias_current") * warmth ** a.leaf("bias_temperature_exponent")
     return Definition("current", law, source="the sheet's own law of the bias current over temperature")
