@@ -27,6 +27,7 @@ COMMANDS = (
     "history",
     "compare",
     "merge",
+    "evidence",
     "agenda",
     "minutes",
 )
@@ -100,7 +101,9 @@ def _bad_usage(message: str, output: Output) -> int:
 
 def entry() -> int:
     """What the installed command calls, in a process of its own: what that process can save itself stands here."""
-    os.environ.setdefault("OPENBLAS_NUM_THREADS", "1")  # matrices of three rows: threads would only be started and ended
+    os.environ.setdefault(
+        "OPENBLAS_NUM_THREADS", "1"
+    )  # matrices of three rows: threads would only be started and ended
     status = main()
     gc.freeze()  # leaving, Python looks through all that is left for loops, several times
     return status

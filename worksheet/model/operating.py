@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Iterable
 from dataclasses import dataclass
 
 from worksheet.model import dimension as dim
@@ -118,3 +119,8 @@ def region(inversion: float) -> str:
 def find(key: str) -> OperatingValue | None:
     """The operating-point value of that key, or None."""
     return next((value for value in OPERATING_POINT if value.key == key), None)
+
+
+def named(devices: Iterable[str]) -> dict[str, Dimension]:
+    """Every value of some devices as DEVICE.VALUE ("main.inversion_coefficient"), with what it measures."""
+    return {f"{device}.{value.key}": value.dimension for device in devices for value in OPERATING_POINT}

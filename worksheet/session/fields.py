@@ -11,7 +11,7 @@ from collections.abc import Iterable, Mapping
 from dataclasses import dataclass, replace
 from typing import Any
 
-from worksheet.model import formula, metrics
+from worksheet.model import formula, metrics, operating
 from worksheet.model.dimension import Dimension
 from worksheet.model.formula import FormulaError
 from worksheet.model.keys import ANNOTATIONS, Key, Kind, Table
@@ -102,9 +102,17 @@ def _of_metric(table: object, data: Mapping[str, Any], name: str, rest: KeyPath)
     key = table.key(str(rest[0]))
     if key is None or key.kind is not Kind.QUANTITY or key.dimension is not None:
         return key
+    if name in (point := _operating(data)):
+        return replace(key, dimension=point[name])
     metric = metrics.find(name)
     own = value_at(data, ("target", name, "formula")) is not None
     return replace(key, dimension=None if own or metric is None else metric.dimension)
+
+
+def _operating(data: Mapping[str, Any]) -> dict[str, Dimension]:
+    """Values of the sheet's operating point, of which there can be evidence."""
+    stage = catalogue.find(str(data.get("stage")))
+    return {} if stage is None else operating.named(device.name for device in stage.devices(_ideal(data)))
 
 
 def stage_keys(data: Mapping[str, Any]) -> dict[str, Key]:
@@ -147,7 +155,7 @@ def _known(snapshot: Snapshot, data: Mapping[str, Any], path: KeyPath) -> tuple[
     if path[0] == "evidence" and path[-1] == "at":
         return () if process is None else tuple(dict.fromkeys(("typical", *process.corners)))
     if path[0] == "evidence" and path[-1] == "metric":
-        return tuple(dict.fromkeys([*_targets(data), *metrics.keys()]))
+        return tuple(dict.fromkeys([*_targets(data), *metrics.keys(), *_operating(data)]))
     if path[0] == "waiver" and path[-1] == "target":
         return tuple(_targets(data))
     return ()

@@ -70,7 +70,7 @@ def build(reader: Reader, source: Source, name: str) -> Sheet | None:
     solve = table(reader, PARTS[SOLVE], subtable(reader, data.get(SOLVE, {}), SOLVE), SOLVE)
     targets, dimensions = read_targets(reader, keys.stage, own, data.get(TARGET, {}))
     variants = read_variants(reader, keys, own, choose, data)
-    evidence = read_evidence(reader, keys.stage, dimensions, data)
+    evidence = read_evidence(reader, keys.stage, bias is None or bias.ideal, dimensions, data)
     waivers = read_waivers(reader, dimensions, data)
     remarks = read_remarks(reader, data)
     acceptances = read_acceptances(reader, data)

@@ -9,7 +9,7 @@ from collections.abc import Callable, Iterable, Iterator, Mapping
 from typing import Any, TypeVar, cast
 
 from worksheet.model import dimension as dim
-from worksheet.model import metrics
+from worksheet.model import metrics, operating
 from worksheet.model.dimension import Dimension
 from worksheet.model.keys import Key, Kind, Table
 from worksheet.model.sheet import Acceptance, Collision, Evidence, Remark, Target, Value, Waiver
@@ -167,17 +167,22 @@ def _entries(reader: Reader, part: Table, data: Mapping[str, Any]) -> Iterable[t
 
 
 def read_evidence(
-    reader: Reader, stage: Stage | None, targets: Dimensions, data: Mapping[str, Any]
+    reader: Reader, stage: Stage | None, ideal_bias: bool, targets: Dimensions, data: Mapping[str, Any]
 ) -> tuple[Evidence, ...]:
-    """Every [[evidence]]."""
+    """Every [[evidence]]: of a metric, a target, or a value of a device's operating point (DEVICE.VALUE)."""
     evidence = []
-    known = {**{metric.key: metric.dimension for metric in metrics.all_metrics()}, **targets}
+    devices = () if stage is None else tuple(device.name for device in stage.devices(ideal_bias))
+    known = {
+        **{metric.key: metric.dimension for metric in metrics.all_metrics()},
+        **operating.named(devices),
+        **targets,
+    }
     for entry, where in _entries(reader, EVIDENCE, data):
         subject = entry.get("metric")
         reason = stage.absent_metric(subject) if stage and isinstance(subject, str) and subject not in targets else None
         if reason:
             reader.report(below(where, "metric"), f"Found evidence for {clean(str(subject))}, expected none: {reason}.")
-        fields = _read(reader, EVIDENCE, entry, where, "metric", known, "a metric or a target of this sheet")
+        fields = _read(reader, EVIDENCE, entry, where, "metric", known, "a metric, a target or DEVICE.VALUE")
         if fields is not None:
             value = fields["value"]
             in_order(reader, where, entry, fields.get("low"), (value,), fields.get("high"))
