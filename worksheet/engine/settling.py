@@ -10,9 +10,10 @@ from worksheet.device import charge
 from worksheet.device.arrays import Array, Complex, Number
 from worksheet.engine import polynomial as poly
 
-_ROUNDS, _HALVE = 80, 4
-"""Steps of false position (Illinois) to the last crossing; every fourth halves the bracket."""
-_CLOSE = 1e-14
+_ROUNDS, _HALVE = 80, 5
+"""Steps of false position (Illinois) to the last crossing; every fifth halves the bracket."""
+_CLOSE, _LEVEL = 1e-14, 2e-14
+"""How narrow a bracket, and how near the tolerance, relative to it, an error has to be."""
 _LOGARITHMIC, _EVEN = 96, 400
 """Points in time at which the error of three or more poles is looked at: even ones only where it can ring."""
 _APART = 1e-7
@@ -98,26 +99,28 @@ def _last_crossing(weights: Complex, constants: Complex, tolerance: Array) -> Ar
 
 
 def _last(error: _Error, poles: int) -> Array:
+    """The last crossing of each case: false position (Illinois) on the error's logarithm, which falls nearly straight."""
     low, high, never = error.bracket_of_two() if poles == 2 else error.bracket_by_scan()
-    above, below = error.excess(low[None])[0], error.excess(high[None])[0]
-    last = np.zeros(low.shape)
-    done = np.asarray(never, dtype=np.bool_) | ~(high - low > _CLOSE * high)
+    above, below = error.level(low), error.level(high)
+    time, last = 0.5 * (low + high), np.zeros(low.shape)
+    done = np.asarray(never, dtype=np.bool_)
     for k in range(_ROUNDS):
+        done = done | ~(high - low > _CLOSE * high)
         if done.all():
             break
         with np.errstate(all="ignore"):
             middle = low + (high - low) * (above / (above - below))
         stuck = ~((middle > low) & (middle < high)) | (k % _HALVE == _HALVE - 1)
-        middle = np.where(stuck, 0.5 * (low + high), middle)
-        excess = error.excess(middle[None])[0]
-        outside = excess > 0
-        to_low, to_high = (outside | (excess == 0)) & ~done, ~outside & ~done
-        below = np.where(to_high, excess, np.where(to_low & (last > 0), below / 2.0, below))
-        above = np.where(to_low, excess, np.where(to_high & (last < 0), above / 2.0, above))
-        low, high = np.where(to_low, middle, low), np.where(to_high, middle, high)
+        time = np.where(done, time, np.where(stuck, 0.5 * (low + high), middle))
+        level = error.level(time)
+        outside = level > 0
+        to_low, to_high = outside & ~done, ~outside & ~done
+        below = np.where(to_high, level, np.where(to_low & (last > 0), below / 2.0, below))
+        above = np.where(to_low, level, np.where(to_high & (last < 0), above / 2.0, above))
+        low, high = np.where(to_low, time, low), np.where(to_high, time, high)
         last = np.where(outside, 1.0, -1.0)
-        done = done | ~(high - low > _CLOSE * high)
-    return np.where(never, 0.0, 0.5 * (low + high))
+        done = done | (np.abs(level) <= _LEVEL)
+    return np.where(never, 0.0, time)
 
 
 class _Error:
@@ -142,6 +145,11 @@ class _Error:
         for weight, rate in zip(self._weights, self._rates, strict=True):
             total += (weight * np.exp(-times * rate)).real
         return np.asarray(np.abs(total) - self._tolerance)
+
+    def level(self, times: Array) -> Array:
+        """ln(abs(error)/tolerance) at one time for each case."""
+        with np.errstate(divide="ignore"):
+            return np.asarray(np.log1p(self.excess(times[None])[0] / self._tolerance))
 
     def bracket_of_two(self) -> tuple[Array, Array, Array]:
         """Times before and after the last crossing of two poles, from the extrema in closed form."""
