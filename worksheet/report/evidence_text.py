@@ -2,11 +2,12 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterator, Sequence
+from collections.abc import Iterator, Mapping, Sequence
 from typing import Any
 
+from worksheet.compare.inputs import Moved
 from worksheet.model.problem import Problem
-from worksheet.report import plain, wording
+from worksheet.report import plain, revisions_plain, wording
 from worksheet.report.table import Column, Table, lines, wrapped
 from worksheet.review.deviations import Deviation, Summary
 
@@ -37,8 +38,14 @@ def row(one: Deviation) -> tuple[Any, ...]:
     )  # fmt: skip
 
 
-def text(found: Sequence[Deviation], summed: Sequence[Summary], width: int) -> Iterator[str]:
-    """As a designer reads it: piece by piece, then metric by metric."""
+Since = Mapping[tuple[str, str], tuple[str, tuple[Moved, ...]]]
+"""By sheet and digest: the revision that had the digest, and what is stated differently now."""
+
+
+def text(
+    found: Sequence[Deviation], summed: Sequence[Summary], width: int, since: Since | None = None
+) -> Iterator[str]:
+    """As a designer reads it: piece by piece, what moved since the stale ones, then metric by metric."""
     if not found:
         yield "There is no evidence yet."
         return
@@ -53,6 +60,12 @@ def text(found: Sequence[Deviation], summed: Sequence[Summary], width: int) -> I
     )
     rows = tuple(_shown(one) for one in found)
     yield from lines(Table(columns, rows), width)
+    for (sheet, basis), (revision, moved) in (since or {}).items():
+        named = ", ".join(
+            dict.fromkeys(one.evidence.metric for one in found if (one.sheet, one.evidence.basis) == (sheet, basis))
+        )
+        said = "; ".join(revisions_plain.movement(one) for one in moved) or "what other sheets give"
+        yield from wrapped(f"{sheet} {named}: since {revision[:10]} moved: {said}", width, "  ")
     if summed:
         yield ""
         yield "By how much the calculation is off, stale evidence left out"

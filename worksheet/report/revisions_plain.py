@@ -149,8 +149,13 @@ def _needed(need: Need) -> str:
 
 def _stated(moved: Sequence[Moved], width: int) -> Iterator[str]:
     for m in moved:
-        old, new = (_shown(value, m.unit) for value in (m.old, m.new))
-        yield from wrapped(f"{m.key}: {old} -> {new}", width, "  ")
+        yield from wrapped(movement(m), width, "  ")
+
+
+def movement(moved: Moved) -> str:
+    """One stated thing before and after, in words."""
+    old, new = (_shown(value, moved.unit) for value in (moved.old, moved.new))
+    return f"{moved.key}: {old} -> {new}"
 
 
 def _shown(value: Any, unit: str) -> str:

@@ -60,8 +60,17 @@ def run(args: argparse.Namespace, output: Output) -> int:
     elif args.csv:
         output.table(evidence_text.COLUMNS, map(evidence_text.row, found))
     elif workbook.project.file is not None and not problems:
-        output.lines(evidence_text.text(found, summaries(found), output.width))
+        output.lines(evidence_text.text(found, summaries(found), output.width, _moved(root, found, today)))
     return Status.BAD_INPUT if problems else Status.FINE
+
+
+def _moved(root: Path, found: Any, today: Any) -> dict[tuple[str, str], Any]:
+    """What moved since stale evidence was found, by sheet and digest, as far as git knows."""
+    from worksheet.session.since import Since
+
+    stale = dict.fromkeys((one.sheet, one.evidence.basis) for one in found if one.stale)
+    since = Since(root, today)
+    return {key: moved for key in stale if (moved := since.moved(*key)) is not None}
 
 
 def _cells(args: argparse.Namespace, today: Any) -> list[Cells] | list[Any]:
