@@ -99,7 +99,7 @@ def _last_crossing(weights: Complex, constants: Complex, tolerance: Array) -> Ar
 
 
 def _last(error: _Error, poles: int) -> Array:
-    """The last crossing of each case: false position (Illinois) on the error's logarithm, which falls nearly straight."""
+    """The last crossing of each case: false position (Illinois) on the logarithm, which falls nearly straight."""
     low, high, never = error.bracket_of_two() if poles == 2 else error.bracket_by_scan()
     above, below = error.level(low), error.level(high)
     time, last = 0.5 * (low + high), np.zeros(low.shape)

@@ -25,18 +25,15 @@ def basis(case: Case) -> str:
 
     Numbers count by value: a proposed one to six digits, one from another sheet to nine.
     """
-    shared, own = _shared(case), _content(case)
-    parts: list[str] = []
-    run: dict[str, Any] = {}  # of keys that follow each other and are the sheet's own
-    for key in sorted((*shared, *own)):
-        if key in own:
-            run[key] = own[key]
-            continue
-        parts += [_dumps(run)[1:-1], f'"{key}":{shared[key]}'] if run else [f'"{key}":{shared[key]}']
-        run = {}
-    parts += [_dumps(run)[1:-1]] if run else []
-    return hashlib.sha256(f"{{{','.join(parts)}}}".encode()).hexdigest()[:_LENGTH]
+    shared = _shared(case)
+    text = _dumps({**_content(case), **dict.fromkeys(shared, _PLACE)})
+    for key, part in shared.items():  # written already: put where it belongs
+        text = text.replace(f'"{key}":{_PLACED}', f'"{key}":{part}', 1)
+    return hashlib.sha256(text.encode()).hexdigest()[:_LENGTH]
 
+
+_PLACE, _PLACED = "\x01", '"\\u0001"'
+"""What stands in the place of a part that is written already; no text that counts can hold it."""
 
 _dumps = json.JSONEncoder(sort_keys=True, separators=(",", ":")).encode
 

@@ -78,8 +78,9 @@ def load(path: Path, shown: str) -> bytes | Problem:
         status = os.fstat(descriptor)
         if not stat.S_ISREG(status.st_mode):
             return Problem(shown, None, "", f"Found {_kind(status.st_mode)}, expected an ordinary file.")
-        with os.fdopen(descriptor, "rb", closefd=False) as file:
-            content = file.read(LARGEST + 1)
+        content = os.read(descriptor, LARGEST + 1)
+        while 0 < len(content) <= LARGEST and (more := os.read(descriptor, LARGEST + 1 - len(content))):
+            content += more
     except OSError as error:
         return Problem(shown, None, "", f"The file cannot be read: {_reason(error)}.")
     finally:
