@@ -30,6 +30,7 @@ COMMANDS = (
     "evidence",
     "agenda",
     "minutes",
+    "handoff",
 )
 """Modules of worksheet.cli.commands, in the order of the help."""
 

@@ -7,7 +7,7 @@ from dataclasses import dataclass, field
 
 import numpy as np
 
-from worksheet.device.arrays import Array
+from worksheet.device.arrays import Array, Complex
 from worksheet.engine import polynomial as poly
 from worksheet.model.sheet import Condition
 from worksheet.review import judge
@@ -61,7 +61,7 @@ def margins(points: Points) -> Margins:
             room = judge.distance(target, values).reshape(shape)
         least = np.where(np.isnan(room).any(axis=0), np.nan, room.min(axis=0))
         found[target.name] = least[:1] if target.at == "nominal" else least
-    return Margins(points.case.conditions.conditions, found, points.valid.reshape(shape).all(axis=0))
+    return Margins(points.case.conditions.conditions, found, np.asarray(points.valid.reshape(shape).all(axis=0)))
 
 
 def response(points: Points) -> Response | None:
@@ -72,7 +72,7 @@ def response(points: Points) -> Response | None:
     corner = poles[np.isfinite(poles) & (poles > 0)]
     low, high = (float(f(corner)) if len(corner) else _FALLBACK for f in (np.min, np.max))
     frequency = np.geomspace(low / 10**_DECADES_BELOW, high * 10**_DECADES_ABOVE, _STEPS)
-    s = 2j * np.pi * frequency
+    s: Complex = np.asarray(2j * np.pi * frequency, dtype=np.complex128)
     with np.errstate(all="ignore"):
         transfer = _at(top, s) / _at(bottom, s)
     if not np.isfinite(transfer).all() or not np.all(np.abs(transfer) > 0):
@@ -87,7 +87,7 @@ def _table(polynomial: poly.Poly, count: int) -> list[Array]:
     return [np.broadcast_to(np.asarray(c, dtype=np.float64), (count,)).reshape(count, 1) for c in polynomial]
 
 
-def _at(polynomial: list[Array], s: Array) -> Array:
+def _at(polynomial: list[Array], s: Complex) -> Complex:
     total = np.zeros((1, len(s)), dtype=np.complex128)
     for coefficient in reversed(polynomial):
         total = total * s + coefficient

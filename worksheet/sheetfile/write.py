@@ -80,6 +80,26 @@ def create(path: Path, text: str, *, root: Path, mode: int | None = None) -> byt
     return content
 
 
+def put(path: Path, content: bytes, *, root: Path) -> None:
+    """Put a file that no reader of sheets will read, of any length, in its place; what stood there is replaced.
+
+    Whether that may be is for the caller to know.
+
+    Raises: WriteRefusedError, where the path leads out of the root or the system refuses.
+    """
+    with _sentences(path):
+        target = _within(path, root)
+        if target.exists():
+            _replace(target, content, target.stat())
+            return
+        beside = _write_beside(target, content, _ORDINARY)
+        try:
+            _put_new(beside, target)
+        finally:
+            beside.unlink(missing_ok=True)
+        _flush_folder(target.parent)
+
+
 def remove(path: Path, *, read: bytes, root: Path) -> None:
     """Take a file away that is still what was read. A link is taken away, not what it points to.
 

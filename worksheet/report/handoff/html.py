@@ -101,6 +101,10 @@ def _node(node: Node) -> Iterator[str]:
             yield f"<figcaption>{escaped(node.caption)}</figcaption></figure>"
 
 
+def _side(node: Table, column: int) -> str:
+    return _class("right" if column in node.right else "")
+
+
 def _class(name: str) -> str:
     return f' class="{name}"' if name else ""
 
@@ -122,17 +126,11 @@ def _number(part: Number) -> str:
 def _table(node: Table) -> Iterator[str]:
     caption = escaped(node.caption)
     yield f'<div class="wide" tabindex="0" role="group" aria-label="{caption}"><table><caption>{caption}</caption>'
-    heads = (
-        f'<th scope="col"{' class="right"' if k in node.right else ""}>{escaped(title)}</th>'
-        for k, title in enumerate(node.columns)
-    )
+    heads = (f'<th scope="col"{_side(node, k)}>{escaped(title)}</th>' for k, title in enumerate(node.columns))
     yield f"<thead><tr>{''.join(heads)}</tr></thead><tbody>"
     for row in node.rows:
         first = f'<th scope="row">{_cell(row[0])}</th>'
-        rest = (
-            f"<td{_class('right' if k in node.right else '')}>{_cell(cell)}</td>"
-            for k, cell in enumerate(row[1:], start=1)
-        )
+        rest = (f"<td{_side(node, k)}>{_cell(cell)}</td>" for k, cell in enumerate(row[1:], start=1))
         yield f"<tr>{first}{''.join(rest)}</tr>"
     yield "</tbody></table></div>"
 
