@@ -9,6 +9,7 @@ from pathlib import Path
 import numpy as np
 import pytest
 
+from tests.bench.solve_speed import case_of as speed_case
 from tests.documents import Document
 from tests.precision.draw import draw
 from tests.solver.drawn import KINDS, case_of, with_targets
@@ -75,3 +76,25 @@ def test_bounds_put_back_with_the_inversion_kept(kind: tuple[str, str, str], tmp
 @pytest.mark.parametrize("kind", KINDS, ids="-".join)
 def test_bounds_put_back_at_length(kind: tuple[str, str, str], seed: int, tmp_path: Path) -> None:
     check(seed, kind, tmp_path, random.Random(seed).choice(("geometry", "inversion")))
+
+
+def test_a_range_counts_while_other_variables_move(tmp_path: Path) -> None:
+    """The worst end of the load's range sets the bound of the current; put back, it is just met there."""
+    load = {"value": 1e-12, "low": 0.7e-12, "high": 1.5e-12}
+    case = speed_case(tmp_path, "source-follower", assume={"load_capacitance": load})
+    (bound,) = [b for b in needed.windows(needed.trials_of(case))["bias_current"].bounds if b.target == "bandwidth"]
+    worst = [
+        float(np.min(case.moved({"bias_current": bound.value, "load_capacitance": farads}).solution["bandwidth"]))
+        for farads in load.values()
+    ]
+    assert min(worst) == worst[2] == pytest.approx(2e6, rel=JUST_MET)
+
+
+def test_a_region_between_two_samples_is_found(tmp_path: Path) -> None:
+    """A minimum and a maximum that leave less than a step of the scan between them, and one that a turn leaves out."""
+    case = speed_case(tmp_path, "common-source", target={"slew_rate": {"min": 4e6, "max": 4.0004e6}})
+    window = needed.windows(needed.trials_of(case, "nominal"))["bias_current"]
+    assert window.region is not None
+    assert window.region.low is not None
+    assert window.region.high is not None
+    assert window.region.high / window.region.low == pytest.approx(1.0001, rel=1e-6)

@@ -124,9 +124,25 @@ def test_no_random_feasible_point_beats_it(kind: tuple[str, str, str], tmp_path:
     good = holds(trials.constraints, slack).all(axis=0) & (free.room(first, rest) >= 0)
     if found.recommended is None:
         assert not good.any() or found.reason == propose.NO_BOUND
-    elif good.any() and "bias_current" in free.names:
-        least = free.moves(first[good], rest[good])["bias_current"].min()
-        assert found.recommended.values["bias_current"] <= least * (1 + 1e-6)
+        return
+    best = found.recommended
+    held = trials.clear({name: np.array([best.values[name]]) for name in free.names}).slack
+    assert holds(trials.constraints, held).all()
+    if not free.by_inversion or len(space.rest) != 1:
+        return
+    here = np.log([best.values["bias_current"], best.inversion_coefficient])
+    for scale in (10.0, 0.1, 1e-2, 1e-3, 1e-4):
+        near = np.clip(here + scale * generator.normal(size=(2000, 2)), *np.array([space.first, *space.rest]).T)
+        first, rest = np.append(first, near[:, 0]), np.concatenate([rest, near[:, 1:]])
+    slack = trials.clear(free.moves(first, rest)).slack
+    good = holds(trials.constraints, slack).all(axis=0) & (free.room(first, rest) >= 0)
+    assert good.any()
+    values = free.moves(first[good], rest[good])
+    assert best.values["bias_current"] <= values["bias_current"].min() * (1 + 2e-6)
+    assert found.compact is not None
+    allowed = values["bias_current"] <= best.values["bias_current"] * (1 + case.sheet.solve.current_allowance)
+    area = propose.gate_area(case, values)[allowed]
+    assert not len(area) or found.compact.gate_area <= area.min() * (1 + 3e-3)
 
 
 def test_what_is_taken_over_passes_review(tmp_path: Path) -> None:

@@ -124,7 +124,8 @@ def plane(
         x, y: Two design variables.
         x_span, y_span: What is looked at of each.
         x_cells, y_cells: Number of cells along each.
-    Returns: Plane. With keep "inversion" the width goes with the bias current, as in its window.
+    Returns: Plane. With keep "inversion" the width goes with the bias current, as in its window; the ends of a range
+        go with its value.
     """
     subject = trials.subject
     known = variables(subject)
@@ -135,7 +136,8 @@ def plane(
     for start in range(0, len(flat[0]), _CHUNK):
         moves: dict[str, Array] = {}
         for line, values in zip(lines, flat, strict=True):
-            moves.update(line(values[start : start + _CHUNK]))
+            moved = line(values[start : start + _CHUNK])
+            moves.update({name: trials.with_range(name, v) for name, v in moved.items()})
         met.append(holds(trials.constraints, trials.clear(moves).slack))
     shape = (len(trials.constraints), y_cells + 1, x_cells + 1)
     return Plane(known[x], known[y], x_span, y_span, trials.constraints, np.concatenate(met, axis=1).reshape(shape))
@@ -147,6 +149,7 @@ def missed_at(trials: Trials, values: Mapping[str, float]) -> tuple[str, ...]:
     known = variables(subject)
     moves: dict[str, Array] = {}
     for name, value in values.items():
-        moves.update(needed.line_of(subject, known[name])[0](np.array([value])))
+        moved = needed.line_of(subject, known[name])[0](np.array([value]))
+        moves.update({key: trials.with_range(key, v) for key, v in moved.items()})
     met = holds(trials.constraints, trials.clear(moves).slack)[:, 0]
     return tuple(dict.fromkeys(c.name for c, ok in zip(trials.constraints, met, strict=True) if not ok))

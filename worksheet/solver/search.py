@@ -30,6 +30,7 @@ _ZOOM = {1: (9, 12, 0.3), 2: (5, 18, 0.45), 3: (5, 18, 0.45)}
 _BEFORE_DESCENT, _BEFORE_RAISING, _LEAST_REACH = 4, 7, 0.1
 """Rounds after which a place that holds is improved along its slopes, and one that does not is brought nearer to it."""
 
+_DESCENTS, _LEAST_GAIN = 4, 1e-7
 _WIDE_FIRST, _WIDE_REST = 61, {1: 41, 2: 9}
 _CLIMB_POINTS, _CLIMB_ROUNDS, _CLIMB_SHRINK = 5, 8, 0.6
 _CLOSE = 0.02
@@ -192,7 +193,7 @@ class Search:
         reach = float(np.max(span, initial=_LEAST_REACH))
         best = best if best[2] >= 0 else self._raised(best, reach)
         starts = [best, *([] if near is None else [(float(near[0]), near[1:], 0.0)])]
-        starts.sort(key=lambda b: (b[2] < 0 or b[0] > cap + 1e-6, float(value(np.array([b[0]]), b[1][None])[0])))
+        starts.sort(key=lambda b: (b[2] < 0 or b[0] > cap + 1e-6, float(value(*_one(b))[0])))
         found = self._finished(starts[0], value, cap, reach)
         if near is not None and _rank(found, value, cap) > (False, float(value(near[:1], near[None, 1:])[0])):
             found = min(found, self._finished(starts[1], value, cap, reach), key=lambda f: _rank(f, value, cap))
@@ -203,8 +204,12 @@ class Search:
     def _finished(
         self, best: tuple[float, Array, float], value: Callable[[Array, Array], Array], cap: float, reach: float
     ) -> Found:
-        if best[2] >= 0 and self._space.rest:
-            best = self._descended(best, value, cap, reach)
+        for _ in range(_DESCENTS if best[2] >= 0 and self._space.rest else 0):
+            again = self._descended(best, value, cap, reach)
+            gained = value(*_one(best))[0] - value(*_one(again))[0]
+            best, reach = again, _LEAST_REACH
+            if abs(gained) < _LEAST_GAIN:
+                break
         return self._polished(best)
 
     def _scan_least(self, value: Callable[[Array, Array], Array], cap: float) -> tuple[float, Array, float] | None:
@@ -430,6 +435,11 @@ class Search:
                 break
         slack = self._along(np.array([good]), rest)
         return Found(np.array([good, *rest]), True, float(slack.min()))
+
+
+def _one(place: tuple[float, Array, float]) -> tuple[Array, Array]:
+    """A place as (first, rest) over one trial."""
+    return np.array([place[0]]), place[1][None]
 
 
 def _rank(found: Found, value: Callable[[Array, Array], Array], cap: float) -> tuple[bool, float]:

@@ -141,13 +141,20 @@ class Trials:
         vertices = {name: values[kept] for name, values in self.vertices.items()}
         return Trials(self.subject, self.over, vertices, self.waived, chosen)
 
+    def with_range(self, name: str, values: Array) -> Array:
+        """Values of something that may have a range, its ends moving along; shape (trials,) or (trials, ends)."""
+        if name not in self.vertices:
+            return values
+        ends = self.vertices[name][:, 0]
+        return np.asarray(values[:, None] * (ends / ends[0] if ends[0] else 1.0))
+
     def solve(self, moves: Mapping[str, Array]) -> tuple[Subject, NumericSolution]:
         """The subject moved to trial points, and its solution.
 
         Args:
-            moves: Values by name, each of shape (trials,).
+            moves: Values by name, each of shape (trials,), or (trials, ends) where they go with the ends of ranges.
         """
-        shaped = {name: np.asarray(v)[:, None, None] for name, v in moves.items()}
+        shaped = {name: np.asarray(v).reshape(len(v), -1, 1) for name, v in moves.items()}
         moved = self.subject.moved({**self.vertices, **shaped})
         with np.errstate(all="ignore"):  # what is tried may be out of all bounds
             if self._only is None:

@@ -20,6 +20,8 @@ Line = Callable[[Array], Mapping[str, Array]]
 _A_DECADE = 12
 _LEAST, _MOST = 40, 120
 _GROWTHS = 4
+_CLOSER = 6
+_NEIGHBOURS = (((1, 0), slice(0, -1)), ((0, 1), slice(1, None)))
 _JUMP = 1e-7
 """More slack than this at the last value that meets: the metric jumps or stops existing there."""
 
@@ -70,13 +72,43 @@ def windows(trials: Trials, axes: Sequence[Axis]) -> list[Window | None]:
     Returns: a Window each, None where no target bounds the variable
     """
     line = _Lines(trials, axes)
-    places = [axis.places() for axis in axes]
-    owner = np.repeat(np.arange(len(axes)), [len(xs) for xs in places])
+    places, cleared = _scanned(trials, line, [axis.places() for axis in axes])
+    turning = [_turning(xs, found.slack) for xs, found in zip(places, cleared, strict=True)]
+    if any(len(xs) for xs in turning):
+        more, closer = _scanned(trials, line, turning)
+        places, cleared = zip(*map(_merged, places, cleared, more, closer), strict=True)
+    met = [holds(trials.constraints, found.slack) for found in cleared]
+    crossings = _crossings(trials, line, places, met, cleared)
+    return [_window(trials, axis, mask, found) for axis, mask, found in zip(axes, met, crossings, strict=True)]
+
+
+def _scanned(trials: Trials, line: _Lines, places: Sequence[Array]) -> tuple[Sequence[Array], Sequence[Cleared]]:
+    """All constraints at places of each axis, in one batch."""
+    owner = np.repeat(np.arange(len(places)), [len(xs) for xs in places])
     cleared = trials.clear(line(owner, np.concatenate(places)))
-    met = holds(trials.constraints, cleared.slack)
-    parts = [np.asarray(met[:, owner == k]) for k in range(len(axes))]
-    crossings = _crossings(trials, line, places, parts, [_part(cleared, owner == k) for k in range(len(axes))])
-    return [_window(trials, axis, mask, found) for axis, mask, found in zip(axes, parts, crossings, strict=True)]
+    return places, [Cleared(cleared.slack[:, owner == k], cleared.worst[:, owner == k]) for k in range(len(places))]
+
+
+def _turning(xs: Array, slack: Array) -> Array:
+    """Places between those of a scan where a constraint turns round so near its limit that it may cross it twice."""
+    change = np.diff(slack, axis=1)
+    before, after = (np.pad(change, ((0, 0), pad), mode="edge")[:, cut] for pad, cut in _NEIGHBOURS)
+    turns = (before * change < 0) | (change * after < 0)
+    reach = np.maximum(np.maximum(np.abs(before), np.abs(after)), np.abs(change))
+    same = (slack[:, 1:] >= 0) == (slack[:, :-1] >= 0)
+    near = np.minimum(np.abs(slack[:, 1:]), np.abs(slack[:, :-1])) <= reach
+    at = np.flatnonzero((turns & same & near).any(axis=0))
+    shares = np.arange(1, _CLOSER + 1) / (_CLOSER + 1)
+    return np.asarray((xs[at, None] * (xs[at + 1] / xs[at])[:, None] ** shares).reshape(-1))
+
+
+def _merged(xs: Array, cleared: Cleared, more: Array, closer: Cleared) -> tuple[Array, Cleared]:
+    """The places of two scans in rising order, and what was found there."""
+    every = np.concatenate([xs, more])
+    order = np.argsort(every, kind="stable")
+    slack = np.hstack([cleared.slack, closer.slack])[:, order]
+    worst = np.hstack([cleared.worst, closer.worst])[:, order]
+    return every[order], Cleared(slack, worst)
 
 
 class _Lines:
@@ -116,10 +148,6 @@ def _window(trials: Trials, axis: Axis, met: Mask, crossings: list[Crossing]) ->
         cannot_help=tuple(dict.fromkeys(trials.constraints[k].name for k in never)),
         keep=axis.keep,
     )
-
-
-def _part(cleared: Cleared, mine: Mask) -> Cleared:
-    return Cleared(cleared.slack[:, mine], cleared.worst[:, mine])
 
 
 @dataclass(frozen=True, eq=False, slots=True)
