@@ -53,6 +53,20 @@ class Parameters:
         return self.specific_current * self.width / self.length
 
 
+def couplings(process: Mapping[str, Number], changes: Mapping[str, Number], length: Number) -> tuple[Number, Number]:
+    """Gate coupling kappa and drain coupling sigma of a corner at a length, both at zero source-bulk voltage. [-]
+
+    Args:
+        process, changes, length: As of at_condition.
+    Source: sigma(L) = sigma_ref (L_ref/L)^m; Tsividis and McAndrew 2011.
+    """
+    coupling = process["drain_coupling"] * np.power(
+        process["drain_coupling_length"] / length, process["drain_coupling_exponent"]
+    )
+    shifted = process["kappa"] + changes.get("kappa_shift", 0.0)
+    return shifted, coupling * changes.get("drain_coupling_factor", 1.0)
+
+
 def at_condition(
     process: Mapping[str, Number],
     changes: Mapping[str, Number],
@@ -73,19 +87,17 @@ def at_condition(
     Source: Tsividis and McAndrew 2011 for the temperature laws; sigma(L) = sigma_ref (L_ref/L)^m.
     """
     factor = changes.get("capacitance_factor", 1.0)
-    coupling = process["drain_coupling"] * np.power(
-        process["drain_coupling_length"] / length, process["drain_coupling_exponent"]
-    )
+    kappa, drain_coupling = couplings(process, changes, length)
     warmth = temperature / reference_temperature
     return Parameters(
-        kappa=process["kappa"] + changes.get("kappa_shift", 0.0),
+        kappa=kappa,
         threshold=process["threshold"]
         + changes.get("threshold_shift", 0.0)
         - process["threshold_drift"] * (temperature - reference_temperature),
         specific_current=process["specific_current"]
         * changes.get("specific_current_factor", 1.0)
         * np.power(warmth, 2.0 - process["mobility_exponent"]),
-        drain_coupling=coupling * changes.get("drain_coupling_factor", 1.0),
+        drain_coupling=drain_coupling,
         length_modulation=process["length_modulation"],
         surface_potential=process["surface_potential"],
         velocity=process["velocity_length"] / length,

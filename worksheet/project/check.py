@@ -6,10 +6,10 @@ from collections.abc import Iterator, Mapping
 
 import numpy as np
 
-from worksheet.device.parameters import at_condition
+from worksheet.device.parameters import couplings
 from worksheet.model import dimension as dim
 from worksheet.model.problem import Problem
-from worksheet.model.process_keys import CORNER_CHANGES, DEVICE_PARAMETERS
+from worksheet.model.process_keys import CORNER_CHANGES
 from worksheet.model.quantity import format_quantity
 from worksheet.model.sheet import DeviceModel, Process, ProjectFile, Sheet
 from worksheet.model.sheet_keys import GEOMETRY
@@ -19,7 +19,7 @@ from worksheet.stages.stage import BIAS, Stage, Transistor
 
 TYPICAL = "typical"
 _SLACK = 1e-9
-_NUMBERS = tuple(key for key in DEVICE_PARAMETERS if key.dimension is not None)
+_COUPLED = ("kappa", "drain_coupling", "drain_coupling_length", "drain_coupling_exponent")
 _COUPLING = tuple(key for key in CORNER_CHANGES if key.name in ("kappa_shift", "drain_coupling_factor"))
 
 
@@ -137,15 +137,12 @@ def coupling_problems(
     """kappa within (0, 1] and kappa + sigma(L) at most 1, in every corner, at one length."""
     corners: Mapping[str, Mapping[str, Mapping[str, float]]] = {TYPICAL: {}, **process.corners}
     changed = [devices.get(model.name, {}) for devices in corners.values()]
-    p = at_condition(
-        {key.name: model.number(key.name) for key in _NUMBERS},
+    kappas, sigmas = couplings(
+        {name: model.number(name) for name in _COUPLED},
         {key.name: np.array([c.get(key.name, key.default) for c in changed], dtype=np.float64) for key in _COUPLING},
-        process.reference_temperature,
-        process.reference_temperature,
-        length,
         length,
     )
-    for corner, kappa, coupling in zip(corners, np.asarray(p.kappa), np.asarray(p.drain_coupling), strict=True):
+    for corner, kappa, coupling in zip(corners, np.asarray(kappas).tolist(), np.asarray(sigmas).tolist(), strict=True):
         if not 0 < kappa <= 1:
             yield _problem(
                 sheet,
