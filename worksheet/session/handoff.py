@@ -27,9 +27,9 @@ from worksheet.session.revisions import compared, history, repository_of
 from worksheet.session.workbook import Workbook
 from worksheet.solver import needed
 from worksheet.solver import plane as planes
-from worksheet.solver.plane import Plane
+from worksheet.solver.relief import Relief, relief
 
-_CELLS = (72, 48)
+_CELLS = (44, 32)
 _GATES = 61
 _CURVES = 3
 
@@ -146,7 +146,7 @@ def _block(workbook: Workbook, result: SheetReview, ranked: Any) -> Block:
         algebra=tuple(explain(case, key) for key in result.sheet.targets),
         margins=margins(points),
         response=response(points),
-        plane=_plane(needs) if isinstance(needs, Needs) else None,
+        relief=_relief(needs) if isinstance(needs, Needs) else None,
         nominal=case.conditions.nominal,
         unsolved="" if isinstance(needs, Needs) else "; ".join(p.message for p in needs),
     )  # fmt: skip
@@ -164,13 +164,13 @@ def _hands(needs: Needs) -> Iterator[tuple[tuple[str, str], Hand]]:
                 yield (name, side), needs.hand(window, setting[0])
 
 
-def _plane(needs: Needs) -> Plane | None:
+def _relief(needs: Needs) -> Relief | None:
     across, up = mapping.ACROSS, mapping.UP
     known = needed.trials_of(needs.case)
     bounds = {name: tuple(b.value for b in w.bounds) for name, w in needs.solved.needed.items()}
     try:
         spans = planes.around(known, across, bounds), planes.around(known, up, bounds)
-        return planes.plane(known, across, spans[0], _CELLS[0], up, spans[1], _CELLS[1])
+        return relief(known, across, spans[0], up, spans[1], _CELLS)
     except (CaseError, KeyError):
         return None
 

@@ -6,7 +6,9 @@ import re
 from collections.abc import Iterator
 
 from worksheet.model import metrics, operating
-from worksheet.model.sheet import Evidence, Remark, Target, Waiver
+from worksheet.model.sheet import Evidence, Remark, Target, Value, Waiver
+from worksheet.model.sheet_keys import ASSUMPTIONS, BIAS_KEYS, DESIGN
+from worksheet.project.links import values_of
 from worksheet.report import wording
 from worksheet.report.algebra_text import origin
 from worksheet.report.handoff import pictures, schematic, sizes
@@ -28,6 +30,7 @@ from worksheet.report.handoff.tree import (
 from worksheet.report.handoff.windows import windows
 from worksheet.review.results import MISSED, UNKNOWN, EvidenceVerdict, SheetReview, TargetReview
 from worksheet.review.weakest import Weak
+from worksheet.solver.subject import own_unit
 
 _SENTENCE = re.compile(r"(.+?[.!?])(?:\s|$)", re.DOTALL)
 _MOST_WEAK = 15
@@ -54,7 +57,8 @@ def opening(found: Block, into: Builder) -> None:
     into.say(*counted(result).parts)
     if result.state_reason is not None:
         into.say(f"{result.state}: {result.state_reason}")
-    rest = " ".join(sheet.notes.split())
+    said = " ".join(sheet.notes.split())
+    rest = said.removeprefix(purpose(found)).strip()
     if rest:
         into.say(rest)
     into.head("Stage", "stage")
@@ -112,15 +116,28 @@ def _weak(found: Block, one: Weak) -> tuple[Cell, ...]:
     checked = f"checked by {one.checked_by}" if one.checked_by else ""
     when = f" on {one.checked.isoformat()}" if checked and one.checked is not None else ""
     beside = "; ".join(part for part in (one.source, one.note, f"{checked}{when}") if part)
+    stated = values_of(found.review.sheet).get(one.key)
+    unit = unit_of(one, stated)
+    formula = "" if stated is None or stated.formula is None else stated.formula.text
     return (
         text(one.key),
         text(one.trust or "not said"),
-        number(one.value, one.unit, f"{of}/value"),
-        number(one.break_value, one.unit, f"{of}/break_value"),
+        number(one.value, unit, f"{of}/value", formula or None),
+        number(one.break_value, unit, f"{of}/break_value"),
         share(one.room, f"{of}/room"),
         text(one.target or "-"),
         text(beside or "not said"),
     )
+
+
+def unit_of(one: Weak, stated: Value | None) -> str:
+    """The SI unit of a value that a block rests on; of an own name, that of the unit it was written in."""
+    if one.key.startswith("own.") and stated is not None:
+        return own_unit(stated)
+    table, _, name = one.key.partition(".")
+    keys = {"assume": ASSUMPTIONS, "bias": BIAS_KEYS}.get(table, ())
+    dimension = next((key.dimension for key in (*keys, *DESIGN) if key.name == name), None)
+    return one.unit if one.unit or dimension is None else dimension.unit
 
 
 def _remarks(found: Block, into: Builder) -> None:

@@ -7,7 +7,8 @@ data within `img`, where nothing of them can act. The policy in the head forbids
 from __future__ import annotations
 
 import base64
-from collections.abc import Iterator
+import re
+from collections.abc import Iterator, Sequence
 from xml.etree import ElementTree
 
 from worksheet.model.text import clean
@@ -26,6 +27,11 @@ from worksheet.report.handoff.tree import (
     Points,
     Table,
 )
+
+_SHORT = 12
+"""Rows of a table that is not parted by a page break."""
+
+_BREAKS = re.compile(r"(?<=[A-Za-z])([_./])(?=[A-Za-z])")
 
 POLICY = "default-src 'none'; img-src data:; style-src 'unsafe-inline'; base-uri 'none'; form-action 'none'"
 """What a browser may do with the page: show its own style and pictures that are in it."""
@@ -64,12 +70,38 @@ def _document(page: Page) -> Iterator[str]:
     yield "<body>"
     yield '<a class="skip" href="#main">Skip to the content</a>'
     yield '<main id="main">'
-    for node in page.nodes:
-        yield from _node(node)
+    yield from _kept_together(page.nodes)
     yield "</main>"
     yield f"<footer><p>{escaped(page.foot)}</p></footer>"
     yield "</body>"
     yield "</html>"
+
+
+def _kept_together(nodes: Sequence[Node]) -> Iterator[str]:
+    """The nodes; headings and what follows them in one piece that no page break parts, unless it is a long table."""
+    place = 0
+    while place < len(nodes):
+        end = place
+        while end < len(nodes) and isinstance(nodes[end], Heading):
+            end += 1
+        while end > place and end < len(nodes) and isinstance(nodes[end], Paragraph):
+            end += 1
+        follows = nodes[end] if end > place and end < len(nodes) else None
+        if follows is not None and not isinstance(follows, Heading) and not _long(follows):
+            end += 1
+        group = nodes[place : max(end, place + 1)]
+        kept = len(group) > 1
+        if kept:
+            yield '<div class="keep">'
+        for node in group:
+            yield from _node(node)
+        if kept:
+            yield "</div>"
+        place += len(group)
+
+
+def _long(node: Node) -> bool:
+    return (isinstance(node, Table) and len(node.rows) > _SHORT) or isinstance(node, Lines)
 
 
 def _node(node: Node) -> Iterator[str]:
@@ -114,8 +146,13 @@ def _beside(cell: Cell) -> str:
 
 
 def _cell(cell: Cell) -> str:
-    shown = "".join(_number(part) if isinstance(part, Number) else escaped(part) for part in cell.parts)
+    shown = "".join(_number(part) if isinstance(part, Number) else _words(part) for part in cell.parts)
     return f'<span class="{escaped(cell.tone)}">{shown}</span>' if cell.tone else shown
+
+
+def _words(said: str) -> str:
+    """Text in which a long name may go on in the next line."""
+    return _BREAKS.sub(r"\1<wbr>", escaped(said))
 
 
 def _number(part: Number) -> str:
@@ -125,7 +162,9 @@ def _number(part: Number) -> str:
 
 def _table(node: Table) -> Iterator[str]:
     caption = escaped(node.caption)
-    yield f'<div class="wide" tabindex="0" role="group" aria-label="{caption}"><table><caption>{caption}</caption>'
+    short = "" if _long(node) else " short"
+    yield f'<div class="wide{short}" tabindex="0" role="group" aria-label="{caption}">'
+    yield f"<table><caption>{caption}</caption>"
     heads = (f'<th scope="col"{_side(node, k)}>{escaped(title)}</th>' for k, title in enumerate(node.columns))
     yield f"<thead><tr>{''.join(heads)}</tr></thead><tbody>"
     for row in node.rows:

@@ -16,7 +16,7 @@ from worksheet.review.pictured import Margins, Response
 from worksheet.review.results import Review, SheetReview
 from worksheet.review.weakest import Weak
 from worksheet.solver.explanation import Explanation
-from worksheet.solver.plane import Plane
+from worksheet.solver.relief import Relief
 from worksheet.solver.results import Solved
 from worksheet.stages.circuit import Circuit
 
@@ -37,7 +37,7 @@ class Block:
         keys: Descriptions of the windows' variables.
         hand: Algebra of the bounds that set a window, by window and side.
         algebra: Of every target, at the nominal condition.
-        margins, response, plane: What its pictures are drawn from; None where there is nothing to draw.
+        margins, response, relief: What its pictures are drawn from; None where there is nothing to draw.
         nominal: Its nominal condition.
     """
 
@@ -51,7 +51,7 @@ class Block:
     algebra: tuple[Explanation, ...]
     margins: Margins
     response: Response | None
-    plane: Plane | None
+    relief: Relief | None
     nominal: Condition
     unsolved: str = ""
 

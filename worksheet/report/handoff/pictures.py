@@ -81,39 +81,39 @@ def _legend(axes: Any, figure: Any) -> None:
 
 def window_map(found: Block) -> Picture | None:
     """Where all targets hold over bias current and load capacitance."""
-    plane = found.plane
-    if plane is None or found.solved is None:
+    land = found.relief
+    if land is None or found.solved is None:
         return None
-    x = plane.x_span.edges(plane.met.shape[2] - 1)
-    y = plane.y_span.edges(plane.met.shape[1] - 1)
-    every = plane.met.all(axis=0)
-    shown = [k for k in range(len(plane.constraints)) if plane.crossed[k].any()]
+    x, y = land.across, land.up
+    every = land.met.all(axis=0)
+    lowest = land.slack.min(axis=0)
+    shown = [k for k in range(len(land.constraints)) if land.met[k].any() and not land.met[k].all()]
     with _drawn(1, _HIGH) as (figure, (axes,), written):
         axes.set_xscale("log")
         axes.set_yscale("log")
         axes.set_xlim(x[0], x[-1])
         axes.set_ylim(y[0], y[-1])
         if every.any():
-            axes.contourf(x, y, every.astype(float), levels=[0.5, 1.5], colors=["#cfe3d4"])
+            axes.contourf(x, y, lowest, levels=[0.0, 1.0], colors=["#cfe3d4"])
         for order, k in enumerate(shown):
             colour, line = _COLOURS[order % len(_COLOURS)], _LINES[order % len(_LINES)]
-            axes.contour(x, y, plane.met[k].astype(float), levels=[0.5], colors=[colour], linestyles=[line])
-            axes.plot([], [], color=colour, linestyle=line, label=_edge(plane.constraints[k]))
-        axes.plot([plane.x.present], [plane.y.present], "k+", markersize=12, label="present point")
+            axes.contour(x, y, land.slack[k], levels=[0.0], colors=[colour], linestyles=[line])
+            axes.plot([], [], color=colour, linestyle=line, label=_edge(land.constraints[k]))
+        axes.plot([land.x.present], [land.y.present], "k+", markersize=12, label="present point")
         best = found.solved.recommended
         if best is not None:
-            here = [best.values.get(v.name, v.present) for v in (plane.x, plane.y)]
+            here = [best.values.get(v.name, v.present) for v in (land.x, land.y)]
             axes.plot([here[0]], [here[1]], "ko", markersize=6, fillstyle="none", label="recommended")
         _axis(axes.xaxis, CURRENT, "bias current")
         _axis(axes.yaxis, CAPACITANCE, "load capacitance")
         _legend(axes, figure)
-    names = ", ".join(dict.fromkeys(plane.constraints[k].name for k in shown)) or "nothing"
+    names = ", ".join(dict.fromkeys(land.constraints[k].name for k in shown)) or "nothing"
     share = f"{every.mean():.0%} of what is shown" if every.any() else "nowhere in what is shown"
     alt = (
         f"Map of bias current from {format_quantity(x[0], CURRENT, 3)} to {format_quantity(x[-1], CURRENT, 3)} and "
         f"load capacitance from {format_quantity(y[0], CAPACITANCE, 3)} to {format_quantity(y[-1], CAPACITANCE, 3)}. "
         f"Everything holds in {share}. Boundaries are drawn of {names}. The present point is at "
-        f"{format_quantity(plane.x.present, CURRENT, 3)} and {format_quantity(plane.y.present, CAPACITANCE, 3)}."
+        f"{format_quantity(land.x.present, CURRENT, 3)} and {format_quantity(land.y.present, CAPACITANCE, 3)}."
     )
     return Picture(written[0], clean(alt), "Window: shaded where every target holds, a line where one just does")
 

@@ -37,7 +37,7 @@ pre{font:.8125rem/1.35 ui-monospace,"DejaVu Sans Mono",Menlo,Consolas,monospace;
 padding:.7rem;margin:.4rem 0}
 .formula{border-left:3px solid #b9c0c6;padding-left:.9rem}
 .formula figcaption{font-weight:600;color:#1b1f23}
-math{margin:.5rem 0;text-align:left}
+math{margin:.5rem 0;width:fit-content;font-size:1.05rem}
 @page{size:A4;margin:15mm 14mm 17mm}
 @media print{
 body{font-size:9.5pt;line-height:1.35}
@@ -49,12 +49,13 @@ h1,h2,h3,h4,caption,figcaption{break-after:avoid}
 .block{break-before:page}
 p,li{orphans:3;widows:3;max-width:none}
 .wide,pre{overflow:visible}
-table{font-size:8pt;width:100%}
-th,td{max-width:none;padding-right:5pt;overflow-wrap:anywhere}
+table{font-size:7.5pt;width:100%}
+.keep,.short{break-inside:avoid}
+th,td{max-width:none;padding-right:5pt}
 thead{display:table-header-group}
 tr,figure,img,math{break-inside:avoid}
 pre{white-space:pre-wrap;font-size:7.5pt;border:1px solid #d3d8dc;background:none}
-math{font-size:8.5pt}
+math{font-size:10pt}
 img{max-height:150mm}
 }
 """

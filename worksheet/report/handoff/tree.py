@@ -15,6 +15,9 @@ from worksheet.report import wording
 
 DIGITS = 4
 
+NO_VOLTAGE = 1e-13
+"""Differences of voltages below this are rounding. [V]"""
+
 
 @dataclass(frozen=True, slots=True)
 class Number:
@@ -187,7 +190,12 @@ def number(value: float | None, unit: str, of: str = "", reason: str | None = No
     """A cell of one number, or why there is none."""
     if value is None:
         return text(reason or "-")
-    return Cell((Number(wording.number(value, unit, digits=digits), value, unit, of),))
+    return Cell((Number(wording.number(_seen(value, unit), unit, digits=digits), value, unit, of),))
+
+
+def _seen(value: float, unit: str) -> float:
+    """A voltage that rounding alone keeps from 0, as 0."""
+    return 0.0 if unit == "V" and abs(value) < NO_VOLTAGE else value
 
 
 def metric(
@@ -196,7 +204,7 @@ def metric(
     """As number, in the dimension that the metric is described with."""
     if value is None:
         return text(reason or "-")
-    return Cell((Number(wording.metric_number(key, value, unit, digits=digits), value, unit, of),))
+    return Cell((Number(wording.metric_number(key, _seen(value, unit), unit, digits=digits), value, unit, of),))
 
 
 def quantity(value: float | None, dimension: Dimension, of: str = "", digits: int = DIGITS) -> Cell:
