@@ -101,7 +101,7 @@ def _voltage(found: Block, node: str) -> float | None:
 
 def _choice(found: Block, key: str, dimension: Dimension) -> str:
     one = found.review.choices.get(key)
-    return "an unknown load" if one is None else format_quantity(one.value, dimension, _DIGITS)
+    return "unknown" if one is None else format_quantity(one.value, dimension, _DIGITS)
 
 
 def _ideal(found: Block, device: Transistor) -> bool:
