@@ -10,6 +10,7 @@ from worksheet.tui.commands import (
     ALGEBRA,
     BOOK,
     COMMANDS,
+    COMPARE,
     MAP,
     MEETING,
     PLACES,
@@ -21,6 +22,7 @@ from worksheet.tui.commands import (
 )
 from worksheet.tui.screens.algebra import AlgebraScreen
 from worksheet.tui.screens.book import BookScreen
+from worksheet.tui.screens.compare import CompareScreen
 from worksheet.tui.screens.meeting import MeetingScreen
 from worksheet.tui.screens.sheet import SheetScreen
 from worksheet.tui.screens.takeover import TakeoverScreen
@@ -33,6 +35,7 @@ SCREENS = {
     MAP: MapScreen,
     MEETING: MeetingScreen,
     TAKEOVER: TakeoverScreen,
+    COMPARE: CompareScreen,
 }
 
 TAKEN_BY_OTHERS = {

@@ -116,21 +116,27 @@ def comparison_text(old: str, new: str, found: Comparison, width: int) -> Iterat
             yield from lines(_results(sheet.results), width, "  ")
             yield from _causes(sheet.results, width)
         for need in sheet.needed:
-            yield from wrapped(_needed(need), width, "  ")
+            yield from wrapped(needed(need), width, "  ")
 
 
 def _causes(results: Sequence[Result], width: int) -> Iterator[str]:
     """Why targets moved: what each input did to them, the greatest first."""
     for r in results:
-        if r.cause is None or r.new_verdict is None:
-            continue
-        parts = [f"{one.key} {_signed(r, one.part)}" for one in r.cause.parts]
-        if r.cause.reason is not None:
-            parts.append(r.cause.reason)
-        elif r.new is not None and abs(r.cause.remainder) > _SHOWN * abs(r.new):
-            parts.append(f"together with what is not stated {_signed(r, r.cause.remainder)}")
-        if len(parts) > 1 or r.cause.reason is not None:
-            yield from wrapped(f"{r.metric}: {', '.join(parts)}", width, "  ")
+        if r.cause is not None and r.new_verdict is not None and (said := caused(r)):
+            yield from wrapped(f"{r.metric}: {said}", width, "  ")
+
+
+def caused(result: Result) -> str:
+    """What each input did to a metric, in words; "" where one input did it all."""
+    cause = result.cause
+    if cause is None:
+        return ""
+    parts = [f"{one.key} {_signed(result, one.part)}" for one in cause.parts]
+    if cause.reason is not None:
+        parts.append(cause.reason)
+    elif result.new is not None and abs(cause.remainder) > _SHOWN * abs(result.new):
+        parts.append(f"together with what is not stated {_signed(result, cause.remainder)}")
+    return ", ".join(parts) if len(parts) > 1 or cause.reason is not None else ""
 
 
 def _signed(result: Result, part: float) -> str:
@@ -138,7 +144,8 @@ def _signed(result: Result, part: float) -> str:
     return f"{'+' if part >= 0 else '-'}{text}"
 
 
-def _needed(need: Need) -> str:
+def needed(need: Need) -> str:
+    """One end of a need before and after, in words."""
     sign = "at least" if need.side == "low" else "at most"
     ends = [
         "no end" if value is None else f"{wording.number(value, need.unit)} ({by or 'process'})"

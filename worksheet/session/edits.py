@@ -122,7 +122,22 @@ class TakeSide:
     side: str
 
 
-Request = ChangeSheet | NewSheet | DuplicateSheet | RenameSheet | DeleteSheet | SettleCollision | TakeSide
+@dataclass(frozen=True, slots=True)
+class TakeBack:
+    """Make files what they were at another time.
+
+    Attributes:
+        name: The sheet; "" for several files.
+        files: Contents by path within the project; None for a file that is not to be there.
+        what: In words, for undo.
+    """
+
+    name: str
+    files: Mapping[str, bytes | None]
+    what: str
+
+
+Request = ChangeSheet | NewSheet | DuplicateSheet | RenameSheet | DeleteSheet | SettleCollision | TakeSide | TakeBack
 
 
 def name_of(request: Request) -> str:
@@ -168,6 +183,8 @@ def title_of(request: Request) -> str:
             return f"collision settled in {name}"
         case TakeSide(name, side):
             return f"{side} taken for {name}"
+        case TakeBack(_, _, what):
+            return what
 
 
 def changes(request: Request, snapshot: Snapshot) -> tuple[FileChange, ...]:
@@ -187,6 +204,10 @@ def changes(request: Request, snapshot: Snapshot) -> tuple[FileChange, ...]:
             return _renamed(snapshot, name, new)
         case DeleteSheet(name):
             return (FileChange(file_of(name), _content(snapshot, name), None),)
+        case TakeBack(_, files):
+            present = snapshot.contents
+            found = [FileChange(file, present.get(file), content) for file, content in files.items()]
+            return tuple(one for one in found if one.before != one.after)
         case SettleCollision() | TakeSide():
             before = _content(snapshot, request.name)
             text = before.decode("utf-8")
@@ -321,6 +342,7 @@ __all__ = [
     "RenameSheet",
     "Request",
     "SettleCollision",
+    "TakeBack",
     "TakeOut",
     "TakeSide",
     "changed",

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import datetime
 import tempfile
+from collections.abc import Mapping
 from dataclasses import dataclass
 from pathlib import Path
 
@@ -143,6 +144,16 @@ def state(root: Path, name: str, today: datetime.date) -> tuple[str, State] | Pr
         return WORKING, _reviewed(root, today)
     found = repository_of(root)
     return found if isinstance(found, Problem) else _state(found, root, name, today)
+
+
+def files(root: Path, name: str) -> Mapping[str, bytes] | Problem:
+    """The project's own files at a revision, evidence left out, by path within the project."""
+    found = repository_of(root)
+    if isinstance(found, Problem):
+        return found
+    revision = revisions.resolve(found, name)
+    content = revision if isinstance(revision, Refused) else revisions.read_files(found, revision)
+    return refusal(content, root) if isinstance(content, Refused) else content.files
 
 
 def _state(found: Repository, root: Path, name: str, today: datetime.date) -> tuple[str, State] | Problem:

@@ -15,7 +15,8 @@ from collections.abc import Iterator
 from dataclasses import dataclass
 
 BOOK, SHEET, ALGEBRA, MAP, MEETING, TAKEOVER = "book", "sheet", "algebra", "map", "meeting", "takeover"
-EVERYWHERE = (BOOK, SHEET, ALGEBRA, MAP, MEETING, TAKEOVER)
+COMPARE = "compare"
+EVERYWHERE = (BOOK, SHEET, ALGEBRA, MAP, MEETING, TAKEOVER, COMPARE)
 
 PLACES = {
     BOOK: "Project",
@@ -24,6 +25,7 @@ PLACES = {
     MAP: "Window map",
     MEETING: "Review meeting",
     TAKEOVER: "Taking over",
+    COMPARE: "Comparison",
 }
 """Names of the screens that commands belong to."""
 
@@ -265,7 +267,7 @@ COMMANDS = (
         "o",
         "Open",
         "Open the sheet at what the cursor is on; back returns here.",
-        (MEETING, TAKEOVER),
+        (MEETING, TAKEOVER, COMPARE),
         "row",
         foot=1,
     ),
@@ -335,6 +337,31 @@ COMMANDS = (
         (BOOK,),
         "row",
     ),
+    Command("compare", "e", "f6", "Compare", "Lay a revision beside the files as they stand.", (BOOK,)),
+    Command(
+        "record", "s", "f7", "Record", "Save a revision of the project's own files, with a note.", (BOOK,), writes=True
+    ),
+    Command(
+        "restore",
+        "r",
+        "f5",
+        "Take back",
+        "Make a value, a sheet or the project what it was in that revision, as an edit that can be undone.",
+        (COMPARE,),
+        "laid",
+        writes=True,
+        foot=2,
+    ),
+    Command(
+        "trace",
+        "h",
+        "ctrl+o",
+        "Over revisions",
+        "Show this value or metric over all revisions: who, when, why, and what it was.",
+        (COMPARE, SHEET),
+        "row",
+        foot=3,
+    ),
     Command(
         "checked",
         "v",
@@ -373,7 +400,7 @@ COMMANDS = (
         "ctrl+u",
         "Undo",
         "Take back the last change, in whichever sheet it was.",
-        (BOOK, SHEET, MAP, MEETING, TAKEOVER),
+        (BOOK, SHEET, MAP, MEETING, TAKEOVER, COMPARE),
         "undo",
         writes=True,
     ),
@@ -383,7 +410,7 @@ COMMANDS = (
         "ctrl+y",
         "Redo",
         "Make the change again that was taken back last.",
-        (BOOK, SHEET, MAP, MEETING, TAKEOVER),
+        (BOOK, SHEET, MAP, MEETING, TAKEOVER, COMPARE),
         "redo",
         writes=True,
     ),

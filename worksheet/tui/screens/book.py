@@ -118,6 +118,18 @@ class BookScreen(Place):
 
         self.app.push_screen(MeetingScreen())
 
+    def action_compare(self) -> None:
+        """Lay a revision beside the files."""
+        from worksheet.tui.screens.tracing import choose
+
+        choose(self)
+
+    def action_record(self) -> None:
+        """Record a revision."""
+        from worksheet.tui.screens.tracing import record
+
+        record(self)
+
     def action_take_over(self) -> None:
         """Be led through a block before it is one's own."""
         from worksheet.tui.screens.takeover import TakeoverScreen

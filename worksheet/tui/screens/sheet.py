@@ -132,6 +132,8 @@ class SheetScreen(Place):
             if field.key.kind in (Kind.QUANTITY, Kind.WHOLE):
                 held.add("step")
         if row is not None:
+            if self._traced() is not None:
+                held.add("row")
             if row.subject[0] in ("metric", "variable", "bound", "operating"):
                 held.add("number")
             if row.key.partition(".")[0] in REMOVABLE:
@@ -195,6 +197,24 @@ class SheetScreen(Place):
     def action_remove(self) -> None:
         """Take out what the cursor is on."""
         changing.remove(self)
+
+    def _traced(self) -> tuple[str, bool] | None:
+        """What the row under the cursor is over revisions: a dotted key or a metric; None for neither."""
+        row = self.ledger.row
+        if row is None:
+            return None
+        if row.key.startswith(("target.", "metric.")):
+            return row.subject[1] or row.key.partition(".")[2], True
+        table = row.key.partition(".")[0]
+        return (row.key, False) if table in ("assume", "own", "choose") or row.subject[0] == "key" else None
+
+    def action_trace(self) -> None:
+        """This value or metric over all revisions."""
+        from worksheet.tui.screens.tracing import trace
+
+        found = self._traced()
+        if found is not None:
+            trace(self, self.name_of_sheet, found[0], metric=found[1])
 
     def action_settle_merge(self) -> None:
         """Settle what a merge left."""

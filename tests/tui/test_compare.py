@@ -1,0 +1,113 @@
+"""A revision beside the files in the app: what differs, taken back and undone; values and metrics over revisions."""
+
+from __future__ import annotations
+
+import datetime
+from pathlib import Path
+
+import pytest
+
+from tests.history.repositories import git
+from tests.tui.driving import Drive, drive, shown
+from worksheet.model.problem import Problem
+from worksheet.session import revisions
+from worksheet.tui.dialogs.reading import ReadingDialog
+from worksheet.tui.screens.compare import CompareScreen
+from worksheet.tui.screens.sheet import SheetScreen
+from worksheet.tui.widgets.ledger import Ledger
+
+TODAY = datetime.datetime.now().astimezone().date()
+BLOCK = "sun_gate"
+
+
+@pytest.fixture(autouse=True)
+def recorded(root: Path, tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> Path:
+    """The book with one revision, and one value moved since."""
+    monkeypatch.setenv("HOME", str(tmp_path))
+    monkeypatch.setenv("GIT_CEILING_DIRECTORIES", str(tmp_path))
+    for who in ("AUTHOR", "COMMITTER"):
+        monkeypatch.setenv(f"GIT_{who}_NAME", "M. Roe")
+        monkeypatch.setenv(f"GIT_{who}_EMAIL", "roe@example.org")
+    assert not isinstance(revisions.record(root, "First", TODAY), Problem)
+    path = root / "sheets" / f"{BLOCK}.toml"
+    path.write_text(path.read_text("utf-8").replace('bias_current = "2 uA"', 'bias_current = "3 uA"'), "utf-8")
+    return path
+
+
+async def comparing(d: Drive) -> CompareScreen:
+    await d.settled()
+    await d.press("e", "enter")
+    screen = d.app.screen
+    assert isinstance(screen, CompareScreen)
+    await d.until(lambda: screen.laid is not None)
+    return screen
+
+
+async def again(d: Drive, screen: CompareScreen) -> None:
+    await d.until(lambda: screen.stamp == d.app.snapshot.revision)
+
+
+def test_what_differs_stands_sheet_by_sheet_and_opens_there(root: Path) -> None:
+    async def steps(d: Drive) -> None:
+        screen = await comparing(d)
+        assert screen.ledger.go(f"input.{BLOCK}.choose.bias_current")
+        assert "2 µA" in shown(screen.ledger.row.lines[0]) if screen.ledger.row else False
+        assert any(row.startswith("bandwidth") for row in d.rows())
+        await d.press("enter")
+        assert isinstance(d.app.screen, SheetScreen)
+        assert d.app.screen.ledger.row is not None
+        assert d.app.screen.ledger.row.key == "choose.bias_current"
+
+    drive(root, steps)
+
+
+@pytest.mark.parametrize("letter", ["v", "s", "p"])
+def test_a_value_a_sheet_or_the_project_is_taken_back_and_undone(root: Path, recorded: Path, letter: str) -> None:
+    moved = recorded.read_text("utf-8")
+    then = git(root, "show", f"HEAD:sheets/{BLOCK}.toml") + "\n"
+
+    def now() -> str:
+        return recorded.read_text("utf-8")
+
+    async def steps(d: Drive) -> None:
+        screen = await comparing(d)
+        assert screen.ledger.go(f"input.{BLOCK}.choose.bias_current")
+        await d.press("r", letter)
+        await again(d, screen)
+        assert now() == then
+        assert d.rows() == ["Nothing differs."]
+        await d.press("z")
+        await again(d, screen)
+        assert now() == moved
+
+    drive(root, steps)
+
+
+def test_a_value_and_a_metric_are_followed_over_the_revisions(root: Path) -> None:
+    async def steps(d: Drive) -> None:
+        screen = await comparing(d)
+        assert screen.ledger.go(f"input.{BLOCK}.choose.bias_current")
+        await d.press("h")
+        await d.until(lambda: isinstance(d.app.screen, ReadingDialog))
+        text = "\n".join(shown(line) for row in d.app.screen.query_one(Ledger).page.rows for line in row.lines)
+        assert "2 µA" in text
+        assert "First" in text
+        await d.press("escape")
+        await d.sheet(BLOCK, "target.bandwidth")
+        await d.press("h")
+        await d.until(lambda: isinstance(d.app.screen, ReadingDialog))
+
+    drive(root, steps)
+
+
+def test_a_revision_is_recorded_with_a_note(root: Path) -> None:
+    async def steps(d: Drive) -> None:
+        await d.settled()
+        await d.press("s")
+        await d.type("Three microamperes")
+        await d.press("enter")
+        await d.until(lambda: "recorded" in d.text("#said"))
+
+    drive(root, steps)
+    assert git(root, "log", "-1", "--format=%s") == "Three microamperes"
+    assert "choose.bias_current" in git(root, "log", "-1", "--format=%b")
