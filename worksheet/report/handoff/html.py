@@ -12,7 +12,7 @@ from collections.abc import Iterator, Sequence
 from xml.etree import ElementTree
 
 from worksheet.model.text import clean
-from worksheet.report.handoff import style
+from worksheet.report.handoff import math_width, style
 from worksheet.report.handoff.tree import (
     Cell,
     Formula,
@@ -30,6 +30,9 @@ from worksheet.report.handoff.tree import (
 
 _SHORT = 12
 """Rows of a table that is not parted by a page break."""
+
+_ON_ONE_LINE = 14
+"""Characters of a cell that is not broken."""
 
 _BREAKS = re.compile(r"(?<=[A-Za-z])([_./])(?=[A-Za-z])")
 
@@ -133,6 +136,11 @@ def _node(node: Node) -> Iterator[str]:
             yield f"<figcaption>{escaped(node.caption)}</figcaption></figure>"
 
 
+def _manner(node: Table, column: int, cell: Cell) -> str:
+    """How a cell is set: numbers to the right, short ones on one line."""
+    return "right" if column in node.right else "one" if len(cell.text) <= _ON_ONE_LINE else ""
+
+
 def _side(node: Table, column: int) -> str:
     return _class("right" if column in node.right else "")
 
@@ -169,7 +177,7 @@ def _table(node: Table) -> Iterator[str]:
     yield f"<thead><tr>{''.join(heads)}</tr></thead><tbody>"
     for row in node.rows:
         first = f'<th scope="row">{_cell(row[0])}</th>'
-        rest = (f"<td{_side(node, k)}>{_cell(cell)}</td>" for k, cell in enumerate(row[1:], start=1))
+        rest = (f"<td{_class(_manner(node, k, cell))}>{_cell(cell)}</td>" for k, cell in enumerate(row[1:], start=1))
         yield f"<tr>{first}{''.join(rest)}</tr>"
     yield "</tbody></table></div>"
 
@@ -178,21 +186,24 @@ def _formula(node: Formula) -> Iterator[str]:
     label = escaped(node.title)
     yield f'<figure class="formula"><figcaption>{label}</figcaption>'
     yield f'<div class="wide" tabindex="0" role="group" aria-label="{label}">'
-    for k, element in enumerate((*node.mathml, *node.put_in)):
-        alternative = " ".join(node.lines) if k == 0 else ""
-        yield math(element, alternative)
+    plain = [ElementTree.fromstring(element) for element in node.mathml]  # noqa: S314  see math
+    put_in = [ElementTree.fromstring(element) for element in node.put_in]  # noqa: S314  see math
+    fitting = [element for element in put_in if math_width.size_of(element) is not None]
+    for k, element in enumerate((*plain, *fitting)):
+        yield _math(element, _class(math_width.size_of(element) or "screen"), " ".join(node.lines) if k == 0 else "")
     yield "</div>"
+    if any(math_width.size_of(element) is None for element in plain):
+        yield f'<pre class="paper" aria-hidden="true">{escaped(chr(10).join(node.lines))}</pre>'
     source = f'<p class="quiet">Behind it: {escaped(node.source)}</p>' if node.source else ""
     yield f"<p>{_cell(node.value)}</p>{source}</figure>"
 
 
-def math(element: str, alternative: str = "") -> str:
+def math(element: str) -> str:
     """A MathML element of known parts and nothing else. ValueError for anything unknown in it."""
-    tree = ElementTree.fromstring(element)  # noqa: S314  printed by our own printer; no entities are declared in it
-    return _math(tree, f' alttext="{escaped(alternative)}"' if alternative else "")
+    return _math(ElementTree.fromstring(element))  # noqa: S314  printed by our own printer, which declares no entity
 
 
-def _math(element: ElementTree.Element, more: str = "") -> str:
+def _math(element: ElementTree.Element, more: str = "", alternative: str = "") -> str:
     name = element.tag.rpartition("}")[2]
     if name not in _MATH:
         raise ValueError(f"no element of mathematics: {name}")
@@ -201,8 +212,9 @@ def _math(element: ElementTree.Element, more: str = "") -> str:
     attributes = "".join(
         f' {key}="{escaped(value)}"' for key, value in element.attrib.items() if key in _MATH_ATTRIBUTES
     )
+    said = f' alttext="{escaped(alternative)}"' if alternative else ""
     inner = escaped(element.text or "") if len(element) == 0 else "".join(map(_math, element))
-    return f"<{name}{attributes}{more}>{inner}</{name}>"
+    return f"<{name}{attributes}{more}{said}>{inner}</{name}>"
 
 
 def _fenced(element: ElementTree.Element) -> str:

@@ -29,6 +29,7 @@ def block_page(made: HandOff, found: Block) -> Page:
     _standing(made, head)
     opening(found, body)
     block(made, found, body)
+    _budgets(made, body)
     _problems(made, body, f"sheets/{found.name}.toml")
     links = [(n.text, n.name, Cell()) for n in body.nodes if isinstance(n, Heading) and n.level == 2]
     head.add(Links("Contents", tuple(links)))

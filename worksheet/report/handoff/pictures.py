@@ -21,7 +21,7 @@ from worksheet.report.handoff.material import Block, Fit
 from worksheet.report.handoff.tree import Picture
 from worksheet.solver.trials import Constraint
 
-_WIDE, _HIGH = 7.2, 3.6
+_WIDE, _HIGH = 7.2, 3.3
 _COLOURS = ("#0b4f8a", "#b3450a", "#1d6131", "#7b2d75", "#6b5300", "#0e6b72", "#7a1f2b", "#3d3d3d")
 _LINES: tuple[Any, ...] = ("-", "--", "-.", ":", (0, (5, 1)), (0, (3, 1, 1, 1)), (0, (1, 1)), (0, (8, 2)))
 _MARKS = "osD^vP*Xh<>"
@@ -115,7 +115,8 @@ def window_map(found: Block) -> Picture | None:
         f"Everything holds in {share}. Boundaries are drawn of {names}. The present point is at "
         f"{format_quantity(land.x.present, CURRENT, 3)} and {format_quantity(land.y.present, CAPACITANCE, 3)}."
     )
-    return Picture(written[0], clean(alt), "Window: shaded where every target holds, a line where one just does")
+    shade = "shaded where every target holds" if every.any() else "nowhere here does every target hold"
+    return Picture(written[0], clean(alt), f"Window: {shade}; a line where one just does")
 
 
 def _edge(one: Constraint) -> str:
@@ -152,7 +153,11 @@ def margins(found: Block) -> Picture | None:
         _legend(axes, figure)
     least = ", ".join(f"{name} {wording.margin(_least(made.by_target[name]))}" for name in names)
     alt = f"Margins of {len(names)} targets over {len(made.conditions)} conditions. The least of each: {least}."
-    return Picture(written[0], clean(alt), "Margins over all conditions, one mark a condition, its shape the corner")
+    return Picture(
+        written[0],
+        clean(alt),
+        "Margins over all conditions, one mark a condition, its shape the corner; beyond the ends at the ends",
+    )
 
 
 def _of(values: Sequence[float] | Any, places: Sequence[int]) -> list[float]:
@@ -176,7 +181,7 @@ def response(found: Block) -> Picture | None:
     if made is None:
         return None
     decibels = 20 * np.log10(made.magnitude)
-    with _drawn(2, 4.2) as (figure, (upper, lower), written):
+    with _drawn(2, 3.7) as (figure, (upper, lower), written):
         for axes, table, title in ((upper, decibels, "gain in dB"), (lower, made.phase, "phase in degrees")):
             axes.set_xscale("log")
             axes.set_xlim(made.frequency[0], made.frequency[-1])

@@ -11,6 +11,9 @@ from worksheet.report.handoff.material import Block
 from worksheet.report.handoff.tree import Builder, Cell, Points, joined, number, text
 from worksheet.solver.results import Point, Region, Window
 
+_LONGEST = 130
+"""Characters of a formula that is written out."""
+
 
 def windows(found: Block, into: Builder) -> None:
     """The section of needed windows."""
@@ -81,6 +84,8 @@ def _hand(found: Block, window: Window, side: str) -> Cell | None:
     sign, symbol = "≥" if side == "low" else "≤", found.keys[window.name].symbol
     set_by = window.region and (window.region.low_set_by if side == "low" else window.region.high_set_by)
     lead = f"{set_by}: {symbol} {sign} "
+    if len(_whole(said)) > _LONGEST:
+        return text(f"{lead}a formula too long for a page; see biasbook solve sheets/{found.name}.toml")
     if said["method"] == "closed form":
         return text(f"{lead}{said['formula']}{_beside(said)}")
     estimate = said["hand"]
@@ -90,6 +95,11 @@ def _hand(found: Block, window: Window, side: str) -> Cell | None:
     value = number(estimate["value"], window.unit, of)
     neglects = f"; neglects {', '.join(estimate['neglects'])}" if estimate["neglects"] else ""
     return joined(text(f"{lead}{estimate['formula']} = "), value, text(f" by hand{_beside(said)}{neglects}"))
+
+
+def _whole(said: Any) -> str:
+    estimate = said["hand"] or {}
+    return f"{said['formula'] or estimate.get('formula', '')}{_beside(said)}"
 
 
 def _beside(said: Any) -> str:
