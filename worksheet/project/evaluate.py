@@ -3,7 +3,9 @@
 from __future__ import annotations
 
 from collections.abc import Callable, Iterable, Mapping
+from dataclasses import replace
 from functools import partial
+from types import MappingProxyType
 
 import numpy as np
 
@@ -11,6 +13,7 @@ from worksheet.device.arrays import Array
 from worksheet.engine.inputs import Inputs
 from worksheet.model import metrics
 from worksheet.model.problem import Problem
+from worksheet.model.sheet import Sheet
 from worksheet.project import conditions as sets
 from worksheet.project import links
 from worksheet.project.batch import batches
@@ -62,6 +65,11 @@ class Evaluator:
         A sheet on its own regulator is at its nominal supply there.
         """
         return self._linked_case(name, wanted, "supply" in self.project.sheets[name].assume)
+
+    def with_sheet(self, sheet: Sheet) -> Evaluator:
+        """The same project with one of its sheets in another form; proposals are sought for it anew."""
+        sheets = MappingProxyType({**self.project.sheets, sheet.name: sheet})
+        return Evaluator(replace(self.project, sheets=sheets), self._propose)
 
     def bare(self, name: str) -> Case:
         """A sheet's case with nothing proposed."""

@@ -61,7 +61,7 @@ class Needs:
             return [place]
         root, name = place
         workbook = Workbook.read(root)
-        problems = _problems_of(workbook, name)
+        problems = problems_of(workbook, name)
         if problems or workbook.evaluator is None:
             return problems
         points, found = solve_points(workbook.evaluator, name)
@@ -170,7 +170,7 @@ def shown_input(key: Key, value: float) -> str:
     return format_input(value, key.dimension)
 
 
-def _problems_of(workbook: Workbook, name: str) -> list[Problem]:
+def problems_of(workbook: Workbook, name: str) -> list[Problem]:
     """What stands in the way of one sheet: its own problems and those of the project's files."""
     project = workbook.project
     if project.file is None or project.process is None:
