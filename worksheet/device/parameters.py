@@ -57,7 +57,9 @@ def couplings(process: Mapping[str, Number], changes: Mapping[str, Number], leng
     """Gate coupling kappa and drain coupling sigma of a corner at a length, both at zero source-bulk voltage. [-]
 
     Args:
-        process, changes, length: As of at_condition.
+        process: Kappa and drain coupling [-], the length that goes with it [m] and its exponent [-], by name.
+        changes: Of the corner, all optional. [-]
+        length: [m]
     Source: sigma(L) = sigma_ref (L_ref/L)^m; Tsividis and McAndrew 2011.
     """
     coupling = process["drain_coupling"] * np.power(
