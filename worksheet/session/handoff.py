@@ -7,20 +7,19 @@ from collections.abc import Iterator, Sequence
 from pathlib import Path
 from typing import Any
 
-import numpy as np
-
 from worksheet.history import own, revisions
 from worksheet.history.outcome import Refused
 from worksheet.model.problem import Problem
 from worksheet.model.text import clean, nearest
 from worksheet.project.case import CaseError
-from worksheet.report.handoff.material import Block, Fit, Hand, HandOff, Origin, Since
+from worksheet.report.handoff.material import Block, Hand, HandOff, Origin, Since
 from worksheet.review.deeper import Wanted
 from worksheet.review.pictured import margins, response
 from worksheet.review.results import Review, SheetReview
 from worksheet.review.review import solve as solve_points
 from worksheet.review.weakest import weakest
 from worksheet.session import mapping
+from worksheet.session.handoff_fits import fits_of
 from worksheet.session.handoff_folder import Record, Written
 from worksheet.session.needs import Needs
 from worksheet.session.revisions import compared, history, repository_of
@@ -30,8 +29,6 @@ from worksheet.solver import plane as planes
 from worksheet.solver.relief import Relief, relief
 
 _CELLS = (44, 32)
-_GATES = 61
-_CURVES = 3
 
 
 def hand_off(
@@ -67,19 +64,23 @@ def hand_off(
     origin = origin_of(root)
     if since is not None and isinstance(stated := compared(root, since, "working", today), Problem):
         return [stated]
+    fits = tuple(fits_of(root, project.process)) if not sheets else ()
+    known: dict[tuple[Origin, str], Since] = {}
     pages: dict[str, bytes] = {}
     stems = [f"handoff-{name}" for name in names] if sheets else ["handoff"]
     for place, stem in enumerate(stems):
         before = record.since(stem) if since is None else (Origin(since), "")
+        if before is not None and before not in known:
+            known[before] = _moved(root, before, today)
         made = HandOff(
             review=review,
             owner=project.file.owner,
             process=project.process.title or project.process.name,
             dated=today,
             origin=origin,
-            since=None if before is None else _moved(root, before, today),
+            since=None if before is None else known[before],
             blocks=gathered[place : place + 1] if sheets else gathered,
-            fits=tuple(_fits(workbook)),
+            fits=fits,
             conditions=_conditions(review, workbook),
             whole=not sheets,
         )
@@ -182,33 +183,6 @@ def _conditions(review: Review, workbook: Workbook) -> str:
 
     corners = ", ".join(file.processes)
     return f"{review.conditions} conditions: corners {corners}; nominal {wording.condition(review.nominal)}."
-
-
-def _fits(workbook: Workbook) -> Iterator[Fit]:
-    """Curves of the devices that the process file says were fitted."""
-    from worksheet.extract import curves
-    from worksheet.extract.law import Reference
-
-    process = workbook.project.process
-    assert process is not None
-    for name, stated in process.fitted.items():
-        model = process.devices.get(name)
-        if model is None:
-            continue
-        numbers = {key: one.number for key, one in model.values.items() if one.number is not None}
-        top = float(stated.get("drain_voltage_high") or numbers["max_voltage"])
-        length = float(stated.get("length_high") or numbers["drain_coupling_length"])
-        width = max(length, numbers["min_width"])
-        gate = np.linspace(0.0, top, _GATES)
-        across = [top / 2**k for k in reversed(range(_CURVES))]
-        values = curves.law_values(numbers, {})
-        reference = Reference(process.reference_temperature, numbers["drain_coupling_length"])
-        currents = {}
-        for volts in across:
-            rows = curves.grid(gate.tolist(), [0.0], [volts], width=width, length=length,
-                               temperature=process.reference_temperature)  # fmt: skip
-            currents[volts] = np.array([row[3] for row in curves.implied(values, rows, reference)])
-        yield Fit(name, model.polarity, stated, gate, currents, {}, width, length)
 
 
 # What it is made from, and what moved

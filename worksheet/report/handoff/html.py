@@ -95,7 +95,8 @@ def _kept_together(nodes: Sequence[Node]) -> Iterator[str]:
         group = nodes[place : max(end, place + 1)]
         kept = len(group) > 1
         if kept:
-            yield '<div class="keep">'
+            fresh = " page" if isinstance(group[0], Heading) and group[0].page else ""
+            yield f'<div class="keep{fresh}">'
         for node in group:
             yield from _node(node)
         if kept:

@@ -9,7 +9,8 @@ from worksheet.compare.compared import Result, SheetChange
 from worksheet.compare.inputs import Moved
 from worksheet.report import wording
 from worksheet.report.handoff.material import Block, HandOff, Since
-from worksheet.report.handoff.tree import Builder, Cell, metric, text
+from worksheet.report.handoff.tree import Builder, Cell, Points, metric, text
+from worksheet.report.revisions_plain import caused, needed
 
 _ID = 10
 
@@ -34,6 +35,9 @@ def moved_block(made: HandOff, found: Block, into: Builder) -> None:
         _stated("What was stated", change.inputs, into)
         if change.status in ("changed", "affected"):
             _results(change.results, into)
+        needs = tuple(text(needed(need)) for need in change.needed)
+        if needs:
+            into.add(Points(needs))
     if not made.whole:
         _why(since, into)
 
@@ -72,12 +76,16 @@ def _around(since: Since, into: Builder) -> None:
 
 
 def _status(change: SheetChange) -> str:
-    return {
-        "added": "The block is new.",
-        "removed": "The block is gone.",
-        "changed": "Its own sheet has changed.",
-        "affected": "Its own sheet is as it was: what it takes from elsewhere has moved.",
-    }[change.status]
+    through = f" It was reached through {', '.join(change.through)}." if change.through else ""
+    return _HOW[change.status] + through
+
+
+_HOW = {
+    "added": "The block is new.",
+    "removed": "The block is gone.",
+    "changed": "Its own sheet has changed.",
+    "affected": "Its own sheet is as it was: what it takes from elsewhere has moved.",
+}
 
 
 def _turned(change: SheetChange) -> str:
@@ -102,7 +110,8 @@ def _shown(value: Any, unit: str) -> str:
 
 def _results(results: Sequence[Result], into: Builder) -> None:
     rows = tuple(_result(r) for r in results)
-    into.table("What that did, at the nominal condition", ("metric", "then", "now", "verdict"), rows, (1, 2))
+    columns = ("metric", "then", "now", "verdict", "because of")
+    into.table("What that did, at the nominal condition", columns, rows, (1, 2))
 
 
 def _result(result: Result) -> tuple[Cell, ...]:
@@ -110,7 +119,15 @@ def _result(result: Result) -> tuple[Cell, ...]:
     if result.old_verdict != result.new_verdict:
         verdict = f"{result.old_verdict or 'none'} to {result.new_verdict or 'none'}"
     then, now = (metric(result.metric, value, result.unit) for value in (result.old, result.new))
-    return text(result.metric), then, now, text(verdict or "-")
+    return text(result.metric), then, now, text(verdict or "-"), text(_because(result))
+
+
+def _because(result: Result) -> str:
+    """What each input did to a metric; where one did it all, its key."""
+    said = caused(result)
+    if said or result.cause is None or not result.cause.parts:
+        return said or "-"
+    return result.cause.parts[0].key
 
 
 def _why(since: Since, into: Builder) -> None:

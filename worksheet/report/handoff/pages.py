@@ -50,7 +50,7 @@ def project_page(made: HandOff) -> Page:
     _fits(made, body)
     for found in made.blocks:
         one = Builder(2, f"{found.name}-")
-        one.head(f"{found.review.sheet.title or found.name} ({found.name})", "block")
+        one.head(f"{found.review.sheet.title or found.name} ({found.name})", "block", page=True)
         inner = Builder(3, f"{found.name}-")
         opening(found, inner)
         block(made, found, inner)

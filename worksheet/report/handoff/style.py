@@ -50,7 +50,7 @@ main,footer{max-width:none;padding:0}
 a{color:inherit;text-decoration:none}
 h1{font-size:17pt}h2{font-size:12.5pt;margin:14pt 0 4pt}h3{font-size:10.5pt;margin:10pt 0 3pt}h4{font-size:9.5pt}
 h1,h2,h3,h4,caption,.lines figcaption,.formula figcaption{break-after:avoid}
-.block{break-before:page}
+.page{break-before:page}
 p,li{orphans:3;widows:3;max-width:none}
 .wide,pre{overflow:visible}
 table{font-size:7.5pt}

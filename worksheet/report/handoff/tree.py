@@ -61,11 +61,12 @@ class Cell:
 
 @dataclass(frozen=True, slots=True)
 class Heading:
-    """A heading of a level from 1, with a name that links can lead to."""
+    """A heading of a level from 1, with a name that links can lead to; on paper it may begin a `page`."""
 
     text: str
     level: int
     name: str
+    page: bool = False
 
 
 @dataclass(frozen=True, slots=True)
@@ -161,9 +162,9 @@ class Builder:
     prefix: str = ""
     nodes: list[Node] = field(default_factory=list)
 
-    def head(self, text: str, name: str, deeper: int = 0) -> None:
+    def head(self, text: str, name: str, deeper: int = 0, *, page: bool = False) -> None:
         """A heading, `deeper` levels below the builder's own."""
-        self.nodes.append(Heading(text, self.level + deeper, f"{self.prefix}{name}"))
+        self.nodes.append(Heading(text, self.level + deeper, f"{self.prefix}{name}", page))
 
     def say(self, *parts: Part, strong: bool = False) -> None:
         """A paragraph."""
