@@ -243,3 +243,24 @@ def test_everything_over_27_conditions(seed: int, tmp_path: Path) -> None:
     assert len(book.conditions) == 27
     assert check_worst_cases(book) >= 3
     assert check_break_values(book, random.Random(seed), 60) >= 10
+
+
+def test_a_range_that_begins_without_a_drive_resistance(tmp_path: Path) -> None:
+    """The end at 0 has what the sheet has that states none, and the other end what that one has."""
+    rng = random.Random(12)
+    project, process, sheet = draw(rng, "common-gate", "n", "ideal", want_invalid=False)
+    sheet["assume"].pop("drive_resistance", None)
+    sheet["assume"].pop("step_size", None)
+    targets = {name: {"min": 1e-30} for name in ("bandwidth", "input_noise", "settling_time")}
+    stated: dict[str, Any] = {"none": None, "end": 2e3, "range": {"value": 0.0, "high": 2e3}}
+    texts = {}
+    for name, resistance in stated.items():
+        more = {} if resistance is None else {"drive_resistance": resistance}
+        texts[name] = to_toml(sheet | {"assume": sheet["assume"] | more, "target": targets})
+    folder = write_project(tmp_path / "book", to_toml(project), to_toml(process), texts)
+    found = {s["sheet"]: s for s in json.loads(run("review", str(folder), "--json").out)["sheets"]}
+    for key, number in found["none"]["metrics"].items():
+        value = found["range"]["metrics"][key]["value"]
+        assert value == (None if number["value"] is None else pytest.approx(number["value"], rel=1e-9)), key
+    for target, end, none in zip(*(found[name]["targets"] for name in ("range", "end", "none")), strict=True):
+        assert target["worst"] == pytest.approx(min(end["worst"], none["worst"]), rel=1e-9)

@@ -18,6 +18,8 @@ from worksheet.device.constants import thermal_voltage
 from worksheet.device.parameters import Parameters
 from worksheet.stages.circuit import Circuit
 
+_SHORT = 1e-9
+
 
 @dataclass(frozen=True, eq=False)
 class Inputs:
@@ -63,6 +65,14 @@ class Inputs:
         return np.asarray(
             self.circuit.polarity == "p" if self.upside_down is None else self.upside_down, dtype=np.bool_
         )
+
+    @property
+    def resistance(self) -> Array:
+        """Of the drive where the circuit is driven through one: at least a nanoohm, which a range that begins at 0 has.
+
+        One network then serves all of a range's ends; what a nanoohm changes is of the size of rounding.
+        """
+        return np.maximum(self.drive_resistance, _SHORT)
 
     @property
     def thermal(self) -> Number:

@@ -33,7 +33,7 @@ class Network:
             WELL: {"capacitance": inputs.well_capacitance},
         }
         if inputs.circuit.driven_through_resistance:
-            self._elements[RESISTOR] = {"conductance": 1.0 / np.asarray(inputs.drive_resistance)}
+            self._elements[RESISTOR] = {"conductance": 1.0 / inputs.resistance}
 
     def _value(self, term: Term) -> Number:
         owner, name = term.element

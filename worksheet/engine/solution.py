@@ -270,7 +270,10 @@ class NumericSolution:
             for d in self.transistors
         ]
         if self.inputs.circuit.driven_through_resistance:
-            white = 4.0 * BOLTZMANN * self.inputs.temperature / self.inputs.drive_resistance
+            stands = (
+                np.asarray(self.inputs.drive_resistance) > 0
+            )  # none has no noise; the least one has that of its bandwidth
+            white = np.where(stands, 4.0 * BOLTZMANN * self.inputs.temperature / self.inputs.resistance, 0.0)
             sources.append(self._source("drive_resistor", self.network.drive_transfer(), white, 0.0, 1.0))
         return tuple(sources)
 

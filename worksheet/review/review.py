@@ -8,7 +8,7 @@ from dataclasses import dataclass, field
 from typing import TYPE_CHECKING
 
 from worksheet.model.problem import Problem
-from worksheet.model.sheet import Chain
+from worksheet.model.sheet import Chain, Sheet
 from worksheet.project.case import CaseError
 from worksheet.project.discover import Project
 from worksheet.project.evaluate import Evaluator
@@ -70,7 +70,7 @@ def _solved(evaluator: Evaluator, names: Sequence[str]) -> Iterator[_Solved]:
             case = evaluator.case(name)
             problems, ranged = tuple(late_problems(case)), with_ranges(case)
         except CaseError as error:
-            yield name, None, (error.problem,)
+            yield name, None, (_of(evaluator.project.sheets[name], error.problem),)
             continue
         if problems:
             yield name, None, problems
@@ -80,6 +80,14 @@ def _solved(evaluator: Evaluator, names: Sequence[str]) -> Iterator[_Solved]:
     for points in solved_points(stated, held):
         problems = tuple(level_problems(points))
         yield points.case.sheet.name, None if problems else points, problems
+
+
+def _of(sheet: Sheet, problem: Problem) -> Problem:
+    """A sheet's own problem, or that it takes values from a sheet that has one, which is told there."""
+    if problem.file == sheet.file:
+        return problem
+    other = problem.file.rpartition("/")[2].removesuffix(".toml")
+    return Problem(sheet.file, None, "", f"this sheet takes values from {other!r}, which has problems of its own")
 
 
 def chained(evaluator: Evaluator, chains: Mapping[str, Chain], bad: Collection[str]) -> tuple[ChainReview, ...]:
