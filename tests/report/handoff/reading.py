@@ -1,4 +1,4 @@
-"""Reading a page back with the standard library's parser: its numbers, headings, tables, pictures, and what could act."""
+"""Reading a page back with the standard library: its numbers, headings, tables, pictures, and what could act."""
 
 from __future__ import annotations
 
@@ -76,7 +76,7 @@ class Page(HTMLParser):
                 self.tables[-1].scopes.append(known.get("scope") or "")
 
     def handle_endtag(self, tag: str) -> None:
-        assert self._open.pop() == tag
+        assert tag in VOID or self._open.pop() == tag
 
     def handle_data(self, data: str) -> None:
         inside = self._open

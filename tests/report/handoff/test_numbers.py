@@ -122,7 +122,7 @@ def test_windows_of_a_block_are_those_of_its_solve_document(page: Page, sample: 
     ["battery_watch", "converter_driver", "level_amplifier", "mux_driver", "pressure_input", "wake_comparator"],
 )
 def test_windows_of_every_block_are_those_of_its_solve_document(page: Page, sample: Path, name: str) -> None:
-    assert _solved(page, sample, name) > 5
+    assert _solved(page, sample, name) > 2
 
 
 def test_sizes_as_lines_are_the_numbers_of_the_review(folder: Path, reviewed: Mapping[str, Any]) -> None:
