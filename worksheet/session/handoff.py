@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import datetime
 from collections.abc import Iterator, Sequence
+from dataclasses import replace
 from pathlib import Path
 from typing import Any
 
@@ -86,7 +87,8 @@ def hand_off(
         )
         pages.update(_written(stem, made))
         record.note(stem, origin, today)
-    return record.put(pages)
+    written = record.put(pages)
+    return replace(written, problems=review.problems) if isinstance(written, Written) else written
 
 
 def _unknown(name: str, workbook: Workbook) -> list[Problem]:

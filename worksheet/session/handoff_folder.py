@@ -26,10 +26,10 @@ _SCHEMA = 1
 
 @dataclass(frozen=True, slots=True)
 class Written:
-    """What was written: the files' names, and what there is to say."""
+    """What was written: the files' names, and what is wrong with the project, which the pages say too."""
 
     files: tuple[str, ...]
-    remarks: tuple[str, ...] = ()
+    problems: tuple[Problem, ...] = ()
 
 
 class Record:

@@ -7,7 +7,7 @@ import os
 from pathlib import Path
 from typing import TYPE_CHECKING, Any
 
-from worksheet.cli.diagnostics import Status, say, tell
+from worksheet.cli.diagnostics import Status, tell
 
 if TYPE_CHECKING:
     from worksheet.cli.output import Output
@@ -28,7 +28,7 @@ def add(subparsers: Any) -> None:
 
 
 def run(args: argparse.Namespace, output: Output) -> int:
-    """Write a hand-off. 0; 2 where the project cannot be read or the pages cannot be written."""
+    """Write a hand-off. 0; 2 where something of the project is wrong, or the pages cannot be written."""
     import datetime
 
     from worksheet.session.handoff import hand_off
@@ -41,7 +41,6 @@ def run(args: argparse.Namespace, output: Output) -> int:
     if not isinstance(made, Written):
         tell(made)
         return Status.BAD_INPUT
-    for remark in made.remarks:
-        say(f"biasbook: {remark}")
+    tell(made.problems)
     output.lines(str(folder / name) for name in made.files)
-    return Status.FINE
+    return Status.BAD_INPUT if made.problems else Status.FINE

@@ -9,7 +9,7 @@ from worksheet.report.handoff.block import block, counted, opening, purpose
 from worksheet.report.handoff.material import Block, HandOff, Origin
 from worksheet.report.handoff.moved import moved_project
 from worksheet.report.handoff.tree import Builder, Cell, Heading, Links, Page, Points, joined, metric, text
-from worksheet.review.results import MISSED, UNKNOWN
+from worksheet.review.results import MISSED
 
 _ID = 10
 
@@ -126,7 +126,7 @@ def _problems(made: HandOff, into: Builder, file: str = "") -> None:
 
 
 def _problem(found: Problem) -> tuple[Cell, ...]:
-    return text(found.file), text(found.line or "-"), text(found.key or "-"), text(found.message, UNKNOWN)
+    return text(found.file), text(found.line or "-"), text(found.key or "-"), text(found.message)
 
 
 def _fits(made: HandOff, into: Builder) -> None:
