@@ -9,23 +9,35 @@ from worksheet.tui import keymap
 from worksheet.tui.commands import (
     ALGEBRA,
     BOOK,
+    CHAIN,
     COMMANDS,
     COMPARE,
+    CURVES,
+    FAILING,
+    FRONT,
     MAP,
     MEETING,
     PLACES,
     SHEET,
+    SWEEP,
     TAKEOVER,
+    VARIANTS,
     find,
     of_place,
     shown_key,
 )
 from worksheet.tui.screens.algebra import AlgebraScreen
 from worksheet.tui.screens.book import BookScreen
+from worksheet.tui.screens.chains import ChainScreen
 from worksheet.tui.screens.compare import CompareScreen
+from worksheet.tui.screens.curves import CurvesScreen
+from worksheet.tui.screens.failing import FailingScreen
+from worksheet.tui.screens.front import FrontScreen
 from worksheet.tui.screens.meeting import MeetingScreen
 from worksheet.tui.screens.sheet import SheetScreen
+from worksheet.tui.screens.sweeping import SweepScreen
 from worksheet.tui.screens.takeover import TakeoverScreen
+from worksheet.tui.screens.variants import VariantsScreen
 from worksheet.tui.screens.window_map import MapScreen
 
 SCREENS = {
@@ -36,6 +48,12 @@ SCREENS = {
     MEETING: MeetingScreen,
     TAKEOVER: TakeoverScreen,
     COMPARE: CompareScreen,
+    VARIANTS: VariantsScreen,
+    SWEEP: SweepScreen,
+    FRONT: FrontScreen,
+    CHAIN: ChainScreen,
+    FAILING: FailingScreen,
+    CURVES: CurvesScreen,
 }
 
 TAKEN_BY_OTHERS = {

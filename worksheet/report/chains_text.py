@@ -41,7 +41,7 @@ def chain(result: ChainReview, width: int) -> Iterator[str]:
         yield from lines(_numbers(result), width, "  ")
     if result.stages:
         yield "  What each takes, nominal; of bandwidth and settling, what is lost to it"
-        yield from lines(Table(_SHARES, tuple(_share(share) for share in result.stages)), width, "  ")
+        yield from lines(shares_table(result), width, "  ")
     if result.invalid:
         word = "condition" if result.invalid == 1 else "conditions"
         yield from wrapped(
@@ -49,6 +49,11 @@ def chain(result: ChainReview, width: int) -> Iterator[str]:
         )
     for note in result.notes:
         yield from wrapped(f"{note.about}: {note.text}", width, "  ")
+
+
+def shares_table(result: ChainReview) -> Table:
+    """What each sheet takes, a row each in the order of the signal."""
+    return Table(_SHARES, tuple(_share(share) for share in result.stages))
 
 
 def _numbers(result: ChainReview) -> Table:

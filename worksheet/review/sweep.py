@@ -85,7 +85,9 @@ class Sweep:
     every: int
 
 
-def grid(axis: Axis, low: float | None, high: float | None, points: int, *, logarithmic: bool) -> Array:
+def grid(
+    axis: Axis, low: float | None, high: float | None, points: int, *, logarithmic: bool, decades: float = 1.0
+) -> Array:
     """Where to look. [unit of the axis]
 
     Args:
@@ -94,11 +96,12 @@ def grid(axis: Axis, low: float | None, high: float | None, points: int, *, loga
             temperature and supply).
         points: How many.
         logarithmic: Equal ratios instead of equal steps.
+        decades: What either way of the present value is taken instead of one decade.
     Raises: ValueError with what is wrong.
     """
     if not 2 <= points <= MOST_POINTS:
         raise ValueError(f"Found {points} points, expected 2 to {MOST_POINTS}.")
-    around = 1.1 if axis.move in _OF_CONDITION else _DECADE
+    around = (1.1 if axis.move in _OF_CONDITION else _DECADE) ** decades
     if (low is None or high is None) and axis.present == 0:
         raise ValueError(f"{axis.name} stands at 0, so both ends are wanted.")
     first = _within(axis, axis.present / around) if low is None else low

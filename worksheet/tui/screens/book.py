@@ -124,11 +124,23 @@ class BookScreen(Place):
 
         choose(self)
 
+    def action_chains(self) -> None:
+        """The signal paths."""
+        from worksheet.tui.screens.chains import ChainScreen
+
+        self.app.push_screen(ChainScreen())
+
     def action_record(self) -> None:
         """Record a revision."""
         from worksheet.tui.screens.tracing import record
 
         record(self)
+
+    def action_curves(self) -> None:
+        """Fit a device to curves."""
+        from worksheet.tui.screens.curves import begin
+
+        begin(self)
 
     def action_take_over(self) -> None:
         """Be led through a block before it is one's own."""

@@ -280,3 +280,31 @@ class SheetScreen(Place):
         from worksheet.tui.screens.window_map import MapScreen
 
         self.app.push_screen(MapScreen(self.name_of_sheet))
+
+    def action_variants(self) -> None:
+        """What else the sheet could be."""
+        from worksheet.tui.screens.variants import VariantsScreen
+
+        self.app.push_screen(VariantsScreen(self.name_of_sheet))
+
+    def action_sweep(self) -> None:
+        """A metric over the quantity under the cursor, or over the bias current."""
+        from worksheet.tui.screens.sweeping import SweepScreen
+
+        row = self.ledger.row
+        swept = row is not None and row.subject[0] in ("variable", "own")
+        self.app.push_screen(
+            SweepScreen(self.name_of_sheet, row.subject[1] if row is not None and swept else "bias_current")
+        )
+
+    def action_front(self) -> None:
+        """The least current and area."""
+        from worksheet.tui.screens.front import FrontScreen
+
+        self.app.push_screen(FrontScreen(self.name_of_sheet))
+
+    def action_failing(self) -> None:
+        """What would break it."""
+        from worksheet.tui.screens.failing import FailingScreen
+
+        self.app.push_screen(FailingScreen(self.name_of_sheet))
