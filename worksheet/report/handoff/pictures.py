@@ -19,9 +19,13 @@ from worksheet.model.text import clean
 from worksheet.report import wording
 from worksheet.report.handoff.material import Block, Fit
 from worksheet.report.handoff.tree import Picture
+from worksheet.report.table import cut
 from worksheet.solver.trials import Constraint
 
 _WIDE, _HIGH = 7.2, 3.3
+_LEGEND = 0.705
+"""Where the legend begins, as a share of the width."""
+
 _COLOURS = ("#0b4f8a", "#b3450a", "#1d6131", "#7b2d75", "#6b5300", "#0e6b72", "#7a1f2b", "#3d3d3d")
 _LINES: tuple[Any, ...] = ("-", "--", "-.", ":", (0, (5, 1)), (0, (3, 1, 1, 1)), (0, (1, 1)), (0, (8, 2)))
 _MARKS = "osD^vP*Xh<>"
@@ -36,13 +40,16 @@ _SETTINGS: Any = {
     "axes.unicode_minus": True,
     "figure.dpi": 100,
 }
+_LONGEST = 24
+"""Characters of a name in a legend."""
+
 _LEAST, _MOST = -1.0, 2.0
 """Margins beyond these are drawn at the edge."""
 
 
 @contextmanager
-def _drawn(rows: int, high: float) -> Iterator[tuple[Any, list[Any], list[str]]]:
-    """A figure with axes, and a list that its SVG is put into."""
+def _drawn(rows: int, high: float, left: float = 0.75) -> Iterator[tuple[Any, list[Any], list[str]]]:
+    """A figure with axes that leave `left` inches for their labels, and a list that its SVG is put into."""
     import matplotlib as mpl
     from matplotlib.backends.backend_svg import FigureCanvasSVG
     from matplotlib.figure import Figure
@@ -50,7 +57,8 @@ def _drawn(rows: int, high: float) -> Iterator[tuple[Any, list[Any], list[str]]]
     with mpl.rc_context():
         mpl.rcdefaults()
         mpl.rcParams.update(_SETTINGS)
-        figure = Figure(figsize=(_WIDE, high), layout="constrained")
+        figure = Figure(figsize=(_WIDE, high))  # laid out by hand: a layout engine draws everything twice
+        figure.subplots_adjust(left / _WIDE, 0.5 / high, _LEGEND - 0.02, 1 - 0.12 / high, hspace=0.16)
         axes = [figure.add_subplot(rows, 1, k + 1) for k in range(rows)]
         written: list[str] = []
         yield figure, axes, written
@@ -76,7 +84,7 @@ def _axis(axis: Any, dimension: Dimension, title: str, *, logarithmic: bool = Tr
 def _legend(axes: Any, figure: Any) -> None:
     handles, labels = axes.get_legend_handles_labels()
     if handles:
-        figure.legend(handles, labels, loc="outside right upper", frameon=False, handlelength=2.6)
+        figure.legend(handles, labels, loc="upper left", bbox_to_anchor=(_LEGEND, 1.0), frameon=False, handlelength=2.3)
 
 
 def window_map(found: Block) -> Picture | None:
@@ -122,7 +130,7 @@ def window_map(found: Block) -> Picture | None:
 def _edge(one: Constraint) -> str:
     """A boundary's name; what begins with an underscore would be left out of a legend."""
     side = "" if one.target is None else " min" if one.side == "low" else " max"
-    return clean(f"{one.name}{side}").lstrip("_")
+    return cut(clean(one.name).lstrip("_"), _LONGEST) + side
 
 
 def margins(found: Block) -> Picture | None:
@@ -132,7 +140,8 @@ def margins(found: Block) -> Picture | None:
     if not names:
         return None
     corners = list(dict.fromkeys(c.process for c in made.conditions))
-    with _drawn(1, 0.9 + 0.42 * len(names)) as (figure, (axes,), written):
+    left = 0.25 + 0.068 * max(len(name) for name in names)
+    with _drawn(1, 0.75 + 0.4 * len(names), min(left, 2.5)) as (figure, (axes,), written):
         for place, corner in enumerate(corners):
             at = [k for k, c in enumerate(made.conditions) if c.process == corner]
             points = [(v, r) for r, n in enumerate(names) for v in _of(made.by_target[n], at)]
@@ -141,10 +150,10 @@ def margins(found: Block) -> Picture | None:
                 [np.clip(v, _LEAST, _MOST) for v, _ in points],
                 [r + lift for _, r in points],
                 linestyle="none", marker=_MARKS[place % len(_MARKS)], markersize=4, fillstyle="none",
-                color=_COLOURS[place % len(_COLOURS)], label=clean(corner).lstrip("_"),
+                color=_COLOURS[place % len(_COLOURS)], label=cut(clean(corner).lstrip("_"), _LONGEST),
             )  # fmt: skip
         axes.axvline(0.0, color="#a3131b", linewidth=1.2)
-        axes.set_yticks(range(len(names)), [clean(name) for name in names])
+        axes.set_yticks(range(len(names)), [cut(clean(name), 34) for name in names])
         axes.set_ylim(len(names) - 0.5, -0.5)
         axes.set_xlim(_LEAST * 1.03, _MOST * 1.03)
         axes.xaxis.set_major_formatter(_per_cent())
@@ -191,6 +200,7 @@ def response(found: Block) -> Picture | None:
             axes.set_ylabel(title)
             axes.grid(color="#d3d8dc", linewidth=0.5)
             _axis(axes.xaxis, FREQUENCY, "frequency" if axes is lower else "")
+        upper.tick_params(labelbottom=False)
         _legend(upper, figure)
     still = wording.metric_number("dc_gain", float(made.magnitude[0, 0]), "V/V", digits=3)
     ends = [f"{float(decibels[0, k]):.3g} dB" for k in (0, -1)]
