@@ -224,6 +224,7 @@ class _Rows:
         self.probe, self.place, self.name, self.values, self._nominal = probe, place, name, values, nominal
         self.circuit = probe.circuit
         self.count = len(place)
+        self._first, self._last = (int(place.min()), int(place.max())) if len(place) else (0, -1)
         order = np.argsort(name, kind="stable")
         numbers = name[order]
         starts = np.searchsorted(numbers, np.arange(len(probe.names) + 1))
@@ -272,7 +273,8 @@ class _Rows:
         column: Array = base[self.place]
         column[rows] = self.values[rows]
         for number in self.probe.following.get(name, ()):
-            self._follow(name, number, self.probe.places[number], column)
+            if self._first <= number <= self._last:
+                self._follow(name, number, self.probe.places[number], column)
         return column[:, None]
 
     def _held(self, name: str, rows: Index) -> Index:
