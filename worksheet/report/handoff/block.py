@@ -41,12 +41,12 @@ def block(made: HandOff, found: Block, into: Builder) -> None:
     _weakest(found, into)
     _remarks(found, into)
     _targets(found, into)
+    _waivers(found, into)
     windows(found, into)
     _algebra(found, into)
     _operating(found, into)
     sizes.sizes(found, into)
     moved_block(made, found, into)
-    _waivers(found, into)
 
 
 def opening(found: Block, into: Builder) -> None:

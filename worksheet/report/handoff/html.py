@@ -28,8 +28,11 @@ from worksheet.report.handoff.tree import (
     Table,
 )
 
-_SHORT = 12
-"""Rows of a table that is not parted by a page break."""
+_SHORT = 36
+"""Lines of a table that is not parted by a page break; a page holds some 48."""
+
+_ACROSS = 110
+"""Characters that a page holds across in a table."""
 
 _ON_ONE_LINE = 14
 """Characters of a cell that is not broken."""
@@ -95,7 +98,7 @@ def _kept_together(nodes: Sequence[Node]) -> Iterator[str]:
         group = nodes[place : max(end, place + 1)]
         kept = len(group) > 1
         if kept:
-            fresh = " page" if isinstance(group[0], Heading) and group[0].page else ""
+            fresh = " page" if isinstance(group[0], Heading) and group[0].block else ""
             yield f'<div class="keep{fresh}">'
         for node in group:
             yield from _node(node)
@@ -105,7 +108,15 @@ def _kept_together(nodes: Sequence[Node]) -> Iterator[str]:
 
 
 def _long(node: Node) -> bool:
-    return (isinstance(node, Table) and len(node.rows) > _SHORT) or isinstance(node, Lines)
+    if isinstance(node, Lines):
+        return len(node.lines) > _SHORT
+    return isinstance(node, Table) and sum(map(_high, node.rows)) > _SHORT
+
+
+def _high(row: Sequence[Cell]) -> int:
+    """Lines that a row of a table takes at most, were every column as wide as the others."""
+    across = _ACROSS // len(row)
+    return max(-(-len(cell.text) // across) for cell in row) or 1
 
 
 def _node(node: Node) -> Iterator[str]:

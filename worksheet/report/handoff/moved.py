@@ -16,7 +16,9 @@ _ID = 10
 
 
 def moved_block(made: HandOff, found: Block, into: Builder) -> None:
-    """The section of what moved in one block."""
+    """The section of what moved in one block; nothing where the project's own says already that nobody can tell."""
+    if made.whole and (made.since is None or made.since.comparison is None):
+        return
     into.head("What moved since the last hand-off", "moved")
     since = made.since
     if since is None:

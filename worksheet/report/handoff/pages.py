@@ -8,6 +8,7 @@ from worksheet.report.handoff import pictures
 from worksheet.report.handoff.block import block, counted, opening, purpose
 from worksheet.report.handoff.material import Block, HandOff, Origin
 from worksheet.report.handoff.moved import moved_project
+from worksheet.report.handoff.paths import paths
 from worksheet.report.handoff.tree import Builder, Cell, Heading, Links, Page, Points, joined, metric, text
 from worksheet.review.results import MISSED
 
@@ -24,7 +25,7 @@ def block_page(made: HandOff, found: Block) -> Page:
     """A page of one block."""
     title = found.review.sheet.title or found.name
     head = Builder(1)
-    head.head(f"{title} ({found.name})", "top")
+    head.head(f"{title} ({found.name})", "top", block=found.name)
     body = Builder(2)
     _standing(made, head)
     opening(found, body)
@@ -43,6 +44,7 @@ def project_page(made: HandOff) -> Page:
     _standing(made, head)
     body = Builder(2)
     _overview(made, body)
+    paths(made, body)
     _budgets(made, body)
     _uncovered(made, body)
     _problems(made, body)
@@ -50,7 +52,7 @@ def project_page(made: HandOff) -> Page:
     _fits(made, body)
     for found in made.blocks:
         one = Builder(2, f"{found.name}-")
-        one.head(f"{found.review.sheet.title or found.name} ({found.name})", "block", page=True)
+        one.head(f"{found.review.sheet.title or found.name} ({found.name})", "block", block=found.name)
         inner = Builder(3, f"{found.name}-")
         opening(found, inner)
         block(made, found, inner)

@@ -10,7 +10,7 @@ from collections.abc import Iterator
 from worksheet.model.text import clean
 from worksheet.report.handoff.tree import Cell, Heading, Page, Table
 
-COLUMNS = ("page", "section", "table", "row", "quantity", "value", "unit", "text")
+COLUMNS = ("block", "section", "table", "row", "quantity", "value", "unit", "text")
 
 _ACTS = ("=", "+", "-", "@", "\t", "\r")
 """What makes a spreadsheet take a text for a formula."""
@@ -25,12 +25,14 @@ def write(page: Page) -> str:
     writer = csv.writer(into, lineterminator="\r\n")
     writer.writerow(COLUMNS)
     block = section = ""
-    levels = [node.level for node in page.nodes if isinstance(node, Heading)]
-    deep = max(levels, default=1)
+    top = 0
     for node in page.nodes:
         if isinstance(node, Heading):
-            section = node.text
-            block = node.text if node.level < deep else block
+            if node.block:
+                block, section, top = node.block, "", node.level
+            else:
+                block = block if node.level > top else ""
+                section = node.text
         elif isinstance(node, Table):
             for row in _rows(node):
                 writer.writerow([harmless(block), harmless(section), harmless(node.caption), *row])

@@ -61,12 +61,12 @@ class Cell:
 
 @dataclass(frozen=True, slots=True)
 class Heading:
-    """A heading of a level from 1, with a name that links can lead to; on paper it may begin a `page`."""
+    """A heading of a level from 1, with a name that links can lead to; `block` names the block that begins with it."""
 
     text: str
     level: int
     name: str
-    page: bool = False
+    block: str = ""
 
 
 @dataclass(frozen=True, slots=True)
@@ -162,9 +162,9 @@ class Builder:
     prefix: str = ""
     nodes: list[Node] = field(default_factory=list)
 
-    def head(self, text: str, name: str, deeper: int = 0, *, page: bool = False) -> None:
+    def head(self, text: str, name: str, deeper: int = 0, *, block: str = "") -> None:
         """A heading, `deeper` levels below the builder's own."""
-        self.nodes.append(Heading(text, self.level + deeper, f"{self.prefix}{name}", page))
+        self.nodes.append(Heading(text, self.level + deeper, f"{self.prefix}{name}", block))
 
     def say(self, *parts: Part, strong: bool = False) -> None:
         """A paragraph."""
