@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import datetime
+import hashlib
 from collections.abc import Iterator, Mapping, Sequence
 from dataclasses import dataclass, replace
 from pathlib import Path
@@ -10,15 +11,20 @@ from pathlib import Path
 from worksheet.extract import curves
 from worksheet.extract.data import Extraction, Rows
 from worksheet.extract.extraction import Request, extract_parameters, read_rows
+from worksheet.extract.header import parse_stated
 from worksheet.extract.law import Reference
 from worksheet.extract.store import Stating, stating
+from worksheet.model import dimension as dim
 from worksheet.model.fitted_keys import FITTED
 from worksheet.model.problem import Problem
+from worksheet.model.quantity import QuantityError, parse
 from worksheet.model.sheet import DeviceModel, Process
 from worksheet.model.text import clean, nearest
+from worksheet.project.discover import EVIDENCE
 from worksheet.sheetfile import source
 from worksheet.sheetfile.document import WriteRefusedError
 from worksheet.sheetfile.edit import AddTable, Edit, RemoveKey, SetValue, apply
+from worksheet.sheetfile.paths import inside
 from worksheet.sheetfile.processes import TYPICAL
 from worksheet.sheetfile.read import parse_process
 from worksheet.sheetfile.write import save
@@ -114,6 +120,21 @@ def write_into(
 
     Returns: what was written, or every problem; then the file is as it was.
     """
+    made = text_with(result, into, dated=dated, trust=trust, confirmed=confirmed)
+    if isinstance(made, list):
+        return made
+    wanted, text = made
+    try:
+        save(into.path, read=into.content, new=text, root=into.root)
+    except WriteRefusedError as error:
+        return [Problem(into.shown, None, f"device.{into.device.name}", str(error))]
+    return wanted
+
+
+def text_with(
+    result: Extraction, into: ProcessText, *, dated: datetime.date, trust: str, confirmed: bool
+) -> tuple[Stating, str] | list[Problem]:
+    """A process file's text with an extraction in it, and what that states; nothing is written. See write_into."""
     guessed = [one for one in result.readings if one.guessed]
     if guessed and not confirmed:
         return [
@@ -134,10 +155,9 @@ def write_into(
         _, problems = parse_process(text, into.path.stem, into.shown)
         if problems:
             return [replace(one, message=f"With the fit written into it: {one.message}") for one in problems]
-        save(into.path, read=into.content, new=text, root=into.root)
     except WriteRefusedError as error:
         return [Problem(into.shown, None, f"device.{into.device.name}", str(error))]
-    return wanted
+    return wanted, text
 
 
 def _edits(into: ProcessText, wanted: Stating) -> Iterator[Edit]:
@@ -154,6 +174,51 @@ def _edits(into: ProcessText, wanted: Stating) -> Iterator[Edit]:
             yield SetValue((FITTED.name, name, key), value)
         elif key in before:
             yield RemoveKey((FITTED.name, name, key))
+
+
+def asked(texts: Mapping[str, str], polarity: str) -> Request | str:
+    """What is asked of a fit, from texts as they are typed into a form.
+
+    Args:
+        texts: "width", "length", "temperature" (with commas one a table), "columns" (NAME=HEADER:UNIT, with commas).
+        polarity: "n" or "p".
+    Returns: the request, or what is wrong with a text, a sentence
+    """
+    columns = {}
+    for text in filter(None, map(str.strip, texts.get("columns", "").split(","))):
+        stated = parse_stated(text)
+        if isinstance(stated, str):
+            return stated
+        columns[stated[0]] = stated[1]
+    numbers: dict[str, list[float]] = {}
+    for name, dimension in (("width", dim.LENGTH), ("length", dim.LENGTH), ("temperature", dim.TEMPERATURE)):
+        try:
+            numbers[name] = [parse(one.strip(), dimension) for one in texts.get(name, "").split(",") if one.strip()]
+        except QuantityError as error:
+            return f"{name}: {error}"
+    return Request(
+        polarity=polarity,
+        columns=columns,
+        width=numbers["width"],
+        length=numbers["length"],
+        temperature=numbers["temperature"],
+    )
+
+
+def tables_of(into: ProcessText, root: Path) -> tuple[Path, ...]:
+    """The tables that a device was fitted to, as far as they still lie in the project and are what they were."""
+    fitted = into.process.fitted.get(into.device.name, {})
+    names = [name.strip() for name in str(fitted.get("files", "")).split(",") if name.strip()]
+    digests = str(fitted.get("digest", ""))
+    found = []
+    for name in names:
+        for place in (root / name, root / EVIDENCE / Path(name).name):
+            if inside(root, place) and place.is_file():
+                with place.open("rb") as file:
+                    if hashlib.file_digest(file, "sha256").hexdigest() in digests:
+                        found.append(place)
+                break
+    return tuple(found)
 
 
 def corner_changes(into: ProcessText, corner: str) -> Mapping[str, float] | Problem:

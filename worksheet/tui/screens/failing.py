@@ -5,15 +5,19 @@ from __future__ import annotations
 from collections.abc import Callable, Iterable, Sequence
 from typing import Any
 
+from worksheet.model.units import UnitError, parse_unit
 from worksheet.report import wording
-from worksheet.review.failing import WORST, Failing
+from worksheet.review.failing import Failing
 from worksheet.session.alternatives import failing_of, in_book
 from worksheet.tui import commands
 from worksheet.tui.rows import LABEL, MISSED, PLAIN, QUIET, VALUE, Row, Span, line
 from worksheet.tui.screens.place import bindings
 from worksheet.tui.screens.view import View
 
-_TRUST, _INPUT, _NUMBER, _ROOM, _TARGET = 9, 27, 9, 7, 14
+_TRUST, _INPUT, _NUMBER, _ROOM, _TARGET = 9, 24, 8, 6, 15
+_NARROW = 86
+"""Columns from which on names have more room, and the condition stands there too."""
+
 _CLOSE = 0.1
 """Room below this is set off."""
 
@@ -23,7 +27,8 @@ class FailingScreen(View):
 
     PLACE = commands.FAILING
     BINDINGS = bindings(commands.FAILING)
-    ABOUT = "what would have to be true for this block to fail, weakest trust first"
+    ABOUT = "what would have to be true for this block to fail"
+    """n: at the nominal condition, w: at the worst one."""
 
     def job(self) -> Callable[[], Any]:
         """The ranking, at the nominal condition and at each target's worst one."""
@@ -41,12 +46,21 @@ class FailingScreen(View):
         """Rows of the ranking."""
         return Failing
 
+    @property
+    def _input(self) -> int:
+        """Columns of the input's name: more where there is room."""
+        return min(max(self.columns - _NARROW + _INPUT, _INPUT), 36)
+
+    @property
+    def _wide(self) -> bool:
+        """Whether there is room for the condition in full; its first letter stands there otherwise."""
+        return self.columns >= _NARROW
+
     def picture(self) -> Sequence[str]:
         """The heading of the rows."""
-        wide = max(self.columns - _TRUST - _INPUT - 2 * _NUMBER - _ROOM - _TARGET - 6, 0)
         head = (
-            f" {'trust':{_TRUST}} {'input':{_INPUT}} {'is':>{_NUMBER}} {'breaks at':>{_NUMBER}} "
-            f"{'room':>{_ROOM}} {'target':{_TARGET}}" + (" where" if wide > 6 else "")
+            f" {'trust':{_TRUST}} {'input':{self._input}} {'is':>{_NUMBER}} {'breaks':>{_NUMBER}} "
+            f"{'room':>{_ROOM}} {'target':{_TARGET}}" + (" where" if self._wide else " ")
         )
         return [head]
 
@@ -63,21 +77,21 @@ class FailingScreen(View):
         cells = (
             row.trust or "none",
             row.name,
-            wording.number(row.value, row.unit, digits=3),
-            wording.number(row.break_value, row.unit, digits=3),
-            "" if row.room is None else f"{row.room:.1%}",
+            _number(row.value, row.unit),
+            _number(row.break_value, row.unit),
+            _room(row.room),
             row.target,
             one.where,
         )
         close = row.room is not None and row.room < _CLOSE
         spans = (
             Span(signs.text(cells[0]), LABEL if row.trust else QUIET, _TRUST),
-            Span(signs.text(cells[1]), VALUE, _INPUT),
+            Span(signs.text(cells[1]), VALUE, self._input),
             Span(signs.text(cells[2]), PLAIN, _NUMBER, right=True),
             Span(signs.text(cells[3]), PLAIN, _NUMBER, right=True),
             Span(signs.text(cells[4]), MISSED if close else PLAIN, _ROOM, right=True),
             Span(signs.text(cells[5]), PLAIN, _TARGET),
-            Span("worst" if one.where == WORST else "nominal", QUIET),
+            Span(one.where if self._wide else one.where[0], QUIET),
         )
         return Row(f"{row.name}.{row.target}.{one.where}", (line(*spans),), subject=("input", row.name), copied=cells)
 
@@ -87,3 +101,18 @@ class FailingScreen(View):
         if row is not None and row.subject[0] == "input":
             self.app.pop_screen()
             self.book.open_sheet(self.name_of_sheet, row.subject[1])
+
+
+def _number(value: float | None, unit: str) -> str:
+    """A value in SI units; an own name's unit is as written, its value is not."""
+    try:
+        base = parse_unit(unit).base if unit else ""
+    except UnitError:  # a unit that is a word of the user's own
+        base = unit
+    return wording.number(value, base, digits=3)
+
+
+def _room(room: float | None) -> str:
+    if room is None:
+        return "-"
+    return f"{room:.1%}" if room < 0.1 else f"{room:.0%}" if room < 9.995 else f"{room:.0f}x"

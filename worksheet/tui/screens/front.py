@@ -22,7 +22,7 @@ class FrontScreen(View):
 
     PLACE = commands.FRONT
     BINDINGS = bindings(commands.FRONT)
-    ABOUT = "bias current across, gate area up: what meets every target"
+    ABOUT = "bias current across, gate area up"
 
     def job(self) -> Callable[[], Any]:
         """The front."""

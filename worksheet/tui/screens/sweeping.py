@@ -13,7 +13,7 @@ from worksheet.tui.rows import MISSED, PLAIN, QUIET, VALUE, Row, Span, line
 from worksheet.tui.screens.place import bindings
 from worksheet.tui.screens.view import View
 
-_OTHER_LINES = 9
+_OTHER_LINES = 7
 """Lines of the screen that are not the drawing and not its list of metrics."""
 
 _POINTS = 81

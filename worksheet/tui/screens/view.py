@@ -110,8 +110,9 @@ class View(Place):
         signs = self.book.signs
         title = [Span(signs.text(self.name_of_sheet), HEAD)] if self.name_of_sheet else []
         stale = [Span("working...", LABEL)] if self.found is None and not self._problems else []
-        self.query_one("#title", Lines).show([line(*title, Span(signs.text(self.about), PLAIN), *stale, gap=2)])
-        self.ledger.show(Page() if self.found is None else Page(tuple(self.rows_found())))
+        self.query_one("#title", Lines).show([line(*title, *stale, Span(signs.text(self.about), PLAIN), gap=2)])
+        rows = () if self.found is None else tuple(self.rows_found())
+        self.ledger.show(Page(rows or (Row("none", ((),), stops=False),)))
         self.draw_picture()
         self.show_foot()
 
