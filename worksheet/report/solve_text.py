@@ -119,7 +119,7 @@ def _bound(window: Window, bound: Bound, key: Key, hand: Hand, width: int) -> It
     if estimate is None:
         yield from wrapped("numeric, no short formula", width, indent)
         return
-    off = _off(estimate["value"], bound.value)
+    off = far_off(estimate["value"], bound.value)
     yield from algebra(
         f"by hand {key.symbol} {sign} {estimate['formula']} = {shown(key, estimate['value'])}{off}", width, indent
     )
@@ -129,7 +129,7 @@ def _bound(window: Window, bound: Bound, key: Key, hand: Hand, width: int) -> It
         yield from wrapped(f"neglects {', '.join(named)}", width, indent)
 
 
-def _off(estimate: float, exact: float) -> str:
+def far_off(estimate: float, exact: float) -> str:
     """A word on a hand value that is far from the bound."""
     near = exact != 0 and 1 / _FAR_OFF < estimate / exact < _FAR_OFF
     return "" if near else ", far off here: what it neglects decides"

@@ -9,6 +9,7 @@ from worksheet.report import wording
 from worksheet.report.handoff import pictures
 from worksheet.report.handoff.material import Block
 from worksheet.report.handoff.tree import Builder, Cell, Points, joined, number, text
+from worksheet.report.solve_text import far_off
 from worksheet.solver.results import Point, Region, Window
 
 _LONGEST = 130
@@ -93,8 +94,10 @@ def _hand(found: Block, window: Window, side: str) -> Cell | None:
         return text(f"{lead}found numerically; there is no short formula")
     of = f"solve/{found.name}/needed/{window.name}/hand/{side}"
     value = number(estimate["value"], window.unit, of)
+    exact = window.region and (window.region.low if side == "low" else window.region.high)
+    off = far_off(estimate["value"], exact) if exact else ""
     neglects = f"; neglects {', '.join(estimate['neglects'])}" if estimate["neglects"] else ""
-    return joined(text(f"{lead}{estimate['formula']} = "), value, text(f" by hand{_beside(said)}{neglects}"))
+    return joined(text(f"{lead}{estimate['formula']} = "), value, text(f" by hand{off}{_beside(said)}{neglects}"))
 
 
 def _whole(said: Any) -> str:
