@@ -89,11 +89,12 @@ def test_the_present_choice_is_kept_as_a_variant(root: Path) -> None:
         assert "No variants yet" in "\n".join(d.rows())
         await d.press("k")
         await d.type("a b")
-        await d.press("enter")
+        await d.press("enter", "enter")
         assert not isinstance(d.app.screen, VariantsScreen), "a bad name is said, and the text stays"
-        await d.press("backspace", "backspace")
+        assert "variant" not in _sheet(root)
+        await d.press("up", "backspace", "backspace")
         await d.type("now")
-        await d.press("enter")
+        await d.press("enter", "enter")
         assert _sheet(root)["variant"]["anow"] == {
             "bias_current": "4 uA",
             "width": "20 um",
@@ -105,6 +106,27 @@ def test_the_present_choice_is_kept_as_a_variant(root: Path) -> None:
 
     drive(root, steps)
     assert run("review", str(root)).status != 2
+
+
+def test_a_second_variant_stands_beside_the_first(root: Path) -> None:
+    _with(root, VARIANT)
+
+    async def steps(d: Drive) -> None:
+        await d.sheet("bucket_buffer")
+        await d.press("d")
+        await _found(d, VariantsScreen)
+        await d.press("k")
+        await d.type("present")
+        await d.press("enter")
+        await d.type("as of today")
+        await d.press("enter")
+        kept = _sheet(root)["variant"]
+        assert list(kept) == ["loud", "present"]
+        assert kept["present"]["note"] == "as of today"
+        await d.press("z")
+        assert list(_sheet(root)["variant"]) == ["loud"]
+
+    drive(root, steps)
 
 
 def test_a_sweep_shows_what_the_command_says(root: Path) -> None:
