@@ -24,8 +24,9 @@ NOISES = {"output_noise", "input_noise", "offset", "offset_limit"}
 
 
 def drawn(kind: tuple[str, str, str], seed: object, folder: Path) -> Case | None:
-    """A random sheet of a kind, None where it cannot be evaluated."""
-    return case_of(folder, draw(random.Random(f"{kind}{seed}"), *kind, want_invalid=False))
+    """A random sheet of a kind, None where it cannot be evaluated or no level keeps its devices saturated."""
+    case = case_of(folder, draw(random.Random(f"{kind}{seed}"), *kind, want_invalid=False))
+    return None if case is None or (case.solution.levels.empty > 0).any() else case
 
 
 def point(case: Case, index: int) -> Point:

@@ -50,6 +50,7 @@ async def fitted(d: Drive, tables: str) -> CurvesScreen:
     return screen
 
 
+@pytest.mark.full
 def test_a_device_is_fitted_looked_at_written_and_undone(root: Path, table: Path) -> None:
     process = next((root / "process").iterdir())
     before = process.read_bytes()
@@ -100,6 +101,7 @@ def test_what_was_written_can_be_taken_back(root: Path, table: Path) -> None:
     assert process.read_bytes() == before
 
 
+@pytest.mark.full
 def test_columns_are_stated_where_they_are_not_told_by_their_names(root: Path, table: Path) -> None:
     text = table.read_text("utf-8").replace("vg,vs,vd,id,w,l", "front,vs,vd,loss,w,l", 1)
     table.write_text(text, "utf-8")

@@ -5,9 +5,11 @@ from __future__ import annotations
 from pathlib import Path
 
 from textual.color import Color
+from textual.widgets import Input
 
 from tests.tui.book import SHEETS
 from tests.tui.driving import Drive, drive
+from worksheet.session.project_edit import entries
 from worksheet.tui.screens.sheet import SheetScreen
 
 
@@ -166,3 +168,48 @@ def test_ascii_is_all_that_a_plain_terminal_gets(root: Path) -> None:
         assert _sent(d).isascii()
 
     drive(root, steps, plain_signs=True)
+
+
+def test_conditions_and_budgets_are_changed_through_a_form_and_undone(root: Path) -> None:
+    path = root / "biasbook.toml"
+    before = path.read_text("utf-8")
+
+    async def steps(d: Drive) -> None:
+        await d.settled()
+        await d.press("b")
+        dialog = d.app.screen
+        lines = {one.key: k for k, one in enumerate(entries(d.app.snapshot))}
+        for key, text in {"budget.supply_current": "1 nA", "conditions.temperature": "0 °C, 27 °C"}.items():
+            dialog.query_one(f"#line-{lines[key]}", Input).value = text
+        dialog.query_one(f"#line-{len(lines) - 1}", Input).focus()
+        await d.pilot.pause()
+        await d.press("enter")
+        await d.settled()
+        assert "MISSED" in d.text("#budgets")
+        assert "18 conditions" in d.text("#title")
+        assert 'supply_current = { max = "1 nA" }' in path.read_text("utf-8")
+        await d.press("z")
+        await d.settled()
+
+    drive(root, steps)
+    assert path.read_text("utf-8") == before
+
+
+def test_a_condition_that_does_not_exist_never_enters_the_file(root: Path) -> None:
+    path = root / "biasbook.toml"
+    before = path.read_text("utf-8")
+
+    async def steps(d: Drive) -> None:
+        await d.settled()
+        await d.press("b")
+        dialog = d.app.screen
+        lines = [one.key for one in entries(d.app.snapshot)]
+        dialog.query_one(f"#line-{lines.index('conditions.process')}", Input).value = "typical, slwo"
+        dialog.query_one(f"#line-{len(lines) - 1}", Input).focus()
+        await d.pilot.pause()
+        await d.press("enter")
+        assert "slwo" in d.text("#note")
+        assert dialog is d.app.screen
+
+    drive(root, steps)
+    assert path.read_text("utf-8") == before

@@ -446,6 +446,15 @@ COMMANDS = (
         (BOOK,),
         "row",
     ),
+    Command(
+        "project",
+        "b",
+        "ctrl+e",
+        "Project",
+        "Change the project's title, conditions and budgets.",
+        (BOOK,),
+        writes=True,
+    ),
     Command("compare", "e", "f6", "Compare", "Lay a revision beside the files as they stand.", (BOOK,)),
     Command(
         "record", "s", "f7", "Record", "Save a revision of the project's own files, with a note.", (BOOK,), writes=True

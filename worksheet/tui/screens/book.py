@@ -136,6 +136,27 @@ class BookScreen(Place):
 
         record(self)
 
+    def action_project(self) -> None:
+        """Change title, conditions and budgets."""
+        from worksheet.session import project_edit
+        from worksheet.session.edits import RefusedError
+        from worksheet.tui.screens.forming import submit
+
+        lines = [FormLine(one.key, one.title, one.help, one.text) for one in project_edit.entries(self.snapshot)]
+
+        def taken(texts: Mapping[str, str]) -> str:
+            try:
+                request = project_edit.change(self.snapshot, texts)
+            except (RefusedError, ValueError) as error:
+                return str(error)
+            return "" if request is None else submit(self.book, request)
+
+        def done(accepted: bool | None) -> None:
+            if accepted:
+                self.say(self.snapshot.undo)
+
+        self.app.push_screen(FormDialog("The project", lines, taken, self.book.signs), done)
+
     def action_curves(self) -> None:
         """Fit a device to curves."""
         from worksheet.tui.screens.curves import begin
