@@ -15,6 +15,8 @@ from worksheet.solver.results import Point, Region, Window
 _LONGEST = 130
 """Characters of a formula that is written out."""
 
+_SIGNS = {"low": "≥", "high": "≤"}
+
 
 def windows(found: Block, into: Builder) -> None:
     """The section of needed windows."""
@@ -28,8 +30,11 @@ def windows(found: Block, into: Builder) -> None:
     columns = ("variable", "now", "at least", "set by", "at most", "set by", "beside")
     rows = tuple(_row(found, window) for window in found.solved.needed.values())
     into.table(f"Where every target holds {where}, the other variables held", columns, rows, (1, 2, 4))
-    hands = [_hand(found, w, side) for w in found.solved.needed.values() for side in ("low", "high")]
-    said = [cell for cell in hands if cell is not None]
+    ends = [(w, side) for w in found.solved.needed.values() for side in ("low", "high") if (w.name, side) in found.hand]
+    said = [cell for window, side in ends if (cell := _hand(found, window, side)) is not None]
+    without = [f"{found.keys[w.name].symbol} {_SIGNS[side]}" for w, side in ends if _hand(found, w, side) is None]
+    if without:
+        said.append(text(f"No formula short enough for a page: {', '.join(without)}. Their numbers are exact."))
     if said:
         into.add(Points(tuple(said)))
     _points(found, into)
@@ -78,20 +83,17 @@ def _region(window: Window, region: Region) -> str:
 
 
 def _hand(found: Block, window: Window, side: str) -> Cell | None:
-    """The algebra of a bound that sets an end of a window."""
-    said = found.hand.get((window.name, side))
-    if said is None:
-        return None
-    sign, symbol = "≥" if side == "low" else "≤", found.keys[window.name].symbol
-    set_by = window.region and (window.region.low_set_by if side == "low" else window.region.high_set_by)
-    lead = f"{set_by}: {symbol} {sign} "
+    """The algebra of a bound that sets an end of a window; None where there is none that is short."""
+    said = found.hand[window.name, side]
     if len(_whole(said)) > _LONGEST:
-        return text(f"{lead}a formula too long for a page; see biasbook solve sheets/{found.name}.toml")
+        return None
+    set_by = window.region and (window.region.low_set_by if side == "low" else window.region.high_set_by)
+    lead = f"{set_by}: {found.keys[window.name].symbol} {_SIGNS[side]} "
     if said["method"] == "closed form":
         return text(f"{lead}{said['formula']}{_beside(said)}")
     estimate = said["hand"]
     if estimate is None:
-        return text(f"{lead}found numerically; there is no short formula")
+        return None
     of = f"solve/{found.name}/needed/{window.name}/hand/{side}"
     value = number(estimate["value"], window.unit, of)
     exact = window.region and (window.region.low if side == "low" else window.region.high)
