@@ -11,7 +11,7 @@ from dataclasses import dataclass, field
 
 from worksheet.model.dimension import CAPACITANCE, CURRENT, LENGTH, VOLTAGE, Dimension
 from worksheet.model.quantity import format_quantity
-from worksheet.model.text import clean
+from worksheet.report.handoff.html import escaped
 from worksheet.report.handoff.material import Block
 from worksheet.report.handoff.tree import Picture
 from worksheet.stages.circuit import Circuit
@@ -21,7 +21,6 @@ _DIGITS = 3
 _RAILS = {SUPPLY: "V_DD", GROUND: "ground"}
 _OTHER_RAIL = {SUPPLY: GROUND, GROUND: SUPPLY}
 _NODE, _DEVICE, _COLUMN, _LEFT, _TOP = 34, 78, 340, 190, 28
-_SPECIAL = str.maketrans({"&": "&amp;", "<": "&lt;", ">": "&gt;", '"': "&quot;", "'": "&#39;"})
 _STYLE = (
     "text{font:13px sans-serif;fill:#1b1f23}.q{fill:#33393e}.b{font-weight:600}"
     "line,circle,polyline{stroke:#1b1f23;stroke-width:1.6;fill:none}.r{stroke-width:3}.f{fill:#1b1f23;stroke:none}"
@@ -226,4 +225,4 @@ class _Sketch:
         anchor = ' text-anchor="end"' if end else ""
         style = f' class="{kind}"' if kind else ""
         if said:
-            self.marks.append(f'<text x="{x}" y="{y}"{style}{anchor}>{clean(said).translate(_SPECIAL)}</text>')
+            self.marks.append(f'<text x="{x}" y="{y}"{style}{anchor}>{escaped(said)}</text>')
