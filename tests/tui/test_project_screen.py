@@ -3,13 +3,15 @@
 from __future__ import annotations
 
 from pathlib import Path
+from shutil import move
 
 from textual.color import Color
 from textual.widgets import Input
 
 from tests.tui.book import SHEETS
-from tests.tui.driving import Drive, drive
+from tests.tui.driving import Drive, drive, terminal
 from worksheet.session.project_edit import entries
+from worksheet.tui.dialogs.ask import AskDialog
 from worksheet.tui.screens.sheet import SheetScreen
 
 
@@ -213,3 +215,56 @@ def test_a_condition_that_does_not_exist_never_enters_the_file(root: Path) -> No
 
     drive(root, steps)
     assert path.read_text("utf-8") == before
+
+
+def test_when_the_folder_is_gone_its_files_are_written_elsewhere(root: Path, tmp_path: Path) -> None:
+    files = {path.relative_to(root): path.read_bytes() for path in root.rglob("*.toml")}
+    gone, other = tmp_path / "gone", tmp_path / "other"
+
+    async def steps(d: Drive) -> None:
+        await d.settled()
+        move(root, gone)  # a share that goes away
+        await d.until(lambda: d.app.snapshot.away)
+        assert len(d.rows()) == len(SHEETS)
+        await d.press("w")
+        await d.type(str(other))
+        await d.press("enter")
+        assert "written" in d.text("#said")
+
+    drive(root, steps)
+    assert {path.relative_to(other): path.read_bytes() for path in other.rglob("*.toml")} == files
+
+
+def test_a_form_that_was_being_filled_at_the_end_is_offered_again(root: Path) -> None:
+    typing = terminal(root.parent).state / "typing"
+    kept: dict[Path, bytes] = {}
+
+    async def first(d: Drive) -> None:
+        await d.settled()
+        await d.press("n")
+        await d.type("roof_amplifier")
+        await d.press("enter")
+        await d.type("casc")
+        for path in typing.iterdir():
+            kept[path] = path.read_bytes()
+
+    async def second(d: Drive) -> None:
+        await d.settled()
+        await d.until(lambda: isinstance(d.app.screen, AskDialog))
+        await d.press("k")
+        await d.press("n")
+        texts = [one.value for one in d.app.screen.query(Input)]
+        assert texts[:2] == ["roof_amplifier", "casc"]
+        await d.press("escape")
+
+    async def third(d: Drive) -> None:
+        await d.settled()
+        assert not isinstance(d.app.screen, AskDialog)
+
+    drive(root, first)
+    assert len(kept) == 1
+    for path, content in kept.items():  # what a kill leaves: the texts on disk, and nobody holding them
+        path.unlink()
+        path.with_name(path.name.replace("-", "-00", 1)).write_bytes(content)
+    for steps in (second, third):
+        drive(root, steps)

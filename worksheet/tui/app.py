@@ -124,6 +124,7 @@ class BookApp(App[int]):
         self._solves: Recompute[Needed] = Recompute(lambda one: self._deliver(self.Solved(one)))
         self._explains: Recompute[Hands] = Recompute(lambda one: self._deliver(self.Explained(one)))
         self.hands: Hands | None = None
+        self.left_in_forms: dict[str, dict[str, str]] = {}
         self._ended = threading.Event()
 
     # Beginning and end

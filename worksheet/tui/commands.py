@@ -447,6 +447,16 @@ COMMANDS = (
         "row",
     ),
     Command(
+        "rescue",
+        "w",
+        "ctrl+w",
+        "Write elsewhere",
+        "The project's folder is gone: write its files as they were last seen into another folder.",
+        (BOOK,),
+        "away",
+        foot=1,
+    ),
+    Command(
         "project",
         "b",
         "ctrl+e",

@@ -7,28 +7,7 @@ from __future__ import annotations
 
 from dataclasses import dataclass
 
-from worksheet.model.text import clean
-
-_WORDS = {
-    "Ω": "ohm",
-    "µ": "u",
-    "μ": "u",
-    "√": "rt",
-    "²": "^2",
-    "°": "deg",
-    "≥": ">=",
-    "≤": "<=",
-    "×": "x",
-    "·": "-",
-    "…": "~",
-    "−": "-",
-    "–": "-",
-    "—": "-",
-    "′": "'",
-    "κ": "kappa",
-    "σ": "sigma",
-}
-_TABLE = str.maketrans(_WORDS)
+from worksheet.model.text import clean, plain_signs
 
 
 @dataclass(frozen=True, slots=True)
@@ -66,7 +45,7 @@ class Signs:
         shown = clean(text)
         if not self.plain or shown.isascii():
             return shown
-        return "".join(c if c.isascii() else "?" for c in shown.translate(_TABLE))
+        return "".join(c if c.isascii() else "?" for c in plain_signs(shown))
 
     def lines(self, text: str) -> list[str]:
         """As text, for text of several lines."""

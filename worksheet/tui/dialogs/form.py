@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Callable, Mapping, Sequence
 from dataclasses import dataclass
-from typing import ClassVar
+from typing import TYPE_CHECKING, ClassVar, cast
 
 from textual import events
 from textual.app import ComposeResult
@@ -13,11 +13,18 @@ from textual.containers import Horizontal, Vertical
 from textual.widgets import Input, Label
 
 from worksheet.report.table import wrapped
+from worksheet.session.recovery import Typing
 from worksheet.tui import rows
 from worksheet.tui.dialogs.dialog import Dialog
 from worksheet.tui.rows import HEAD, PLAIN, QUIET, Line, Span
 from worksheet.tui.signs import Signs
 from worksheet.tui.widgets.lines import Lines
+
+if TYPE_CHECKING:
+    from worksheet.tui.app import BookApp
+
+FORM = "form:"
+"""Opens the place of a text of a form in the journal; the form's title and the line's key follow."""
 
 Check = Callable[[str], str]
 Complete = Callable[[str], Sequence[str]]
@@ -71,14 +78,20 @@ class FormDialog(Dialog[bool]):
         self._lines = tuple(lines)
         self._submit = submit
 
+    @property
+    def _book(self) -> BookApp:
+        return cast("BookApp", self.app)
+
     def compose(self) -> ComposeResult:
         """A label and a text a line; below, what is wrong or what belongs there."""
+        left = self._book.left_in_forms.pop(self.heading, {})
         with Vertical(classes="dialog"):
             yield Lines([(Span(self.heading, HEAD),)])
             for k, one in enumerate(self._lines):
                 with Horizontal(classes="form-line"):
                     yield Label(self.signs.text(one.title), markup=False)
-                    yield Input(one.text, id=f"line-{k}", compact=True, select_on_focus=False)
+                    text = left.get(one.key, one.text)
+                    yield Input(text, id=f"line-{k}", compact=True, select_on_focus=False)
             yield Lines([(), (), ()], id="note")
             yield Lines([(Span("enter: next line, at the last one accept   tab: complete   esc: leave", QUIET),)])
 
@@ -99,9 +112,17 @@ class FormDialog(Dialog[bool]):
         """What stands in the lines."""
         return {one.key: self._text(k).strip() for k, one in enumerate(self._lines)}
 
-    def on_input_changed(self) -> None:
-        """Say at once what is wrong."""
+    def on_input_changed(self, event: Input.Changed) -> None:
+        """Say at once what is wrong, and keep the text outside the project until the form is done."""
         self._note()
+        one = self._lines[int(str(event.input.id).rpartition("-")[2])]
+        if event.value != one.text:
+            self._book.journal.keep(Typing("", f"{FORM}{self.heading}:{one.key}", one.title, event.value))
+
+    def on_unmount(self) -> None:
+        """Accepted or given up: nothing is to be offered again."""
+        if self._book.is_running:
+            self._book.journal.done()
 
     def on_descendant_focus(self, event: events.DescendantFocus) -> None:
         """Say what belongs there."""

@@ -136,6 +136,23 @@ class BookScreen(Place):
 
         record(self)
 
+    def action_rescue(self) -> None:
+        """Write the files as they were last seen into another folder."""
+        from pathlib import Path
+
+        def taken(texts: Mapping[str, str]) -> str:
+            if not texts["folder"]:
+                return "Name a folder."
+            stuck = self.book.session.copy_to(Path(texts["folder"]).expanduser())
+            return str(stuck[0]) if stuck else ""
+
+        def done(accepted: bool | None) -> None:
+            if accepted:
+                self.say("The files are written; open that folder to go on.")
+
+        lines = [FormLine("folder", "Folder (needed)", "A new or empty folder; what stands there already stays.")]
+        self.app.push_screen(FormDialog("Write the project elsewhere", lines, taken, self.book.signs), done)
+
     def action_project(self) -> None:
         """Change title, conditions and budgets."""
         from worksheet.session import project_edit

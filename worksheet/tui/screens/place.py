@@ -108,6 +108,8 @@ class Place(Screen[None]):
             held.add("undo")
         if self.snapshot.redo:
             held.add("redo")
+        if self.snapshot.away:
+            held.add("away")
         if self.snapshot.project.problems or self.book.own_problems:
             held.add("problems")
         return held
