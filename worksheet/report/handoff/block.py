@@ -243,8 +243,8 @@ def _said(one: TargetReview) -> str:
 def _origin(target: Target) -> tuple[Cell, ...]:
     guard = f"{target.guard:.0%}" if target.guard else "none"
     where = "nominal" if target.at == "nominal" else "all"
-    formula = f"{target.formula.text} " if target.formula is not None else ""
-    why = f"{formula}{target.why}".strip()
+    formula = target.formula.text if target.formula is not None else ""
+    why = ": ".join(part for part in (formula, target.why) if part)
     return text(target.name), text(target.id), text(target.source), text(guard), text(where), text(why)
 
 

@@ -9,13 +9,13 @@ from __future__ import annotations
 from collections.abc import Iterator, Mapping
 from dataclasses import dataclass, field
 
-from worksheet.model.dimension import CAPACITANCE, CURRENT, LENGTH, VOLTAGE, Dimension
+from worksheet.model.dimension import CAPACITANCE, CURRENT, LENGTH, RESISTANCE, VOLTAGE, Dimension
 from worksheet.model.quantity import format_quantity
 from worksheet.report.handoff.html import escaped
 from worksheet.report.handoff.material import Block
 from worksheet.report.handoff.tree import Picture
 from worksheet.stages.circuit import Circuit
-from worksheet.stages.stage import BIAS, GROUND, LINE, OUT, SUPPLY, Transistor
+from worksheet.stages.stage import BIAS, GROUND, IN, LINE, OUT, SUPPLY, Transistor
 
 _DIGITS = 3
 _RAILS = {SUPPLY: "V_DD", GROUND: "ground"}
@@ -81,10 +81,22 @@ def _named(circuit: Circuit, node: str) -> str:
 
 
 def _stands(found: Block, node: str) -> str:
-    """A node with its voltage."""
+    """A node with its voltage, "in 100 mV through 2 kΩ"."""
     shown = _named(found.circuit, node)
     volts = found.nominal.supply if shown == _RAILS[SUPPLY] else _voltage(found, node)
-    return shown if volts is None or shown == _RAILS[GROUND] else f"{shown} {format_quantity(volts, VOLTAGE, _DIGITS)}"
+    if volts is None or shown == _RAILS[GROUND]:
+        return shown
+    return f"{shown} {format_quantity(volts, VOLTAGE, _DIGITS)}{_through(found, node)}"
+
+
+def _through(found: Block, node: str) -> str:
+    """What the input drives its node through."""
+    if node != IN or not found.circuit.driven_through_resistance:
+        return ""
+    stated = found.review.sheet.assume.get("drive_resistance")
+    if stated is None or stated.number is None:
+        return " through a resistance"
+    return f" through {format_quantity(stated.number, RESISTANCE, _DIGITS)}"
 
 
 def _voltage(found: Block, node: str) -> float | None:
@@ -115,7 +127,7 @@ def _gate(found: Block, device: Transistor) -> str:
 def _gate_parts(found: Block, device: Transistor) -> tuple[str, str]:
     volts = found.review.operating_point.get(device.name, {}).get("gate_voltage")
     shown = format_quantity(volts, VOLTAGE, _DIGITS) if isinstance(volts, float) else ""
-    return _named(found.circuit, device.gate), shown
+    return _named(found.circuit, device.gate), shown + _through(found, device.gate)
 
 
 def _said(found: Block, device: Transistor) -> tuple[str, str, str]:
