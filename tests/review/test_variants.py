@@ -86,6 +86,12 @@ def test_text_and_table(tmp_path: Path) -> None:
     assert "3 variants beside what it states" in out
     assert "speed first" in out
     assert all(len(line) <= 80 for line in out.splitlines())
+    many = "".join(f'\n[variant.more_{k}]\nbias_current = "{k + 5} uA"\n' for k in range(7))
+    write_project(tmp_path, PROJECT, PROCESS, {"lamp": FOLLOWER + VARIANTS + many})
+    out = run("variants", sheet).out
+    assert all(len(line) <= 80 for line in out.splitlines())
+    assert all(f"more_{k}" in out for k in range(7))
+    write_project(tmp_path, PROJECT, PROCESS, {"lamp": FOLLOWER + VARIANTS})
     rows = list(csv.DictReader(io.StringIO(run("variants", sheet, "--csv", "-").out)))
     assert [row["variant"] for row in rows] == ["as it stands", "fast", "cold", "open"]
     assert float(rows[1]["choose.bias_current"]) == 9e-6

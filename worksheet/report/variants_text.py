@@ -13,6 +13,9 @@ from worksheet.review.results import MISSED, UNKNOWN, TargetReview
 from worksheet.review.variants import SideBySide
 
 _DIGITS = 3
+_FIRST, _EACH = 20, 19
+"""Columns of a terminal that names take, and each variant."""
+
 PRESENT = "as it stands"
 _METRICS = (("supply_current", "A", "current"), ("gate_area", "m^2", "area"))
 
@@ -23,8 +26,9 @@ def text(found: SideBySide, width: int) -> Iterator[str]:
     for column in found.columns:
         if column.note:
             yield from wrapped(f"{column.name}: {clean(column.note)}", width, "  ")
-    yield ""
-    yield from lines(table(found), width, "  ")
+    for part in tables(found, width):
+        yield ""
+        yield from lines(part, width, "  ")
     for column in found.columns:
         for problem in column.problems:
             yield from wrapped(f"{title(column)}: {clean(problem.message)}", width, "  ")
@@ -44,10 +48,19 @@ def title(column: variants.Column) -> str:
     return column.name or PRESENT
 
 
-def table(found: SideBySide) -> Table:
-    """One row a changed value, a target, current and area; one column a variant."""
-    heads = (Column("", flexible=True), *(Column(title(column), right=True) for column in found.columns))
-    return Table(heads, tuple((name, *cells) for name, cells in body(found)))
+def tables(found: SideBySide, width: int) -> Iterator[Table]:
+    """One row a changed value, a target, current and area; one column a variant, the sheet itself first in each table.
+
+    Args:
+        found: What is laid side by side.
+        width: Columns of the terminal; variants that do not fit beside the others stand in a further table.
+    """
+    beside = max((width - _FIRST) // _EACH - 1, 1)
+    rows, others = list(body(found)), range(1, len(found.columns))
+    for start in range(1, max(len(found.columns), 2), beside):
+        shown = [0, *others[start - 1 : start - 1 + beside]]
+        heads = (Column("", flexible=True), *(Column(title(found.columns[k]), right=True) for k in shown))
+        yield Table(heads, tuple((name, *(cells[k] for k in shown)) for name, cells in rows))
 
 
 def body(found: SideBySide) -> Iterator[tuple[str, tuple[str, ...]]]:

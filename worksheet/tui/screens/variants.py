@@ -39,12 +39,12 @@ class VariantsScreen(View):
         if len(found.columns) == 1:
             said = "No variants yet; keep the present choice as one, change the sheet, and compare."
             yield Row("none", ((Span(signs.text(said), QUIET),),), stops=False)
-        yield Row("gap", ((),), stops=False)
-        head, *body = lines(variants_text.table(found), self.columns, "  ")
-        yield Row("head", ((Span(signs.text(head), HEAD),),), stops=False)
-        for k, text in enumerate(body):
-            role = MISSED if " MISSED" in text or " UNKNOWN" in text else PLAIN
-            yield Row(f"table.{k}", ((Span(signs.text(text), role),),), stops=False, copied=(text,))
+        for n, table in enumerate(variants_text.tables(found, self.columns)):
+            yield Row(f"gap.{n}", ((),), stops=False)
+            for k, text in enumerate(lines(table, self.columns, "  ")):
+                role = HEAD if not k else MISSED if " MISSED" in text or " UNKNOWN" in text else PLAIN
+                spans = (Span(signs.text(text), role),)
+                yield Row(f"table.{n}.{k}", (spans,), stops=bool(k), copied=(text.strip(),))
 
     def _row(self, column: Column) -> Row:
         signs = self.book.signs
