@@ -105,6 +105,24 @@ class Cascade:
         ideal = Link([link.gain], [1.0], (), link.noise_from, np.zeros((0, 1), dtype=np.complex128))
         return Cascade([ideal if k == place else one for k, one in enumerate(self.links)], *self._shape)
 
+    def first(self) -> Cascade:
+        """The path at its first condition alone."""
+
+        def taken(values: Number) -> Number:
+            array = np.asarray(values)
+            return array if array.ndim == 0 else array[..., :1]
+
+        def link(one: Link) -> Link:
+            noise = tuple(
+                Noise([taken(c) for c in n.numerator], taken(n.white), taken(n.flicker), taken(n.exponent))
+                for n in one.noise
+            )
+            top, bottom = ([taken(c) for c in part] for part in (one.numerator, one.denominator))
+            constants = one.constants if one.constants.ndim < 2 else one.constants[:, :1]
+            return Link(top, bottom, noise, taken(one.noise_from), constants)
+
+        return Cascade([link(one) for one in self.links], 1)
+
     @cached_property
     def _unlimited(self) -> Mask:
         return self._any([link.denominator[0] for link in self.links])

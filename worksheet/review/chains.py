@@ -193,22 +193,23 @@ class _Path:
 
     def shares(self) -> Iterator[StageShare]:
         """What each sheet takes, at the nominal condition."""
+        path = self._cascade.first()
         with np.errstate(all="ignore"):
-            powers, gain = self._cascade.noise_powers()[:, 0], abs(float(self._cascade.gain()[0]))
+            powers, gain = path.noise_powers()[:, 0], abs(float(path.gain()[0]))
             noise = powers / powers.sum()
         bandwidth = self.measured("bandwidth").values[0]
         settling = self.measured("settling_time").values[0]
         current = self.measured("supply_current").values[0]
         for place, stage in enumerate(self._stages):
             with np.errstate(all="ignore"):
-                rest = self._cascade.without(place)
+                rest = path.without(place)
                 faster = rest.bandwidth()
                 without = np.inf if faster.reason((0,)).text == "unlimited" else faster.values[0]
                 sooner = rest.settling_time(self._chain.settling_tolerance).values[0]
                 own = float(stage.metric("supply_current", self._count)[0])
                 yield StageShare(
                     stage.sheet,
-                    gain=_number(np.broadcast_to(self._cascade.links[place].gain, (self._count,))[0]),
+                    gain=_number(np.broadcast_to(path.links[place].gain, (1,))[0]),
                     input_noise=_number(np.sqrt(powers[place]) / gain),
                     noise_share=_number(noise[place]),
                     bandwidth_lost=_number(1.0 - bandwidth / without),
