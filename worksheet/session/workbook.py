@@ -19,6 +19,7 @@ if TYPE_CHECKING:
 
     from worksheet.project.case import Case
 
+
 class Workbook:
     """One state of a project on disk; a changed project gets a new workbook."""
 
