@@ -37,6 +37,9 @@ _ACROSS = 110
 _ON_ONE_LINE = 14
 """Characters of a cell that is not broken."""
 
+_PIECES = re.compile(r"\S{1,28}|\s+")
+"""Words, long ones in pieces, and what is between them."""
+
 _BREAKS = re.compile(r"(?<=[A-Za-z])([_./])(?=[A-Za-z])")
 
 POLICY = "default-src 'none'; img-src data:; style-src 'unsafe-inline'; base-uri 'none'; form-action 'none'"
@@ -171,8 +174,12 @@ def _cell(cell: Cell) -> str:
 
 
 def _words(said: str) -> str:
-    """Text in which a long name may go on in the next line."""
-    return _BREAKS.sub(r"\1<wbr>", escaped(said))
+    """Text in which a long name or word may go on in the next line."""
+    shown, joins = [], False
+    for piece in _PIECES.findall(said):
+        shown.append(f"{'<wbr>' if joins and not piece.isspace() else ''}{escaped(piece)}")
+        joins = not piece.isspace()
+    return _BREAKS.sub(r"\1<wbr>", "".join(shown))
 
 
 def _number(part: Number) -> str:
