@@ -13,6 +13,7 @@ from typing import TYPE_CHECKING, Any
 from worksheet.compare import conflict
 from worksheet.model import formula
 from worksheet.model.problem import Problem
+from worksheet.project.discover import PROJECT_FILE
 from worksheet.session.reading import data_of
 from worksheet.session.snapshot import Snapshot, file_of
 
@@ -296,6 +297,7 @@ def _renamed(snapshot: Snapshot, name: str, new: str) -> tuple[FileChange, ...]:
         after = None if before is None or other == name else _following(before, shown, name, new)
         if after != before and after is not None:
             others.append(FileChange(shown, before, after))
+    others += _chains_following(snapshot, name, new)
     own = FileChange(target, None, _following(content, source, name, new), like=source)
     return (own, *others, FileChange(source, content, None))
 
@@ -304,6 +306,19 @@ def _following(content: bytes, shown: str, name: str, new: str) -> bytes:
     """A sheet whose formulas name another sheet by its new name; one that is no TOML stays as it is."""
     pieces = list(_formulas(data_of(content, shown), (), name, new))
     return changed_content(content, pieces) if pieces else content
+
+
+def _chains_following(snapshot: Snapshot, name: str, new: str) -> list[FileChange]:
+    """The project file with a sheet's new name in every chain that it lies in; no change where it lies in none."""
+    before = snapshot.contents.get(PROJECT_FILE)
+    chains = None if before is None else data_of(before, PROJECT_FILE).get("chain")
+    pieces = []
+    for chain, stated in (chains if isinstance(chains, dict) else {}).items():
+        sheets = stated.get("sheets") if isinstance(stated, dict) else None
+        if isinstance(sheets, list) and name in sheets:
+            renamed = [new if one == name else one for one in sheets]
+            pieces.append(Put(("chain", chain, "sheets"), renamed))
+    return [FileChange(PROJECT_FILE, before, changed_content(before, pieces))] if before is not None and pieces else []
 
 
 def _formulas(data: Mapping[str, Any], path: KeyPath, name: str, new: str) -> Iterator[Piece]:
