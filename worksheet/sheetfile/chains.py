@@ -6,6 +6,7 @@ Whether the sheets exist is looked at when all of them are read.
 from __future__ import annotations
 
 from collections.abc import Mapping
+from dataclasses import replace
 from types import MappingProxyType
 from typing import Any, cast
 
@@ -23,6 +24,7 @@ CHAIN = part_of(PROJECT, "chain")
 _ENTRY = cast(Table, CHAIN.entry)
 _LIMITS = cast(Table, _ENTRY.entry)
 _SHEETS = cast(Key, _ENTRY.key("sheets"))
+_ONE = replace(_SHEETS, example="element_buffer")
 MOST_STAGES = 12
 """Sheets that a chain may have: beyond, its settling is not reckoned to the digits that a review promises."""
 
@@ -75,7 +77,7 @@ def _sheets(reader: Reader, raw: object, where: str) -> tuple[str, ...]:
         return ()
     if len(raw) > MOST_STAGES:
         reader.report(where, f"Found {len(raw)} sheets in one chain, expected at most {MOST_STAGES}.")
-    names = (READERS[_SHEETS.kind](reader, _SHEETS, one, f"{where}.{k}") for k, one in enumerate(raw[:MOST_STAGES]))
+    names = (READERS[_ONE.kind](reader, _ONE, one, f"{where}.{k}") for k, one in enumerate(raw[:MOST_STAGES]))
     return tuple(name for name in names if name is not None)
 
 
