@@ -89,7 +89,8 @@ def _overview(made: HandOff, into: Builder) -> None:
 
 def _line(found: Block) -> tuple[Cell, ...]:
     sheet = found.review.sheet
-    return text(sheet.name), text(purpose(found)), text(found.review.state), text(sheet.count), counted(found.review)
+    said = ": ".join(part for part in (sheet.title, purpose(found)) if part)
+    return text(sheet.name), text(said), text(found.review.state), text(sheet.count), counted(found.review)
 
 
 def _budgets(made: HandOff, into: Builder) -> None:
