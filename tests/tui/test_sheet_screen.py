@@ -252,7 +252,7 @@ def test_typed_text_survives_the_end_and_is_offered_again(root: Path) -> None:
 
     async def again(d: Drive) -> None:
         await d.settled()
-        assert isinstance(d.app.screen, AskDialog)
+        await d.until(lambda: isinstance(d.app.screen, AskDialog))
         await d.press("o")
         app = d.app
         await d.until(lambda: bool(app.screen.query(InPlace)) and app.screen.query_one(InPlace).open)
