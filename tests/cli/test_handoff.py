@@ -13,6 +13,7 @@ import pytest
 
 from tests.cli.books import FOLLOWER, replaced, write
 from tests.support import run
+from worksheet.sheetfile import write as sheetfile_write
 
 FILES = {"handoff-buffer.html", "handoff-buffer.md", "handoff-buffer.csv", "handoff-buffer-sizes.txt"}
 RECORD = "handoff-record.json"
@@ -78,6 +79,27 @@ def test_a_file_that_somebody_changed_stays_and_nothing_else_is_written(book: Pa
     assert "handoff-buffer.md" in err
     assert "was changed since it was written" in err
     assert {path.name: path.read_bytes() for path in into.iterdir()} == before
+
+
+def test_a_hand_off_that_was_cut_off_can_be_made_again(
+    book: Path, tmp_path: Path, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    into = tmp_path / "out"
+    assert hand(book, into)[0] == 0
+    write(book, follower=replaced(FOLLOWER, 'title = "Lamp buffer"', 'title = "Mast buffer"'))
+    put = sheetfile_write.put
+
+    def cut_off(path: Path, content: bytes, *, root: Path) -> None:
+        if path.suffix == ".csv":
+            raise KeyboardInterrupt
+        put(path, content, root=root)
+
+    monkeypatch.setattr(sheetfile_write, "put", cut_off)
+    assert hand(book, into)[0] == 130
+    monkeypatch.undo()
+    assert "Mast buffer" in (into / "handoff-buffer.md").read_text("utf-8")
+    assert hand(book, into)[0] == 0
+    assert "Mast buffer" in (into / "handoff-buffer.html").read_text("utf-8")
 
 
 def test_a_foreign_file_stays(book: Path, tmp_path: Path) -> None:

@@ -37,6 +37,7 @@ class Record:
 
     def __init__(self, folder: Path, pages: dict[str, Any], files: dict[str, str]) -> None:
         self._folder, self._pages, self._files = folder, pages, files
+        self._before = dict(pages)
 
     @classmethod
     def read(cls, folder: Path) -> Record | Problem:
@@ -82,16 +83,25 @@ class Record:
         problems = [problem for name in pages if (problem := self._foreign(name)) is not None]
         if problems:
             return problems
-        digests = {**self._files, **{name: sha256(content).hexdigest() for name, content in pages.items()}}
-        data = {"schema": _SCHEMA, "pages": self._pages, "files": digests}
-        record = (json.dumps(data, indent=1, sort_keys=True) + "\n").encode()
+        made = {name: sha256(content).hexdigest() for name, content in pages.items()}
+        either = {name: f"{self._files.get(name, '')} {digest}".strip() for name, digest in made.items()}
         try:
             self._folder.mkdir(parents=True, exist_ok=True)
-            for name, content in {**pages, RECORD: record}.items():
+            # while files are being written both contents are ours, should this run be cut off
+            self._keep(self._before, {**self._files, **either})
+            for name, content in pages.items():
                 put(self._folder / name, content, root=self._folder)
+            self._keep(self._pages, {**self._files, **made})
         except (OSError, ValueError) as error:
             return [Problem(clean(str(self._folder)), None, "-o", f"could not be written: {clean(str(error))}")]
         return Written(tuple(pages))
+
+    def _keep(self, pages: Mapping[str, Any], files: Mapping[str, str]) -> None:
+        """Write the record."""
+        from worksheet.sheetfile.write import put
+
+        data = {"schema": _SCHEMA, "pages": pages, "files": files}
+        put(self._folder / RECORD, (json.dumps(data, indent=1, sort_keys=True) + "\n").encode(), root=self._folder)
 
     def _foreign(self, name: str) -> Problem | None:
         """Why a file may not be written: something stands there that is not what we wrote."""
@@ -101,7 +111,7 @@ class Record:
             if not path.exists() and not path.is_symlink():
                 return None
             ours = path.is_file() and not path.is_symlink()
-            if ours and sha256(path.read_bytes()).hexdigest() == self._files.get(name):
+            if ours and sha256(path.read_bytes()).hexdigest() in self._files.get(name, "").split():
                 return None
         except OSError as error:
             return Problem(shown, None, "-o", f"found a file that cannot be read: {clean(str(error))}")
