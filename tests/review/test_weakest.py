@@ -25,11 +25,15 @@ def found(folder: Path, sheet: str) -> tuple[Weak, ...]:
 
 def test_least_trust_comes_first_and_least_room_among_equals(tmp_path: Path) -> None:
     rows = found(tmp_path, books.FOLLOWER)
-    ranks = [TRUST.index(one.trust) if one.trust else -1 for one in rows]
-    assert ranks == sorted(ranks)
-    for trust in {one.trust for one in rows}:
-        rooms = [one.room if one.room is not None else float("inf") for one in rows if one.trust == trust]
-        assert rooms == sorted(rooms)
+    ample = [one.room is None or one.room > 1.0 for one in rows]
+    assert ample == sorted(ample)
+    for last in (False, True):
+        part = [one for one, is_ample in zip(rows, ample, strict=True) if is_ample is last]
+        ranks = [TRUST.index(one.trust) if one.trust else -1 for one in part]
+        assert ranks == sorted(ranks)
+        for trust in {one.trust for one in part}:
+            rooms = [one.room if one.room is not None else float("inf") for one in part if one.trust == trust]
+            assert rooms == sorted(rooms)
 
 
 def test_every_assumption_is_there_and_no_choice(tmp_path: Path) -> None:

@@ -1,4 +1,7 @@
-"""The weakest assumptions of a block first: least trust, then least room before a target breaks."""
+"""The weakest assumptions of a block first: least trust, then least room before a target breaks.
+
+What could double or vanish without breaking anything comes last, however little it is trusted: nothing rests on it.
+"""
 
 from __future__ import annotations
 
@@ -11,6 +14,8 @@ from worksheet.project.links import values_of
 from worksheet.review.fragility import Fragile, Fragility
 
 _CHOSEN = "choose."
+_AMPLE = 1.0
+"""Room from which on nothing rests on a value. [-]"""
 
 
 @dataclass(frozen=True, slots=True)
@@ -52,7 +57,8 @@ def weakest(sheet: Sheet, process: Process | None, ranked: Fragility) -> tuple[W
         sheet: As its file states it.
         process: Its process file, for what stands beside a device's parameters; None where it cannot be read.
         ranked: Its fragility.
-    Returns: least trust first (nothing stated is least), least room first among equals
+    Returns: least trust first (nothing stated is least), least room first among equals; then, in the same order, what
+        has more room than its own size
     """
     rows = (*ranked.nominal, *ranked.worst)
     least: dict[str, Fragile] = {}
@@ -95,6 +101,6 @@ def _weak(key: str, value: Value | None, row: Fragile | None) -> Weak:
     )
 
 
-def _order(one: Weak) -> tuple[int, bool, float, str]:
+def _order(one: Weak) -> tuple[bool, int, bool, float, str]:
     trust = TRUST.index(one.trust) if one.trust in TRUST else -1
-    return trust, one.room is None, one.room or 0.0, one.key
+    return one.room is None or one.room > _AMPLE, trust, one.room is None, one.room or 0.0, one.key
