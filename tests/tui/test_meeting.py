@@ -114,7 +114,7 @@ def test_one_kind_is_shown_alone_and_a_sheet_opens_at_its_target(root: Path) -> 
         await d.type("missed")
         await d.press("enter")
         assert all(".MISSED." in row.key for row in d.place.ledger.page.rows)
-        assert "shown: 1, missed" in d.text("#title")
+        assert "only missed: 1" in d.text("#title")
         about = d.place.ledger.page.rows[0].key.split(".")[2]
         await d.press("enter")
         assert isinstance(d.app.screen, SheetScreen)

@@ -22,7 +22,7 @@ SCREENS: dict[str, tuple[tuple[str, ...], str, str]] = {
     "project": ((), "wake_comparator", "wake_comparator"),
     "sheet": (("down", "enter"), "step 5 %", "by hand"),
     "map": (("down", "enter", "m"), "Closer", "bias current across"),
-    "meeting": (("g",), "things to decide", "things to decide"),
+    "meeting": (("g",), "to decide in", "to decide in"),
     "help": (("?",), "esc goes back", "esc goes back"),
 }
 """Keys that lead to a screen, and what it shows when it is complete, narrow and wide."""

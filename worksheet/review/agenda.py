@@ -20,7 +20,7 @@ class Why(Enum):
     """Why something is on the agenda, the most pressing first; the value is how it is said."""
 
     MISSED = "missed"
-    PAST = "waiver past its date"
+    PAST = "waiver ended"
     WORSE = "worse than waived"
     UNKNOWN = "unknown"
     BUDGET = "budget"

@@ -102,6 +102,7 @@ def _wanted(item: Item, signs: Signs) -> Line:
 def title_line(items: Sequence[Item], shown: int, title: str, only: str, signs: Signs) -> Line:
     """What the meeting is about, and how much of it is shown."""
     blocks = len({item.sheet for item in items if item.sheet})
-    counted = f"{len(items)} things to decide in {blocks} blocks"
-    narrowed = f"; shown: {shown}, {only}" if only else ""
-    return line(Span(signs.text(f"Review meeting: {title}"), HEAD), Span(signs.text(counted + narrowed), PLAIN), gap=2)
+    counted = (
+        f"{len(items)} to decide in {blocks} blocks" if not only else f"{len(items)} to decide; only {only}: {shown}"
+    )
+    return line(Span(signs.text(f"Review meeting: {title}"), HEAD), Span(signs.text(counted), PLAIN), gap=2)
