@@ -63,7 +63,9 @@ def _on_terminal(*arguments: str, **environment: str) -> bytes:
 @pytest.mark.parametrize(
     "environment", [{"LC_ALL": "C"}, {"LANG": "C"}, {"PYTHONIOENCODING": "ascii"}, {"LANG": "POSIX"}]
 )
-@pytest.mark.parametrize("arguments", [("review", SAMPLE, "--details"), ("stages", "cascode")])
+@pytest.mark.parametrize(
+    "arguments", [("review", SAMPLE, "--details"), pytest.param(("stages", "cascode"), marks=pytest.mark.full)]
+)
 def test_where_only_ascii_can_be_shown_signs_are_spelled(
     arguments: tuple[str, ...], environment: dict[str, str]
 ) -> None:

@@ -102,6 +102,7 @@ def test_what_the_data_do_not_fix_stays_as_it_stands(folder: Path, table: Path) 
     assert tomllib.loads(process_of(folder).read_text("utf-8"))["device"]["nfet"]["drain_coupling_exponent"] == 1.0
 
 
+@pytest.mark.full
 def test_writing_twice_changes_nothing_more(folder: Path, table: Path) -> None:
     _write(folder, table)
     once = process_of(folder).read_bytes()

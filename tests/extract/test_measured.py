@@ -123,6 +123,7 @@ def test_what_the_model_cannot_do_is_said(long: Extraction) -> None:
     assert any("Output conductance in strong inversion" in one for one in long.limits)
 
 
+@pytest.mark.full
 def test_both_lengths_together() -> None:
     result = of_file(LONG, SHORT)
     assert [round(one.length * 1e6, 2) for one in result.by_length] == [0.13, 10.0]

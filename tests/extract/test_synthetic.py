@@ -117,6 +117,7 @@ def test_intervals_cover_and_errors_are_near_the_bound(name: str) -> None:
         assert widest[parameter] < 2.0, (parameter, widest)
 
 
+@pytest.mark.full
 def test_intervals_cover_in_a_few() -> None:
     device, make = COVERED["coarse"]
     share, widest = _covered(device, make(), range(20))

@@ -80,6 +80,7 @@ def kill_at(top: Path, project: Path, step: int) -> tuple[int, bool]:
     return status, made
 
 
+@pytest.mark.full
 def test_killed_at_twenty_steps(tmp_path: Path) -> None:
     top, project = prepare(tmp_path)
     found_made = []

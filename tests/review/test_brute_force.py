@@ -225,12 +225,12 @@ def check_break_values(book: Book, rng: random.Random, most: int) -> int:
     return checked
 
 
-@pytest.mark.parametrize("seed", [3, 4])
+@pytest.mark.parametrize("seed", [pytest.param(3, marks=pytest.mark.full), 4])
 def test_worst_cases_and_what_breaks_first(seed: int, tmp_path: Path) -> None:
     assert check_worst_cases(drawn(tmp_path / "book", seed, corners=2)) >= 4
 
 
-@pytest.mark.parametrize("seed", [5, 6])
+@pytest.mark.parametrize("seed", [5, pytest.param(6, marks=pytest.mark.full)])
 def test_break_values_put_back_are_just_met(seed: int, tmp_path: Path) -> None:
     book = drawn(tmp_path / "book", seed, corners=2)
     assert check_break_values(book, random.Random(seed), 25) >= 10

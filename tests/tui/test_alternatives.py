@@ -81,6 +81,7 @@ def test_a_variant_is_taken_over_and_comes_back_with_undo(root: Path) -> None:
     drive(root, steps)
 
 
+@pytest.mark.full
 def test_the_present_choice_is_kept_as_a_variant(root: Path) -> None:
     async def steps(d: Drive) -> None:
         await d.sheet("bucket_buffer")
@@ -108,6 +109,7 @@ def test_the_present_choice_is_kept_as_a_variant(root: Path) -> None:
     assert run("review", str(root)).status != 2
 
 
+@pytest.mark.full
 def test_a_second_variant_stands_beside_the_first(root: Path) -> None:
     _with(root, VARIANT)
 
@@ -153,6 +155,7 @@ def test_a_sweep_shows_what_the_command_says(root: Path) -> None:
     drive(root, steps)
 
 
+@pytest.mark.full
 @pytest.mark.parametrize("size", [(80, 24), (120, 40)])
 def test_every_view_fits_the_screen(root: Path, size: tuple[int, int]) -> None:
     _with(root, CHAIN, "biasbook.toml")
@@ -199,6 +202,7 @@ def test_a_point_of_the_front_is_taken_and_meets_every_target(root: Path) -> Non
     drive(root, steps)
 
 
+@pytest.mark.full
 def test_what_breaks_a_block_stands_weakest_trust_first_and_opens_at_the_value(root: Path) -> None:
     async def steps(d: Drive) -> None:
         await d.sheet("bucket_buffer")
@@ -243,6 +247,7 @@ def test_a_project_without_paths_says_how_to_name_one(root: Path) -> None:
     drive(root, steps)
 
 
+@pytest.mark.full
 def test_a_book_for_reading_shows_and_changes_nothing(root: Path) -> None:
     _with(root, VARIANT)
     before = (root / "sheets" / "bucket_buffer.toml").read_bytes()

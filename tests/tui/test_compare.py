@@ -61,7 +61,7 @@ def test_what_differs_stands_sheet_by_sheet_and_opens_there(root: Path) -> None:
     drive(root, steps)
 
 
-@pytest.mark.parametrize("letter", ["v", "s", "p"])
+@pytest.mark.parametrize("letter", ["v", *(pytest.param(one, marks=pytest.mark.full) for one in "sp")])
 def test_a_value_a_sheet_or_the_project_is_taken_back_and_undone(root: Path, recorded: Path, letter: str) -> None:
     moved = recorded.read_text("utf-8")
     then = git(root, "show", f"HEAD:sheets/{BLOCK}.toml") + "\n"

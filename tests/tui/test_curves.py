@@ -86,6 +86,7 @@ def test_a_device_is_fitted_looked_at_written_and_undone(root: Path, table: Path
     assert process.read_bytes() != before
 
 
+@pytest.mark.full
 def test_what_was_written_can_be_taken_back(root: Path, table: Path) -> None:
     process = next((root / "process").iterdir())
     before = process.read_bytes()

@@ -52,6 +52,7 @@ async def fill(d: Drive, *texts: str) -> None:
         await d.press("enter")
 
 
+@pytest.mark.full
 def test_a_meeting_decides_and_ends_with_minutes_and_a_revision(root: Path) -> None:
     revisions.record(root, "Before the meeting", TODAY)
 

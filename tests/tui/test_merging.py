@@ -6,6 +6,8 @@ import tomllib
 from pathlib import Path
 from typing import Any
 
+import pytest
+
 from tests.tui.driving import Drive, drive
 from worksheet.compare.conflict import mark
 
@@ -73,6 +75,7 @@ def test_a_file_with_conflict_markers_is_opened_with_both_sides_and_one_is_taken
     assert path(root).read_text("utf-8") == ours
 
 
+@pytest.mark.full
 def test_a_remark_is_added_where_the_cursor_stands(root: Path) -> None:
     async def steps(d: Drive) -> None:
         await d.sheet(BLOCK, "assume.input_level")

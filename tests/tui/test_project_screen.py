@@ -5,6 +5,7 @@ from __future__ import annotations
 from pathlib import Path
 from shutil import move
 
+import pytest
 from textual.color import Color
 from textual.widgets import Input
 
@@ -96,6 +97,7 @@ def test_a_new_sheet_is_asked_for_until_it_can_be_made(root: Path) -> None:
     drive(root, steps)
 
 
+@pytest.mark.full
 def test_copy_rename_and_delete_have_a_way_back(root: Path) -> None:
     async def steps(d: Drive) -> None:
         await d.settled()
@@ -217,6 +219,7 @@ def test_a_condition_that_does_not_exist_never_enters_the_file(root: Path) -> No
     assert path.read_text("utf-8") == before
 
 
+@pytest.mark.full
 def test_when_the_folder_is_gone_its_files_are_written_elsewhere(root: Path, tmp_path: Path) -> None:
     files = {path.relative_to(root): path.read_bytes() for path in root.rglob("*.toml")}
     gone, other = tmp_path / "gone", tmp_path / "other"
@@ -235,6 +238,7 @@ def test_when_the_folder_is_gone_its_files_are_written_elsewhere(root: Path, tmp
     assert {path.relative_to(other): path.read_bytes() for path in other.rglob("*.toml")} == files
 
 
+@pytest.mark.full
 def test_a_form_that_was_being_filled_at_the_end_is_offered_again(root: Path) -> None:
     typing = terminal(root.parent).state / "typing"
     kept: dict[Path, bytes] = {}

@@ -121,6 +121,7 @@ def test_the_proposal_is_taken_over_on_the_grid(root: Path) -> None:
     drive(root, steps)
 
 
+@pytest.mark.full
 def test_a_target_is_added_through_a_form_that_knows_the_keys(root: Path) -> None:
     async def steps(d: Drive) -> None:
         await d.sheet(NAME, "target.bandwidth")
@@ -281,6 +282,7 @@ def test_a_book_for_reading_has_no_command_that_writes(root: Path) -> None:
     assert (root / "sheets" / f"{NAME}.toml").read_bytes() == before
 
 
+@pytest.mark.full
 def test_help_of_a_field_comes_from_its_own_description(root: Path) -> None:
     async def steps(d: Drive) -> None:
         seen = []

@@ -99,6 +99,7 @@ def test_a_checked_value_shows_in_the_next_comparison(root: Path) -> None:
     assert moved["assume.load_capacitance.checked"] == (None, TODAY.isoformat())
 
 
+@pytest.mark.full
 def test_a_question_stays_with_the_sheet_and_the_block_becomes_one_s_own(root: Path) -> None:
     assert not isinstance(revisions.record(root, "Mine", TODAY), Problem)
 

@@ -15,9 +15,7 @@ if TYPE_CHECKING:
 
 def add(subparsers: Any) -> None:
     """Describe the command's arguments."""
-    parser = subparsers.add_parser(
-        "front", help="the least current and area that meet every target"
-    )
+    parser = subparsers.add_parser("front", help="the least current and area that meet every target")
     describe(parser)
     parser.set_defaults(command=run)
 
