@@ -108,9 +108,8 @@ def main() -> None:
         case = case_of(Path(folder) / "tight", "common-source", target=tight)
         trials = needed.trials_of(case)
         free = propose.optimum(case, trials).free
-        print(
-            f"conflict of a common source {milliseconds(lambda: conflict.conflict(needed.trials_of(case), free), 3):8.0f} ms"
-        )
+        spent = milliseconds(lambda: conflict.conflict(needed.trials_of(case), free), 3)
+        print(f"conflict of a common source {spent:8.0f} ms")
     print(f"first formula, from the start {first_formula():6.0f} ms")
 
 

@@ -123,6 +123,7 @@ def test_columns_are_stated_where_they_are_not_told_by_their_names(root: Path, t
     drive(root, steps)
 
 
+@pytest.mark.full
 def test_the_views_show_the_numbers_of_the_fit(root: Path, table: Path) -> None:
     kept: list[Extraction] = []
 

@@ -72,7 +72,7 @@ def map_text(root: Path, sheet: str, size: tuple[int, int], *keys: str) -> str:
 
 
 @pytest.mark.parametrize("sheet", ["bucket_buffer", "drip_amplifier", "sun_gate", "wind_cascode", "reset_follower"])
-@pytest.mark.parametrize("size", [(80, 24), (120, 40)])
+@pytest.mark.parametrize("size", [(80, 24), pytest.param((120, 40), marks=pytest.mark.full)])
 def test_a_boundary_lies_within_one_cell_of_solve(root: Path, sheet: str, size: tuple[int, int]) -> None:
     decoded = Decoded(map_text(root, sheet, size))
     needs = Needs.of(root / "sheets" / f"{sheet}.toml")
