@@ -154,6 +154,7 @@ def _any_currents(seed: int, count: int, kind: str) -> None:
         assert result.points + sum(one.count for one in result.left_out) == count
 
 
+@pytest.mark.full
 @pytest.mark.parametrize("kind", KINDS)
 def test_currents_of_no_transistor_give_a_whole_document_or_problems(kind: str) -> None:
     _any_currents(1, 25, kind)

@@ -74,7 +74,7 @@ def balanced(latex: str) -> bool:
     return depth == 0 and latex.count(r"\left") == latex.count(r"\right") and sorted(begins) == sorted(ends)
 
 
-@pytest.mark.parametrize("step", STEPS)
+@pytest.mark.parametrize("step", [STEPS[0], *(pytest.param(one, marks=pytest.mark.full) for one in STEPS[1:])])
 @pytest.mark.parametrize("bulk", BULKS)
 @pytest.mark.parametrize(
     "kind", [pytest.param(k, marks=() if i == 0 else pytest.mark.full) for i, k in enumerate(KINDS)], ids="-".join

@@ -102,6 +102,7 @@ def test_a_plain_terminal_gets_ascii(root: Path) -> None:
     drive(root, steps, plain_signs=True)
 
 
+@pytest.mark.full
 def test_what_moves_while_it_is_shown_is_found_anew(root: Path) -> None:
     async def steps(d: Drive) -> None:
         screen = await behind(d, "bucket_buffer", "choose.bias_current")

@@ -180,6 +180,7 @@ def test_every_view_fits_the_screen(root: Path, size: tuple[int, int]) -> None:
     drive(root, steps, size=size)
 
 
+@pytest.mark.full
 def test_a_point_of_the_front_is_taken_and_meets_every_target(root: Path) -> None:
     async def steps(d: Drive) -> None:
         await d.sheet("bucket_buffer")

@@ -199,6 +199,7 @@ def test_conditions_and_budgets_are_changed_through_a_form_and_undone(root: Path
     assert path.read_text("utf-8") == before
 
 
+@pytest.mark.full
 def test_a_condition_that_does_not_exist_never_enters_the_file(root: Path) -> None:
     path = root / "biasbook.toml"
     before = path.read_text("utf-8")

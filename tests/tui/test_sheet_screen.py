@@ -88,6 +88,7 @@ def test_units_choices_and_names_are_completed(root: Path) -> None:
     drive(root, steps)
 
 
+@pytest.mark.full
 def test_steps_go_by_grid_finger_and_share_and_come_back(root: Path) -> None:
     async def steps(d: Drive) -> None:
         screen = await d.sheet(NAME, "choose.width")
@@ -228,6 +229,7 @@ def test_removing_asks_about_names_that_nothing_would_use(root: Path) -> None:
     drive(root, steps)
 
 
+@pytest.mark.full
 def test_two_people_at_one_value_are_asked(root: Path) -> None:
     async def steps(d: Drive) -> None:
         await d.sheet(NAME, "choose.bias_current")
@@ -314,6 +316,7 @@ def test_a_number_is_followed_to_what_moves_it_and_back(root: Path) -> None:
     drive(root, steps)
 
 
+@pytest.mark.full
 def test_the_algebra_of_a_bound_comes_once_the_sheet_stands_still(root: Path) -> None:
     async def steps(d: Drive) -> None:
         await d.sheet(NAME, "target.power")
