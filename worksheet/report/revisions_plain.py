@@ -1,4 +1,4 @@
-"""Revisions and comparisons as JSON-ready data and as lines of text."""
+"""Comparisons as JSON-ready data and as lines of text."""
 
 from __future__ import annotations
 
@@ -8,7 +8,6 @@ from typing import Any
 from worksheet.compare.cause import Cause
 from worksheet.compare.compared import Comparison, Need, Result, SheetChange
 from worksheet.compare.inputs import Moved
-from worksheet.history.revisions import Revision
 from worksheet.model.problem import Problem
 from worksheet.model.text import clean
 from worksheet.report import plain, wording
@@ -18,24 +17,6 @@ Plain = dict[str, Any]
 _ID = 10
 _SHOWN = 1e-6
 """Relative: a remainder below is rounding."""
-
-
-def history(listed: Sequence[Revision]) -> Plain:
-    """The revisions as a document."""
-    return {"schema": plain.SCHEMA, "revisions": [revision(r) for r in listed], "problems": []}
-
-
-def revision(found: Revision) -> Plain:
-    """One revision."""
-    sheets = [p.removeprefix("sheets/").removesuffix(".toml") for p in found.paths if p.startswith("sheets/")]
-    return {"revision": found.revision, "dated": found.dated, "by": found.by, "note": found.note, "sheets": sheets}
-
-
-def history_text(listed: Sequence[Revision], width: int) -> Iterator[str]:
-    """The revisions as a table, newest first."""
-    columns = (Column("revision"), Column("dated"), Column("by", flexible=True), Column("note", flexible=True))
-    rows = tuple((r.revision[:_ID], r.dated[:16].replace("T", " "), r.by, r.note) for r in listed)
-    yield from lines(Table(columns, rows), width) if rows else ["no revision yet"]
 
 
 def comparison(old: str, new: str, found: Comparison, problems: Sequence[Problem]) -> Plain:

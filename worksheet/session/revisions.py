@@ -13,34 +13,20 @@ from worksheet.history import own, repository, revisions
 from worksheet.history import record as recording
 from worksheet.history.outcome import Person, Refused, RefusedError
 from worksheet.history.repository import Repository
-from worksheet.history.revisions import Revision
 from worksheet.model.problem import Problem
 from worksheet.model.text import clean
+from worksheet.project.discover import load
 from worksheet.report import wording
 from worksheet.review.results import Review
+from worksheet.session.listing import history, refusal, repository_of
+from worksheet.session.reading import FileReading, Shelf
+from worksheet.session.reviewing import Reviewing
 from worksheet.session.workbook import Workbook
 
 WORKING = "working"
 """The files as they stand, instead of a revision."""
 
 _MOST_LINES = 40
-
-
-def refusal(found: Refused, root: Path) -> Problem:
-    """A refusal of git as a problem."""
-    return Problem(str(root), None, "", found.message)
-
-
-def repository_of(root: Path) -> Repository | Problem:
-    """The repository that encloses a project, or why there is none to use."""
-    try:
-        found = repository.find(root)
-    except (OSError, ValueError) as error:  # no folder can have such a name
-        return Problem(str(root), None, "", f"found no folder that can be read: {getattr(error, 'strerror', error)}")
-    if found is None:
-        message = "there is no git repository around this project yet; `biasbook record` makes one"
-        return Problem(str(root), None, "", message)
-    return refusal(found, root) if isinstance(found, Refused) else found
 
 
 def identity(root: Path) -> str:
@@ -86,15 +72,6 @@ def record(root: Path, note: str, today: datetime.date, person: Person | None = 
     return Outcome(made.revision if isinstance(made, recording.Recorded) else "", remarks)
 
 
-def history(root: Path, sheet: str | None = None) -> tuple[Revision, ...] | Problem:
-    """Revisions of a project or of one of its sheets, newest first."""
-    found = repository_of(root)
-    if isinstance(found, Problem):
-        return found
-    listed = revisions.history(found, None if sheet is None else f"sheets/{sheet}.toml")
-    return refusal(listed, root) if isinstance(listed, Refused) else listed
-
-
 @dataclass(frozen=True, eq=False, slots=True)
 class Compared:
     """Two states by name, and what differs."""
@@ -120,8 +97,9 @@ def compared(
     found = repository_of(root)
     if isinstance(found, Problem):
         return found
-    before = _state(found, root, old or "HEAD", today)
-    after = _state(found, root, new, today)
+    reader = _Reader(today)
+    before = _state(found, root, old or "HEAD", reader)
+    after = _state(found, root, new, reader)
     for state in (before, after):
         if isinstance(state, Problem):
             return state
@@ -140,10 +118,11 @@ def state(root: Path, name: str, today: datetime.date) -> tuple[str, State] | Pr
         today: For waivers with an end.
     Returns: (the revision's id or WORKING, the state)
     """
+    reader = _Reader(today)
     if name == WORKING:
-        return WORKING, _reviewed(root, today)
+        return WORKING, reader.state(root)
     found = repository_of(root)
-    return found if isinstance(found, Problem) else _state(found, root, name, today)
+    return found if isinstance(found, Problem) else _state(found, root, name, reader)
 
 
 def files(root: Path, name: str) -> Mapping[str, bytes] | Problem:
@@ -156,9 +135,23 @@ def files(root: Path, name: str) -> Mapping[str, bytes] | Problem:
     return refusal(content, root) if isinstance(content, Refused) else content.files
 
 
-def _state(found: Repository, root: Path, name: str, today: datetime.date) -> tuple[str, State] | Problem:
+class _Reader:
+    """Reads and reviews states of one project; what two of them share is parsed and worked out once."""
+
+    def __init__(self, today: datetime.date) -> None:
+        self._today = today
+        self._shelf, self._reviewing = Shelf(), Reviewing()
+
+    def state(self, root: Path) -> State:
+        """The project in a folder, reviewed."""
+        project = load(root, FileReading(self._shelf))
+        evaluator = self._reviewing.evaluator(project)
+        return State(project, self._reviewing.review(project, evaluator, self._today), evaluator)
+
+
+def _state(found: Repository, root: Path, name: str, reader: _Reader) -> tuple[str, State] | Problem:
     if name == WORKING:
-        return WORKING, _reviewed(root, today)
+        return WORKING, reader.state(root)
     revision = revisions.resolve(found, name)
     if isinstance(revision, Refused):
         return refusal(revision, root)
@@ -170,12 +163,7 @@ def _state(found: Repository, root: Path, name: str, today: datetime.date) -> tu
         for path, content in files.files.items():
             (laid / path).parent.mkdir(parents=True, exist_ok=True)
             (laid / path).write_bytes(content)
-        return revision, _reviewed(laid, today)
-
-
-def _reviewed(root: Path, today: datetime.date) -> State:
-    workbook = Workbook.read(root)
-    return State(workbook.project, workbook.review(today), workbook.evaluator)
+        return revision, reader.state(laid)
 
 
 def _digest(root: Path, today: datetime.date) -> str:
@@ -202,3 +190,18 @@ def _first(review: Review) -> str:
     counts = {v: sum(s.count(v) for s in review.sheets) for v in ("met", "missed", "unknown", "waived")}
     said = ", ".join(f"{count} {verdict}" for verdict, count in counts.items() if count)
     return f"{len(review.sheets)} blocks; targets: {said or 'none'}"
+
+
+__all__ = [
+    "WORKING",
+    "Compared",
+    "Outcome",
+    "compared",
+    "files",
+    "history",
+    "identity",
+    "record",
+    "refusal",
+    "repository_of",
+    "state",
+]

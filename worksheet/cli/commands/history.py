@@ -37,21 +37,23 @@ def _count(text: str) -> int:
 
 def run(args: argparse.Namespace, output: Output) -> int:
     """List revisions. 0; 2 where there is no repository to ask."""
-    from worksheet.report import plain, revisions_plain
-    from worksheet.session import revisions
+    from worksheet.report import history_text
+    from worksheet.session import listing
 
     if args.value or args.metric:
         return _traced(args, output)
-    listed = revisions.history(Path(args.project), args.sheet)
+    listed = listing.history(Path(args.project), args.sheet)
     if isinstance(listed, Problem):
         tell([listed])
         if output.as_json:
+            from worksheet.report import plain
+
             output.document(plain.only_problems([listed], revisions=[]))
         return Status.BAD_INPUT
     if output.as_json:
-        output.document(revisions_plain.history(listed))
+        output.document(history_text.history(listed))
     else:
-        output.lines(revisions_plain.history_text(listed, output.width))
+        output.lines(history_text.history_text(listed, output.width))
     return Status.FINE
 
 
