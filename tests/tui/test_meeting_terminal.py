@@ -17,23 +17,18 @@ from tests.tui.term import Term, running
 
 pytestmark = pytest.mark.full
 
-PAST = """
-[[waiver]]
-target = "dc_gain"
-by = "M. Sandoe"
-reason = "until the filter is redrawn"
-dated = 2026-01-10
-until = 2026-02-01
-"""
+PAST = "\nuntil = 2026-02-01\n"
 
 
 @pytest.fixture
 def root(tmp_path: Path) -> Path:
-    """The sample in a repository; the waiver of its second miss has ended."""
+    """The sample in a repository: two targets missed, evidence stale, and its waiver past its date."""
     root = tmp_path / "tide_gauge"
     shutil.copytree(TOP / "sample_projects" / "tide_gauge", root)
-    sheet = root / "sheets" / "pressure_input.toml"
-    sheet.write_text(sheet.read_text("utf-8") + PAST, "utf-8")
+    sheet = root / "sheets" / "wake_comparator.toml"
+    text = sheet.read_text("utf-8")
+    at = text.index("\n", text.index("[[waiver]]"))
+    sheet.write_text(text[:at] + PAST + text[at + 1 :], "utf-8")
     git(root, "init", "-q")
     (tmp_path / ".gitconfig").write_text("[user]\nname = M. Sandoe\nemail = sandoe@example.org\n", "utf-8")
     git(root, "add", ".")
@@ -89,11 +84,18 @@ def test_decisions_land_in_the_sheets_the_revision_and_the_minutes(root: Path, s
         term.keys("b")  # send it back to its owner
         term.until("Send converter_driver back")
         fill(term, "", "", "Ask for 3 pF.")
-        only(term, "waiver ended")
+        only(term, "missed")
         term.until("pressure_input")
+        while "▶ pressure_input" not in term.text:
+            term.keys("down")
         term.keys("w")
         term.until("Waive dc_gain")
         fill(term, "", "the filter has room", "", "2030-06-30")
+        only(term, "waiver ended")
+        term.until("wake_comparator")
+        term.keys("w")
+        term.until("Waive offset_limit")
+        fill(term, "", "trimmed on the quay again", "", "2030-01-31")
         only(term, "stale evidence")
         term.until("electrode_buffer")
         term.keys("b")
@@ -116,6 +118,8 @@ def test_decisions_land_in_the_sheets_the_revision_and_the_minutes(root: Path, s
     today = datetime.datetime.now().astimezone().date()
     waiver = stated(root, "pressure_input")["waiver"][-1]
     assert (waiver["by"], waiver["until"], waiver["dated"]) == ("M. Sandoe", datetime.date(2030, 6, 30), today)
+    waiver = stated(root, "wake_comparator")["waiver"][-1]
+    assert (waiver["reason"], waiver["until"]) == ("trimmed on the quay again", datetime.date(2030, 1, 31))
     assert stated(root, "converter_driver")["remark"][-1]["text"] == "Ask for 3 pF."
     remark = stated(root, "electrode_buffer")["remark"][-1]
     assert (remark["to"], remark["about"]) == ("Lab", "target.bandwidth")
