@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping
+from collections.abc import Callable, Mapping
 from dataclasses import dataclass, replace
 from pathlib import Path
 from typing import Any
@@ -70,14 +70,30 @@ class Needs:
         return cls._narrowed(root, points.case, over, target, unknown)
 
     @classmethod
-    def at(cls, root: Path, evaluator: Evaluator, name: str, unknown: str | None = None) -> Needs | list[Problem]:
-        """Solve a sheet of a state that is evaluated already, or say why it cannot be; `unknown` as in `of`."""
+    def at(
+        cls,
+        root: Path,
+        evaluator: Evaluator,
+        name: str,
+        unknown: str | None = None,
+        early: Callable[[Mapping[str, Window]], None] | None = None,
+    ) -> Needs | list[Problem]:
+        """Solve a sheet of a state that is evaluated already, or say why it cannot be; `unknown` as in `of`.
+
+        `early` is told the windows as soon as they are found, before the proposal is.
+        """
         points, found = solve_points(evaluator, name)
-        return found if points is None else cls._narrowed(root, points.case, None, None, unknown)
+        return found if points is None else cls._narrowed(root, points.case, None, None, unknown, early)
 
     @classmethod
     def _narrowed(
-        cls, root: Path, case: Case, over: str | None, target: str | None, unknown: str | None
+        cls,
+        root: Path,
+        case: Case,
+        over: str | None,
+        target: str | None,
+        unknown: str | None,
+        early: Callable[[Mapping[str, Window]], None] | None = None,
     ) -> Needs | list[Problem]:
         if target is not None and target not in case.sheet.targets:
             return [_unknown(case, "target", target, list(case.sheet.targets))]
@@ -90,7 +106,7 @@ class Needs:
             return [_unknown(case, "unknown", str(unknown), known)]
         except CaseError as error:
             return [error.problem]
-        solved = needed.solve(case, over)
+        solved = needed.solve(case, over, early)
         windows = dict(solved.needed) if unknown is None else {} if extra is None else {unknown: extra}
         if target is not None:
             windows = {

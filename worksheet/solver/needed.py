@@ -22,20 +22,25 @@ def trials_of(subject: Subject, over: str | None = None) -> Trials:
     return Trials(subject, over or sheet.solve.over, ranges.worst_points(subject), ranges.waived_targets(sheet))
 
 
-def solve(subject: Subject, over: str | None = None) -> Solved:
+def solve(
+    subject: Subject, over: str | None = None, early: Callable[[Mapping[str, Window]], None] | None = None
+) -> Solved:
     """What is needed of one sheet.
 
     Args:
         subject: The sheet, with a number for everything it leaves open.
         over: "all" or "nominal"; the sheet's own where None.
+        early: Told the windows before points are looked for, which takes some ten times as long.
     Returns: Solved
     """
     trials = trials_of(subject, over)
+    needed = windows(trials)
+    if early is not None:
+        early(needed)
     best = propose.optimum(subject, trials)
     present = _present_meets(trials)
     none_to_find = best.recommended is None and best.reason in (propose.NO_BOUND, propose.NOTHING_FREE)
     feasible = best.recommended is not None or (none_to_find and present)
-    needed = windows(trials)
     found: Conflict | None = None
     if not feasible and not none_to_find:
         found = conflict.conflict(trials, best.free)

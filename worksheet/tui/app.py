@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import threading
 from collections.abc import Callable, Mapping, Sequence
+from dataclasses import replace
 from pathlib import Path
 from typing import TYPE_CHECKING, Any, ClassVar
 
@@ -29,7 +30,7 @@ if TYPE_CHECKING:  # what computes is loaded behind the first picture
     from worksheet.session.edits import Request
     from worksheet.session.session import Outcome, Session
     from worksheet.session.snapshot import Snapshot
-    from worksheet.tui.recomputed import Hands, Needed, Results
+    from worksheet.tui.recomputed import Bounded, Hands, Needed, Results
     from worksheet.tui.screens.place import Place
 
 _REST = 0.8
@@ -74,6 +75,13 @@ class BookApp(App[int]):
         """A sheet's needs have been worked out."""
 
         def __init__(self, stamped: Stamped[Needed]) -> None:
+            super().__init__()
+            self.stamped = stamped
+
+    class Windows(Message):
+        """A sheet's windows have been found, its proposal not yet."""
+
+        def __init__(self, stamped: Stamped[Bounded]) -> None:
             super().__init__()
             self.stamped = stamped
 
@@ -247,7 +255,12 @@ class BookApp(App[int]):
         self._reviews.want(snapshot.revision, lambda: review_of(self.session, snapshot, today()))
         sheet = self.open_name
         if sheet is not None:
-            self._solves.want(snapshot.revision, lambda: needs_of(self.session, snapshot, sheet))
+            revision = snapshot.revision
+
+            def early(found: Bounded) -> None:
+                self._deliver(self.Windows(Stamped(revision, found)))
+
+            self._solves.want(revision, lambda: needs_of(self.session, snapshot, sheet, early))
 
     @property
     def open_name(self) -> str | None:
@@ -279,6 +292,16 @@ class BookApp(App[int]):
             self._say(f"The results cannot be worked out: {stamped.error}")
         self.results = stamped.value or self.results
         self.show_book()
+
+    def on_book_app_windows(self, message: BookApp.Windows) -> None:
+        """Show windows beside the proposal that there was, unless they belong to another revision by now."""
+        stamped, needed = message.stamped, self.needed
+        found = stamped.value
+        if found is None or stamped.revision != self.snapshot.revision:
+            return
+        if needed is not None and needed.solved is not None and needed.name == found.name:
+            self.needed = replace(needed, solved=replace(needed.solved, needed=found.windows))
+            self.show_book()
 
     def on_book_app_solved(self, message: BookApp.Solved) -> None:
         """Show it, unless it belongs to another revision by now."""

@@ -13,7 +13,7 @@ from worksheet.model.quantity import format_quantity
 from worksheet.review.results import Review, SheetReview
 from worksheet.session.session import Session
 from worksheet.session.snapshot import Snapshot
-from worksheet.solver.results import Bound, Solved
+from worksheet.solver.results import Bound, Solved, Window
 
 
 @dataclass(frozen=True, eq=False)
@@ -52,14 +52,22 @@ def review_of(session: Session, snapshot: Snapshot, today: datetime.date) -> Res
     return Results(snapshot.revision, session.review(snapshot, today))
 
 
-def needs_of(session: Session, snapshot: Snapshot, name: str) -> Needed:
-    """Solve one sheet of a snapshot."""
+@dataclass(frozen=True, eq=False)
+class Bounded:
+    """The windows of one sheet, which are found long before its proposal."""
+
+    name: str
+    windows: Mapping[str, Window]
+
+
+def needs_of(session: Session, snapshot: Snapshot, name: str, early: Callable[[Bounded], None]) -> Needed:
+    """Solve one sheet of a snapshot; `early` is handed its windows while the rest is looked for."""
     from worksheet.session.needs import Needs
 
     evaluator = session.evaluator(snapshot)
     if evaluator is None or name not in snapshot.project.sheets:
         return Needed(snapshot.revision, name)
-    found = Needs.at(session.root, evaluator, name)
+    found = Needs.at(session.root, evaluator, name, early=lambda windows: early(Bounded(name, windows)))
     if isinstance(found, list):
         return Needed(snapshot.revision, name, problems=tuple(found))
     return Needed(snapshot.revision, name, found.solved, found.proposal())
