@@ -3,7 +3,6 @@
 from __future__ import annotations
 
 import datetime
-import tempfile
 from collections.abc import Mapping
 from dataclasses import dataclass
 from pathlib import Path
@@ -18,6 +17,7 @@ from worksheet.model.text import clean
 from worksheet.project.discover import load
 from worksheet.report import wording
 from worksheet.review.results import Review
+from worksheet.session.laying import laid
 from worksheet.session.listing import history, refusal, repository_of
 from worksheet.session.reading import FileReading, Shelf
 from worksheet.session.reviewing import Reviewing
@@ -158,12 +158,8 @@ def _state(found: Repository, root: Path, name: str, reader: _Reader) -> tuple[s
     files = revisions.read_files(found, revision)
     if isinstance(files, Refused):
         return refusal(files, root)
-    with tempfile.TemporaryDirectory(prefix="biasbook-") as folder:
-        laid = Path(folder)
-        for path, content in files.files.items():
-            (laid / path).parent.mkdir(parents=True, exist_ok=True)
-            (laid / path).write_bytes(content)
-        return revision, reader.state(laid)
+    with laid(files.files) as folder:
+        return revision, reader.state(folder)
 
 
 def _digest(root: Path, today: datetime.date) -> str:

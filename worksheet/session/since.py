@@ -3,7 +3,6 @@
 from __future__ import annotations
 
 import datetime
-import tempfile
 from pathlib import Path
 
 from worksheet.compare.compared import State, compare
@@ -13,7 +12,8 @@ from worksheet.history.outcome import Refused
 from worksheet.history.revisions import Files, Revision
 from worksheet.model.problem import Problem
 from worksheet.review.review import reviewed
-from worksheet.session.revisions import repository_of
+from worksheet.session.laying import laid
+from worksheet.session.listing import repository_of
 from worksheet.session.workbook import Workbook
 
 MOST = 40
@@ -78,9 +78,5 @@ def _moves_results(key: str) -> bool:
 
 
 def _laid(content: Files) -> Workbook:
-    with tempfile.TemporaryDirectory(prefix="biasbook-") as folder:
-        laid = Path(folder)
-        for path, data in content.files.items():
-            (laid / path).parent.mkdir(parents=True, exist_ok=True)
-            (laid / path).write_bytes(data)
-        return Workbook.read(laid)
+    with laid(content.files) as folder:
+        return Workbook.read(folder)

@@ -3,7 +3,6 @@
 from __future__ import annotations
 
 import datetime
-import tempfile
 from collections.abc import Iterator, Sequence
 from dataclasses import dataclass
 from pathlib import Path
@@ -17,7 +16,8 @@ from worksheet.history.revisions import Files, Revision
 from worksheet.model.problem import Problem
 from worksheet.model.text import clean, nearest
 from worksheet.review.review import reviewed
-from worksheet.session.revisions import refusal, repository_of
+from worksheet.session.laying import laid
+from worksheet.session.listing import refusal, repository_of
 from worksheet.session.workbook import Workbook
 from worksheet.sheetfile import source
 from worksheet.sheetfile.read import parse_sheet
@@ -119,12 +119,8 @@ def _achieved(
 
 
 def _at(revision: Revision, content: Files, sheet: str, name: str, today: datetime.date) -> Achieved | None:
-    with tempfile.TemporaryDirectory(prefix="biasbook-") as folder:
-        laid = Path(folder)
-        for path, data in content.files.items():
-            (laid / path).parent.mkdir(parents=True, exist_ok=True)
-            (laid / path).write_bytes(data)
-        workbook = Workbook.read(laid)
+    with laid(content.files) as folder:
+        workbook = Workbook.read(folder)
         if workbook.evaluator is None or sheet not in workbook.project.sheets:
             return None
         result = reviewed(workbook.evaluator, (sheet,), today)[sheet].result
