@@ -92,3 +92,11 @@ def test_what_makes_it_reachable_is_nearest_to_what_is_chosen(tmp_path: Path) ->
         assert needed.solve(case.moved({"length": length * factor}), "nominal").feasible == feasible
     assert set(found.wanted) == set(found.targets)
     assert found.wanted["power"] == 1.2e-5
+
+
+def test_windows_are_told_before_points_and_are_those_of_the_result(tmp_path: Path) -> None:
+    told: list[object] = []
+    case = case_of(tmp_path / "book", "common-source", target={"dc_gain": {"min": 20.0}, "power": {"max": 1e-3}})
+    solved = needed.solve(case, early=told.append)
+    assert solved.needed
+    assert told == [solved.needed]

@@ -11,6 +11,8 @@ from textual.widgets import Input
 
 from tests.tui.driving import Drive, drive, shown
 from worksheet.tui.dialogs.ask import AskDialog
+from worksheet.tui.recompute import Stamped
+from worksheet.tui.recomputed import Bounded
 from worksheet.tui.widgets.in_place import InPlace
 from worksheet.tui.widgets.lines import Lines
 
@@ -341,3 +343,29 @@ def test_every_size_shows_the_sheet(root: Path) -> None:
             assert d.app.screen.region.contains_region(region)
 
         drive(root, steps, size=size)
+
+
+def test_windows_follow_a_step_before_the_proposal_does(root: Path) -> None:
+    """The windows of another revision, or of another sheet, are never shown."""
+
+    async def steps(d: Drive) -> None:
+        app = d.app
+        await d.sheet(NAME)
+        await d.until(lambda: app.needed is not None and app.needed.revision == app.snapshot.revision)
+        before = app.needed
+        assert before is not None
+        assert before.solved is not None
+        for revision, name, taken in (
+            (app.snapshot.revision - 1, NAME, False),
+            (app.snapshot.revision, "sun_gate", False),
+            (app.snapshot.revision, NAME, True),
+        ):
+            app.post_message(app.Windows(Stamped(revision, Bounded(name, {}))))
+            await d.pilot.pause()
+            assert app.needed is not None
+            assert app.needed.solved is not None
+            assert (app.needed.solved.needed == {}) == taken
+            assert any("needed ≥" in row for row in d.rows()) != taken
+            assert app.needed.proposal == before.proposal
+
+    drive(root, steps)

@@ -1,4 +1,7 @@
-"""The app: one owner of the run, which hands values down to its screens and takes what they ask for to the session."""
+"""The app: one owner of the run, which hands values down to its screens and takes what they ask for to the session.
+
+Length: what comes in from threads and what goes down to screens is seen together in one place.
+"""
 
 from __future__ import annotations
 
@@ -6,7 +9,7 @@ import threading
 from collections.abc import Callable, Mapping, Sequence
 from dataclasses import replace
 from pathlib import Path
-from typing import TYPE_CHECKING, Any, ClassVar
+from typing import TYPE_CHECKING, Any, ClassVar, Generic, TypeVar
 
 from textual.app import App
 from textual.binding import BindingType
@@ -33,6 +36,8 @@ if TYPE_CHECKING:  # what computes is loaded behind the first picture
     from worksheet.tui.recomputed import Bounded, Hands, Needed, Results
     from worksheet.tui.screens.place import Place
 
+Result = TypeVar("Result")
+
 _REST = 0.8
 """How long a sheet must stand still before its algebra is looked for. [s]"""
 
@@ -41,6 +46,14 @@ _PATIENCE = 1.0
 
 _LOOK = 0.5
 """How often files are looked at for changes by others. [s]"""
+
+
+class _Told(Message, Generic[Result]):
+    """A result from a thread, with the revision that it belongs to."""
+
+    def __init__(self, stamped: Stamped[Result]) -> None:
+        super().__init__()
+        self.stamped = stamped
 
 
 class BookApp(App[int]):
@@ -64,33 +77,17 @@ class BookApp(App[int]):
             super().__init__()
             self.session, self.results, self.error = session, results, error
 
-    class Reviewed(Message):
+    class Reviewed(_Told["Results"]):
         """A review has been worked out."""
 
-        def __init__(self, stamped: Stamped[Results]) -> None:
-            super().__init__()
-            self.stamped = stamped
-
-    class Solved(Message):
+    class Solved(_Told["Needed"]):
         """A sheet's needs have been worked out."""
 
-        def __init__(self, stamped: Stamped[Needed]) -> None:
-            super().__init__()
-            self.stamped = stamped
-
-    class Windows(Message):
+    class Windows(_Told["Bounded"]):
         """A sheet's windows have been found, its proposal not yet."""
 
-        def __init__(self, stamped: Stamped[Bounded]) -> None:
-            super().__init__()
-            self.stamped = stamped
-
-    class Explained(Message):
+    class Explained(_Told["Hands"]):
         """The algebra of a sheet's bounds has been found."""
-
-        def __init__(self, stamped: Stamped[Hands]) -> None:
-            super().__init__()
-            self.stamped = stamped
 
     class Changed(Message):
         """Somebody else changed the files."""
@@ -255,12 +252,11 @@ class BookApp(App[int]):
         self._reviews.want(snapshot.revision, lambda: review_of(self.session, snapshot, today()))
         sheet = self.open_name
         if sheet is not None:
-            revision = snapshot.revision
 
             def early(found: Bounded) -> None:
-                self._deliver(self.Windows(Stamped(revision, found)))
+                self._deliver(self.Windows(Stamped(snapshot.revision, found)))
 
-            self._solves.want(revision, lambda: needs_of(self.session, snapshot, sheet, early))
+            self._solves.want(snapshot.revision, lambda: needs_of(self.session, snapshot, sheet, early))
 
     @property
     def open_name(self) -> str | None:
@@ -295,13 +291,12 @@ class BookApp(App[int]):
 
     def on_book_app_windows(self, message: BookApp.Windows) -> None:
         """Show windows beside the proposal that there was, unless they belong to another revision by now."""
-        stamped, needed = message.stamped, self.needed
-        found = stamped.value
-        if found is None or stamped.revision != self.snapshot.revision:
+        found, needed = message.stamped.value, self.needed
+        late = message.stamped.revision != self.snapshot.revision
+        if late or found is None or needed is None or needed.solved is None or needed.name != found.name:
             return
-        if needed is not None and needed.solved is not None and needed.name == found.name:
-            self.needed = replace(needed, solved=replace(needed.solved, needed=found.windows))
-            self.show_book()
+        self.needed = replace(needed, solved=replace(needed.solved, needed=found.windows))
+        self.show_book()
 
     def on_book_app_solved(self, message: BookApp.Solved) -> None:
         """Show it, unless it belongs to another revision by now."""
