@@ -89,7 +89,9 @@ def counted(found: Comparison) -> str:
     """How much differs, in words."""
     turned = [r for sheet in found.sheets for r in sheet.results if r.old_verdict != r.new_verdict]
     worse = sum(r.new_verdict in (rows.MISSED, rows.UNKNOWN) for r in turned)
-    return f"{len(found.sheets)} sheets differ, {len(turned)} verdicts turned, {worse} of them for the worse"
+    sheets = "1 sheet differs" if len(found.sheets) == 1 else f"{len(found.sheets)} sheets differ"
+    verdicts = "1 verdict" if len(turned) == 1 else f"{len(turned)} verdicts"
+    return f"{sheets}, {verdicts} turned, {worse} of them for the worse"
 
 
 def lead(subject: tuple[str, str]) -> tuple[str, str]:
