@@ -246,11 +246,16 @@ class BookApp(App[int]):
 
     def work(self) -> None:
         """Have worked out what belongs to the book as it stands."""
-        from worksheet.tui.recomputed import needs_of, review_of, today
+        from worksheet.tui.recomputed import review_of, today
 
         snapshot = self.snapshot = self.session.snapshot()
         self._reviews.want(snapshot.revision, lambda: review_of(self.session, snapshot, today()))
-        sheet = self.open_name
+
+    def _solve(self) -> None:
+        """Have worked out what the open sheet needs."""
+        from worksheet.tui.recomputed import needs_of
+
+        snapshot, sheet = self.snapshot, self.open_name
         if sheet is not None:
 
             def early(found: Bounded) -> None:
@@ -271,7 +276,7 @@ class BookApp(App[int]):
         A screen below that is drawn makes the toolkit draw the one above it as a whole.
         """
         screen = self._uppermost()
-        if screen is not None:
+        if screen is not None and self.is_running:  # while it ends, parts of a screen are gone already
             screen.show_book()
 
     def _uppermost(self) -> Place | None:
@@ -288,6 +293,7 @@ class BookApp(App[int]):
             self._say(f"The results cannot be worked out: {stamped.error}")
         self.results = stamped.value or self.results
         self.show_book()
+        self.call_after_refresh(self._solve)  # at the same time it would hold up the values and verdicts
 
     def on_book_app_windows(self, message: BookApp.Windows) -> None:
         """Show windows beside the proposal that there was, unless they belong to another revision by now."""

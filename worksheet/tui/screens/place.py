@@ -66,8 +66,9 @@ class Place(Screen[None]):
         self.show_book()
 
     def on_screen_resume(self) -> None:
-        """What changed while another screen was in front."""
-        self.show_book()
+        """What changed while another screen was in front; at the end of the program parts of this one are gone."""
+        if self.app.is_running:
+            self.show_book()
 
     def show_book(self) -> None:
         """Show the book as it stands with what is known of it."""
