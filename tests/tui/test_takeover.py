@@ -46,7 +46,7 @@ async def shown(d: Drive, screen: TakeoverScreen) -> None:
     """Wait until the steps are those of the book as it stands."""
     await d.settled()
     revision = d.app.snapshot.revision
-    await d.until(lambda: screen.stamp == revision)
+    await d.until(lambda: screen.led is not None and screen.led.revision == revision)
 
 
 def test_one_is_led_through_what_is_asked_new_stale_and_weak(root: Path) -> None:

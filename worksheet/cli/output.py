@@ -44,14 +44,6 @@ class Output:
                 text = plain_signs(line) if paper.plain else line
                 sys.stdout.write(text.encode(encoding, "replace").decode(encoding) + "\n")
 
-    def table(self, columns: Iterable[str], rows: Iterable[Iterable[Any]]) -> None:
-        """Write rows as CSV (RFC 4180, line ends of the system): numbers plain, nothing for what is not there."""
-        import csv
-
-        writer = csv.writer(sys.stdout, lineterminator="\n")
-        writer.writerow(columns)
-        writer.writerows(["" if cell is None else cell for cell in row] for row in rows)
-
     def document(self, document: dict[str, Any]) -> None:
         """Write one JSON document."""
         sys.stdout.write(json.dumps(document, ensure_ascii=True, allow_nan=False, indent=None) + "\n")

@@ -6,16 +6,16 @@ from collections.abc import Iterator, Sequence
 from typing import Any
 
 from worksheet.history.revisions import Revision
+from worksheet.report import plain
 from worksheet.report.table import Column, Table, lines
 
-SCHEMA = 1
 Plain = dict[str, Any]
 _ID = 10
 
 
 def history(listed: Sequence[Revision]) -> Plain:
     """The revisions as a document."""
-    return {"schema": SCHEMA, "revisions": [revision(r) for r in listed], "problems": []}
+    return {"schema": plain.SCHEMA, "revisions": [revision(r) for r in listed], "problems": []}
 
 
 def revision(found: Revision) -> Plain:

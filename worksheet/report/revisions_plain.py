@@ -142,11 +142,12 @@ def _stated(moved: Sequence[Moved], width: int) -> Iterator[str]:
 
 def movement(moved: Moved) -> str:
     """One stated thing before and after, in words."""
-    old, new = (_shown(value, moved.unit) for value in (moved.old, moved.new))
+    old, new = (shown(value, moved.unit) for value in (moved.old, moved.new))
     return f"{moved.key}: {old} -> {new}"
 
 
-def _shown(value: Any, unit: str) -> str:
+def shown(value: Any, unit: str) -> str:
+    """A stated thing in words; numbers in `unit`."""
     if value is None:
         return "not stated"
     if isinstance(value, float):

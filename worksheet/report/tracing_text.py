@@ -6,8 +6,7 @@ from collections.abc import Iterator, Sequence
 from typing import Any
 
 from worksheet.history.revisions import Revision
-from worksheet.model.text import clean
-from worksheet.report import plain, wording
+from worksheet.report import plain, revisions_plain, wording
 from worksheet.report.table import Column, Table, lines
 
 _ID, _BAR = 10, 20
@@ -50,14 +49,10 @@ def value_text(found: Sequence[Entry], width: int) -> Iterator[str]:
         Column("value", right=True),
         Column("note", flexible=True),
     )
-    rows = tuple((r.revision[:_ID], r.dated[:10], r.by, _shown(value, unit), r.note) for r, value, unit in found)
+    rows = tuple(
+        (r.revision[:_ID], r.dated[:10], r.by, revisions_plain.shown(value, unit), r.note) for r, value, unit in found
+    )
     yield from lines(Table(columns, rows), width)
-
-
-def _shown(value: Any, unit: str) -> str:
-    if value is None:
-        return "not stated"
-    return wording.number(value, unit) if isinstance(value, float) else clean(str(value))
 
 
 def metric_text(name: str, found: Sequence[Point], width: int) -> Iterator[str]:

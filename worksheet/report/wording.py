@@ -2,10 +2,13 @@
 
 from __future__ import annotations
 
+from functools import lru_cache
+
 from worksheet.model import metrics
 from worksheet.model.dimension import DIMENSIONS, TEMPERATURE, VOLTAGE, Dimension
 from worksheet.model.quantity import format_quantity
 from worksheet.model.sheet import Condition, Target
+from worksheet.model.units import UnitError, parse_unit
 
 STANDING = (
     "First-order hand calculation, to be confirmed with the foundry's qualified models and the design's own sign-off."
@@ -20,13 +23,30 @@ CAUTION = (
 
 
 def number(value: float | None, unit: str, reason: str | None = None, digits: int = 4) -> str:
-    """A number with its unit in engineering notation, or why there is none."""
+    """A number with its unit in engineering notation, or why there is none.
+
+    Args:
+        value: In SI base units.
+        unit: SI, or as an own name was written ("pF"); the number is then shown in what that stands for.
+        reason: Why there is no number.
+        digits: Significant digits.
+    """
     if value is None:
         return reason or "-"
+    unit = _base(unit)
     dimension = _dimension(unit)
     if dimension is not None:
         return format_quantity(value, dimension, digits)
     return f"{value:.{digits}g} {unit}".rstrip()
+
+
+@lru_cache(maxsize=256)
+def _base(unit: str) -> str:
+    """The SI unit behind a written one; a word of the user's own stays."""
+    try:
+        return parse_unit(unit).base if unit else ""
+    except UnitError:
+        return unit
 
 
 def _dimension(unit: str) -> Dimension | None:

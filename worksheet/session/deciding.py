@@ -11,13 +11,8 @@ from typing import Any
 
 from worksheet.model.keys import TRUST
 from worksheet.model.sheet_keys import ACCEPTANCE, REMARK, WAIVER
-from worksheet.review.state import ACCEPTED, DRAFT, FOR_REVIEW
+from worksheet.review.state import ACCEPTED, DRAFT
 from worksheet.session.edits import AddEntry, ChangeSheet, KeyPath, Piece, Put
-
-
-def put_up(sheet: str) -> ChangeSheet:
-    """Put a block up for review."""
-    return ChangeSheet(sheet, (Put(("state",), FOR_REVIEW),), "put up for review")
 
 
 def accept(sheet: str, basis: str, by: str, today: datetime.date, note: str = "") -> ChangeSheet:

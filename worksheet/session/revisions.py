@@ -15,7 +15,7 @@ from worksheet.history.repository import Repository
 from worksheet.model.problem import Problem
 from worksheet.model.text import clean
 from worksheet.project.discover import load
-from worksheet.report import wording
+from worksheet.report import revisions_plain, wording
 from worksheet.review.results import Review
 from worksheet.session.laying import laid
 from worksheet.session.listing import history, refusal, repository_of
@@ -167,12 +167,10 @@ def _digest(root: Path, today: datetime.date) -> str:
     found = compared(root, None, WORKING, today, deep=False)
     if isinstance(found, Problem):
         return _first(Workbook.read(root).review(today))
-    lines = [
-        f"{m.key}: {m.old} -> {m.new} {m.unit}".rstrip() for m in (*found.comparison.project, *found.comparison.process)
-    ]
+    lines = [revisions_plain.movement(m) for m in (*found.comparison.project, *found.comparison.process)]
     for sheet in found.comparison.sheets:
         lines.append(f"{sheet.sheet}: {sheet.status}")
-        lines += [f"  {m.key}: {m.old} -> {m.new} {m.unit}".rstrip() for m in sheet.inputs]
+        lines += [f"  {revisions_plain.movement(m)}" for m in sheet.inputs]
         for result in sheet.results:
             if result.old_verdict != result.new_verdict:
                 shown = [wording.metric_number(result.metric, v, result.unit) for v in (result.old, result.new)]

@@ -35,6 +35,7 @@ def run(args: argparse.Namespace, output: Output) -> int:
     import datetime
 
     from worksheet.report import evidence_text
+    from worksheet.report.csv_rows import csv_lines
     from worksheet.review.deviations import deviations, summaries
     from worksheet.session.evidence import put
     from worksheet.session.session import Session
@@ -58,7 +59,7 @@ def run(args: argparse.Namespace, output: Output) -> int:
     if output.as_json:
         output.document(evidence_text.document(found, summaries(found), problems))
     elif args.csv:
-        output.table(evidence_text.COLUMNS, map(evidence_text.row, found))
+        output.lines(csv_lines([evidence_text.COLUMNS, *map(evidence_text.row, found)]))
     elif workbook.project.file is not None and not problems:
         output.lines(evidence_text.text(found, summaries(found), output.width, _moved(root, found, today)))
     return Status.BAD_INPUT if problems else Status.FINE

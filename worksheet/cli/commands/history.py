@@ -62,6 +62,7 @@ def _traced(args: argparse.Namespace, output: Output) -> int:
     import datetime
 
     from worksheet.report import plain, tracing_text
+    from worksheet.report.csv_rows import csv_lines
     from worksheet.session import tracing
 
     root, today = Path(args.project), datetime.datetime.now().astimezone().date()
@@ -90,7 +91,7 @@ def _traced(args: argparse.Namespace, output: Output) -> int:
     if output.as_json:
         output.document(tracing_text.document(name, columns, rows))
     elif args.csv:
-        output.table(columns, rows)
+        output.lines(csv_lines([columns, *rows]))
     else:
         output.lines(text)
     return Status.FINE

@@ -2,8 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterator, Sequence
-from typing import Any
+from collections.abc import Iterator
 
 from worksheet.compare.compared import Comparison, Result, SheetChange
 from worksheet.compare.inputs import Moved
@@ -47,7 +46,7 @@ def _sheet(change: SheetChange, columns: int, width: int, signs: Signs) -> Itera
 
 
 def _stated(kind: str, name: str, moved: Moved, width: int, signs: Signs) -> Row:
-    old, new = (_shown(value, moved.unit) for value in (moved.old, moved.new))
+    old, new = (revisions_plain.shown(value, moved.unit) for value in (moved.old, moved.new))
     cells = (moved.key, old, new)
     spans = line(Span(signs.text(moved.key), LABEL, _KEY), *_pair(old, new, width, signs))
     return Row(f"{kind}.{name}.{moved.key}", (spans,), subject=(kind, f"{name}:{moved.key}"), copied=cells)
@@ -55,12 +54,6 @@ def _stated(kind: str, name: str, moved: Moved, width: int, signs: Signs) -> Row
 
 def _pair(old: str, new: str, width: int, signs: Signs) -> tuple[Span, ...]:
     return Span(signs.text(old), QUIET, width), Span(signs.text(new), PLAIN, width)
-
-
-def _shown(value: Any, unit: str) -> str:
-    if value is None:
-        return "not stated"
-    return wording.number(value, unit) if isinstance(value, float) else str(value)
 
 
 def _result(name: str, result: Result, columns: int, width: int, signs: Signs) -> Row:
@@ -99,8 +92,3 @@ def lead(subject: tuple[str, str]) -> tuple[str, str]:
     kind, text = subject
     name, _, key = text.partition(":")
     return (name, key) if kind in (_INPUT, _RESULT) else ("", "")
-
-
-def traced(title: str, lines: Sequence[str]) -> list[str]:
-    """Paragraphs of a history, one a line."""
-    return [f"# {title}", *lines]

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 
-from worksheet.report import wording
+from worksheet.report import revisions_plain, wording
 from worksheet.report.table import wrapped
 from worksheet.session.taking_over import Step, Why
 from worksheet.tui import rows
@@ -65,16 +65,8 @@ def _row(step: Step, columns: int, signs: Signs) -> Row:
 def _said(step: Step) -> str:
     if step.why is not Why.NEW:
         return step.said
-    moved = f"{_shown(step.old, step.unit)} -> {_shown(step.new, step.unit)}"
+    moved = f"{revisions_plain.shown(step.old, step.unit)} -> {revisions_plain.shown(step.new, step.unit)}"
     return f"{step.said}; {moved}" if step.said else moved
-
-
-def _shown(value: object, unit: str) -> str:
-    if value is None:
-        return "not stated"
-    if isinstance(value, float):
-        return wording.number(value, unit)
-    return str(value)
 
 
 def detail_lines(step: Step | None, columns: int, signs: Signs) -> list[Line]:

@@ -2,13 +2,11 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterable, Mapping
+from collections.abc import Callable, Iterable, Mapping
 from dataclasses import dataclass
-from typing import ClassVar
+from typing import Any, ClassVar
 
 from textual.binding import BindingType
-from textual.message import Message
-from textual.widget import Widget
 
 from worksheet.compare.compared import Comparison
 from worksheet.model.problem import Problem
@@ -17,12 +15,10 @@ from worksheet.session.edits import Request
 from worksheet.tui import commands
 from worksheet.tui.dialogs.ask import AskDialog
 from worksheet.tui.pages import compare_page
-from worksheet.tui.recompute import Recompute, Stamped
 from worksheet.tui.recomputed import today
-from worksheet.tui.rows import HEAD, PLAIN, QUIET, Page, Row, Span, line
-from worksheet.tui.screens.place import Place, bindings
-from worksheet.tui.widgets.ledger import Ledger
-from worksheet.tui.widgets.lines import Lines
+from worksheet.tui.rows import Row
+from worksheet.tui.screens.place import bindings
+from worksheet.tui.screens.view import View
 
 
 @dataclass(frozen=True, eq=False, slots=True)
@@ -33,85 +29,44 @@ class Laid:
     files: Mapping[str, bytes]
 
 
-class CompareScreen(Place):
+class CompareScreen(View):
     """What differs between a revision and the files as they stand."""
 
     PLACE = commands.COMPARE
     BINDINGS: ClassVar[list[BindingType]] = [*bindings(commands.COMPARE)]
 
-    class Ready(Message):
-        """The comparison has been worked out."""
-
-        def __init__(self, stamped: Stamped[Laid | Problem]) -> None:
-            super().__init__()
-            self.stamped = stamped
-
     def __init__(self, revision: str, title: str) -> None:
         """Take the revision's id, and what to call it."""
-        super().__init__()
+        super().__init__("")
         self.revision, self.heading = revision, title
-        self.laid: Laid | None = None
-        self.stamp = -1
-        self._asked = -1
-        self._wrong = ""
-        self._work: Recompute[Laid | Problem] = Recompute(self._deliver)
 
-    def compose_page(self) -> Iterable[Widget]:
-        """The rows of the comparison."""
-        yield Ledger(self.book.signs.pointer, id="body")
+    def job(self) -> Callable[[], Any]:
+        """Both states reviewed and laid side by side, or problems."""
+        root, revision = self.snapshot.project.root, self.revision
 
-    def on_unmount(self) -> None:
-        """Begin nothing more."""
-        self._work.stop()
-
-    def _deliver(self, stamped: Stamped[Laid | Problem]) -> None:
-        self.post_message(self.Ready(stamped))
-
-    # What it shows
-
-    def show_book(self) -> None:
-        """The comparison with the book as it stands."""
-        if not self.is_mounted:
-            return
-        self._want()
-        signs, laid = self.book.signs, self.laid
-        said = "" if laid is None else compare_page.counted(laid.found)
-        title = f"{self.revision[:10]} {self.heading} -> as it stands"
-        head = line(Span(signs.text(title), HEAD), Span(signs.text(said), PLAIN), gap=2)
-        self.query_one("#title", Lines).show([head])
-        text = signs.text(self._wrong or "working...")
-        waiting = Page((Row("none", (line(Span(text, QUIET)),), stops=False),))
-        self.ledger.show(waiting if laid is None else compare_page.page(laid.found, self.columns, signs))
-        self.show_foot()
-
-    def _want(self) -> None:
-        snapshot = self.snapshot
-        if self._asked == snapshot.revision:
-            return
-        self._asked = snapshot.revision
-        root, revision = snapshot.project.root, self.revision
-
-        def work() -> Laid | Problem:
+        def work() -> Laid | list[Problem]:
             found = revisions.compared(root, revision, revisions.WORKING, today())
-            files = revisions.files(root, revision)
             if isinstance(found, Problem):
-                return found
-            return files if isinstance(files, Problem) else Laid(found.comparison, files)
+                return [found]
+            files = revisions.files(root, revision)
+            return [files] if isinstance(files, Problem) else Laid(found.comparison, files)
 
-        self._work.want(snapshot.revision, work)
+        return work
 
-    def on_compare_screen_ready(self, message: CompareScreen.Ready) -> None:
-        """Show it, unless it belongs to another state by now."""
-        stamped = message.stamped
-        if stamped.revision != self.snapshot.revision:
-            return
-        value = stamped.value
-        self.stamp = stamped.revision
-        if isinstance(value, Laid):
-            self.laid = value
-        else:
-            self._wrong = str(value) if value is not None else f"cannot be compared: {stamped.error}"
-        self.show_book()
+    @property
+    def about(self) -> str:
+        """Which revision stands beside the files, and how much differs."""
+        said = "" if self.laid is None else f"  {compare_page.counted(self.laid.found)}"
+        return f"{self.revision[:10]} {self.heading} -> as it stands{said}"
+
+    @property
+    def laid(self) -> Laid | None:
+        """What was found, None while it is being worked out."""
+        return self.found if isinstance(self.found, Laid) else None
+
+    def rows_found(self) -> Iterable[Row]:
+        """Project, process file, sheets."""
+        return () if self.laid is None else compare_page.page(self.laid.found, self.columns, self.book.signs).rows
 
     @property
     def present(self) -> tuple[str, str]:
@@ -121,18 +76,10 @@ class CompareScreen(Place):
 
     def holds(self) -> set[str]:
         """What can be done with the row under the cursor."""
-        held = super().holds()
+        held = super().holds() - {"row", "sheet"}
         if self.laid is not None:
             held.add("laid")
         return held | {"row", "sheet"} if self.present[0] else held
-
-    def on_ledger_moved(self) -> None:
-        """Another row."""
-        self.show_foot()
-
-    def on_ledger_resized(self) -> None:
-        """Another width."""
-        self.show_book()
 
     # Commands
 

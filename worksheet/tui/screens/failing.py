@@ -5,7 +5,6 @@ from __future__ import annotations
 from collections.abc import Callable, Iterable, Sequence
 from typing import Any
 
-from worksheet.model.units import UnitError, parse_unit
 from worksheet.report import wording
 from worksheet.review.failing import Failing
 from worksheet.session.alternatives import failing_of, in_book
@@ -77,8 +76,8 @@ class FailingScreen(View):
         cells = (
             row.trust or "none",
             row.name,
-            _number(row.value, row.unit),
-            _number(row.break_value, row.unit),
+            wording.number(row.value, row.unit, digits=3),
+            wording.number(row.break_value, row.unit, digits=3),
             _room(row.room),
             row.target,
             one.where,
@@ -101,15 +100,6 @@ class FailingScreen(View):
         if row is not None and row.subject[0] == "input":
             self.app.pop_screen()
             self.book.open_sheet(self.name_of_sheet, row.subject[1])
-
-
-def _number(value: float | None, unit: str) -> str:
-    """A value in SI units; an own name's unit is as written, its value is not."""
-    try:
-        base = parse_unit(unit).base if unit else ""
-    except UnitError:  # a unit that is a word of the user's own
-        base = unit
-    return wording.number(value, base, digits=3)
 
 
 def _room(room: float | None) -> str:

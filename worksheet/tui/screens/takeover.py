@@ -2,12 +2,11 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterable, Mapping
+from collections.abc import Callable, Iterable, Mapping
 from dataclasses import dataclass
-from typing import ClassVar
+from typing import Any, ClassVar
 
 from textual.binding import BindingType
-from textual.message import Message
 from textual.widget import Widget
 
 from worksheet.model.keys import TRUST
@@ -18,12 +17,11 @@ from worksheet.session.taking_over import Step
 from worksheet.tui import commands
 from worksheet.tui.dialogs.form import FormLine
 from worksheet.tui.pages import takeover_page
-from worksheet.tui.recompute import Recompute, Stamped
 from worksheet.tui.recomputed import today
-from worksheet.tui.rows import QUIET, Page, Row, Span
+from worksheet.tui.rows import Row
 from worksheet.tui.screens.deciding import DecidingPlace
 from worksheet.tui.screens.place import bindings
-from worksheet.tui.widgets.ledger import Ledger
+from worksheet.tui.screens.view import View
 from worksheet.tui.widgets.lines import Lines
 
 _DETAIL = 5
@@ -31,94 +29,67 @@ _DETAIL = 5
 
 @dataclass(frozen=True, eq=False, slots=True)
 class Led:
-    """What a block's taker is led through, and since which revision something is new."""
+    """What a block's taker is led through, since which revision something is new, and the book's own revision."""
 
     steps: tuple[Step, ...]
     since: str
+    revision: int
 
 
-class TakeoverScreen(DecidingPlace):
+class TakeoverScreen(View, DecidingPlace):
     """What to look at before a block is one's own."""
 
     PLACE = commands.TAKEOVER
     BINDINGS: ClassVar[list[BindingType]] = [*bindings(commands.TAKEOVER)]
 
-    class Ready(Message):
-        """The steps have been worked out."""
-
-        def __init__(self, stamped: Stamped[Led]) -> None:
-            super().__init__()
-            self.stamped = stamped
-
     def __init__(self, name: str) -> None:
         """Take the block's name."""
-        super().__init__()
-        self.name_of_sheet = name
-        self.led: Led | None = None
-        self.stamp = -1
-        self._asked = -1
+        super().__init__(name)
         self._since: str | None = None
-        self._work: Recompute[Led] = Recompute(self._deliver)
 
     def compose_page(self) -> Iterable[Widget]:
         """The steps, and what is known of the one under the cursor."""
-        yield Ledger(self.book.signs.pointer, id="body")
+        yield from super().compose_page()
         yield Lines(id="detail")
 
-    def on_unmount(self) -> None:
-        """Begin nothing more."""
-        self._work.stop()
+    @property
+    def led(self) -> Led | None:
+        """What was found, None while it is being worked out."""
+        return self.found if isinstance(self.found, Led) else None
 
-    def _deliver(self, stamped: Stamped[Led]) -> None:
-        self.post_message(self.Ready(stamped))
+    def asked(self) -> tuple[object, ...]:
+        """Results bring the stale and the weak."""
+        return (None if self.book.results is None else self.book.results.revision,)
 
-    # What it shows
-
-    def show_book(self) -> None:
-        """The steps of the book as it stands."""
-        if not self.is_mounted:
-            return
-        self._want()
-        signs, led = self.book.signs, self.led
-        sheet = self.snapshot.project.sheets.get(self.name_of_sheet)
-        since = "" if led is None else led.since
-        owner = "" if sheet is None else sheet.owner
-        self.query_one("#title", Lines).show([takeover_page.title_line(self.name_of_sheet, owner, since, signs)])
-        self.ledger.show(self._waiting() if led is None else takeover_page.page(led.steps, self.columns, signs))
-        self._show_detail()
-        self.show_foot()
-
-    @staticmethod
-    def _waiting() -> Page:
-        return Page((Row("none", ((Span("working...", QUIET),),), stops=False),))
-
-    def _want(self) -> None:
-        """Have the steps worked out for this state, where they have not been asked for."""
-        results, snapshot, book = self.book.results, self.snapshot, self.book
-        fresh = results is not None and results.revision == snapshot.revision
-        result = results.sheet(self.name_of_sheet) if results is not None else None
-        if not fresh or result is None or self._asked == snapshot.revision:
-            return
-        self._asked = snapshot.revision
-        root, session, person = snapshot.project.root, book.session, self.person
+    def job(self) -> Callable[[], Any]:
+        """The steps; what is shown stays until there are results of the book as it stands."""
+        results, snapshot, session = self.book.results, self.snapshot, self.book.session
+        result = None if results is None else results.sheet(self.name_of_sheet)
+        if results is None or result is None or results.revision != snapshot.revision:
+            kept = self.found
+            return lambda: kept
+        root, person = snapshot.project.root, self.person
 
         def work() -> Led:
             if self._since is None:
                 self._since = taking_over.last_seen(root, person)
             found = taking_over.steps(root, session.evaluator(snapshot), result, today(), self._since)
-            return Led(found, self._since)
+            return Led(found, self._since, snapshot.revision)
 
-        self._work.want(snapshot.revision, work)
+        return work
 
-    def on_takeover_screen_ready(self, message: TakeoverScreen.Ready) -> None:
-        """Show them, unless they belong to another revision by now."""
-        stamped = message.stamped
-        if stamped.revision != self.snapshot.revision:
-            return
-        if stamped.value is None:
-            self.say(f"The list cannot be worked out: {stamped.error}", wrong=True)
-        self.led, self.stamp = stamped.value or self.led, stamped.revision
-        self.show_book()
+    def rows_found(self) -> Iterable[Row]:
+        """The steps, section by section."""
+        return () if self.led is None else takeover_page.page(self.led.steps, self.columns, self.book.signs).rows
+
+    def draw(self) -> None:
+        """Title, steps, and what is known of the one under the cursor."""
+        super().draw()
+        sheet = self.snapshot.project.sheets.get(self.name_of_sheet)
+        owner, since = "" if sheet is None else sheet.owner, "" if self.led is None else self.led.since
+        head = takeover_page.title_line(self.name_of_sheet, owner, since, self.book.signs)
+        self.query_one("#title", Lines).show([head])
+        self._show_detail()
 
     @property
     def present(self) -> Step | None:
@@ -134,7 +105,7 @@ class TakeoverScreen(DecidingPlace):
 
     def holds(self) -> set[str]:
         """What the step under the cursor may be answered with."""
-        held, step = super().holds() | {"sheet"}, self.present
+        held, step = super().holds() - {"row"}, self.present
         if step is None:
             return held
         held.add("row")
@@ -155,10 +126,6 @@ class TakeoverScreen(DecidingPlace):
         """Another step."""
         self._show_detail()
         self.show_foot()
-
-    def on_ledger_resized(self) -> None:
-        """Another width."""
-        self.show_book()
 
     # Commands
 
