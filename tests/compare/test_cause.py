@@ -148,8 +148,12 @@ def test_a_structure_that_cannot_be_mixed_says_so(tmp_path: Path) -> None:
     common = books.replaced(books.FOLLOWER, 'stage = "source-follower"', 'stage = "common-source"')
     common = books.replaced(common, 'input_level = { value = "1.1 V", source = "sensor" }\n', "")
     found = compare(state(tmp_path / "old"), state(tmp_path / "new", changed(CURRENT, text=common)))
-    for one in found.sheets[0].results:
-        if one.cause is not None and one.old is not None and one.new is not None:
-            total = math.fsum(part.part for part in one.cause.parts) + one.cause.remainder
-            assert total == pytest.approx(one.new - one.old, rel=1e-9)
-            assert one.cause.parts or one.cause.reason
+    moved = [one for one in found.sheets[0].results if one.cause is not None]
+    assert len(moved) > 5
+    for one in moved:
+        assert one.cause is not None
+        assert one.old is not None
+        assert one.new is not None
+        total = math.fsum(part.part for part in one.cause.parts) + one.cause.remainder
+        assert total == pytest.approx(one.new - one.old, rel=1e-9)
+        assert bool(one.cause.parts) != bool(one.cause.reason)

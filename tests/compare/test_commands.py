@@ -82,7 +82,7 @@ def test_history_says_what_plain_git_says(project: Path) -> None:
     body = subprocess.run(
         ["git", "-C", str(project), "log", "-1", "--format=%b"], capture_output=True, text=True, check=True
     ).stdout
-    assert "choose.width: 2e-05 -> 3e-05 m" in body
+    assert "choose.width: 20 µm -> 30 µm" in body
 
 
 def test_what_cannot_be_asked_is_bad_input(project: Path, tmp_path: Path) -> None:

@@ -28,7 +28,7 @@ def case(folder: Path) -> Case:
 
 def test_a_number_with_everything_about_it(tmp_path: Path) -> None:
     lines = list(algebra_text.explanation(explain(case(tmp_path), "bandwidth"), 80, use_unicode=False))
-    text = "\n".join(lines)
+    text = " ".join(" ".join(lines).split())
     assert lines[0].startswith("Bandwidth f_3dB = ")
     assert lines[0].endswith("Hz at typical 27 °C 1.8 V")
     for part in ("c_gs", "follows: main.gate_source_capacitance", "Behind it: ", "Holds: every device is saturated",

@@ -100,3 +100,28 @@ def test_windows_are_told_before_points_and_are_those_of_the_result(tmp_path: Pa
     solved = needed.solve(case, early=told.append)
     assert solved.needed
     assert told == [solved.needed]
+
+
+@pytest.mark.parametrize("key", ["dc_gain", "main.transconductance", "load_capacitance"])
+def test_the_algebra_of_one_number_is_told_on_request(key: str) -> None:
+    """Text and document say the value of the review, and where every number put in came from."""
+    path = str(SHEETS / "pressure_input.toml")
+    document = json.loads(run("solve", path, "--why", key, "--json").out)
+    text = run("solve", path, "--why", key).out
+    review = json.loads(run("review", str(SHEETS.parent), "--json").out)
+    sheet = next(one for one in review["sheets"] if one["sheet"] == "pressure_input")
+    known = {**{k: m["value"] for k, m in sheet["metrics"].items()}, "load_capacitance": 1.5e-12}
+    known["main.transconductance"] = sheet["operating_point"]["main"]["transconductance"]
+    assert document["value"] == pytest.approx(known[key], rel=1e-9)
+    assert max(map(len, text.splitlines())) <= 80
+    said = " ".join(text.split())
+    for given in document["given"]:
+        assert given["symbol"] in said
+        assert (given["from"] or given["key"]) in said
+    assert "pressure_input.toml:" in said or "quay_180.toml:" in said
+
+
+def test_a_number_that_there_is_none_of_has_a_suggestion() -> None:
+    done = run("solve", str(SHEETS / "pressure_input.toml"), "--why", "dcgain")
+    assert done.status == 2
+    assert "did you mean dc_gain?" in done.err

@@ -52,7 +52,8 @@ def test_what_differs_stands_sheet_by_sheet_and_opens_there(root: Path) -> None:
     async def steps(d: Drive) -> None:
         screen = await comparing(d)
         assert screen.ledger.go(f"input.{BLOCK}.choose.bias_current")
-        assert "2 µA" in shown(screen.ledger.row.lines[0]) if screen.ledger.row else False
+        assert screen.ledger.row is not None
+        assert "2 µA" in shown(screen.ledger.row.lines[0])
         assert any(row.startswith("bandwidth") for row in d.rows())
         await d.press("enter")
         assert isinstance(d.app.screen, SheetScreen)

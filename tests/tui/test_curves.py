@@ -12,9 +12,7 @@ from tests.support import run
 from tests.tui.driving import Drive, drive
 from worksheet.extract.data import Extraction
 from worksheet.extract.views import FITTED, MEASURED, VIEWS, families
-from worksheet.tui.pages.plot import Axis, Series, plot, ticks
 from worksheet.tui.screens.curves import CurvesScreen
-from worksheet.tui.signs import signs_for
 
 
 @pytest.fixture
@@ -146,16 +144,3 @@ def test_the_views_show_the_numbers_of_the_fit(root: Path, table: Path) -> None:
     kappa = result.estimates["kappa"].value
     assert kappa is not None
     assert weak.max() == pytest.approx(kappa / 0.02586, rel=0.05)  # kappa/U_T in weak inversion, Enz and Vittoz 2006
-
-
-def test_points_stand_where_the_axes_say() -> None:
-    x, y = np.array([1.0, 10.0, 100.0]), np.array([1e-9, 1e-6, 1e-3])
-    found = plot([Series("s", "o", "plain", x, y)], Axis("x", log=True), Axis("y", log=True), (50, 16), signs_for(True))
-    rows = ["".join(span.shown for span in line) for line in found]
-    marks = [(k, row.index("o")) for k, row in enumerate(rows[:13]) if "o" in row]
-    assert len(marks) == 3
-    assert marks[0][0] < marks[1][0] < marks[2][0]
-    assert marks[0][1] > marks[1][1] > marks[2][1]
-    assert rows[marks[0][0]].split("|")[0].strip() == "1m"
-    assert all(row.isascii() for row in rows)
-    assert [label for _, label in ticks((0.0, 1.0), Axis("V"), 5)] == ["0", "200m", "400m", "600m", "800m", "1"]

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import tomllib
+from dataclasses import replace
 from pathlib import Path
 from typing import Any
 
@@ -122,6 +123,21 @@ def test_the_proposal_is_taken_over_on_the_grid(root: Path) -> None:
         assert "2 met" in d.text("#title")
 
     drive(root, steps)
+
+
+def test_a_proposal_for_another_state_is_not_taken_over(root: Path) -> None:
+    async def steps(d: Drive) -> None:
+        await d.sheet("clock_driver", "choose.bias_current")
+        app = d.app
+        await d.until(lambda: app.needed is not None and app.needed.name == "clock_driver")
+        assert app.needed is not None
+        app.needed = replace(app.needed, revision=app.needed.revision - 1)  # as after a step, until it is found anew
+        await d.press("p")
+        assert "still being worked out" in d.text("#said")
+
+    before = _data(root, "clock_driver")
+    drive(root, steps)
+    assert _data(root, "clock_driver") == before
 
 
 @pytest.mark.full

@@ -148,18 +148,6 @@ def _reference_length(rows: Rows, reference: Reference) -> Estimate:
     return Estimate(reference.length, None, "m")
 
 
-def value_or(found: dict[str, Estimate], name: str, default: float) -> float:
-    """An estimate's value, or a default where there is none. [unit of the estimate]
-
-    Args:
-        found: Estimates by name.
-        name: Which one.
-        default: For one that is None. [unit of the estimate]
-    """
-    value = found[name].value
-    return default if value is None else value
-
-
 def place(name: str) -> int:
     """Where an estimate stands in the law's arrays."""
     return AT[_FITTED_AS.get(name, name)]

@@ -179,11 +179,6 @@ def forward_inversion(values: Array, rows: Rows, reference: Reference) -> Array:
     return _ends(values, rows, reference)[0]
 
 
-def reverse_inversion(values: Array, rows: Rows, reference: Reference) -> Array:
-    """i(q_d), the inversion at the drain end, 0 in saturation. [-], shape (rows,); see forward_inversion."""
-    return _ends(values, rows, reference)[1]
-
-
 def _ends(values: Array, rows: Rows, reference: Reference) -> tuple[Array, Array]:
     """i(q_s) and i(q_d)."""
     _, length = sizes(rows)

@@ -38,22 +38,28 @@ class Family:
 
 
 @dataclass(frozen=True, slots=True)
+class Axis:
+    """What runs along an axis, its SI unit, and whether over the logarithm."""
+
+    title: str
+    unit: str
+    logarithmic: bool = False
+
+
+@dataclass(frozen=True, slots=True)
 class View:
     """One way to look at an extraction.
 
     Attributes:
         key, title: Its name.
-        x, y: What the axes are, with units.
-        x_log, y_log: Whether they are logarithmic.
+        x, y: The axes.
         points: The points of a family.
     """
 
     key: str
     title: str
-    x: str
-    y: str
-    x_log: bool
-    y_log: bool
+    x: Axis
+    y: Axis
     points: Callable[[Extraction, Family], tuple[Points, ...]]
 
 
@@ -160,11 +166,13 @@ def _efficiency(result: Extraction, family: Family) -> tuple[Points, ...]:
     return tuple(found)
 
 
+_GATE, _ACROSS = Axis("V_G", "V"), Axis("V_DS", "V")
+_CURRENT, _INVERSION = Axis("I_D", "A"), Axis("IC", "", logarithmic=True)
 VIEWS = (
-    View("transfer_log", "Current over gate voltage", "V_G [V]", "I_D [A]", False, True, _transfer),
-    View("transfer", "Current over gate voltage", "V_G [V]", "I_D [A]", False, False, _transfer),
-    View("output", "Current over drain voltage", "V_DS [V]", "I_D [A]", False, False, _output),
-    View("residuals", "Residuals over inversion", "IC", "ln(I/I_fit) [%]", True, False, _residuals),
-    View("efficiency", "Transconductance efficiency over inversion", "IC", "g_m/I [1/V]", True, False, _efficiency),
+    View("transfer_log", "Current over gate voltage", _GATE, Axis("I_D", "A", logarithmic=True), _transfer),
+    View("transfer", "Current over gate voltage", _GATE, _CURRENT, _transfer),
+    View("output", "Current over drain voltage", _ACROSS, _CURRENT, _output),
+    View("residuals", "Residuals over inversion", _INVERSION, Axis("ln(I/I_fit) in per cent", ""), _residuals),
+    View("efficiency", "Transconductance efficiency over inversion", _INVERSION, Axis("g_m/I", "1/V"), _efficiency),
 )
 """Every way to look at an extraction."""

@@ -149,11 +149,6 @@ class Case:
             if n not in self.sheet.assume and (n not in self.sheet.choose or self.sheet.choose[n].propose)
         )
 
-    @property
-    def unfilled(self) -> tuple[str, ...]:
-        """Design variables that have no number yet."""
-        return tuple(n for n in self.open_keys if n not in self.filled and n not in self.moves)
-
     @cached_property
     def _known(self) -> dict[str, Number]:
         return {}

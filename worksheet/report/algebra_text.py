@@ -3,10 +3,11 @@
 from __future__ import annotations
 
 from collections.abc import Iterator
+from typing import Any
 
 from worksheet.model.sheet_keys import DESIGN
-from worksheet.report import wording
-from worksheet.report.table import Column, Table, lines, wrapped
+from worksheet.report import plain, wording
+from worksheet.report.table import can_show, width_of, wrapped
 from worksheet.solver import stage_algebra
 from worksheet.solver.algebra_print import wrap
 from worksheet.solver.explanation import Explanation, Given
@@ -17,16 +18,20 @@ from worksheet.solver.stated import Origin
 from worksheet.stages.stage import Stage
 
 _INDENT = "  "
+DRAWN = "─√⋅π₀"
+"""Some of the signs that algebra is drawn with; where they can be shown, so can the others."""
 
 
-def explanation(found: Explanation, width: int, use_unicode: bool = True) -> Iterator[str]:
+def explanation(found: Explanation, width: int, use_unicode: bool | None = None) -> Iterator[str]:
     """Everything about one number.
 
     Args:
         found: Its algebra.
         width: Columns of the terminal.
-        use_unicode: Whether Greek letters and drawn fractions may be used.
+        use_unicode: Whether Greek letters and drawn fractions may be used; None for what can be shown where it is
+            written.
     """
+    use_unicode = can_show(DRAWN) if use_unicode is None else use_unicode
     value = wording.number(found.value, found.unit, found.reason)
     yield from wrapped(f"{found.title} {found.symbol} = {value} at {wording.condition(found.at)}", width)
     if found.origin is not None:
@@ -37,7 +42,7 @@ def explanation(found: Explanation, width: int, use_unicode: bool = True) -> Ite
     yield from (f"{_INDENT}{line}" for line in printed)
     if found.given:
         yield ""
-        yield from lines(_given(found.given), width, _INDENT)
+        yield from _given(found.given, width)
     if found.relation:
         yield ""
         yield from wrapped(f"Behind it: {found.relation}", width)
@@ -46,15 +51,42 @@ def explanation(found: Explanation, width: int, use_unicode: bool = True) -> Ite
     yield from _neglects(found, width)
 
 
-def _given(given: tuple[Given, ...]) -> Table:
-    columns = (
-        Column("symbol"),
-        Column("value", right=True),
-        Column("what", flexible=True),
-        Column("from", flexible=True),
-    )
-    rows = tuple((g.symbol, wording.number(g.value, g.unit), g.title, _from(g)) for g in given)
-    return Table(columns, rows)
+def document(found: Explanation) -> dict[str, Any]:
+    """Everything about one number as JSON-ready data, SI units."""
+    return {
+        "schema": plain.SCHEMA,
+        "key": found.key,
+        "symbol": found.symbol,
+        "value": found.value,
+        "unit": found.unit,
+        "reason": found.reason,
+        "at": plain.condition(found.at),
+        "text": found.text(80, use_unicode=False),
+        "latex": list(found.latex()),
+        "mathml": list(found.mathml()),
+        "given": [
+            {"symbol": g.symbol, "key": g.key, "value": g.value, "unit": g.unit, "from": _origin(g.origin)}
+            for g in found.given
+        ],
+        "from": _origin(found.origin),
+        "relation": found.relation,
+        "in_range": found.in_range,
+        "remarks": list(found.remarks),
+        "neglects": [{"name": e.name, "share": e.share} for e in found.neglects],
+        "problems": [],
+    }
+
+
+def _origin(found: Origin | None) -> str | None:
+    return None if found is None else origin(found)
+
+
+def _given(given: tuple[Given, ...], width: int) -> Iterator[str]:
+    """A number put in with where it came from, in full: on a line of its own where both fit, else on several."""
+    room = max((width_of(g.symbol) for g in given), default=0)
+    for g in given:
+        name = f"{g.symbol:{room}} = {wording.number(g.value, g.unit)}"
+        yield from wrapped(f"{name}, {g.title}, {_from(g)}", width, _INDENT)
 
 
 def _from(given: Given) -> str:

@@ -7,7 +7,6 @@ from typing import Any
 from worksheet.model import metrics
 from worksheet.report.plain import SCHEMA
 from worksheet.solver.stage_algebra import STATED_FOR, metric_formula
-from worksheet.stages.circuit import Circuit
 from worksheet.stages.stage import IN, LINE, OUT, Stage, Transistor
 
 Plain = dict[str, Any]
@@ -93,11 +92,6 @@ def formula(found: Stage, key: str) -> Plain:
             for i in algebra.inverted
         ],
     }
-
-
-def nodes_of(found: Stage) -> tuple[str, ...]:
-    """Nodes whose voltages the small-signal solution gives."""
-    return Circuit(found).unknown
 
 
 def line_of(device: Transistor) -> str:

@@ -10,8 +10,6 @@ from worksheet.report.table import Column, Table, can_show, lines, wrapped
 from worksheet.stages.stage import Stage
 
 _INDENT = "  "
-_DRAWN = "─√⋅π₀"
-"""Some of the signs that algebra is drawn with; where they can be shown, so can the others."""
 
 
 def listed(stages: tuple[Stage, ...], width: int) -> Iterator[str]:
@@ -58,4 +56,4 @@ def one(stage: Stage, width: int) -> Iterator[str]:
             yield from wrapped(f"not here: {absent}", width, _INDENT)
     yield ""
     yield "Its formulas"
-    yield from algebra_text.stage(stage, width, use_unicode=can_show(_DRAWN))
+    yield from algebra_text.stage(stage, width, use_unicode=can_show(algebra_text.DRAWN))

@@ -23,9 +23,9 @@ from worksheet.review.review import solve as solve_points
 from worksheet.review.sweep import DEFAULT_POINTS, Sweep, grid, sweep, wanted
 from worksheet.review.swept import Axis
 from worksheet.review.variants import SideBySide, side_by_side
+from worksheet.session import needs
 from worksheet.session.edits import ChangeSheet, Put, TakeOut
-from worksheet.session.needs import problems_of, shown_input
-from worksheet.session.workbook import Workbook, project_of_sheet
+from worksheet.session.needs import shown_input
 from worksheet.solver import needed
 from worksheet.solver.results import Point
 from worksheet.solver.snap import snapped
@@ -69,15 +69,8 @@ def opened(path: Path) -> tuple[Evaluator, str] | list[Problem]:
     Args:
         path: PROJECT/sheets/NAME.toml.
     """
-    place = project_of_sheet(path)
-    if isinstance(place, Problem):
-        return [place]
-    root, name = place
-    workbook = Workbook.read(root)
-    problems = problems_of(workbook, name)
-    if problems or workbook.evaluator is None:
-        return problems
-    return workbook.evaluator, name
+    found = needs.opened(path)
+    return found if isinstance(found, list) else found[1:]
 
 
 def solved(evaluator: Evaluator, name: str) -> Case | list[Problem]:

@@ -33,9 +33,11 @@ def merge(base: Path, ours: Path, theirs: Path, name: str) -> Merged | Problem:
     for path in (base, ours, theirs):
         try:
             with path.open("rb") as file:
-                versions.append(file.read(_LARGEST))
+                versions.append(file.read(_LARGEST + 1))
         except (OSError, ValueError) as error:
             return Problem(str(path), None, "", f"cannot be read: {getattr(error, 'strerror', None) or error}")
+    if any(len(version) > _LARGEST for version in versions):
+        return Problem(name, None, "", f"has more than {_LARGEST // 1_000_000} MB and is left as it is")
     done = merge_bytes(versions[0], versions[1], versions[2], name)
     try:
         ours.write_bytes(done.content)

@@ -56,18 +56,11 @@ class Needs:
             target: Only bounds of this target.
             unknown: Only the window of this design variable, inversion coefficient, assumption or own name.
         """
-        place = project_of_sheet(path)
-        if isinstance(place, Problem):
-            return [place]
-        root, name = place
-        workbook = Workbook.read(root)
-        problems = problems_of(workbook, name)
-        if problems or workbook.evaluator is None:
-            return problems
-        points, found = solve_points(workbook.evaluator, name)
-        if points is None:
+        found = opened(path)
+        if isinstance(found, list):
             return found
-        return cls._narrowed(root, points.case, over, target, unknown)
+        root, evaluator, name = found
+        return cls._solved(root, evaluator, name, over, target, unknown)
 
     @classmethod
     def at(
@@ -82,8 +75,21 @@ class Needs:
 
         `early` is told the windows as soon as they are found, before the proposal is.
         """
+        return cls._solved(root, evaluator, name, None, None, unknown, early)
+
+    @classmethod
+    def _solved(
+        cls,
+        root: Path,
+        evaluator: Evaluator,
+        name: str,
+        over: str | None,
+        target: str | None,
+        unknown: str | None,
+        early: Callable[[Mapping[str, Window]], None] | None = None,
+    ) -> Needs | list[Problem]:
         points, found = solve_points(evaluator, name)
-        return found if points is None else cls._narrowed(root, points.case, None, None, unknown, early)
+        return found if points is None else cls._narrowed(root, points.case, over, target, unknown, early)
 
     @classmethod
     def _narrowed(
@@ -178,6 +184,23 @@ class Needs:
         effects = {e.name: e.share for e in found.effects if e.name in found.neglects}
         hand = {"formula": found.formula, "value": found.value, "neglects": list(found.neglects), "effects": effects}
         return {"method": "numeric", "formula": None, "hand": hand, **beside}
+
+
+def opened(path: Path) -> tuple[Path, Evaluator, str] | list[Problem]:
+    """The project folder, the evaluator and the name of a sheet, or everything that stands in its way.
+
+    Args:
+        path: PROJECT/sheets/NAME.toml.
+    """
+    place = project_of_sheet(path)
+    if isinstance(place, Problem):
+        return [place]
+    root, name = place
+    workbook = Workbook.read(root)
+    problems = problems_of(workbook, name)
+    if problems or workbook.evaluator is None:
+        return problems
+    return root, workbook.evaluator, name
 
 
 def shown_input(key: Key, value: float) -> str:

@@ -61,11 +61,6 @@ class Subject(Protocol):
         ...
 
     @property
-    def unfilled(self) -> tuple[str, ...]:
-        """Design variables without a number."""
-        ...
-
-    @property
     def filled(self) -> Mapping[str, float]:
         """Numbers given to open design variables."""
         ...

@@ -7,7 +7,7 @@ the same while its numbers change, so that the cursor stays on what the user loo
 from __future__ import annotations
 
 from collections.abc import Sequence
-from dataclasses import dataclass, field, replace
+from dataclasses import dataclass, field
 from typing import TYPE_CHECKING
 
 from worksheet.report.table import cut, width_of
@@ -119,8 +119,3 @@ def heading(key: str, title: str, columns: int, across: str, note: str = "") -> 
     fill = max(columns - width_of(title) - 2 - width_of(tail), 1)
     spans = (Span(f"{title} ", HEAD), Span(across * fill, RULE), Span(tail, QUIET))
     return Row(key, (spans,), stops=False)
-
-
-def as_role(span: Span, role: str) -> Span:
-    """The same span as something else."""
-    return replace(span, role=role)

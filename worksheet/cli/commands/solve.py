@@ -27,6 +27,9 @@ def add(subparsers: Any) -> None:
     parser.add_argument(
         "--take", action="store_true", help="write the recommended point into the sheet, on the layout grid"
     )
+    parser.add_argument(
+        "--why", metavar="NUMBER", help="only the algebra of one number: a metric, a figure, DEVICE.VALUE, an input"
+    )
     parser.add_argument("--json", action="store_true", help="one JSON document on standard output")
     parser.set_defaults(command=run)
 
@@ -36,6 +39,8 @@ def run(args: argparse.Namespace, output: Output) -> int:
     from worksheet.report import plain
     from worksheet.session.needs import Needs
 
+    if args.why:
+        return _why(args, output)
     found = Needs.of(Path(args.sheet), args.over, args.target, args.unknown)
     problems = found if isinstance(found, list) else found.take() if args.take else []
     if problems:
@@ -56,3 +61,21 @@ def _show(found: Needs, output: Output) -> int:
         text = solve_text.text(found.solved, found.title, found.keys, found.hand, output.width, found.asked)
         output.lines(text)
     return Status.FINE if found.solved.feasible else Status.NOT_MET
+
+
+def _why(args: argparse.Namespace, output: Output) -> int:
+    """The algebra of one number at the nominal condition. 0; 2 where the sheet has no such number."""
+    from worksheet.report import algebra_text, plain
+    from worksheet.session.explaining import explained
+
+    found = explained(Path(args.sheet), args.why)
+    if isinstance(found, list):
+        tell(found)
+        if output.as_json:
+            output.document(plain.only_problems(found, sheet=Path(args.sheet).stem))
+        return Status.BAD_INPUT
+    if output.as_json:
+        output.document(algebra_text.document(found))
+    else:
+        output.lines(algebra_text.explanation(found, output.width))
+    return Status.FINE

@@ -3,21 +3,22 @@
 from __future__ import annotations
 
 import math
+from collections.abc import Callable
 
 from worksheet.extract.data import Extraction
-from worksheet.extract.views import FITTED, LEFT_OUT, MEASURED, Family, View
+from worksheet.extract.views import FITTED, LEFT_OUT, MEASURED, Axis, Family, View
 from worksheet.model import dimension as dim
 from worksheet.model.quantity import format_quantity
-from worksheet.report import extraction_text
+from worksheet.report import extraction_text, wording
+from worksheet.report.chart import Marks, chart, scale_of
 from worksheet.tui import rows
-from worksheet.tui.pages.plot import Axis, Series, plot
-from worksheet.tui.rows import HEAD, LABEL, PLAIN, QUIET, VALUE, Line, Page, Row, Span, line
+from worksheet.tui.rows import HEAD, PLAIN, QUIET, Line, Page, Row, Span, line
 from worksheet.tui.signs import Signs
 
 SUMMARY = "summary"
 """The first view: parameters, errors, rows left out, hand values, warnings."""
 
-_MARKS = {MEASURED: ("o", VALUE), FITTED: ("+", LABEL), LEFT_OUT: (".", QUIET)}
+_SIGNS = {MEASURED: "o", FITTED: "+", LEFT_OUT: "."}
 
 
 def summary(result: Extraction, columns: int, signs: Signs) -> Page:
@@ -30,9 +31,28 @@ def summary(result: Extraction, columns: int, signs: Signs) -> Page:
 
 
 def view_lines(result: Extraction, view: View, family: Family, size: tuple[int, int], signs: Signs) -> list[Line]:
-    """One view of one family of curves."""
-    series = [Series(one.kind, *_MARKS[one.kind], one.x, one.y) for one in view.points(result, family)]
-    return plot(series, Axis(view.x, view.x_log), Axis(view.y, view.y_log), size, signs)
+    """One view of one family of curves, with a key below it, in `size` columns and lines."""
+    found = [one for one in view.points(result, family) if len(one.x)]
+    seen = [(x, y) for one in found for x, y in zip(one.x.tolist(), one.y.tolist(), strict=True) if _shown(view, x, y)]
+    if not seen:
+        return [line(Span("There is no point to show.", QUIET))]
+    axes = [scale_of([one[k] for one in seen], logarithmic=axis.logarithmic) for k, axis in enumerate((view.x, view.y))]
+    marks = [Marks(_SIGNS[one.kind], one.kind, one.x.tolist(), one.y.tolist()) for one in found]
+    drawn = chart(marks, axes[0], axes[1], (_words(view.x), _words(view.y)), (size[0], size[1] - 1))
+    key = "  ".join(f"{mark.sign} {mark.title}" for mark in marks)
+    return [
+        *((Span(signs.text(text), PLAIN),) for text in drawn),
+        line(Span(signs.text(f"{view.y.title} over {view.x.title}"), HEAD), Span(key, PLAIN), gap=2),
+    ]
+
+
+def _shown(view: View, x: float, y: float) -> bool:
+    """Whether a point exists on both axes."""
+    return not (view.x.logarithmic and x <= 0) and not (view.y.logarithmic and y <= 0)
+
+
+def _words(axis: Axis) -> Callable[[float], str]:
+    return lambda value: wording.number(value, axis.unit, digits=2)
 
 
 def family_text(family: Family) -> str:

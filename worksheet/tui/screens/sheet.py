@@ -184,6 +184,9 @@ class SheetScreen(Place):
     def action_take(self) -> None:
         """Write the recommended point into the choices."""
         needed = self.book.needed
+        if needed is not None and needed.revision != self.snapshot.revision:
+            self.say("The proposal is still being worked out; a moment.", wrong=True)
+            return
         keys = {key.name: key for key in parts.design(self.facts())}
         values = {} if needed is None else {n: v for n, v in needed.proposal.items() if n in keys}
         pieces = tuple(Put(("choose", name), shown_input(keys[name], value)) for name, value in values.items())
