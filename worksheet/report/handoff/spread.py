@@ -4,19 +4,12 @@ from __future__ import annotations
 
 import csv
 import io
-import re
 from collections.abc import Iterator
 
-from worksheet.model.text import clean
+from worksheet.report.csv_rows import harmless
 from worksheet.report.handoff.tree import Cell, Heading, Page, Table
 
 COLUMNS = ("block", "section", "table", "row", "quantity", "value", "unit", "text")
-
-_ACTS = ("=", "+", "-", "@", "\t", "\r")
-"""What makes a spreadsheet take a text for a formula."""
-
-_PLAIN = re.compile(r"[+-][\d.]+[\w %/°]*")
-"""A signed number with its unit, which is none."""
 
 
 def write(page: Page) -> str:
@@ -51,9 +44,3 @@ def _entries(title: str, cell: Cell) -> Iterator[tuple[str, str, str, str]]:
         yield f"{title} {number.name}".strip(), repr(number.value), number.unit, cell.text
     if not cell.numbers and cell.text not in ("", "-"):
         yield title, "", "", cell.text
-
-
-def harmless(text: str) -> str:
-    """Text that no spreadsheet takes for a formula."""
-    text = clean(text)
-    return f"'{text}" if text.startswith(_ACTS) and not _PLAIN.fullmatch(text) else text
