@@ -1,4 +1,4 @@
-"""CSV as scripts and spreadsheets read it: numbers to the last bit, nothing for what is not there, nothing that acts."""
+"""CSV as scripts and spreadsheets read it: numbers to the last bit, nothing for what is absent, nothing that acts."""
 
 from __future__ import annotations
 
