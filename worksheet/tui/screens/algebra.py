@@ -77,7 +77,7 @@ class AlgebraScreen(Place):
 
     def show_book(self) -> None:
         """The number, from the book as it stands."""
-        if not self.is_mounted:
+        if not self.stands:
             return
         book, snapshot, name = self.book, self.snapshot, self.name_of_sheet
         result = None if book.results is None else book.results.sheet(name)

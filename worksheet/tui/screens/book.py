@@ -42,7 +42,7 @@ class BookScreen(Place):
 
     def show_book(self) -> None:
         """Everything anew; only what changed is drawn."""
-        if not self.is_mounted:
+        if not self.stands:
             return
         signs, snapshot, results = self.book.signs, self.snapshot, self.book.results
         review = None if results is None else results.review

@@ -21,7 +21,7 @@ class ChainScreen(Place):
 
     def show_book(self) -> None:
         """The chains of the book as it stands."""
-        if not self.is_mounted:
+        if not self.stands:
             return
         results = self.book.results
         chains = () if results is None else results.review.chains

@@ -121,7 +121,7 @@ class CurvesScreen(Place):
 
     def show_book(self) -> None:
         """The view that was chosen."""
-        if not self.is_mounted:
+        if not self.stands:
             return
         from worksheet.extract.views import VIEWS, families
 

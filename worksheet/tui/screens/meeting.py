@@ -67,7 +67,7 @@ class MeetingScreen(DecidingPlace):
 
     def show_book(self) -> None:
         """Everything anew; only what changed is drawn."""
-        if not self.is_mounted:
+        if not self.stands:
             return
         every, signs = self.items, self.book.signs
         shown = [item for item in every if self._only in (None, item.why)]

@@ -50,6 +50,11 @@ class Place(Screen[None]):
         """The book as it stands."""
         return self.book.snapshot
 
+    @property
+    def stands(self) -> bool:
+        """Whether all parts are there to be drawn on: not before they are composed, nor while the program ends."""
+        return self.is_mounted and self.app.is_running and bool(self.query("#foot"))
+
     def compose(self) -> ComposeResult:
         """Title, page, what was said, the foot."""
         yield Lines(id="title")
@@ -67,7 +72,7 @@ class Place(Screen[None]):
 
     def on_screen_resume(self) -> None:
         """What changed while another screen was in front; at the end of the program parts of this one are gone."""
-        if self.app.is_running:
+        if self.stands:
             self.show_book()
 
     def show_book(self) -> None:

@@ -74,7 +74,7 @@ class SheetScreen(Place):
 
     def show_book(self) -> None:
         """Everything anew; only what changed is drawn."""
-        if not self.is_mounted:
+        if not self.stands:
             return
         facts = self.facts()
         side = self.query_one("#side", Lines)

@@ -73,7 +73,7 @@ class View(Place):
 
     def show_book(self) -> None:
         """The book as it stands."""
-        if not self.is_mounted:
+        if not self.stands:
             return
         asked = (self.snapshot.revision, *self.asked())
         if asked != self._asked:

@@ -84,7 +84,7 @@ class MapScreen(Place):
 
     def show_book(self) -> None:
         """The map of the book as it stands."""
-        if not self.is_mounted:
+        if not self.stands:
             return
         self._want()
         self._draw()
