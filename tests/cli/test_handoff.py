@@ -81,6 +81,7 @@ def test_a_file_that_somebody_changed_stays_and_nothing_else_is_written(book: Pa
     assert {path.name: path.read_bytes() for path in into.iterdir()} == before
 
 
+@pytest.mark.full
 def test_a_hand_off_that_was_cut_off_can_be_made_again(
     book: Path, tmp_path: Path, monkeypatch: pytest.MonkeyPatch
 ) -> None:

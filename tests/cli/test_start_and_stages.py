@@ -101,7 +101,7 @@ def test_stages_as_data_are_the_catalogue() -> None:
     assert "supply_rejection" not in {m["metric"] for m in by_key["drain-follower"]["metrics"]}
 
 
-@pytest.mark.parametrize("stage", ["common-source", "cascode"])
+@pytest.mark.parametrize("stage", [pytest.param("common-source", marks=pytest.mark.full), "cascode"])
 def test_a_stage_comes_with_its_formulas(stage: str) -> None:
     """Every metric in text, LaTeX and MathML, and what it asks of the design variables."""
     (one,) = json.loads(run("stages", stage, "--json").out)["stages"]

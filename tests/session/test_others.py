@@ -93,6 +93,7 @@ def _colleague(path: Path, stop: Path) -> Iterator[None]:
         path.with_name("..colleague").unlink(missing_ok=True)
 
 
+@pytest.mark.full
 def test_another_process_rewriting_the_sheet_ten_times_a_second(tmp_path: Path) -> None:
     session = opened(tmp_path)
     path = session.root / BUCKET

@@ -103,7 +103,8 @@ def test_windows_are_told_before_points_and_are_those_of_the_result(tmp_path: Pa
 
 
 @pytest.mark.parametrize(
-    "key", ["dc_gain", *(pytest.param(one, marks=pytest.mark.full) for one in ("main.transconductance", "load_capacitance"))]
+    "key",
+    ["dc_gain", *(pytest.param(one, marks=pytest.mark.full) for one in ("main.transconductance", "load_capacitance"))],
 )
 def test_the_algebra_of_one_number_is_told_on_request(key: str) -> None:
     """Text and document say the value of the review, and where every number put in came from."""

@@ -131,6 +131,7 @@ def test_a_second_variant_stands_beside_the_first(root: Path) -> None:
     drive(root, steps)
 
 
+@pytest.mark.full
 def test_a_sweep_shows_what_the_command_says(root: Path) -> None:
     async def steps(d: Drive) -> None:
         await d.sheet("bucket_buffer", "choose.width")

@@ -87,6 +87,7 @@ def test_a_value_a_sheet_or_the_project_is_taken_back_and_undone(root: Path, rec
     drive(root, steps)
 
 
+@pytest.mark.full
 def test_a_value_and_a_metric_are_followed_over_the_revisions(root: Path) -> None:
     async def steps(d: Drive) -> None:
         screen = await comparing(d)

@@ -108,6 +108,7 @@ def test_a_remark_is_settled_and_leaves_the_agenda(root: Path) -> None:
     assert "settled" not in stated(root, "sun_gate")["remark"][0]
 
 
+@pytest.mark.full
 def test_one_kind_is_shown_alone_and_a_sheet_opens_at_its_target(root: Path) -> None:
     async def steps(d: Drive) -> None:
         await meeting(d)

@@ -48,6 +48,7 @@ def test_a_collision_is_shown_with_all_sides_and_settled_for_one(root: Path) -> 
     assert "collision" not in stated(root)
 
 
+@pytest.mark.full
 def test_a_file_with_conflict_markers_is_opened_with_both_sides_and_one_is_taken(root: Path) -> None:
     ours = path(root).read_text("utf-8")
     theirs = ours.replace('bias_current = "2 uA"', 'bias_current = "5 uA"')

@@ -77,6 +77,7 @@ def test_enter_opens_the_block_and_escape_comes_back(root: Path) -> None:
     drive(root, steps)
 
 
+@pytest.mark.full
 def test_a_new_sheet_is_asked_for_until_it_can_be_made(root: Path) -> None:
     async def steps(d: Drive) -> None:
         await d.settled()

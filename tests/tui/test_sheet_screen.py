@@ -263,6 +263,7 @@ def test_two_people_at_one_value_are_asked(root: Path) -> None:
     drive(root, steps)
 
 
+@pytest.mark.full
 def test_typed_text_survives_the_end_and_is_offered_again(root: Path) -> None:
     async def steps(d: Drive) -> None:
         await d.sheet(NAME, "choose.width")

@@ -67,6 +67,7 @@ def test_one_is_led_through_what_is_asked_new_stale_and_weak(root: Path) -> None
     drive(root, steps)
 
 
+@pytest.mark.full
 def test_a_checked_value_shows_in_the_next_comparison(root: Path) -> None:
     assert not isinstance(revisions.record(root, "Mine", TODAY), Problem)
 
