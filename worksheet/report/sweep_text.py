@@ -16,7 +16,7 @@ from worksheet.solver.goals import limits
 
 HEIGHT = 14
 _DIGITS = 3
-NOMINAL, WORST, LOW = "*", "o", "o"
+NOMINAL, WORST = "*", "o"
 
 
 def text(found: Sweep, title: str, width: int, height: int = HEIGHT) -> Iterator[str]:

@@ -13,8 +13,6 @@ from worksheet.session.edits import KeyPath, Piece, Put, RefusedError, TakeBack,
 from worksheet.session.reading import data_of
 from worksheet.session.snapshot import Snapshot
 
-_LISTS = tuple(key.name for key in CONDITION.keys)
-
 
 @dataclass(frozen=True, slots=True)
 class Entry:

@@ -207,7 +207,6 @@ class Optimum:
     recommended: Point | None
     compact: Point | None
     reason: str | None
-    best_effort: Mapping[str, float]
     free: Free
 
 
@@ -230,14 +229,14 @@ def optimum(subject: Subject, trials: Trials) -> Optimum:
 def _optimum(subject: Subject, trials: Trials) -> Optimum:
     free = Free(subject, variables(subject), freedoms(subject))
     if not free.names:
-        return Optimum(None, None, NOTHING_FREE, {}, free)
+        return Optimum(None, None, NOTHING_FREE, free)
     search = Search(trials, free.space())
     found = search.least()
     place = free.place(found)
     if not found.feasible:
-        return Optimum(None, None, "no point meets every target", place, free)
+        return Optimum(None, None, "no point meets every target", free)
     if "bias_current" in free.names and not _bounded_below(free, trials, found):
-        return Optimum(None, None, NO_BOUND, place, free)
+        return Optimum(None, None, NO_BOUND, free)
     if free.by_inversion:
         tied = _compact(free, search, found, 1e-6)
         place = tied if tied is not None else place
@@ -245,7 +244,7 @@ def _optimum(subject: Subject, trials: Trials) -> Optimum:
     else:
         smallest = None
     recommended = point(subject, place)
-    return Optimum(recommended, point(subject, smallest) if smallest is not None else recommended, None, place, free)
+    return Optimum(recommended, point(subject, smallest) if smallest is not None else recommended, None, free)
 
 
 def _compact(free: Free, search: Search, least: Found, allowance: float) -> dict[str, float] | None:

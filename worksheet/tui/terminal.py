@@ -11,9 +11,6 @@ from collections.abc import Mapping
 from dataclasses import dataclass
 from pathlib import Path
 
-NEEDED_COLUMNS, NEEDED_LINES = 60, 15
-"""The least size in which every screen can be used."""
-
 _CANNOT = {"", "dumb", "unknown"}
 _HEADLESS = "`biasbook review` prints the same results without one"
 

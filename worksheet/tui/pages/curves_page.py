@@ -15,9 +15,6 @@ from worksheet.tui import rows
 from worksheet.tui.rows import HEAD, PLAIN, QUIET, Line, Page, Row, Span, line
 from worksheet.tui.signs import Signs
 
-SUMMARY = "summary"
-"""The first view: parameters, errors, rows left out, hand values, warnings."""
-
 _SIGNS = {MEASURED: "o", FITTED: "+", LEFT_OUT: "."}
 
 

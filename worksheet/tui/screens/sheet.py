@@ -3,7 +3,6 @@
 from __future__ import annotations
 
 from collections.abc import Iterable
-from typing import ClassVar
 
 from textual.containers import Horizontal
 from textual.widget import Widget
@@ -33,7 +32,6 @@ class SheetScreen(Place):
 
     PLACE = commands.SHEET
     BINDINGS = bindings(commands.SHEET)
-    SHOWN: ClassVar[bool] = True
 
     def __init__(self, name: str, row: str = "") -> None:
         """Take the sheet's name, and the row that the cursor begins on."""
