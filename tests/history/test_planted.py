@@ -188,17 +188,20 @@ def test_what_is_never_used(tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> 
     asked: list[str] = []
     original = repository._run
 
-    def listen(program: str, folder: Path, arguments: tuple[str, ...], *rest: object, **others: object) -> bytes:
+    def listen(folder: Path, arguments: tuple[str, ...], *rest: object, **others: object) -> bytes:
         asked.append(next(one for one in arguments if not one.startswith("-") and "=" not in one))
-        return original(program, folder, arguments, *rest, **others)  # type: ignore[arg-type]
+        return original(folder, arguments, *rest, **others)  # type: ignore[arg-type]
 
     monkeypatch.setattr(repository, "_run", listen)
     project = make_project(make_repository(tmp_path / "chip") / "p")
     everything(project)
     assert isinstance(try_to_save(project, "x"), record.Unchanged)
     alone = make_project(tmp_path / "alone")
-    assert isinstance(repository.create(alone), repository.Repository)
+    made = repository.create(alone)
+    assert isinstance(made, repository.Repository)
+    save(alone, "begin")
+    assert isinstance(revisions.history(made), tuple)
     assert set(asked) == {
         "rev-parse", "config", "init", "cat-file", "ls-tree", "ls-files", "check-attr", "check-ignore", "var",
-        "hash-object", "read-tree", "update-index", "write-tree", "commit-tree", "update-ref", "log",
+        "hash-object", "read-tree", "update-index", "write-tree", "commit-tree", "update-ref", "log", "rev-list",
     }  # fmt: skip

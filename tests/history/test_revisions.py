@@ -58,6 +58,28 @@ def test_history_agrees_with_git(tmp_path: Path, monkeypatch: pytest.MonkeyPatch
     assert listed(project, "sheets/none.toml") == ()
 
 
+def test_a_project_at_the_top_of_a_history_without_merges(tmp_path: Path) -> None:
+    """All of it is asked for then, and what is foreign is left out here; a merge brings git's own choice back."""
+    project = make_project(make_repository(tmp_path / "p"))
+    save(project, "begin")
+    (project / ("a" * 40)).write_text("named like a revision\n", "utf-8")
+    git(project, "add", "a" * 40)
+    git(project, "commit", "-q", "--allow-empty-message", "-m", "")
+    change(project, "buffer", 5)
+    save(project, "five")
+    git(project, "commit", "-q", "--allow-empty", "-m", "nothing")
+    whole = listed(project)
+    assert [(one.note, one.paths) for one in whole] == [
+        ("five", ("sheets/buffer.toml",)),
+        ("begin", tuple(own_files(project))),
+    ]
+    git(project, "checkout", "-q", "-b", "side", "HEAD~3")
+    git(project, "commit", "-q", "--allow-empty", "-m", "aside")
+    git(project, "merge", "-q", "-m", "both", "main")
+    told = git(project, "log", "--format=%H", "--", "biasbook.toml", "process", "sheets", "evidence")
+    assert [one.revision for one in listed(project)] == told.split() == [one.revision for one in whole]
+
+
 def test_merges_tell_what_they_changed_themselves(tmp_path: Path) -> None:
     project = make_project(tmp_path / "p")
     git(project, "init", "-q", "-b", "main")

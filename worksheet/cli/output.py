@@ -4,7 +4,6 @@ from __future__ import annotations
 
 import json
 import os
-import shutil
 import sys
 from collections.abc import Iterable
 from typing import Any
@@ -30,7 +29,11 @@ class Output:
     def __init__(self, as_json: bool) -> None:
         """Read the width of the terminal, 80 columns where there is none."""
         self.as_json = as_json
-        self.width = max(shutil.get_terminal_size((USUAL, 24)).columns, NARROWEST) if sys.stdout.isatty() else USUAL
+        self.width = USUAL
+        if sys.stdout.isatty():
+            import shutil
+
+            self.width = max(shutil.get_terminal_size((USUAL, 24)).columns, NARROWEST)
 
     def lines(self, lines: Iterable[str]) -> None:
         """Write lines of text; characters that the terminal cannot show are replaced."""

@@ -26,6 +26,7 @@ class Why(Enum):
 
 
 ADVICE = {
+    Why.NO_PROGRAM: "There is no git program on this machine; everything but revisions works. Install git.",
     Why.UNSAFE: "git refuses a repository whose files belong to another user. If you trust it: git config --global"
     " --add safe.directory FOLDER",
     Why.BARE: "The project lies in a repository that has no working files; move it to an ordinary one.",

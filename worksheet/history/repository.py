@@ -12,7 +12,6 @@ from __future__ import annotations
 
 import os
 import re
-import shutil
 import subprocess
 from collections.abc import Iterable, Mapping, Sequence
 from dataclasses import dataclass, field
@@ -59,6 +58,7 @@ _FIXED = {
     "GIT_ALLOW_PROTOCOL": "none",
     "LC_ALL": "C",
 }
+_PROGRAM = "git"
 _NONE_ENCLOSES = "not a git repository (or any"
 _KINDS = (
     ("dubious ownership", Why.UNSAFE),
@@ -78,7 +78,6 @@ class Repository:
     """The repository that encloses a project.
 
     Attributes:
-        program: The git program.
         top: Top of the working files.
         git_folder: What git keeps for this working tree; the index lies in it.
         prefix: From the top to the project, "" or ending in a slash.
@@ -86,7 +85,6 @@ class Repository:
         settings: What git is configured to, the last of repeated keys.
     """
 
-    program: str
     top: Path
     git_folder: Path
     prefix: str
@@ -122,7 +120,7 @@ class Repository:
         if person is not None:
             for role in ("AUTHOR", "COMMITTER"):
                 environment |= {f"GIT_{role}_NAME": person.name, f"GIT_{role}_EMAIL": person.email}
-        return _run(self.program, self.top, arguments, stdin, environment, also_fails, keep)
+        return _run(self.top, arguments, stdin, environment, also_fails, keep)
 
     # What stands
 
@@ -195,6 +193,14 @@ class Repository:
                 found.append(None)
         return found
 
+    def is_linear(self, revision: str) -> bool:
+        """Whether no merge leads to a revision.
+
+        Args:
+            revision: A full id.
+        """
+        return not self.run("rev-list", "--min-parents=2", "--max-count=1", revision)
+
     def log(self, revision: str, parts: Iterable[str], layout: str, limit: int | None) -> bytes:
         """The commits that touched the parts of the project, newest first, each with the paths that it changed.
 
@@ -202,7 +208,7 @@ class Repository:
 
         Args:
             revision: A full id.
-            parts: Files or folders, relative to the project.
+            parts: Files or folders, relative to the project; none for all that the repository holds.
             layout: What is printed of each, in git's placeholders.
             limit: At most so many.
         """
@@ -307,20 +313,18 @@ def create(folder: Path) -> Repository | Refused:
     if found is not None:
         return found
     try:
-        program = _program()
         # Without a template no hook of anybody's comes in; the name of the first branch is the user's to set.
-        chosen = _run(program, folder, ("config", "--get", "init.defaultBranch"), also_fails=(1,))
+        chosen = _run(folder, ("config", "--get", "init.defaultBranch"), also_fails=(1,))
         branch = () if chosen.strip() else ("-c", "init.defaultBranch=main")
-        _run(program, folder, (*branch, "init", "--quiet", "--template=", "."))
+        _run(folder, (*branch, "init", "--quiet", "--template=", "."))
         return _find(folder)
     except RefusedError as error:
         return error.refused
 
 
 def _find(folder: Path) -> Repository:
-    program = _program()
     asked = ("--is-inside-work-tree", "--show-object-format", "--absolute-git-dir", "--show-toplevel", "--show-prefix")
-    lines = os.fsdecode(_run(program, folder, ("rev-parse", *asked))).split("\n")
+    lines = os.fsdecode(_run(folder, ("rev-parse", *asked))).split("\n")
     if lines[0] != "true":
         raise RefusedError(Why.BARE, ADVICE[Why.BARE])
     if len(lines) != len(asked) + 1:
@@ -330,9 +334,9 @@ def _find(folder: Path) -> Repository:
         raise RefusedError(
             Why.FAILED, f"The repository keeps its working files elsewhere (core.worktree is {clean(str(top))})."
         )
-    found = os.fsdecode(_run(program, folder, ("config", "--null", "--list"))).split("\0")
+    found = os.fsdecode(_run(folder, ("config", "--null", "--list"))).split("\0")
     settings = {key: value if line else "true" for key, line, value in (entry.partition("\n") for entry in found)}
-    return Repository(program, top, Path(lines[2]), lines[4], lines[1], MappingProxyType(settings))
+    return Repository(top, Path(lines[2]), lines[4], lines[1], MappingProxyType(settings))
 
 
 def _configured_hooks(settings: Mapping[str, str]) -> list[str]:
@@ -352,23 +356,13 @@ def _environment() -> dict[str, str]:
     return kept | _FIXED
 
 
-def _program() -> str:
-    found = shutil.which("git", path=_environment()["PATH"])
-    if found is None:
-        raise RefusedError(
-            Why.NO_PROGRAM, "There is no git program on this machine; everything but revisions works. Install git."
-        )
-    return found
-
-
 def _run(
-    program: str, folder: Path, arguments: Sequence[str], stdin: bytes = b"",
+    folder: Path, arguments: Sequence[str], stdin: bytes = b"",
     environment: Mapping[str, str] = MappingProxyType({}), also_fails: Sequence[int] = (), keep: Sequence[int] = (),
 ) -> bytes:  # fmt: skip
     """Run git once.
 
     Args:
-        program: The git program.
         folder: Where.
         arguments: The command.
         stdin: What it reads; without it standard input is closed.
@@ -381,17 +375,22 @@ def _run(
     Raises: RefusedError.
     """
     options = [part for option in _OPTIONS for part in ("-c", option)]
-    command = [program, "--no-pager", *options, *arguments]
+    command = [_PROGRAM, "--no-pager", *options, *arguments]
     closed = None if stdin else subprocess.DEVNULL
+    environment = _environment() | dict(environment)
+    if not environment["PATH"]:  # an empty one would mean the folder that the project lies in
+        raise RefusedError(Why.NO_PROGRAM, ADVICE[Why.NO_PROGRAM])
     try:
         done: subprocess.CompletedProcess[bytes] = subprocess.run(
-            command, cwd=folder, env=_environment() | dict(environment), stdin=closed, input=stdin or None,
+            command, cwd=folder, env=environment, stdin=closed, input=stdin or None,
             capture_output=True, timeout=SECONDS, check=False, pass_fds=keep,
         )  # fmt: skip
     except subprocess.TimeoutExpired:
         message = f"git {arguments[0]} took longer than {SECONDS:.0f} s and was stopped: is the disk slow?"
         raise RefusedError(Why.TIMEOUT, message) from None
     except (OSError, ValueError) as error:
+        if isinstance(error, FileNotFoundError) and error.filename == _PROGRAM:
+            raise RefusedError(Why.NO_PROGRAM, ADVICE[Why.NO_PROGRAM]) from None
         raise RefusedError(Why.FAILED, f"git could not be started in {clean(str(folder))}: {error}.") from None
     if done.returncode == 0 or done.returncode in also_fails:
         return done.stdout

@@ -82,11 +82,24 @@ def history(
         start = repository.resolve(revision)
         if start is None:
             return () if revision == "HEAD" else _unknown(revision)
-        output = repository.log(start, PARTS if path is None else (path,), _LAYOUT, limit)
+        parts = _asked(repository, start, path, limit)
+        output = repository.log(start, parts, _LAYOUT, limit)
     except RefusedError as error:
         return error.refused
-    found = (_revision(repository, fields, names) for fields, names in _commits(output))
+    found = (_revision(repository, fields, names) for fields, names in _commits(output) if names or parts)
     return tuple(one for one, foreign in found if not foreign)
+
+
+def _asked(repository: Repository, start: str, path: str | None, limit: int | None) -> tuple[str, ...]:
+    """The parts that the log is asked for; none where all can be had and sorted out here.
+
+    Asked for parts, git compares every commit with its parent twice: to tell whether it belongs to their history, and
+    to name the files. Where nothing was ever merged the second comparison tells the first, in two thirds of the time.
+    """
+    if path is not None:
+        return (path,)
+    alone = not repository.prefix and limit is None and repository.is_linear(start)
+    return () if alone else PARTS
 
 
 def resolve(repository: Repository, name: str) -> str | Refused:
@@ -166,22 +179,24 @@ def _unknown(name: str) -> Refused:
 def _commits(output: bytes) -> Iterator[tuple[list[str], list[str]]]:
     """Take the output of the log apart: the fields and the changed paths of each commit.
 
-    The fields have a fixed number and end with zero bytes. What separates the paths differs between merges and other
-    commits, but no path below a part of a project could be an id: so whatever a message holds, nothing is mistaken.
+    Every commit begins with an empty part and its id, and its fields have a fixed number. The first path follows a line
+    break. A path is never empty, and what else separates the paths of a merge holds no id; so whatever a message or
+    the name of a file holds, nothing is mistaken.
     """
     parts = output.split(b"\0")
     fields: list[str] = []
     names: list[str] = []
     place, end = 0, len(parts)
     while place < end:
-        if _ID.fullmatch(parts[place]):
+        if not parts[place - 1] and _ID.fullmatch(parts[place]):
             if fields:
                 yield fields, names
             fields = [part.decode("utf-8", "replace") for part in parts[place : place + _FIELDS]]
             names = []
             place += _FIELDS
-            if place < end:
-                parts[place] = parts[place].removeprefix(b"\n")
+            if place < end and parts[place].startswith(b"\n"):
+                names.append(os.fsdecode(parts[place][1:]))
+                place += 1
             continue
         if parts[place]:
             names.append(os.fsdecode(parts[place]))

@@ -6,7 +6,6 @@ the name that was meant, and telling whether something can be a name at all.
 
 from __future__ import annotations
 
-import difflib
 import keyword
 import re
 from collections.abc import Iterable
@@ -92,6 +91,8 @@ def nearest(name: str, candidates: Iterable[str]) -> str | None:
     for candidate in known:
         if candidate.casefold().replace("-", "_") == folded:
             return candidate
+    import difflib  # most text is never misspelt
+
     found = difflib.get_close_matches(name, known, n=1, cutoff=0.6)
     return found[0] if found else None
 

@@ -5,12 +5,14 @@ from __future__ import annotations
 import datetime
 from collections.abc import Sequence
 from dataclasses import asdict
-from typing import Any
+from typing import TYPE_CHECKING, Any
 
 from worksheet.model.problem import Problem
-from worksheet.model.sheet import Condition, Remark
-from worksheet.review.chained import ChainReview
-from worksheet.review.results import BudgetReview, Cause, Review, SheetReview, TargetReview
+
+if TYPE_CHECKING:  # a command that reviews nothing loads no review
+    from worksheet.model.sheet import Condition, Remark
+    from worksheet.review.chained import ChainReview
+    from worksheet.review.results import BudgetReview, Cause, Review, SheetReview, TargetReview
 
 SCHEMA = 1
 Plain = dict[str, Any]

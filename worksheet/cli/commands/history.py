@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import argparse
 from collections.abc import Sequence
+from importlib import import_module
 from pathlib import Path
 from typing import TYPE_CHECKING, Any
 
@@ -37,11 +38,13 @@ def _count(text: str) -> int:
 
 def run(args: argparse.Namespace, output: Output) -> int:
     """List revisions. 0; 2 where there is no repository to ask."""
-    from worksheet.report import history_text
+    import threading
+
     from worksheet.session import listing
 
     if args.value or args.metric:
         return _traced(args, output)
+    threading.Thread(target=import_module, args=("worksheet.report.history_text",)).start()  # while git looks
     listed = listing.history(Path(args.project), args.sheet)
     if isinstance(listed, Problem):
         tell([listed])
@@ -50,6 +53,8 @@ def run(args: argparse.Namespace, output: Output) -> int:
 
             output.document(plain.only_problems([listed], revisions=[]))
         return Status.BAD_INPUT
+    from worksheet.report import history_text
+
     if output.as_json:
         output.document(history_text.history(listed))
     else:
