@@ -134,6 +134,19 @@ def test_a_sheet_is_reached_through_process_conditions_and_another_sheet(tmp_pat
     assert [part.key for part in shared.parts] == [f"sheet {books.OTHER}"]
 
 
+def test_a_worst_case_is_reached_through_conditions_and_corners(tmp_path: Path) -> None:
+    old = state(tmp_path / "old")
+    warmer = state(tmp_path / "warm", project=books.replaced(books.PROJECT, '"0 °C"', '"5 °C"'))
+    for found in compare(old, warmer).sheets:
+        assert (found.status, found.through) == ("affected", ("conditions",))
+    process = books.replaced(books.PROCESS, "specific_current_factor = 0.85", "specific_current_factor = 0.8")
+    slower = state(tmp_path / "slow", process=process)
+    assert [one.sheet for one in compare(old, slower).sheets]
+    for found in compare(old, slower).sheets:
+        assert (found.status, found.through) == ("affected", ("process",))
+        assert all(one.old == one.new for one in found.results), "nominal numbers stay"
+
+
 def test_what_is_needed_moves_with_the_load(tmp_path: Path) -> None:
     found = compare(state(tmp_path / "old"), state(tmp_path / "new", changed(LOAD)))
     needs = {(one.variable, one.side): one for one in found.sheets[0].needed}

@@ -116,3 +116,70 @@ def test_a_revision_is_recorded_with_a_note(root: Path) -> None:
     drive(root, steps)
     assert git(root, "log", "-1", "--format=%s") == "Three microamperes"
     assert "choose.bias_current" in git(root, "log", "-1", "--format=%b")
+
+
+def other_states(root: Path, recorded: Path) -> None:
+    """A second revision, and a branch with a third one."""
+    assert not isinstance(revisions.record(root, "Second", TODAY), Problem)
+    git(root, "checkout", "-q", "-b", "wider")
+    text = recorded.read_text("utf-8").replace('bias_current = "3 uA"', 'bias_current = "5 uA"')
+    recorded.write_text(text, "utf-8")
+    assert not isinstance(revisions.record(root, "Third", TODAY), Problem)
+    git(root, "checkout", "-q", "-")
+
+
+def test_any_two_states_are_compared_branches_among_them(root: Path, recorded: Path) -> None:
+    other_states(root, recorded)
+
+    async def steps(d: Drive) -> None:
+        await d.settled()
+        await d.press("e", "down", "enter")
+        screen = d.app.screen
+        assert isinstance(screen, CompareScreen)
+        await d.until(lambda: screen.laid is not None)
+        assert "First -> as it stands" in d.text("#title")
+        await d.press("n")
+        await d.type("wider")
+        await d.press("enter")
+        await d.until(lambda: screen.laid is not None and screen.new.revision == "wider")
+        assert screen.ledger.go(f"input.{BLOCK}.choose.bias_current")
+        assert [screen.ledger.row.copied] == [("choose.bias_current", "2 µA", "5 µA")]  # type: ignore[union-attr]
+        await d.press("b")
+        await d.type("second")
+        await d.press("enter")
+        await d.until(lambda: screen.laid is not None and screen.old.note == "Second")
+        assert screen.ledger.go(f"input.{BLOCK}.choose.bias_current")
+        assert [screen.ledger.row.copied] == [("choose.bias_current", "3 µA", "5 µA")]  # type: ignore[union-attr]
+
+    drive(root, steps)
+
+
+def test_parts_close_and_open_and_all_stands_in_one_list(root: Path) -> None:
+    async def steps(d: Drive) -> None:
+        screen = await comparing(d)
+        whole = d.rows()
+        await d.press("tab")
+        heads = d.rows()
+        assert heads
+        assert all(row.startswith("+ ") and "value" in row for row in heads)
+        assert screen.ledger.go(f"part.{BLOCK}")
+        await d.press("enter")
+        assert any(row.startswith("choose.bias_current") for row in d.rows())
+        assert len(heads) < len(d.rows())
+        await d.press("tab", "tab")
+        assert d.rows() == whole
+        await d.press("i")
+        listed = [row.key for row in screen.ledger.page.rows]
+        assert listed.index(f"input.{BLOCK}.choose.bias_current") < listed.index(f"result.{BLOCK}.slew_rate")
+        found = screen.laid
+        assert found is not None
+        assert len(listed) == sum(
+            len(one.inputs) + len(one.results) + len(one.needed) for one in found.found.sheets
+        ) + len(found.found.project) + len(found.found.process)
+        assert screen.ledger.go(f"result.{BLOCK}.bandwidth")
+        await d.press("enter")
+        assert isinstance(d.app.screen, SheetScreen)
+        assert d.app.screen.ledger.row is not None
+        assert d.app.screen.ledger.row.key == "target.bandwidth"
+
+    drive(root, steps)

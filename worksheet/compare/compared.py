@@ -15,11 +15,8 @@ from worksheet.review.results import Review, SheetReview
 from worksheet.solver import goals, needed
 from worksheet.solver.results import Window
 
-_SAME = 1e-12
-"""Relative: nearer than this two results are one."""
-
-_SAME_NEED = 1e-9
-"""The same of what is needed, which is searched for."""
+_SAME = 1e-9
+"""Relative: nearer than this two results are one, as for a verdict; what is proposed is searched for."""
 
 MOST_DEEP = 30
 """Sheets up to which causes and needs are worked out unasked."""
@@ -119,7 +116,7 @@ def compare(old: State, new: State, deep: bool | None = None) -> Comparison:
     """
     sheets = [change for name in _names(old, new) if (change := _sheet(old, new, name)) is not None]
     causes = Causes((old.project, old.review), (new.project, new.review))
-    sheets = [replace(one, through=_through(causes, one)) for one in sheets]
+    sheets = [replace(one, through=_through(old, new, causes, one)) for one in sheets]
     if deep or (deep is None and len(sheets) <= MOST_DEEP):
         sheets = [_deep(old, new, causes, one) for one in sheets]
     return Comparison(
@@ -129,7 +126,7 @@ def compare(old: State, new: State, deep: bool | None = None) -> Comparison:
     )
 
 
-def _through(causes: Causes, change: SheetChange) -> tuple[str, ...]:
+def _through(old: State, new: State, causes: Causes, change: SheetChange) -> tuple[str, ...]:
     """On which ways from outside its file a sheet was reached."""
     if not change.results:
         return ()
@@ -138,7 +135,21 @@ def _through(causes: Causes, change: SheetChange) -> tuple[str, ...]:
         head = key.partition(".")[0]
         if head in ("process", "conditions") or key.startswith("sheet "):
             ways.append(key if key.startswith("sheet ") else head)
-    return tuple(dict.fromkeys(ways))
+    return tuple(dict.fromkeys((*ways, *_around_nominal(old, new, change))))
+
+
+def _around_nominal(old: State, new: State, change: SheetChange) -> Iterator[str]:
+    """Ways on which only other conditions than the nominal one were reached: worst cases move, and margins."""
+    name = change.sheet
+    if old.evaluator is None or new.evaluator is None or not {name} <= old.project.sheets.keys() & new.project.sheets:
+        return
+    before, after = (state.evaluator.conditions(name).conditions for state in (old, new) if state.evaluator)
+    own = {f"assume.{key}" for key in ("temperature", "supply")}
+    if set(before) != set(after) and not own & {moved.key for moved in change.inputs}:
+        yield "conditions"
+    then, now = ({} if state.project.process is None else state.project.process.corners for state in (old, new))
+    if any(then.get(at.process) != now.get(at.process) for at in {*before, *after}):
+        yield "process"
 
 
 def _deep(old: State, new: State, causes: Causes, change: SheetChange) -> SheetChange:
@@ -158,7 +169,7 @@ def _needs(old: State, new: State, name: str) -> Iterator[Need]:
     for variable in NEEDED:
         for side in goals.SIDES:
             (was, was_by, unit), (now, now_by, unit_now) = _end(before, variable, side), _end(after, variable, side)
-            same = was == now or (was is not None and now is not None and abs(was - now) <= _SAME_NEED * abs(now))
+            same = was == now or (was is not None and now is not None and abs(was - now) <= _SAME * abs(now))
             if not same:
                 yield Need(variable, side, unit or unit_now, was, now, was_by, now_by)
 

@@ -193,6 +193,11 @@ class Repository:
                 found.append(None)
         return found
 
+    def names(self) -> list[str]:
+        """Branches and tags, as they are called; branches of other places too."""
+        found = self.run("for-each-ref", "--format=%(refname:short)", "refs/heads", "refs/tags", "refs/remotes")
+        return [name for name in found.decode("utf-8", "replace").split("\n") if _NAME.fullmatch(name)]
+
     def is_linear(self, revision: str) -> bool:
         """Whether no merge leads to a revision.
 

@@ -127,12 +127,19 @@ def _signed(result: Result, part: float) -> str:
 
 def needed(need: Need) -> str:
     """One end of a need before and after, in words."""
+    what, old, new = need_ends(need)
+    return f"{what}: {old} -> {new}"
+
+
+def need_ends(need: Need) -> tuple[str, str, str]:
+    """What is needed, in words, and the end of it before and after with what sets it."""
     sign = "at least" if need.side == "low" else "at most"
-    ends = [
-        "no end" if value is None else f"{wording.number(value, need.unit)} ({by or 'process'})"
-        for value, by in ((need.old, need.old_set_by), (need.new, need.new_set_by))
-    ]
-    return f"needed {need.variable} {sign}: {ends[0]} -> {ends[1]}"
+    numbers = wording.told_apart("", need.old, need.new, need.unit)
+    old, new = (
+        "no end" if value is None else f"{number} ({by or 'process'})"
+        for value, number, by in zip((need.old, need.new), numbers, (need.old_set_by, need.new_set_by), strict=True)
+    )
+    return f"needed {need.variable} {sign}", old, new
 
 
 def _stated(moved: Sequence[Moved], width: int) -> Iterator[str]:
@@ -142,26 +149,51 @@ def _stated(moved: Sequence[Moved], width: int) -> Iterator[str]:
 
 def movement(moved: Moved) -> str:
     """One stated thing before and after, in words."""
-    old, new = (shown(value, moved.unit) for value in (moved.old, moved.new))
+    old, new = stated_ends(moved)
     return f"{moved.key}: {old} -> {new}"
+
+
+def stated_ends(moved: Moved) -> tuple[str, str]:
+    """What was stated and what is, in words."""
+    if isinstance(moved.old, float) and isinstance(moved.new, float) and moved.unit:
+        return wording.told_apart("", moved.old, moved.new, moved.unit)
+    return shown(moved.old, moved.unit), shown(moved.new, moved.unit)
 
 
 def shown(value: Any, unit: str) -> str:
     """A stated thing in words; numbers in `unit`."""
     if value is None:
         return "not stated"
+    if isinstance(value, list):
+        return ", ".join(shown(one, unit) for one in value)
     if isinstance(value, float):
         return wording.number(value, unit) if unit else f"{value:.6g}"
     return clean(str(value))
 
 
+def result_ends(result: Result) -> tuple[str, str]:
+    """A metric before and after, in words."""
+    return wording.told_apart(result.metric, result.old, result.new, result.unit)
+
+
+def margins(result: Result) -> str:
+    """The margin of a target before and after, "" where it stays or where there is none."""
+    old, new = (wording.margin(one) for one in (result.old_margin, result.new_margin))
+    return "" if old == new else f"{old} -> {new}"
+
+
 def _results(results: Sequence[Result]) -> Table:
-    columns = (Column("metric", flexible=True), Column("old", right=True), Column("new", right=True), Column("verdict"))
+    columns = (
+        Column("metric", flexible=True),
+        Column("old", right=True),
+        Column("new", right=True),
+        Column("verdict"),
+        Column("margin"),
+    )
     rows = []
     for r in results:
         verdict = r.new_verdict or ""
         if r.old_verdict != r.new_verdict:
             verdict = f"{r.old_verdict or '-'} -> {r.new_verdict or '-'}"
-        old, new = (wording.metric_number(r.metric, value, r.unit) for value in (r.old, r.new))
-        rows.append((r.metric, old, new, verdict))
+        rows.append((r.metric, *result_ends(r), verdict, margins(r)))
     return Table(columns, tuple(rows))

@@ -21,6 +21,8 @@ CAUTION = (
 )
 """Said wherever a rating is passed."""
 
+_MORE_DIGITS = (6, 8, 10, 12)
+
 
 def number(value: float | None, unit: str, reason: str | None = None, digits: int = 4) -> str:
     """A number with its unit in engineering notation, or why there is none.
@@ -59,6 +61,22 @@ def metric_number(key: str, value: float | None, unit: str, reason: str | None =
     if value is None or metric is None:
         return number(value, unit, reason, digits)
     return format_quantity(value, metric.dimension, digits)
+
+
+def told_apart(key: str, old: float | None, new: float | None, unit: str) -> tuple[str, str]:
+    """Two numbers of a metric, or of anything else with a unit, with as many digits as it takes to tell them apart.
+
+    Args:
+        key: The metric; "" for anything else.
+        old, new: In SI base units, None where there is none.
+        unit: See number.
+    """
+    texts = metric_number(key, old, unit), metric_number(key, new, unit)
+    for digits in _MORE_DIGITS:
+        if old == new or texts[0] != texts[1]:
+            break
+        texts = metric_number(key, old, unit, digits=digits), metric_number(key, new, unit, digits=digits)
+    return texts
 
 
 def limits(target: Target, unit: str) -> str:

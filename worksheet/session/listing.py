@@ -5,7 +5,7 @@ from __future__ import annotations
 from pathlib import Path
 
 from worksheet.history import repository, revisions
-from worksheet.history.outcome import Refused
+from worksheet.history.outcome import Refused, RefusedError
 from worksheet.history.repository import Repository
 from worksheet.history.revisions import Revision
 from worksheet.model.problem import Problem
@@ -35,3 +35,14 @@ def history(root: Path, sheet: str | None = None) -> tuple[Revision, ...] | Prob
         return found
     listed = revisions.history(found, None if sheet is None else f"sheets/{sheet}.toml")
     return refusal(listed, root) if isinstance(listed, Refused) else listed
+
+
+def names(root: Path) -> tuple[str, ...]:
+    """Branches and tags of the repository around a project; none where there is no repository to ask."""
+    found = repository_of(root)
+    if isinstance(found, Problem):
+        return ()
+    try:
+        return tuple(found.names())
+    except RefusedError:
+        return ()

@@ -18,7 +18,7 @@ from worksheet.project.discover import load
 from worksheet.report import revisions_plain, wording
 from worksheet.review.results import Review
 from worksheet.session.laying import laid
-from worksheet.session.listing import history, refusal, repository_of
+from worksheet.session.listing import history, names, refusal, repository_of
 from worksheet.session.reading import FileReading, Shelf
 from worksheet.session.reviewing import Reviewing
 from worksheet.session.workbook import Workbook
@@ -194,6 +194,7 @@ __all__ = [
     "files",
     "history",
     "identity",
+    "names",
     "record",
     "refusal",
     "repository_of",

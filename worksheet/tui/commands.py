@@ -466,6 +466,29 @@ COMMANDS = (
         writes=True,
     ),
     Command("compare", "e", "f6", "Compare", "Lay a revision beside the files as they stand.", (BOOK,)),
+    Command("before", "b", "left", "From", "Choose the revision or branch that is compared from.", (COMPARE,), foot=4),
+    Command(
+        "after",
+        "n",
+        "right",
+        "To",
+        "Choose what it is compared to: another revision, a branch, the files as they stand.",
+        (COMPARE,),
+        foot=5,
+    ),
+    Command(
+        "form",
+        "i",
+        "f4",
+        "One list",
+        "Show the values in one list, the weightiest first, or side by side in their parts.",
+        (COMPARE,),
+        "laid",
+        foot=6,
+    ),
+    Command(
+        "parts", "tab", "f7", "Parts", "Close all parts, so that their heads stand, or open all.", (COMPARE,), "parts"
+    ),
     Command(
         "record", "s", "f7", "Record", "Save a revision of the project's own files, with a note.", (BOOK,), writes=True
     ),
@@ -534,7 +557,7 @@ COMMANDS = (
         "Over revisions",
         "Show this value or metric over all revisions: who, when, why, and what it was.",
         (COMPARE, SHEET),
-        "row",
+        "traced",
         foot=3,
     ),
     Command(

@@ -1,4 +1,4 @@
-"""The screen of a comparison: a revision beside the files as they stand, and what it stated taken back as an edit."""
+"""The screen of a comparison: two states of the project, and what the first of them stated taken back as an edit."""
 
 from __future__ import annotations
 
@@ -14,50 +14,75 @@ from worksheet.session import revisions, taking_back
 from worksheet.session.edits import Request
 from worksheet.tui import commands
 from worksheet.tui.dialogs.ask import AskDialog
-from worksheet.tui.pages import compare_page
+from worksheet.tui.pages import compare_list, compare_page
 from worksheet.tui.recomputed import today
 from worksheet.tui.rows import Row
 from worksheet.tui.screens.place import bindings
+from worksheet.tui.screens.tracing import choose_state, trace
 from worksheet.tui.screens.view import View
+
+
+@dataclass(frozen=True, slots=True)
+class State:
+    """A state of the project: a revision's id or another name for it, and what to say of it; else the files."""
+
+    revision: str = revisions.WORKING
+    note: str = ""
+
+    @property
+    def short(self) -> str:
+        """As a title has room for."""
+        return "files" if self.revision == revisions.WORKING else self.revision[:10]
+
+    @property
+    def title(self) -> str:
+        """In words."""
+        return "as it stands" if self.revision == revisions.WORKING else f"{self.short} {self.note}"
 
 
 @dataclass(frozen=True, eq=False, slots=True)
 class Laid:
-    """A revision laid beside the files: what differs, and the revision's own files."""
+    """Two states laid side by side: what differs, and the files of the first."""
 
     found: Comparison
     files: Mapping[str, bytes]
 
 
 class CompareScreen(View):
-    """What differs between a revision and the files as they stand."""
+    """What differs between two states of the project."""
 
     PLACE = commands.COMPARE
     BINDINGS: ClassVar[list[BindingType]] = [*bindings(commands.COMPARE)]
 
-    def __init__(self, revision: str, title: str) -> None:
-        """Take the revision's id, and what to call it."""
+    def __init__(self, old: State, new: State) -> None:
+        """Take the two states."""
         super().__init__("")
-        self.revision, self.heading = revision, title
+        self.old, self.new = old, new
+        self.as_list = False
+        self.closed: set[str] | None = None
+
+    def asked(self) -> tuple[object, ...]:
+        """Which two states."""
+        return self.old.revision, self.new.revision
 
     def job(self) -> Callable[[], Any]:
         """Both states reviewed and laid side by side, or problems."""
-        root, revision = self.snapshot.project.root, self.revision
+        root, old, new = self.snapshot.project.root, self.old.revision, self.new.revision
 
         def work() -> Laid | list[Problem]:
-            found = revisions.compared(root, revision, revisions.WORKING, today())
+            found = revisions.compared(root, old, new, today())
             if isinstance(found, Problem):
                 return [found]
-            files = revisions.files(root, revision)
+            files = revisions.files(root, old)
             return [files] if isinstance(files, Problem) else Laid(found.comparison, files)
 
         return work
 
     @property
     def about(self) -> str:
-        """Which revision stands beside the files, and how much differs."""
+        """Which two states, and how much differs."""
         said = "" if self.laid is None else f"  {compare_page.counted(self.laid.found)}"
-        return f"{self.revision[:10]} {self.heading} -> as it stands{said}"
+        return f"{self.old.title} -> {self.new.title}{said}"
 
     @property
     def laid(self) -> Laid | None:
@@ -66,7 +91,14 @@ class CompareScreen(View):
 
     def rows_found(self) -> Iterable[Row]:
         """Project, process file, sheets."""
-        return () if self.laid is None else compare_page.page(self.laid.found, self.columns, self.book.signs).rows
+        if self.laid is None:
+            return ()
+        found, look = self.laid.found, compare_page.Look(self.columns, self.book.signs)
+        if self.as_list:
+            return compare_list.page(found, look).rows
+        if self.closed is None:  # many sheets are first seen as a list of their heads
+            self.closed = set() if len(found.sheets) <= compare_page.MOST_OPEN else set(compare_page.parts(found))
+        return compare_page.page(found, self.closed, look).rows
 
     @property
     def present(self) -> tuple[str, str]:
@@ -77,18 +109,54 @@ class CompareScreen(View):
     def holds(self) -> set[str]:
         """What can be done with the row under the cursor."""
         held = super().holds() - {"row", "sheet"}
-        if self.laid is not None:
-            held.add("laid")
-        return held | {"row", "sheet"} if self.present[0] else held
+        row = self.ledger.row if self.is_mounted else None
+        if self.laid is None or row is None:
+            return held
+        held |= {"laid"} if self.as_list else {"laid", "parts"}
+        if row.subject[0] in (compare_page.INPUT, compare_page.RESULT):
+            held.add("traced")
+        return held | {"row"} if row.subject[1] else held
 
     # Commands
 
     def action_look(self) -> None:
-        """Open the sheet at what the row is about."""
-        name, key = self.present
-        parts = key.split(".")
-        if name in self.snapshot.names:
-            self.book.open_sheet(name, ".".join(parts[:2]) if len(parts) > 1 else f"target.{key}")
+        """Open the sheet at what the row is about; a part's head opens and closes the part."""
+        row = self.ledger.row
+        if row is not None and row.subject[0] == compare_page.PART and not self.as_list and self.closed is not None:
+            self.closed ^= {row.subject[1]}
+            self.draw()
+            return
+        name, _ = self.present
+        if row is not None and name in self.snapshot.names:
+            self.book.open_sheet(name, compare_page.place(row.subject))
+
+    def action_parts(self) -> None:
+        """Close all parts, or open all."""
+        if self.laid is not None and self.closed is not None:
+            every = set(compare_page.parts(self.laid.found))
+            self.closed = set() if self.closed == every else every
+            self.draw()
+
+    def action_form(self) -> None:
+        """One list, or side by side."""
+        self.as_list = not self.as_list
+        self.draw()
+
+    def action_before(self) -> None:
+        """Choose the first of the two states."""
+        choose_state(self, "Compare from", self.old.revision, self._from, files_too=False)
+
+    def _from(self, state: State) -> None:
+        self.old, self.found = state, None
+        self.show_book()
+
+    def action_after(self) -> None:
+        """Choose the second of the two states."""
+        choose_state(self, "Compare to", self.new.revision, self._to)
+
+    def _to(self, state: State) -> None:
+        self.new, self.found = state, None
+        self.show_book()
 
     def action_restore(self) -> None:
         """Take a value, a sheet or the project back."""
@@ -105,17 +173,17 @@ class CompareScreen(View):
             if letter is not None:
                 self._restored(letter, laid, name, key)
 
-        question = f"What is to be as in {self.revision[:10]} {self.heading}? Undo brings back what stands now."
+        question = f"What is to be as in {self.old.title}? Undo brings back what stands now."
         self.app.push_screen(AskDialog("Take back", question, answers, self.book.signs), done)
 
     def _restored(self, letter: str, laid: Laid, name: str, key: str) -> None:
         request: Request | None
         if letter == "v":
-            request = taking_back.value(self.snapshot, laid.files, name, key, self.revision)
+            request = taking_back.value(self.snapshot, laid.files, name, key, self.old.short)
         elif letter == "s":
-            request = taking_back.sheet(laid.files, name, self.revision)
+            request = taking_back.sheet(laid.files, name, self.old.short)
         else:
-            request = taking_back.project(self.snapshot, laid.files, self.revision)
+            request = taking_back.project(self.snapshot, laid.files, self.old.short)
         if request is None:
             self.say("This cannot be taken back by itself; take the sheet back.", wrong=True)
         else:
@@ -123,8 +191,6 @@ class CompareScreen(View):
 
     def action_trace(self) -> None:
         """This value or metric over all revisions."""
-        from worksheet.tui.screens.tracing import trace
-
         name, key = self.present
         row = self.ledger.row
         if name and row is not None:

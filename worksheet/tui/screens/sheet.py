@@ -131,7 +131,7 @@ class SheetScreen(Place):
                 held.add("step")
         if row is not None:
             if self._traced() is not None:
-                held.add("row")
+                held |= {"row", "traced"}
             if row.subject[0] in ("metric", "variable", "bound", "operating"):
                 held.add("number")
             if row.key.partition(".")[0] in REMOVABLE:

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping
+from collections.abc import Callable, Mapping
 from pathlib import Path
 from typing import TYPE_CHECKING
 
@@ -15,6 +15,7 @@ from worksheet.tui.dialogs.reading import ReadingDialog
 from worksheet.tui.recomputed import today
 
 if TYPE_CHECKING:
+    from worksheet.tui.screens.compare import State
     from worksheet.tui.screens.place import Place
 
 _WIDTH = 66
@@ -55,22 +56,48 @@ def _metric(root: Path, sheet: str, key: str) -> list[str]:
 
 def choose(screen: Place) -> None:
     """Choose a revision and lay it beside the files."""
-    from worksheet.tui.screens.compare import CompareScreen
+    from worksheet.tui.screens.compare import CompareScreen, State
 
-    listed = revisions.history(screen.snapshot.project.root)
+    def done(old: State) -> None:
+        screen.app.push_screen(CompareScreen(old, State()))
+
+    choose_state(screen, "Compare with", "", done, files_too=False)
+
+
+def choose_state(
+    screen: Place, title: str, present: str, done: Callable[[State], None], *, files_too: bool = True
+) -> None:  # fmt: skip
+    """Choose a state of the project.
+
+    Args:
+        screen: The screen that asks.
+        title: Of the list.
+        present: The revision under the cursor at first.
+        done: Gets what was chosen.
+        files_too: Whether the files as they stand may be chosen.
+    """
+    from worksheet.tui.screens.compare import State
+
+    root = screen.snapshot.project.root
+    listed = revisions.history(root)
     if isinstance(listed, Problem):
         screen.say(listed.message, wrong=True)
         return
-    notes = {one.revision: one.note for one in listed}
+    states = [State()] if files_too else []
+    states += [State(one.revision, one.note) for one in listed]
+    states += [State(name, "a branch or tag") for name in revisions.names(root)]
+    who = {one.revision: f"{one.dated[:10]}  {one.by}: " for one in listed}
     items = [
-        Item(one.revision, f"{one.dated[:10]}  {one.by}: {one.note}", one.note, one.revision[:8]) for one in listed
+        Item(one.revision, f"{who.get(one.revision, '')}{one.note}" if one.note else one.title, one.note, one.short)
+        for one in states
     ]
 
-    def done(revision: str | None) -> None:
-        if revision is not None:
-            screen.app.push_screen(CompareScreen(revision, notes[revision]))
+    def chosen(revision: str | None) -> None:
+        for one in states:
+            if one.revision == revision:
+                done(one)
 
-    screen.app.push_screen(PickDialog("Compare with", items, screen.book.signs), done)
+    screen.app.push_screen(PickDialog(title, items, screen.book.signs, present), chosen)
 
 
 def record(screen: Place) -> None:
