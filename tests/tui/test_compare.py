@@ -11,6 +11,7 @@ from tests.history.repositories import git
 from tests.tui.driving import Drive, drive, shown
 from worksheet.model.problem import Problem
 from worksheet.session import revisions
+from worksheet.session.workbook import Workbook
 from worksheet.tui.dialogs.reading import ReadingDialog
 from worksheet.tui.screens.compare import CompareScreen
 from worksheet.tui.screens.sheet import SheetScreen
@@ -181,5 +182,30 @@ def test_parts_close_and_open_and_all_stands_in_one_list(root: Path) -> None:
         assert isinstance(d.app.screen, SheetScreen)
         assert d.app.screen.ledger.row is not None
         assert d.app.screen.ledger.row.key == "target.bandwidth"
+
+    drive(root, steps)
+
+
+def test_what_moved_since_an_acceptance_is_shown_on_the_sheet(root: Path, recorded: Path) -> None:
+    text = recorded.read_text("utf-8")
+    (now,) = (one.basis for one in Workbook.read(root).review(TODAY).sheets if one.sheet.name == BLOCK)
+    text = (
+        text.replace("schema = 1", 'schema = 1\nstate = "accepted"')
+        + f'\n[[acceptance]]\nby = "M. Roe"\nbasis = "{now}"\n'
+    )
+    recorded.write_text(text, "utf-8")
+    assert not isinstance(revisions.record(root, "Accepted", TODAY), Problem)
+    recorded.write_text(text.replace('bias_current = "3 uA"', 'bias_current = "4 uA"'), "utf-8")
+
+    async def steps(d: Drive) -> None:
+        await d.sheet(BLOCK)
+        await d.settled()
+        await d.press("j")
+        await d.until(lambda: isinstance(d.app.screen, ReadingDialog))
+        shown_text = " ".join(
+            shown(line).strip() for row in d.app.screen.query_one(Ledger).page.rows for line in row.lines
+        )
+        assert "accepted by M. Roe: since" in shown_text
+        assert "choose.bias_current: 3 µA -> 4 µA" in shown_text
 
     drive(root, steps)

@@ -2,11 +2,12 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterator, Sequence
+from collections.abc import Iterator, Mapping, Sequence
 from typing import Any
 
+from worksheet.compare.inputs import Moved
 from worksheet.model.problem import Problem
-from worksheet.report import plain, wording
+from worksheet.report import plain, revisions_plain, wording
 from worksheet.report.table import Column, Table, lines, wrapped
 from worksheet.review.agenda import Item
 from worksheet.review.results import MISSED, UNKNOWN
@@ -14,9 +15,27 @@ from worksheet.review.results import MISSED, UNKNOWN
 Plain = dict[str, Any]
 
 
-def document(items: Sequence[Item], problems: Sequence[Problem]) -> Plain:
+Since = Mapping[str, Sequence[tuple[str, str, Sequence[Moved]]]]
+"""By sheet, what its inputs have left behind: what it is, the revision that had those inputs or "", what moved."""
+
+
+def document(items: Sequence[Item], since: Since, problems: Sequence[Problem]) -> Plain:
     """The agenda as a document."""
-    return {"schema": plain.SCHEMA, "items": [_item(item) for item in items], "problems": plain.problems(problems)}
+    return {
+        "schema": plain.SCHEMA,
+        "items": [_item(item) for item in items],
+        "moved": [
+            {
+                "sheet": sheet,
+                "about": about,
+                "since": revision or None,
+                "inputs": [revisions_plain.moved_plain(one) for one in moved],
+            }
+            for sheet, entries in since.items()
+            for about, revision, moved in entries
+        ],
+        "problems": plain.problems(problems),
+    }
 
 
 def _item(item: Item) -> Plain:
@@ -29,8 +48,8 @@ def _item(item: Item) -> Plain:
     }
 
 
-def text(items: Sequence[Item], width: int) -> Iterator[str]:
-    """The agenda, block by block."""
+def text(items: Sequence[Item], since: Since, width: int) -> Iterator[str]:
+    """The agenda, block by block, with what moved since a block was accepted or evidence found."""
     if not items:
         yield "Nothing wants a decision."
         return
@@ -43,6 +62,8 @@ def text(items: Sequence[Item], width: int) -> Iterator[str]:
         for item in of_block:
             if known := said(item):
                 yield from wrapped(f"{item.about or item.why.value}: {known}", width, "  ")
+        for about, revision, moved in since.get(name, ()):
+            yield from wrapped(f"{about}: {revisions_plain.moved_since(revision, moved)}", width, "  ")
 
 
 def said(item: Item) -> str:

@@ -64,8 +64,7 @@ def text(
         named = ", ".join(
             dict.fromkeys(one.evidence.metric for one in found if (one.sheet, one.evidence.basis) == (sheet, basis))
         )
-        said = "; ".join(revisions_plain.movement(one) for one in moved) or "what other sheets give"
-        yield from wrapped(f"{sheet} {named}: since {revision[:10]} moved: {said}", width, "  ")
+        yield from wrapped(f"{sheet} {named}: {revisions_plain.moved_since(revision, moved)}", width, "  ")
     if summed:
         yield ""
         yield "By how much the calculation is off, stale evidence left out"

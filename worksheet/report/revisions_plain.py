@@ -26,14 +26,15 @@ def comparison(old: str, new: str, found: Comparison, problems: Sequence[Problem
         "old": old,
         "new": new,
         "same": found.same,
-        "project": [_moved(m) for m in found.project],
-        "process": [_moved(m) for m in found.process],
+        "project": [moved_plain(m) for m in found.project],
+        "process": [moved_plain(m) for m in found.process],
         "sheets": [_sheet(s) for s in found.sheets],
         "problems": plain.problems(problems),
     }
 
 
-def _moved(moved: Moved) -> Plain:
+def moved_plain(moved: Moved) -> Plain:
+    """One stated thing before and after, as data."""
     return {"key": moved.key, "old": moved.old, "new": moved.new, "unit": moved.unit}
 
 
@@ -41,7 +42,7 @@ def _sheet(sheet: SheetChange) -> Plain:
     return {
         "sheet": sheet.sheet,
         "status": sheet.status,
-        "inputs": [_moved(m) for m in sheet.inputs],
+        "inputs": [moved_plain(m) for m in sheet.inputs],
         "results": [_result(r) for r in sheet.results],
         "through": list(sheet.through),
         "needed": [_need(n) for n in sheet.needed],
@@ -151,6 +152,13 @@ def movement(moved: Moved) -> str:
     """One stated thing before and after, in words."""
     old, new = stated_ends(moved)
     return f"{moved.key}: {old} -> {new}"
+
+
+def moved_since(revision: str, moved: Sequence[Moved]) -> str:
+    """What moved since a revision that had certain inputs, in words; revision "" where none is known."""
+    if not revision:
+        return "no recorded revision has the inputs it was for"
+    return f"since {revision[:_ID]} moved: {'; '.join(map(movement, moved)) or 'what other sheets give'}"
 
 
 def stated_ends(moved: Moved) -> tuple[str, str]:

@@ -2,7 +2,13 @@
 
 from __future__ import annotations
 
+from dataclasses import dataclass
+from typing import TYPE_CHECKING
+
 from worksheet.model.sheet import Sheet
+
+if TYPE_CHECKING:
+    from worksheet.review.results import SheetReview
 
 DRAFT, FOR_REVIEW, ACCEPTED = "draft", "for-review", "accepted"
 """States, in the order of a block's life."""
@@ -27,3 +33,30 @@ def state_of(sheet: Sheet, basis: str) -> tuple[str, str | None]:
     last = sheet.acceptances[-1]
     when = f" on {last.dated.isoformat()}" if last.dated is not None else ""
     return FOR_REVIEW, f"accepted by {last.by}{when} for inputs that have moved since"
+
+
+@dataclass(frozen=True, slots=True)
+class Past:
+    """What was found or accepted for inputs that a sheet has left behind.
+
+    Attributes:
+        about: What it is, in words: an acceptance, or evidence on which metrics.
+        basis: The digest of those inputs.
+    """
+
+    about: str
+    basis: str
+
+
+def left_behind(result: SheetReview) -> tuple[Past, ...]:
+    """The acceptance and the evidence that a sheet's present inputs are no longer those of."""
+    sheet, found = result.sheet, []
+    if sheet.state == ACCEPTED and result.state != ACCEPTED and sheet.acceptances:
+        last = sheet.acceptances[-1]
+        found.append(Past(f"accepted by {last.by}", last.basis))
+    stale: dict[str, list[str]] = {}
+    for one in sheet.evidence:
+        if one.basis and one.basis != result.basis:
+            stale.setdefault(one.basis, []).append(one.metric)
+    found += [Past(f"evidence on {', '.join(dict.fromkeys(names))}", basis) for basis, names in stale.items()]
+    return tuple(found)

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import datetime
+from dataclasses import dataclass
 from pathlib import Path
 
 from worksheet.compare.compared import State, compare
@@ -11,13 +12,24 @@ from worksheet.history import revisions as listed
 from worksheet.history.outcome import Refused
 from worksheet.history.revisions import Files, Revision
 from worksheet.model.problem import Problem
+from worksheet.review.results import SheetReview
 from worksheet.review.review import reviewed
+from worksheet.review.state import Past, left_behind
 from worksheet.session.laying import laid
 from worksheet.session.listing import repository_of
 from worksheet.session.workbook import Workbook
 
 MOST = 40
 """Revisions that are looked at, newest first."""
+
+
+@dataclass(frozen=True, slots=True)
+class Moves:
+    """What moved since, and the newest revision that had those inputs; "" and nothing where none is known to."""
+
+    past: Past
+    revision: str
+    moved: tuple[Moved, ...]
 
 
 class Since:
@@ -28,6 +40,14 @@ class Since:
         self._root, self._today = root, today
         self._revisions: tuple[Revision, ...] | None = None
         self._states: dict[str, Workbook | None] = {}
+
+    def of(self, result: SheetReview) -> tuple[Moves, ...]:
+        """What moved since each thing that a sheet's inputs have left behind."""
+        found = []
+        for past in left_behind(result):
+            revision, moved = self.moved(result.sheet.name, past.basis) or ("", ())
+            found.append(Moves(past, revision, moved))
+        return tuple(found)
 
     def moved(self, sheet: str, basis: str) -> tuple[str, tuple[Moved, ...]] | None:
         """The newest revision at which a sheet had a digest, and what is stated differently now.

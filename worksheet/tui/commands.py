@@ -561,6 +561,15 @@ COMMANDS = (
         foot=3,
     ),
     Command(
+        "moved",
+        "j",
+        "ctrl+e",
+        "What moved",
+        "Show what moved since the block was accepted, and since each stale piece of evidence was found.",
+        (SHEET, MEETING),
+        "moved",
+    ),
+    Command(
         "checked",
         "v",
         "f5",

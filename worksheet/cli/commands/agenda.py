@@ -28,6 +28,7 @@ def run(args: argparse.Namespace, output: Output) -> int:
     from worksheet.model.problem import Problem
     from worksheet.report import agenda_text
     from worksheet.review.agenda import agenda
+    from worksheet.session.since import Since
     from worksheet.session.workbook import Workbook
 
     today = datetime.datetime.now().astimezone().date()
@@ -37,11 +38,18 @@ def run(args: argparse.Namespace, output: Output) -> int:
     missing = [Problem(args.project, None, "", f"found no sheet {name}") for name in args.sheet if name not in known]
     problems = (*review.problems, *missing)
     items = [item for item in agenda(review, today) if not args.sheet or item.sheet in args.sheet]
+    since = Since(Path(args.project), today)
+    blocks = {item.sheet for item in items}
+    moved = {
+        one.sheet.name: [(found.past.about, found.revision, found.moved) for found in since.of(one)]
+        for one in review.sheets
+        if one.sheet.name in blocks
+    }
     tell(problems)
     if output.as_json:
-        output.document(agenda_text.document(items, problems))
+        output.document(agenda_text.document(items, moved, problems))
     elif workbook.project.file is not None:
-        output.lines(agenda_text.text(items, output.width))
+        output.lines(agenda_text.text(items, moved, output.width))
     if problems:
         return Status.BAD_INPUT
     return Status.NOT_MET if items else Status.FINE

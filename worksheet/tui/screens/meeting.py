@@ -14,6 +14,7 @@ from worksheet.model.problem import Problem
 from worksheet.model.quantity import format_input
 from worksheet.model.sheet_keys import WAIVER
 from worksheet.review.agenda import Item, Why, agenda
+from worksheet.review.state import left_behind
 from worksheet.session import deciding, fields, meeting
 from worksheet.session.edits import ChangeSheet, Put
 from worksheet.tui import commands
@@ -25,6 +26,7 @@ from worksheet.tui.recompute import Recompute, Stamped
 from worksheet.tui.recomputed import today
 from worksheet.tui.screens.deciding import DecidingPlace
 from worksheet.tui.screens.place import bindings
+from worksheet.tui.screens.tracing import moved
 from worksheet.tui.widgets.ledger import Ledger
 from worksheet.tui.widgets.lines import Lines
 
@@ -100,7 +102,8 @@ class MeetingScreen(DecidingPlace):
             held.add("remark")
         if item.target is not None and item.why in (Why.MISSED, Why.UNKNOWN, Why.PAST, Why.WORSE):
             held.add("waivable")
-        return held
+        result = self.book.results and self.book.results.sheet(item.sheet)
+        return held | {"moved"} if result and left_behind(result) else held
 
     def on_ledger_moved(self) -> None:
         """Another item: what is known of it below."""
@@ -118,6 +121,13 @@ class MeetingScreen(DecidingPlace):
         item = self.present
         if item is not None and item.sheet:
             self.book.open_sheet(item.sheet, f"target.{item.about}" if item.target is not None else "")
+
+    def action_moved(self) -> None:
+        """What moved since the block was accepted and its evidence found."""
+        item = self.present
+        result = self.book.results and item and self.book.results.sheet(item.sheet)
+        if result:
+            moved(self, result)
 
     def action_kinds(self) -> None:
         """Show one kind of thing only."""

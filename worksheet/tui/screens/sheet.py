@@ -8,6 +8,7 @@ from textual.containers import Horizontal
 from textual.widget import Widget
 
 from worksheet.model.keys import Kind
+from worksheet.review.state import left_behind
 from worksheet.session.edits import ChangeSheet, Put, RenameSheet
 from worksheet.session.needs import shown_input
 from worksheet.tui import commands
@@ -141,7 +142,8 @@ class SheetScreen(Place):
             held.add("proposal")
         if self.snapshot.data(self.name_of_sheet).get("collision") or self.snapshot.sides(self.name_of_sheet):
             held.add("merge")
-        return held
+        result = self.book.results and self.book.results.sheet(self.name_of_sheet)
+        return held | {"moved"} if result and left_behind(result) else held
 
     # Changing a value where it stands
 
@@ -216,6 +218,14 @@ class SheetScreen(Place):
         found = self._traced()
         if found is not None:
             trace(self, self.name_of_sheet, found[0], metric=found[1])
+
+    def action_moved(self) -> None:
+        """What moved since the block was accepted and its evidence found."""
+        from worksheet.tui.screens.tracing import moved
+
+        result = self.book.results and self.book.results.sheet(self.name_of_sheet)
+        if result:
+            moved(self, result)
 
     def action_settle_merge(self) -> None:
         """Settle what a merge left."""

@@ -7,8 +7,10 @@ from pathlib import Path
 from typing import TYPE_CHECKING
 
 from worksheet.model.problem import Problem
-from worksheet.report import tracing_text
+from worksheet.report import revisions_plain, tracing_text
+from worksheet.review.results import SheetReview
 from worksheet.session import revisions, tracing
+from worksheet.session.since import Since
 from worksheet.tui.dialogs.form import FormDialog, FormLine
 from worksheet.tui.dialogs.pick import Item, PickDialog
 from worksheet.tui.dialogs.reading import ReadingDialog
@@ -26,17 +28,33 @@ def trace(screen: Place, sheet: str, key: str, *, metric: bool) -> None:
     """Show one value, or one metric, over all revisions; worked out off the event loop."""
     root = screen.snapshot.project.root
 
+    title = f"{key} of {sheet} over the revisions"
+
     def work() -> None:
         lines = _metric(root, sheet, key) if metric else _value(root, sheet, key)
-        screen.app.call_from_thread(show, lines)
-
-    def show(lines: list[str]) -> None:
-        if screen.is_current:
-            screen.say("")
-            screen.app.push_screen(ReadingDialog(f"{key} of {sheet} over the revisions", lines, screen.book.signs))
+        screen.app.call_from_thread(_read, screen, title, lines)
 
     screen.say("looking through the revisions...")
     screen.run_worker(work, thread=True, exclusive=True, group="tracing", exit_on_error=True)
+
+
+def moved(screen: Place, result: SheetReview) -> None:
+    """Show what moved since a block was accepted and since its evidence was found; looked up off the event loop."""
+    root, title = screen.snapshot.project.root, f"What moved in {result.sheet.name}"
+
+    def work() -> None:
+        found = Since(root, today()).of(result)
+        lines = [f"{one.past.about}: {revisions_plain.moved_since(one.revision, one.moved)}" for one in found]
+        screen.app.call_from_thread(_read, screen, title, lines)
+
+    screen.say("looking through the revisions...")
+    screen.run_worker(work, thread=True, exclusive=True, group="tracing", exit_on_error=True)
+
+
+def _read(screen: Place, title: str, lines: list[str]) -> None:
+    if screen.is_current:
+        screen.say("")
+        screen.app.push_screen(ReadingDialog(title, lines, screen.book.signs))
 
 
 def _value(root: Path, sheet: str, key: str) -> list[str]:
