@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import dataclasses
 
+import mpmath
 import numpy as np
 import pytest
 
@@ -113,6 +114,36 @@ def test_positive_roots_of_a_cubic_against_numpy() -> None:
     coefficients = [np.asarray(c) for c in (-6.0, 11.0, -6.0, 1.0)]
     assert np.sort(poly.positive_roots(coefficients)) == pytest.approx([1.0, 2.0, 3.0], rel=1e-12)
     assert float(poly.lowest_positive_root(coefficients)) == pytest.approx(1.0, rel=1e-12)
+
+
+@pytest.mark.parametrize("kind", ["spread", "mixed", "pair"])
+def test_roots_of_cubics_however_far_apart_against_mpmath(kind: str) -> None:
+    """mpmath.polyroots at 60 digits of the very coefficients; time constants may be twelve decades apart."""
+    draw = np.random.default_rng(3)
+    sizes = -(10.0 ** draw.uniform(-12, 0, (3, 60)))
+    if kind == "mixed":
+        sizes *= draw.choice([-1.0, 1.0], sizes.shape)
+    roots = sizes.astype(complex)
+    if kind == "pair":
+        roots[1] = np.abs(sizes[1]) * np.exp(1j * draw.uniform(0.05, 3.09, 60))
+        roots[2] = np.conj(roots[1])
+    coefficients = [np.ones(60), *(np.array([np.poly(r).real[k] for r in roots.T]) for k in (1, 2, 3))]
+    found = -poly.inverse_roots(coefficients)
+    with mpmath.workdps(60):
+        for k in range(60):
+            exact = mpmath.polyroots([mpmath.mpf(float(c[k])) for c in coefficients], maxsteps=500, extraprec=300)
+            left = list(found[:, k])
+            for root in exact:
+                apart = [abs(mpmath.mpmathify(complex(one)) - root) / abs(root) for one in left]
+                assert min(apart) < 1e-11
+                left.pop(apart.index(min(apart)))
+
+
+def test_a_cubic_of_lower_degree_has_roots_at_infinity() -> None:
+    found = poly.inverse_roots([np.asarray(c) for c in (1.0, 3.0, 2.0, 0.0)])
+    assert min(found.real) == 0.0
+    assert sorted(found.real) == pytest.approx([0.0, 1.0, 2.0], rel=1e-15)
+    assert not found.imag.any()
 
 
 def test_the_gate_of_a_hung_follower_counts_with_its_held_drain() -> None:

@@ -121,7 +121,7 @@ def positive_roots(a: Sequence[Number]) -> Array:
         elif len(a) == 3:
             inverse = np.stack(_quadratic_inverse(ratio[0], ratio[1]))
         else:
-            every = _companion(ratio)
+            every = _inverses(ratio)
             inverse = np.where(np.abs(every.imag) <= 1e-7 * np.abs(every), every.real, np.nan)
         roots: Array = np.asarray(np.where(inverse > 0, 1.0 / inverse, np.nan), dtype=np.float64)
         return roots if len(a) <= 3 else _polished(a, roots)
@@ -145,7 +145,7 @@ def inverse_roots(a: Sequence[Number]) -> Complex:
                 inside >= 0, np.where(large == 0, 0.0, ratio[1] / np.where(large == 0, 1.0, large)), half - root
             )
             return np.stack([large, small])
-        return -_companion(ratio)
+        return -_inverses(ratio)
 
 
 def _quadratic_inverse(b: Array, c: Array) -> tuple[Array, Array]:
@@ -158,18 +158,65 @@ def _quadratic_inverse(b: Array, c: Array) -> tuple[Array, Array]:
     return far, near
 
 
-def _companion(ratio: Array) -> Complex:
+def _inverses(ratio: Array) -> Complex:
     """All y = 1/x with 1 + r_1 x + ... + r_n x^n = 0, along the first axis, after scaling to order one."""
     degree = ratio.shape[0]
     powers = np.arange(1, degree + 1).reshape((-1,) + (1,) * (ratio.ndim - 1))
     size = np.max(np.abs(ratio) ** (1.0 / powers), axis=0)
     size = np.where((size > 0) & np.isfinite(size), size, 1.0)
     scaled = np.where(np.isfinite(ratio), ratio, 0.0) / size**powers
-    matrix = np.zeros((*ratio.shape[1:], degree, degree))
+    found = _cubic(scaled[0], scaled[1], scaled[2]) if degree == 3 else _eigenvalues(scaled)
+    return np.asarray(found * size, dtype=np.complex128)
+
+
+def _eigenvalues(scaled: Array) -> Complex:
+    """Roots y of y^n + r_1 y^(n-1) + ... + r_n along the first axis, as eigenvalues of the companion matrix."""
+    degree = len(scaled)
+    matrix = np.zeros((*scaled.shape[1:], degree, degree))
     matrix[..., 0, :] = -np.moveaxis(scaled, 0, -1)
     for k in range(1, degree):
         matrix[..., k, k - 1] = 1.0
-    return np.asarray(np.moveaxis(np.linalg.eigvals(matrix), -1, 0) * size, dtype=np.complex128)
+    return np.asarray(np.moveaxis(np.linalg.eigvals(matrix), -1, 0), dtype=np.complex128)
+
+
+def _cubic(b: Array, c: Array, d: Array) -> Complex:
+    """Roots of y^3 + b y^2 + c y + d along a first axis: one real root in closed form, then those of what is left.
+
+    Ten times faster over many cases than eigenvalues. Where all roots are real the greatest in magnitude is taken out,
+    so that small ones keep their digits.
+    """
+    first = _one_real(b, c, d)
+    for _ in range(2):
+        step = evaluate([d, c, b, 1.0], first) / evaluate([c, 2.0 * b, 3.0], first)
+        first = np.where(np.isfinite(step), first - step, first)
+    great = np.abs(first) ** 3 >= np.abs(d)
+    last = np.where(first == 0, c, -d / np.where(first == 0, 1.0, first))
+    middle = np.where(great & (first != 0), (last - c) / np.where(first == 0, 1.0, first), b + first)
+    half = -middle / 2.0
+    inside = half * half - last
+    root = np.sqrt(inside.astype(np.complex128))
+    far = np.where(half >= 0, half + root, half - root)
+    near = np.where(inside >= 0, np.where(far == 0, 0.0, last / np.where(far == 0, 1.0, far)), np.conj(far))
+    rest = np.stack([far, near])
+    closer = evaluate_complex([d, c, b, 1.0], rest) / evaluate_complex([c, 2.0 * b, 3.0], rest)
+    rest = np.where(np.abs(closer) < 1e-3 * np.abs(rest), rest - closer, rest)
+    return np.concatenate([first[None].astype(np.complex128), rest])
+
+
+def _one_real(b: Array, c: Array, d: Array) -> Array:
+    """A real root of y^3 + b y^2 + c y + d by Cardano's and Viete's formulas; of three, the greatest in magnitude."""
+    third = b / 3.0
+    p, q = c - b * third, (2.0 * third * third - c) * third + d
+    above = (q / 2.0) ** 2 + (p / 3.0) ** 3
+    reach = np.sqrt(np.maximum(-p / 3.0, 0.0))
+    turn = np.arccos(np.clip(-q / 2.0 / np.where(reach == 0, 1.0, reach) ** 3, -1.0, 1.0)) / 3.0
+    ends = 2.0 * reach * np.cos(turn) - third, 2.0 * reach * np.cos(turn + 2.0 * np.pi / 3.0) - third
+    of_three = np.where(np.abs(ends[0]) >= np.abs(ends[1]), *ends)
+    u = -np.where(q >= 0, 1.0, -1.0) * np.cbrt(np.abs(q) / 2.0 + np.sqrt(np.maximum(above, 0.0)))
+    v = np.where(u == 0, 0.0, -p / 3.0 / np.where(u == 0, 1.0, u))
+    width = u * u + v * v + p / 3.0
+    of_one = np.where(p > 0, -q / np.where(width == 0, 1.0, width), u + v) - third
+    return np.asarray(np.where(above > 0, of_one, of_three))
 
 
 def _polished(a: Sequence[Number], roots: Array) -> Array:

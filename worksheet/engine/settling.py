@@ -5,6 +5,7 @@ from __future__ import annotations
 from collections.abc import Sequence
 
 import numpy as np
+from numpy.typing import NDArray
 
 from worksheet.device import charge
 from worksheet.device.arrays import Array, Complex, Number
@@ -16,6 +17,8 @@ _CLOSE, _LEVEL = 1e-14, 2e-14
 """How narrow a bracket, and how near the tolerance, relative to it, an error has to be."""
 _LOGARITHMIC, _EVEN = 96, 400
 """Points in time at which the error of three or more poles is looked at: even ones only where it can ring."""
+_AT_ONCE = 8
+"""Points of that grid that are looked at together."""
 _APART = 1e-7
 
 
@@ -180,14 +183,31 @@ class _Error:
         return np.where(np.isfinite(first), np.clip(first, 0.0, self._bound), 0.0), period
 
     def bracket_by_scan(self) -> tuple[Array, Array, Array]:
-        """Times before and after the last crossing of more poles, from a grid with even and with logarithmic steps."""
-        times = self._bound * 10.0 ** np.linspace(-9, 0, _LOGARITHMIC)[:, None]
+        """Times before and after the last crossing of more poles, from a grid with even and with logarithmic steps.
+
+        The crossing lies near the end, where the slowest pole alone is left, so the grid is looked through from there.
+        """
+        shares = 10.0 ** np.linspace(-9, 0, _LOGARITHMIC)
         if self._rings:
-            times = np.sort(np.concatenate([times, self._bound * np.linspace(0, 1, _EVEN)[:, None]]), axis=0)
-        above = self.excess(times) > 0
-        last = times.shape[0] - 1 - np.argmax(above[::-1], axis=0)
-        columns = np.arange(times.shape[1])
-        return times[last, columns], times[np.minimum(last + 1, times.shape[0] - 1), columns], ~np.any(above, axis=0)
+            shares = np.sort(np.concatenate([shares, np.linspace(0, 1, _EVEN)]))
+        last = np.full(self._bound.shape, -1, dtype=np.intp)
+        left = np.arange(len(last))
+        for stop in range(len(shares), 0, -_AT_ONCE):
+            start = max(stop - _AT_ONCE, 0)
+            above = self._at(left).excess(self._bound[left] * shares[start:stop, None]) > 0
+            found = above.any(axis=0)
+            last[left[found]] = stop - 1 - np.argmax(above[::-1, found], axis=0)
+            left = left[~found]
+            if not len(left):
+                break
+        low, high = np.maximum(last, 0), np.minimum(last + 1, len(shares) - 1)
+        return self._bound * shares[low], self._bound * shares[high], np.asarray(last < 0)
+
+    def _at(self, columns: NDArray[np.intp]) -> _Error:
+        """The same for some of the cases."""
+        if len(columns) == len(self._bound):
+            return self
+        return _Error(self._weights[:, columns], self._rates[:, columns], self._tolerance[columns])
 
 
 def source_step(
