@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import asyncio
+import datetime
 import json
 import os
 import subprocess
@@ -70,6 +71,40 @@ def test_a_copy_makes_it_and_keeps_it_for_the_same_bytes(root: Path) -> None:
     assert asked.key() == asked.key()
     kept = first_picture._kept(asked, asked.key())
     assert kept == made
+
+
+def test_leaving_keeps_what_the_book_looks_like_after_its_edits(root: Path) -> None:
+    asked = wanted(root)
+
+    async def steps(d: Drive) -> None:
+        await d.sheet("sun_gate", "choose.bias_current")
+        await d.press("plus")
+        await d.settled()
+        shown = d.app.shown()
+        assert shown is not None
+        first_picture.keep(asked, *shown)
+
+    drive(root, steps)
+    kept = first_picture._kept(asked, asked.key())
+    assert kept == first_picture.make(asked)
+    sheet = root / "sheets" / "sun_gate.toml"
+    before = asked.kept.read_bytes()
+    sheet.write_bytes(sheet.read_bytes() + b"\n")
+    first_picture.keep(asked, {}, {})
+    assert asked.kept.read_bytes() == before, "other files than those on the disk are no picture of it"
+
+
+def test_the_day_matters_only_where_a_waiver_ends(root: Path, monkeypatch: pytest.MonkeyPatch) -> None:
+    asked = wanted(root)
+    for path in (root / "sheets").iterdir():
+        path.write_text(path.read_text("utf-8").replace("until", "# til"), "utf-8")
+    plain = asked.key()
+    monkeypatch.setattr(first_picture, "_today", lambda: datetime.date(2031, 1, 1))
+    assert asked.key() == plain
+    (root / "sheets" / "sun_gate.toml").write_text("# until\n", "utf-8")
+    on_that_day = asked.key()
+    monkeypatch.setattr(first_picture, "_today", lambda: datetime.date(2031, 1, 2))
+    assert asked.key() != on_that_day
 
 
 def test_other_bytes_other_sizes_and_other_signs_are_other_pictures(root: Path) -> None:

@@ -34,6 +34,7 @@ if TYPE_CHECKING:  # what computes is loaded behind the first picture
     from worksheet.session.session import Outcome, Session
     from worksheet.session.snapshot import Snapshot
     from worksheet.tui.recomputed import Bounded, Hands, Needed, Results
+    from worksheet.tui.rows import Line
     from worksheet.tui.screens.place import Place
 
 Result = TypeVar("Result")
@@ -211,6 +212,15 @@ class BookApp(App[int]):
         self.work()
         threading.Thread(target=self._look, name="look", daemon=True).start()
         self.call_after_refresh(self._offer_left)
+
+    def shown(self) -> tuple[Mapping[str, bytes], Mapping[str, list[Line]]] | None:
+        """The files of the book and the project's screen of them, None where there are no results for them."""
+        results = self.results
+        if results is None or results.revision != self.snapshot.revision:
+            return None
+        from worksheet.tui.pages import book_page
+
+        return self.snapshot.contents, book_page.parts(self.snapshot, results.review, self.size, self.signs)
 
     def _first_theme(self) -> str:
         if self.terminal.no_colour:

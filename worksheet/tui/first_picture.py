@@ -16,7 +16,7 @@ import hashlib
 import json
 import os
 import threading
-from collections.abc import Callable, Mapping
+from collections.abc import Callable, Mapping, Sequence
 from dataclasses import dataclass
 from pathlib import Path
 from typing import TYPE_CHECKING, Any
@@ -31,6 +31,8 @@ Picture = Mapping[str, list[list[tuple[str, str]]]]
 """By part of the screen: its lines, each as pieces of text with their role."""
 
 _LARGEST = 4_000_000
+_END_OF_WAIVER = b"until"
+"""What a file must hold for the day to matter to a verdict."""
 _PARTS = ("title", "heading", "blocks", "detail", "budgets")
 
 
@@ -56,16 +58,26 @@ class Wanted:
         name = hashlib.blake2b(os.fsencode(self.root.resolve()), digest_size=8).hexdigest()
         return self.terminal.state / "pictures" / f"{name}.json"
 
-    def key(self) -> str:
-        """A digest of everything that the picture depends on."""
-        about = (__version__, _program(), self.size, self.read_only, self.terminal.plain_signs, _today().isoformat())
+    def key(self, contents: Mapping[str, bytes] | None = None) -> str:
+        """A digest of everything that the picture depends on.
+
+        Args:
+            contents: The project's files by path within it; those on the disk where None.
+        """
+        files = self._files() if contents is None else contents
+        waived = any(_END_OF_WAIVER in content for content in files.values())
+        day = _today().isoformat() if waived else ""
+        about = (__version__, _program(), self.size, self.read_only, self.terminal.plain_signs, day)
         whole = hashlib.blake2b(repr(about).encode(), digest_size=16)
-        for folder in ("", "process", "sheets"):
-            for path in sorted((self.root / folder).glob("*.toml")):
-                content = path.read_bytes()
-                whole.update(f"\0{folder}/{path.name}\0{len(content)}\0".encode("utf-8", "surrogateescape"))
-                whole.update(content)
+        for path, content in sorted(files.items()):
+            whole.update(f"\0{path}\0{len(content)}\0".encode("utf-8", "surrogateescape"))
+            whole.update(content)
         return whole.hexdigest()
+
+    def _files(self) -> dict[str, bytes]:
+        folders = ("", "process", "sheets")
+        paths = [path for folder in folders for path in (self.root / folder).glob("*.toml")]
+        return {path.relative_to(self.root).as_posix(): path.read_bytes() for path in paths}
 
 
 def _today() -> datetime.date:
@@ -129,14 +141,36 @@ def _make(wanted: Wanted, sink: int) -> None:
         picture = make(wanted)
         with os.fdopen(sink, "w", encoding="utf-8") as pipe:
             json.dump(picture, pipe)
-        with contextlib.suppress(OSError):
-            wanted.kept.parent.mkdir(parents=True, exist_ok=True, mode=0o700)
-            beside = wanted.kept.with_suffix(".part")
-            beside.write_text(json.dumps({"key": key, "picture": picture}), "utf-8")
-            if wanted.key() == key:
-                beside.replace(wanted.kept)
+        _write(wanted, key, picture)
     finally:
         os._exit(0)  # the copy has nothing to clean up: what it shares belongs to the process itself
+
+
+def keep(wanted: Wanted, contents: Mapping[str, bytes], parts: Mapping[str, Sequence[Line]]) -> None:
+    """Keep a picture for the next start, where the files on the disk are those that it shows.
+
+    Args:
+        wanted: What picture it is.
+        contents: The files that it shows, by path within the project.
+        parts: Its lines, by part of the screen.
+    """
+    with contextlib.suppress(OSError):
+        key = wanted.key(contents)
+        if key != wanted.key():
+            return
+        _write(wanted, key, {part: [_plain(line) for line in parts[part]] for part in _PARTS})
+
+
+def _write(wanted: Wanted, key: str, picture: Picture) -> None:
+    """Put a picture where the next start looks for it, if the files are still those that it was made of."""
+    with contextlib.suppress(OSError):
+        wanted.kept.parent.mkdir(parents=True, exist_ok=True, mode=0o700)
+        beside = wanted.kept.with_suffix(f".{os.getpid()}")
+        beside.write_text(json.dumps({"key": key, "picture": picture}), "utf-8")
+        if wanted.key() == key:
+            beside.replace(wanted.kept)
+        else:
+            beside.unlink()
 
 
 def make(wanted: Wanted) -> Picture:

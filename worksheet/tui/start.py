@@ -48,13 +48,16 @@ def start(root: Path, *, read_only: bool) -> int:
         first.show_on(app)
         status = app.run(mouse=False)
         fault = app.fault
+        shown = app.shown()
     except Exception as error:  # noqa: BLE001 - whatever it is, the user gets one sentence and his terminal back
-        status, fault = None, error
+        status, fault, shown = None, error, None
     finally:
         guard.stop()
     if fault is not None:
         guard.restore()
         return _faulted(fault, surroundings)
+    if shown is not None:
+        first_picture.keep(Wanted(root, app.size, read_only, surroundings), *shown)
     return status or 0
 
 
