@@ -10,7 +10,6 @@ from typing import TYPE_CHECKING
 from worksheet.model.problem import Problem
 from worksheet.project.discover import SHEETS, Project, load
 from worksheet.project.evaluate import Evaluator
-from worksheet.review.deeper import Deeper, Wanted, deeper
 from worksheet.review.results import Review
 from worksheet.review.review import review
 
@@ -18,6 +17,7 @@ if TYPE_CHECKING:
     from collections.abc import Mapping
 
     from worksheet.project.case import Case
+    from worksheet.review.deeper import Deeper, Wanted
 
 
 class Workbook:
@@ -45,6 +45,8 @@ class Workbook:
 
     def deeper(self, result: Review, wanted: Wanted) -> Deeper:
         """Fragility and yield beside a review of this workbook."""
+        from worksheet.review.deeper import deeper  # most reviews want neither
+
         return deeper(result, self.evaluator, wanted)
 
 

@@ -175,13 +175,17 @@ def _write(wanted: Wanted, key: str, picture: Picture) -> None:
 
 def make(wanted: Wanted) -> Picture:
     """The picture of a project as it stands."""
-    from worksheet.session.session import Session
+    from worksheet.project.discover import load
+    from worksheet.session.reading import FileReading, Shelf
+    from worksheet.session.snapshot import Snapshot
+    from worksheet.session.workbook import Workbook
     from worksheet.tui.pages import book_page
     from worksheet.tui.signs import signs_for
 
-    session = Session(wanted.root, read_only=wanted.read_only)
-    snapshot = session.snapshot()
-    review = session.review(snapshot, _today())
+    reading = FileReading(Shelf())  # without a session, which also knows how to change things and takes longer to load
+    project = load(wanted.root, reading)
+    snapshot = Snapshot(0, project, reading.contents, read_only=wanted.read_only)
+    review = Workbook(project).review(_today())
     parts = book_page.parts(snapshot, review, wanted.size, signs_for(wanted.terminal.plain_signs))
     return {part: [_plain(line) for line in parts[part]] for part in _PARTS}
 
