@@ -152,7 +152,7 @@ def test_every_size_from_the_least_to_a_wall(root: Path, tmp_path: Path) -> None
             term.keys("down")
         assert SHEET in term.text
         term.keys("m")
-        term.until("bias current across")
+        term.until("where all targets hold")
         for size in ((60, 15), (250, 80), (80, 24)):
             term.resize(size)
             term.read(quiet=0.8)

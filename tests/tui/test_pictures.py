@@ -21,7 +21,7 @@ SIZES = ((80, 24), (120, 40))
 SCREENS: dict[str, tuple[tuple[str, ...], str, str]] = {
     "project": ((), "wake_comparator", "wake_comparator"),
     "sheet": (("down", "enter"), "step 5 %", "by hand"),
-    "map": (("down", "enter", "m"), "Closer", "bias current across"),
+    "map": (("down", "enter", "m"), "Closer", "where all targets hold in"),
     "meeting": (("g",), "to decide in", "to decide in"),
     "help": (("?",), "esc goes back", "esc goes back"),
 }

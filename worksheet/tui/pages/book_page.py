@@ -140,7 +140,7 @@ def _detail(one: TargetReview, signs: Signs) -> Line:
         words.verdict_span(one.verdict, 7),
         Span(wording.margin(one.margin), PLAIN, 7, right=True),
         Span(signs.text(words.metric(one, one.worst)), PLAIN, 10, right=True),
-        Span(signs.text(f"wanted {wording.limits(one.target, one.unit)}"), PLAIN, 22),
+        Span(signs.text(wording.limits(one.target, one.unit)), PLAIN, 16),
         Span(signs.text(words.worst_place(one.worst_at, one.worst_with)), QUIET),
     )
 

@@ -37,7 +37,7 @@ class VariantsScreen(View):
         for column in found.columns:
             yield self._row(column)
         if len(found.columns) == 1:
-            said = "No variants yet; keep the present choice as one, change the sheet, and compare."
+            said = "No variants yet: keep the present choice as one, then change the sheet."
             yield Row("none", ((Span(signs.text(said), QUIET),),), stops=False)
         for n, table in enumerate(variants_text.tables(found, self.columns)):
             yield Row(f"gap.{n}", ((),), stops=False)

@@ -147,7 +147,7 @@ class MapScreen(Place):
         over = "" if self.found is None else {"all": "in every condition", "nominal": "at the nominal condition"}[
             self.found.trials.over
         ]  # fmt: skip
-        said = f"where all targets hold {over}: bias current across, load capacitance up"
+        said = f"where all targets hold {over}"
         return line(Piece(self.name_of_sheet, HEAD), Piece(self.book.signs.text(said), PLAIN), gap=2)
 
     def _marks(self) -> Marks:

@@ -11,7 +11,8 @@ from textual.geometry import Region, Size
 from textual.strip import Strip
 from textual.widget import Widget
 
-from worksheet.tui.rows import ROLES, Line
+from worksheet.report.table import width_of
+from worksheet.tui.rows import QUIET, ROLES, Line
 
 ROLE_CLASSES = frozenset(f"span--{role}" for role in ROLES) | {"span--focus"}
 
@@ -22,13 +23,17 @@ def strip_of(widget: Widget, line: Line, width: int, *, focus: frozenset[int] = 
     Args:
         widget: Gives the styles.
         line: Its spans, already harmless.
-        width: Columns; longer lines are cut, shorter ones filled.
+        width: Columns; longer lines are cut and end in a mark, shorter ones are filled.
         focus: Spans that the cursor is on, by place.
     """
     segments = [
         Segment(span.shown, style_of(widget, "focus" if k in focus else span.role)) for k, span in enumerate(line)
     ]
-    return Strip(segments).adjust_cell_length(width, widget.rich_style)
+    strip = Strip(segments)
+    if strip.cell_length > width and width_of("".join(segment.text for segment in segments).rstrip()) > width:
+        mark = Segment("…", style_of(widget, QUIET))
+        return Strip.join([strip.crop(0, width - 1).adjust_cell_length(width - 1, widget.rich_style), Strip([mark])])
+    return strip.adjust_cell_length(width, widget.rich_style)
 
 
 def style_of(widget: Widget, role: str) -> Style:
