@@ -272,3 +272,32 @@ def test_the_sheet_is_left_alone(tmp_path: Path) -> None:
     only(case, "bias_current", "bandwidth")
     assert sheet == before
     assert case.moves == {}
+
+
+@pytest.mark.parametrize("drive", [0.0, 2e4])
+def test_the_neglects_that_are_named_are_all_that_stand_between_formula_and_metric(
+    drive: float, tmp_path: Path
+) -> None:
+    """A cascode, with three nodes where it is driven through a resistance: poles beyond the first are named too."""
+    project, process, sheet = cascode()
+    sheet["assume"]["drive_resistance"] = drive
+    case = case_of(tmp_path, (project, process, sheet))
+    assert case is not None
+    found = only(case, "load_capacitance", "unity_gain_frequency")
+    assert "poles beyond the first" in found.neglects
+    assert ("drive resistance" in found.neglects) is (drive > 0)
+    (bound,) = [b for name, b in bounds_of(case) if name == "load_capacitance" and b.target == "unity_gain_frequency"]
+    at_bound = case.moved({"load_capacitance": found.value})
+    simplified = Present(at_bound, bound.point).neglecting("unity_gain_frequency", frozenset(found.neglects))
+    assert simplified == pytest.approx(limit_of(case, bound), rel=1e-6), "with these left out the formula is exact"
+    steps = Present(case, bound.point).restored("unity_gain_frequency", found.neglects)
+    exact = at(case.solution.measure("unity_gain_frequency").values, bound.point)
+    assert steps[-1][1] == pytest.approx(exact, rel=1e-9)
+
+
+def cascode() -> tuple[Document, Document, Document]:
+    """A cascode on an ideal source, with a load that is sought."""
+    project, process, sheet = follower()
+    sheet |= {"stage": "cascode", "target": {"unity_gain_frequency": {"min": 2e6}}}
+    sheet["choose"] |= {"cascode_width": 2e-5, "cascode_length": 5e-7}
+    return project, process, sheet

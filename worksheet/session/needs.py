@@ -24,10 +24,6 @@ from worksheet.solver.results import Bound, Solved, Window
 from worksheet.solver.snap import snapped
 from worksheet.solver.variables import INVERSION, on_request, variables
 
-MOST_NODES = 2
-"""Beyond so many nodes nobody writes a formula on paper, and sympy would take minutes to find one."""
-
-
 @dataclass(frozen=True, eq=False)
 class Needs:
     """A sheet and what it needs.
@@ -168,8 +164,6 @@ class Needs:
 
         Returns: "method", "formula" and "hand" (None for a closed form) as in the contract's solve document
         """
-        if len(self.case.circuit.unknown) > MOST_NODES:
-            return {"method": "numeric", "formula": None, "hand": None}
         from worksheet.solver.hand import hand_bound
 
         low, high = goals.limits(self.case.sheet.targets[bound.target])

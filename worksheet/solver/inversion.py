@@ -213,13 +213,17 @@ def _followed(inverted: bool, wide: Transistor | None) -> Any:
 
 
 def _reported(setting: Setting, metric: str, made: frozenset[str]) -> tuple[str, ...]:
-    """Those of the neglects made without which the metric's definition would be another one."""
-    whole = of(setting.neglecting(made)).signature(metric)
-    return tuple(
-        n.name
-        for n in NEGLECTS
-        if n.name in made and of(setting.neglecting(made - {n.name})).signature(metric) != whole
-    )
+    """The fewest of the neglects made that make the metric's definition what it is.
+
+    One may say what another says already (without inner capacitances there are no further poles either), so each that
+    changes nothing is taken back before the next is looked at. With all that are left taken back it is the exact one.
+    """
+    whole, left = of(setting.neglecting(made)).signature(metric), made
+    for neglect in NEGLECTS:
+        fewer = left - {neglect.name}
+        if fewer != left and of(setting.neglecting(fewer)).signature(metric) == whole:
+            left = fewer
+    return tuple(n.name for n in NEGLECTS if n.name in left)
 
 
 def relevant(setting: Setting, metric: str, names: frozenset[str]) -> tuple[str, ...]:
