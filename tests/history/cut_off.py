@@ -13,7 +13,7 @@ from collections.abc import Callable
 from pathlib import Path
 from typing import Any
 
-from worksheet.history import lock, record, repository
+from worksheet.history import lock, program, record, repository
 from worksheet.history.own import own_files
 
 steps = 0
@@ -42,7 +42,7 @@ def main() -> None:
     place = repository.find(project)
     assert isinstance(place, repository.Repository)
     files = own_files(project)
-    repository._run = counted(repository._run)
+    program.run = counted(program.run)
     os.link = counted(os.link)
     shutil.rmtree = counted(shutil.rmtree)  # type: ignore[assignment]
     for name in ("replace", "unlink", "write_text", "write_bytes"):

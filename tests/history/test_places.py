@@ -6,7 +6,7 @@ from pathlib import Path
 import pytest
 
 from tests.history.repositories import SHEET, found, git, leftovers, make_project, make_repository, save, try_to_save
-from worksheet.history import record, repository, revisions
+from worksheet.history import program, record, repository, revisions
 from worksheet.history.outcome import Refused, Why
 
 
@@ -209,7 +209,7 @@ def test_a_repository_of_somebody_else_is_refused_with_what_to_do(
     tmp_path: Path, monkeypatch: pytest.MonkeyPatch
 ) -> None:
     project = make_project(make_repository(tmp_path / "chip") / "p")
-    monkeypatch.setitem(repository._FIXED, "GIT_TEST_ASSUME_DIFFERENT_OWNER", "1")
+    monkeypatch.setitem(program._FIXED, "GIT_TEST_ASSUME_DIFFERENT_OWNER", "1")
     refused = repository.find(project)
     assert isinstance(refused, Refused)
     assert refused.why is Why.UNSAFE
@@ -284,7 +284,7 @@ def test_a_git_that_hangs_is_stopped(tmp_path: Path, monkeypatch: pytest.MonkeyP
     (tmp_path / "bin/git").write_text("#!/bin/sh\nexec sleep 60\n", "utf-8")
     (tmp_path / "bin/git").chmod(0o755)
     monkeypatch.setenv("PATH", f"{tmp_path / 'bin'}{os.pathsep}{os.environ['PATH']}")
-    monkeypatch.setattr(repository, "SECONDS", 0.05)
+    monkeypatch.setattr(program, "SECONDS", 0.05)
     refused = repository.find(project)
     assert isinstance(refused, Refused)
     assert refused.why is Why.TIMEOUT

@@ -7,7 +7,7 @@ from pathlib import Path
 import pytest
 
 from tests.history.repositories import SHEET, found, git, make_project, make_repository, save, try_to_save
-from worksheet.history import record, repository, revisions
+from worksheet.history import program, record, repository, revisions
 from worksheet.history.outcome import Refused
 
 HOOKS = (
@@ -186,13 +186,13 @@ def test_a_name_of_a_revision_is_never_an_option(tmp_path: Path, name: str) -> N
 def test_what_is_never_used(tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> None:
     """`status` and `diff` run programs and `commit` runs hooks, whatever the settings."""
     asked: list[str] = []
-    original = repository._run
+    original = program.run
 
     def listen(folder: Path, arguments: tuple[str, ...], *rest: object, **others: object) -> bytes:
         asked.append(next(one for one in arguments if not one.startswith("-") and "=" not in one))
         return original(folder, arguments, *rest, **others)  # type: ignore[arg-type]
 
-    monkeypatch.setattr(repository, "_run", listen)
+    monkeypatch.setattr(program, "run", listen)
     project = make_project(make_repository(tmp_path / "chip") / "p")
     everything(project)
     assert isinstance(try_to_save(project, "x"), record.Unchanged)

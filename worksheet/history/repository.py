@@ -1,74 +1,23 @@
-"""Git, spoken in this one file: what is run, with which settings and in which environment.
+"""What git is asked, in this one file: where a repository is, what it holds, and what is put into it.
 
-A repository may have been received from anybody. So the git program is started with an argument list and never through
-a shell, with standard input closed, a time limit and an environment of which git's own variables are dropped; every
-setting by which a repository could name a program is overridden; and only plumbing is used, since `status` and `diff`
-run filters and `commit` runs hooks. Hooks, filters and signing programs are therefore not run, also not the user's own.
-
-What the calls mean together is told elsewhere: lock and record write, revisions read.
+How the program is run, and what a repository that came from anybody must not make it do, stands in program. What the
+calls mean together is told elsewhere: lock and record write, revisions read.
 """
 
 from __future__ import annotations
 
 import os
 import re
-import subprocess
 from collections.abc import Iterable, Mapping, Sequence
 from dataclasses import dataclass, field
 from pathlib import Path
 from types import MappingProxyType
 
+from worksheet.history import program
 from worksheet.history.outcome import ADVICE, IN_PROGRESS, Entry, Head, Person, Refused, RefusedError, Why
 from worksheet.model.text import clean
 
-SECONDS = 60.0
-"""Longest that one call of git may take. [s]"""
-
-_OPTIONS = (
-    "core.fsmonitor=false",
-    "core.hooksPath=/dev/null",
-    "gc.auto=0",
-    "maintenance.auto=false",
-    "core.pager=cat",
-    "diff.external=",
-    "core.quotePath=false",
-    "log.showSignature=false",  # would start the signature program that the repository names
-    "commit.gpgSign=false",
-    "protocol.allow=never",  # nothing here has a reason to reach a remote
-    "safe.bareRepository=explicit",  # a project folder laid out like a repository is none
-    "user.useConfigOnly=true",  # rather ask than make up an address from the name of the machine
-    "core.splitIndex=false",  # a copy of the index has to be whole
-    "diff.relative=false",
-    "diff.orderFile=/dev/null",
-    "log.follow=false",
-    "i18n.commitEncoding=UTF-8",
-    "i18n.logOutputEncoding=UTF-8",
-)
-_KEPT = {
-    "GIT_AUTHOR_NAME", "GIT_AUTHOR_EMAIL", "GIT_AUTHOR_DATE", "GIT_COMMITTER_NAME", "GIT_COMMITTER_EMAIL",
-    "GIT_COMMITTER_DATE", "GIT_CONFIG_GLOBAL", "GIT_CONFIG_SYSTEM", "GIT_CONFIG_NOSYSTEM",
-    "GIT_CEILING_DIRECTORIES", "GIT_DISCOVERY_ACROSS_FILESYSTEM",
-}  # fmt: skip
-_FIXED = {
-    "GIT_TERMINAL_PROMPT": "0",
-    "GIT_OPTIONAL_LOCKS": "0",
-    "GIT_LITERAL_PATHSPECS": "1",
-    "GIT_NO_REPLACE_OBJECTS": "1",
-    "GIT_NO_LAZY_FETCH": "1",
-    "GIT_ALLOW_PROTOCOL": "none",
-    "LC_ALL": "C",
-}
-_PROGRAM = "git"
 _NONE_ENCLOSES = "not a git repository (or any"
-_KINDS = (
-    ("dubious ownership", Why.UNSAFE),
-    ("unsafe repository", Why.UNSAFE),
-    ("must be run in a work tree", Why.BARE),
-    ("cannot use bare repository", Why.BARE),
-    ("Please tell me who you are", Why.NO_IDENTITY),
-    ("auto-detection is disabled", Why.NO_IDENTITY),
-    ("ident name", Why.NO_IDENTITY),
-)
 _ID = re.compile(r"[0-9a-f]{40}(?:[0-9a-f]{24})?")
 _NAME = re.compile(r"[^\s:\\?*\[\x00-\x20\x7f-]((?!\.\.|\^[!@-])[^\s:\\?*\[\x00-\x20\x7f])*")
 
@@ -110,7 +59,7 @@ class Repository:
         self, *arguments: str, stdin: bytes = b"", index: Path | None = None, person: Person | None = None,
         also_fails: Sequence[int] = (), keep: Sequence[int] = (),
     ) -> bytes:  # fmt: skip
-        """Run one git command at the top of the working files; what it printed. See _run."""
+        """Run one git command at the top of the working files; what it printed. See program.run."""
         hooks = _configured_hooks(self.settings)
         environment = {"GIT_CONFIG_COUNT": str(len(hooks))}
         for number, hook in enumerate(hooks):
@@ -120,7 +69,7 @@ class Repository:
         if person is not None:
             for role in ("AUTHOR", "COMMITTER"):
                 environment |= {f"GIT_{role}_NAME": person.name, f"GIT_{role}_EMAIL": person.email}
-        return _run(self.top, arguments, stdin, environment, also_fails, keep)
+        return program.run(self.top, arguments, stdin, environment, also_fails, keep)
 
     # What stands
 
@@ -319,9 +268,9 @@ def create(folder: Path) -> Repository | Refused:
         return found
     try:
         # Without a template no hook of anybody's comes in; the name of the first branch is the user's to set.
-        chosen = _run(folder, ("config", "--get", "init.defaultBranch"), also_fails=(1,))
+        chosen = program.run(folder, ("config", "--get", "init.defaultBranch"), also_fails=(1,))
         branch = () if chosen.strip() else ("-c", "init.defaultBranch=main")
-        _run(folder, (*branch, "init", "--quiet", "--template=", "."))
+        program.run(folder, (*branch, "init", "--quiet", "--template=", "."))
         return _find(folder)
     except RefusedError as error:
         return error.refused
@@ -329,7 +278,7 @@ def create(folder: Path) -> Repository | Refused:
 
 def _find(folder: Path) -> Repository:
     asked = ("--is-inside-work-tree", "--show-object-format", "--absolute-git-dir", "--show-toplevel", "--show-prefix")
-    lines = os.fsdecode(_run(folder, ("rev-parse", *asked))).split("\n")
+    lines = os.fsdecode(program.run(folder, ("rev-parse", *asked))).split("\n")
     if lines[0] != "true":
         raise RefusedError(Why.BARE, ADVICE[Why.BARE])
     if len(lines) != len(asked) + 1:
@@ -339,7 +288,7 @@ def _find(folder: Path) -> Repository:
         raise RefusedError(
             Why.FAILED, f"The repository keeps its working files elsewhere (core.worktree is {clean(str(top))})."
         )
-    found = os.fsdecode(_run(folder, ("config", "--null", "--list"))).split("\0")
+    found = os.fsdecode(program.run(folder, ("config", "--null", "--list"))).split("\0")
     settings = {key: value if line else "true" for key, line, value in (entry.partition("\n") for entry in found)}
     return Repository(top, Path(lines[2]), lines[4], lines[1], MappingProxyType(settings))
 
@@ -348,57 +297,3 @@ def _configured_hooks(settings: Mapping[str, str]) -> list[str]:
     """Names of the hooks that newer versions of git take from their settings rather than from the folder of hooks."""
     names = (key.removeprefix("hook.").rpartition(".")[0] for key in settings if key.startswith("hook."))
     return sorted({name for name in names if name})
-
-
-def _environment() -> dict[str, str]:
-    """The user's environment without what would turn git to another repository, another program or another language."""
-    kept = {name: value for name, value in os.environ.items() if not name.startswith("GIT_") or name in _KEPT}
-    # An entry that is not absolute would find programs in whatever folder the project lies in.
-    kept["PATH"] = os.pathsep.join(
-        place for place in kept.get("PATH", os.defpath).split(os.pathsep) if place.startswith(os.sep)
-    )
-    kept.pop("LANGUAGE", None)
-    return kept | _FIXED
-
-
-def _run(
-    folder: Path, arguments: Sequence[str], stdin: bytes = b"",
-    environment: Mapping[str, str] = MappingProxyType({}), also_fails: Sequence[int] = (), keep: Sequence[int] = (),
-) -> bytes:  # fmt: skip
-    """Run git once.
-
-    Args:
-        folder: Where.
-        arguments: The command.
-        stdin: What it reads; without it standard input is closed.
-        environment: Added to the filtered one.
-        also_fails: Exit statuses other than 0 that are an answer.
-        keep: Open files that stay open in git, so that a lock outlives us as long as git runs.
-
-    Returns: what it printed.
-
-    Raises: RefusedError.
-    """
-    options = [part for option in _OPTIONS for part in ("-c", option)]
-    command = [_PROGRAM, "--no-pager", *options, *arguments]
-    closed = None if stdin else subprocess.DEVNULL
-    environment = _environment() | dict(environment)
-    if not environment["PATH"]:  # an empty one would mean the folder that the project lies in
-        raise RefusedError(Why.NO_PROGRAM, ADVICE[Why.NO_PROGRAM])
-    try:
-        done: subprocess.CompletedProcess[bytes] = subprocess.run(
-            command, cwd=folder, env=environment, stdin=closed, input=stdin or None,
-            capture_output=True, timeout=SECONDS, check=False, pass_fds=keep,
-        )  # fmt: skip
-    except subprocess.TimeoutExpired:
-        message = f"git {arguments[0]} took longer than {SECONDS:.0f} s and was stopped: is the disk slow?"
-        raise RefusedError(Why.TIMEOUT, message) from None
-    except (OSError, ValueError) as error:
-        if isinstance(error, FileNotFoundError) and error.filename == _PROGRAM:
-            raise RefusedError(Why.NO_PROGRAM, ADVICE[Why.NO_PROGRAM]) from None
-        raise RefusedError(Why.FAILED, f"git could not be started in {clean(str(folder))}: {error}.") from None
-    if done.returncode == 0 or done.returncode in also_fails:
-        return done.stdout
-    said = clean(done.stderr.decode("utf-8", "replace").strip(), lines=True)
-    why = next((kind for text, kind in _KINDS if text in said), Why.FAILED)
-    raise RefusedError(why, ADVICE.get(why) or f"git {arguments[0]} failed: {said or f'exit {done.returncode}'}")

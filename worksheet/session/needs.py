@@ -24,6 +24,7 @@ from worksheet.solver.results import Bound, Solved, Window
 from worksheet.solver.snap import snapped
 from worksheet.solver.variables import INVERSION, on_request, variables
 
+
 @dataclass(frozen=True, eq=False)
 class Needs:
     """A sheet and what it needs.
