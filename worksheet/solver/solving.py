@@ -186,12 +186,13 @@ def _general(expression: Any, value: Any, symbol: Any) -> list[Any]:
 
 
 def _solvable(shape: Any, symbol: Any) -> bool:
-    """Whether a shape has a short solution: the symbol stands in it once, or twice and under no power of a letter."""
+    """Whether a shape has a short solution: the symbol stands in it once.
+
+    Where it stands beside a logarithm of itself, sympy looks for a second and more, and finds nothing that is short.
+    """
     import sympy
 
-    count = sum(1 for part in sympy.preorder_traversal(shape) if part == symbol)
-    powers = any(p.base.has(symbol) and not p.exp.is_number for p in shape.atoms(sympy.Pow))
-    return count == 1 or (count == 2 and not powers)
+    return sum(1 for part in sympy.preorder_traversal(shape) if part == symbol) == 1
 
 
 @lru_cache(maxsize=256)
