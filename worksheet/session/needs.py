@@ -19,7 +19,7 @@ from worksheet.sheetfile.document import WriteRefusedError
 from worksheet.sheetfile.edit import SetValue, apply
 from worksheet.sheetfile.write import save
 from worksheet.solver import goals, needed
-from worksheet.solver.propose import freedoms
+from worksheet.solver.propose import following, freedoms
 from worksheet.solver.results import Bound, Solved, Window
 from worksheet.solver.snap import snapped
 from worksheet.solver.variables import INVERSION, on_request, variables
@@ -143,7 +143,8 @@ class Needs:
         if point is None:
             return {}
         trials = needed.trials_of(self.case, self.solved.over)
-        return snapped(trials, {name: point.values[name] for name in freedoms(self.case)})
+        bias = following(self.case, point.values)
+        return snapped(trials, {name: point.values[name] for name in freedoms(self.case)}, bias)
 
     def take(self) -> list[Problem]:
         """Write the proposal into the sheet's file, or say why that cannot be."""

@@ -138,6 +138,6 @@ def _allowed(subject: Subject, sizes: Mapping[str, float]) -> bool:
         for side, limit in zip(goals.SIDES, goals.limits(target), strict=True):
             if limit is not None:
                 slack = np.atleast_1d(goals.slack(measured, limit, side))
-                if np.min(slack if every else slack.reshape(-1)[:1]) < -goals.TOLERANCE:
+                if np.min(slack if every else slack.reshape(-1)[:1]) < 0:  # the tolerance is left to what comes after
                     return False
     return True

@@ -13,6 +13,7 @@ from worksheet.solver.search import Search
 from worksheet.solver.subject import scalar
 from worksheet.solver.trials import Trials, holds
 from worksheet.solver.variables import variables
+from worksheet.stages.stage import BIAS
 
 _HELPERS = ("length", "load_capacitance", "bias_current", "width", "bias_length", "bias_width")
 
@@ -131,7 +132,8 @@ def _reachable(trials: Trials, free: Free) -> dict[str, float]:
     for name in _HELPERS:
         if name in free.names or name not in every or name in free.subject.sheet.assume:
             continue
-        wider = Free(free.subject, every, (*free.names, name), apart=True)
+        bias = None if name.startswith(f"{BIAS}_") and name != "bias_current" else free.bias
+        wider = Free(free.subject, every, (*free.names, name), bias, apart=True)
         found = Search(trials, wider.space()).least()
         if found.feasible:
             return {name: _nearest(trials, wider, name, wider.place(found)[name])}

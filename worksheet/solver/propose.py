@@ -20,7 +20,7 @@ from worksheet.stages.stage import BIAS
 INVERSION_RANGE = (0.01, 100.0)
 """Inversion coefficients over which a recommended point is looked for."""
 
-_ROUNDS, _SETTLED = 6, 1e-5
+_ROUNDS, _SETTLED = 6, 1e-9
 """A current source whose size is left out is sized anew for each current that a search comes to, until it settles."""
 
 _CURRENT_RANGE = (1e-15, 1.0)
@@ -202,12 +202,16 @@ def point(subject: Subject, values: Mapping[str, float]) -> Point:
 
 @dataclass(frozen=True, eq=False)
 class Optimum:
-    """What the search for the recommended point came to: the two points, or why there are none."""
+    """What the search for the recommended point came to: the two points, or why there are none.
+
+    `place` is where it ended, all holding there or not: values by key, none where nothing is free.
+    """
 
     recommended: Point | None
     compact: Point | None
     reason: str | None
     free: Free
+    place: Mapping[str, float]
 
 
 NOTHING_FREE = "bias current and width are both assumed"
@@ -215,28 +219,57 @@ NO_BOUND = "no target bounds the bias current from below"
 
 
 def optimum(subject: Subject, trials: Trials) -> Optimum:
-    """The recommended and the compact point of a sheet that has a number for everything."""
+    """The recommended and the compact point of a sheet that has a number for everything.
+
+    Sizes that the sheet leaves out of its current source's transistor go with the point, as they will once it is taken.
+    """
+    bias = bias_size.of(subject)
     for _ in range(_ROUNDS):
-        found = _optimum(subject, trials)
+        found = _steady(subject, trials, bias)
+        if bias is None or not found.place:
+            break
+        bias, settled = _sized(bias, subject.moved(found.place))
+        if settled:
+            break
+    return found
+
+
+def following(subject: Subject, place: Mapping[str, float]) -> BiasSize | None:
+    """What sizes that are left out of the current source's transistor go by at a place; None where none are."""
+    bias = bias_size.of(subject)
+    return None if bias is None else bias.allowed(subject.moved(place))
+
+
+def _sized(bias: BiasSize, subject: Subject) -> tuple[BiasSize, bool]:
+    """The current source as the ranges allow it at a subject's values, and whether it was that already."""
+    sized = bias.allowed(subject)
+    return sized, abs(sized.inversion - bias.inversion) <= _SETTLED * bias.inversion
+
+
+def _steady(subject: Subject, trials: Trials, bias: BiasSize | None) -> Optimum:
+    """Both points with the ends of ranges to which their own signs point among the trials."""
+    for _ in range(_ROUNDS):
+        found = _optimum(subject, trials, bias)
         points = [p.values for p in (found.recommended, found.compact) if p is not None]
-        wider = [w for w in (_steered(trials, {n: p[n] for n in found.free.names}) for p in points) if w is not None]
+        moved = [{n: p[n] for n in found.place} for p in points]
+        wider = [w for w in (_steered(trials, place) for place in moved) if w is not None]
         if not wider:
             break
         trials = wider[0]
     return found
 
 
-def _optimum(subject: Subject, trials: Trials) -> Optimum:
-    free = Free(subject, variables(subject), freedoms(subject))
+def _optimum(subject: Subject, trials: Trials, bias: BiasSize | None) -> Optimum:
+    free = Free(subject, variables(subject), freedoms(subject), bias)
     if not free.names:
-        return Optimum(None, None, NOTHING_FREE, free)
+        return Optimum(None, None, NOTHING_FREE, free, {})
     search = Search(trials, free.space())
     found = search.least()
     place = free.place(found)
     if not found.feasible:
-        return Optimum(None, None, "no point meets every target", free)
+        return Optimum(None, None, "no point meets every target", free, place)
     if "bias_current" in free.names and not _bounded_below(free, trials, found):
-        return Optimum(None, None, NO_BOUND, free)
+        return Optimum(None, None, NO_BOUND, free, place)
     if free.by_inversion:
         tied = _compact(free, search, found, 1e-6)
         place = tied if tied is not None else place
@@ -244,7 +277,8 @@ def _optimum(subject: Subject, trials: Trials) -> Optimum:
     else:
         smallest = None
     recommended = point(subject, place)
-    return Optimum(recommended, point(subject, smallest) if smallest is not None else recommended, None, free)
+    compact = point(subject, smallest) if smallest is not None else recommended
+    return Optimum(recommended, compact, None, free, place)
 
 
 def _compact(free: Free, search: Search, least: Found, allowance: float) -> dict[str, float] | None:
@@ -288,9 +322,7 @@ def propose(subject: Subject) -> Mapping[str, float]:
         if bias is None:
             break
         known = subject.with_filled({**filled, **bias.at(subject.with_filled(filled))})
-        sized = bias.allowed(known)
-        settled = abs(sized.inversion - bias.inversion) <= _SETTLED * bias.inversion
-        bias = sized
+        bias, settled = _sized(bias, known)
         filled |= bias.at(known)
         if settled or not searched:
             break

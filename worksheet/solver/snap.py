@@ -8,9 +8,10 @@ from itertools import product
 import numpy as np
 
 from worksheet.model.sheet_keys import GEOMETRY
+from worksheet.solver.bias_size import BiasSize
 from worksheet.solver.propose import Free
 from worksheet.solver.search import Search
-from worksheet.solver.subject import Subject
+from worksheet.solver.subject import Subject, scalar
 from worksheet.solver.trials import Trials, holds
 from worksheet.solver.variables import Variable, variables
 
@@ -18,12 +19,13 @@ _DIGITS = 4
 _STEPS = 3
 
 
-def snapped(trials: Trials, proposal: Mapping[str, float]) -> dict[str, float]:
+def snapped(trials: Trials, proposal: Mapping[str, float], bias: BiasSize | None = None) -> dict[str, float]:
     """A proposal with its sizes on the grid and its other values to four digits, moved to the safe side.
 
     Args:
         trials: The sheet's constraints.
         proposal: Values by key. [unit of each key]
+        bias: What sizes go by that the sheet leaves out of its current source's transistor; None for no such sizes.
     Returns: values that meet everything where such are near, else the plainly rounded proposal; the least current of
         the candidates, then the least area
     """
@@ -36,7 +38,7 @@ def snapped(trials: Trials, proposal: Mapping[str, float]) -> dict[str, float]:
     chosen = {name: points[0] for name, points in sizes.items()} | {n: _rounded(v, up=None) for n, v in rest.items()}
     for point in product(*sizes.values()):
         candidate = dict(zip(sizes, point, strict=True))
-        found = _completed(trials, candidate, rest)
+        found = _completed(trials, candidate, rest, bias)
         if found is None:
             continue
         rank = (found.get("bias_current", 0.0), float(np.prod(list(point))))
@@ -57,14 +59,16 @@ def _grid_points(subject: Subject, variable: Variable, value: float) -> list[flo
     return [float(f"{p:.12g}") for p in inside] or [value]
 
 
-def _completed(trials: Trials, sizes: Mapping[str, float], rest: Mapping[str, float]) -> dict[str, float] | None:
+def _completed(
+    trials: Trials, sizes: Mapping[str, float], rest: Mapping[str, float], bias: BiasSize | None
+) -> dict[str, float] | None:  # fmt: skip
     """Sizes with the other values moved as little as needed to meet everything, None where that is not possible."""
     exact = {**sizes, **rest}
     for up in (None, True, False):
         rounded = {**sizes, **{name: _rounded(value, up) for name, value in rest.items()}}
-        if _meets(trials, rounded):
+        if _meets(trials, rounded, bias):
             return rounded
-    if _meets(trials, exact):
+    if _meets(trials, exact, bias):
         return exact
     if "bias_current" not in rest:
         return None
@@ -74,17 +78,20 @@ def _completed(trials: Trials, sizes: Mapping[str, float], rest: Mapping[str, fl
         trials.vertices,
         trials.waived,
     )
-    found = Search(held, Free(held.subject, variables(held.subject), ("bias_current",)).space()).least()
+    found = Search(held, Free(held.subject, variables(held.subject), ("bias_current",), bias).space()).least()
     if not found.feasible:
         return None
     current = float(np.exp(found.place[0]))
     for candidate in (_rounded(current, up=True), current):
-        if _meets(trials, {**exact, "bias_current": candidate}):
+        if _meets(trials, {**exact, "bias_current": candidate}, bias):
             return {**exact, "bias_current": candidate}
     return None
 
 
-def _meets(trials: Trials, values: Mapping[str, float]) -> bool:
+def _meets(trials: Trials, values: Mapping[str, float], bias: BiasSize | None) -> bool:
+    if bias is not None:
+        current, length = (values.get(n, scalar(trials.subject.value(n))) for n in ("bias_current", "length"))
+        values = {**values, **{name: float(size) for name, size in bias.sizes(current, length).items()}}
     moves = {name: np.array([value]) for name, value in values.items()}
     return bool(holds(trials.constraints, trials.clear(moves).slack).all())
 
