@@ -638,7 +638,7 @@ COMMANDS = (
         "backspace",
         "Back",
         "Go back to where you came from.",
-        (SHEET, ALGEBRA, MAP, MEETING, VARIANTS, SWEEP, FRONT, CHAIN, FAILING),
+        tuple(place for place in EVERYWHERE if place != BOOK),
         foot=10,
     ),
     Command("leave", "q", "ctrl+x", "Leave", "Leave the program. Everything is on disk already.", EVERYWHERE, foot=10),
