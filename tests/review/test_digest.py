@@ -222,3 +222,24 @@ def test_every_other_number_counts_and_the_same_number_does_not(name: str, facto
         same = basis(Path(folder) / "c", replaced(FOLLOWER, f"{name} = {stated}", f"{name} = {VALUES[name]!r}"))
     assert (moved == plain) is (number == VALUES[name])
     assert same == plain
+
+
+@pytest.mark.parametrize(
+    "written",
+    [
+        "settling_tolerance = 0.001",
+        'noise_from = "1 Hz"',
+        'drive_resistance = "0 ohm"',
+        "bias_overhead = 0",
+        "bias_temperature_exponent = 0.0",
+        'saturation_margin = "0 V"',
+        'temperature = ["0 °C", "27 °C"]',
+    ],
+)
+def test_what_holds_without_being_written_counts_for_nothing(written: str, tmp_path: Path) -> None:
+    assert basis(tmp_path / "a", replaced(FOLLOWER, "[own]", f"{written}\n\n[own]")) == basis(tmp_path / "b")
+
+
+def test_an_ideal_source_written_out_counts_for_nothing(tmp_path: Path) -> None:
+    written = '[bias]\ndevice = "ideal"\noutput_conductance = "0 S"\ncapacitance = "0 F"\n\n[assume]'
+    assert basis(tmp_path / "a", replaced(FOLLOWER, "[assume]", written)) == basis(tmp_path / "b")

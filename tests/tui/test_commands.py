@@ -142,6 +142,6 @@ def test_what_cannot_be_used_is_told_and_changes_nothing(tmp_path: Path, text: s
     assert any(said in str(problem) for problem in found.problems), [str(p) for p in found.problems]
 
 
-@pytest.mark.parametrize("place", [place for place in commands.PLACES if place != commands.BOOK])
+@pytest.mark.parametrize("place", [place for place in PLACES if place != BOOK])
 def test_every_screen_but_the_first_has_a_way_back(place: str) -> None:
-    assert "back" in {command.name for command in commands.of_place(place)}
+    assert "back" in {command.name for command in of_place(place)}

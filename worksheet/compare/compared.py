@@ -154,7 +154,7 @@ def _around_nominal(old: State, new: State, change: SheetChange) -> Iterator[str
 
 def _deep(old: State, new: State, causes: Causes, change: SheetChange) -> SheetChange:
     """A sheet's change with the causes of what moved, and with what is needed now and was before."""
-    if change.status in ("added", "removed"):
+    if not {change.sheet} <= old.project.sheets.keys() & new.project.sheets:
         return change
     moved = {
         r.metric: r.new - r.old for r in change.results if r.old is not None and r.new is not None and r.new != r.old
@@ -199,15 +199,25 @@ def _process(state: State) -> inputs.Stated:
 
 
 def _names(old: State, new: State) -> list[str]:
-    return sorted({*old.project.sheets, *new.project.sheets})
+    return sorted(_there(old) | _there(new))
+
+
+def _there(state: State) -> set[str]:
+    """Every sheet that has a file, readable or not."""
+    return {*state.project.sheets, *state.project.bad}
 
 
 def _sheet(old: State, new: State, name: str) -> SheetChange | None:
     before, after = old.project.sheets.get(name), new.project.sheets.get(name)
+    results = _results(_reviewed(old, name), _reviewed(new, name))
+    if name in old.project.bad or name in new.project.bad:  # there, but not to be read or not to be reviewed
+        status = "added" if name not in _there(old) else "removed" if name not in _there(new) else "changed"
+        return (
+            None if before is None and after is None and status == "changed" else SheetChange(name, status, (), results)
+        )
     stated = inputs.moved(
         {} if before is None else inputs.of_sheet(before), {} if after is None else inputs.of_sheet(after)
     )
-    results = _results(_reviewed(old, name), _reviewed(new, name))
     if before is None or after is None:
         return SheetChange(name, "added" if before is None else "removed", stated, results)
     if not stated and not results:

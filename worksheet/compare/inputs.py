@@ -7,6 +7,7 @@ from collections.abc import Iterator, Mapping
 from dataclasses import dataclass
 from typing import Any
 
+from worksheet.model import metrics
 from worksheet.model.keys import Key
 from worksheet.model.process_keys import CORNER_CHANGES, DEVICE_PARAMETERS
 from worksheet.model.project_keys import SUPPLY, TEMPERATURE
@@ -56,7 +57,7 @@ def of_project(file: ProjectFile) -> Stated:
         "conditions.nominal.supply": (file.nominal.supply, _unit(SUPPLY)),
     }
     texts = {name: (getattr(file, name), "") for name in ("title", "owner", "process")}
-    budgets = {f"budget.{name}.max": (value, "") for name, value in file.budgets.items()}
+    budgets = {f"budget.{name}.max": (value, _metric_unit(name)) for name, value in file.budgets.items()}
     requirements = {f"requirement.{number}": (text, "") for number, text in file.requirements.items()}
     return {**texts, **conditions, **budgets, **requirements, **_chains(file)}
 
@@ -69,7 +70,7 @@ def _chains(file: ProjectFile) -> Stated:
         found[f"{where}.title"] = (chain.title or None, "")
         found[f"{where}.settling_tolerance"] = (chain.settling_tolerance, "")
         for key, target in chain.targets.items():
-            found.update(_fields(f"{where}.{key}", target, {"name", "line"}))
+            found.update(_fields(f"{where}.{key}", target, {"name", "line"}, _metric_unit(key)))
     return {key: entry for key, entry in found.items() if entry[0] is not None}
 
 
@@ -102,7 +103,7 @@ def of_sheet(sheet: Sheet) -> Stated:
     for how in SOLVE_KEYS:
         found[f"solve.{how.name}"] = (getattr(sheet.solve, how.name), _unit(how))
     for name, target in sheet.targets.items():
-        found.update(_fields(f"target.{name}", target, {"name", "line"}))
+        found.update(_fields(f"target.{name}", target, {"name", "line"}, _metric_unit(name) or target.unit or ""))
     for name, variant in sheet.variants.items():
         for key, value in variant.changes.items():
             found.update(_value(f"variant.{name}.{key}", value, value.unit or units.get(key, "")))
@@ -110,20 +111,31 @@ def of_sheet(sheet: Sheet) -> Stated:
         found[f"variant.{name}.note"] = (variant.note, "")
     for array, attribute in _ENTRIES.items():
         for number, entry in enumerate(getattr(sheet, attribute)):
-            found.update(_fields(f"{array}.{number}", entry, {"line"}))
+            unit = _metric_unit(getattr(entry, "metric", getattr(entry, "target", "")))
+            found.update(_fields(f"{array}.{number}", entry, {"line"}, unit))
     return {key: entry for key, entry in found.items() if entry[0] not in (None, "", ())}
 
 
 _TOML = {"minimum": "min", "maximum": "max", "yield_fraction": "yield"}
+_MEASURED = {"minimum", "maximum", "value", "low", "high", "spread"}
+"""Fields that are in the unit of the metric that the entry is about."""
 
 
-def _fields(prefix: str, entry: Any, left_out: set[str]) -> Iterator[tuple[str, tuple[Any, str]]]:
+def _metric_unit(name: str) -> str:
+    """The unit of a metric, "" for a name that is none."""
+    metric = metrics.find(name)
+    return "" if metric is None else metric.dimension.unit
+
+
+def _fields(
+    prefix: str, entry: Any, left_out: set[str], unit: str = ""
+) -> Iterator[tuple[str, tuple[Any, str]]]:  # fmt: skip
     for name in entry.__slots__:
         value = getattr(entry, name)
         if name not in left_out and value is not None and value != "":
             text = getattr(value, "text", None)
             plain = text if text is not None else value if isinstance(value, str | float | int) else str(value)
-            yield f"{prefix}.{_TOML.get(name, name)}", (plain, "")
+            yield f"{prefix}.{_TOML.get(name, name)}", (plain, unit if name in _MEASURED else "")
 
 
 def _value(key: str, value: Value, unit: str) -> dict[str, tuple[Any, str]]:

@@ -114,7 +114,7 @@ def checked(project: Project) -> Project:
         found = [
             *check.sheet_problems(sheet, project.process),
             *variant_problems(sheet, project.process),
-            *links.name_problems(sheet, project.sheets, used),
+            *links.name_problems(sheet, project.sheets, project.bad, used),
         ]
         if found:
             problems += found

@@ -6,7 +6,7 @@ loop.
 
 from __future__ import annotations
 
-from collections.abc import Iterable, Iterator, Mapping, Sequence
+from collections.abc import Collection, Iterable, Iterator, Mapping, Sequence
 
 from worksheet.model import metrics
 from worksheet.model.formula import Formula
@@ -58,11 +58,14 @@ def names_used(sheets: Mapping[str, Sheet]) -> frozenset[str]:
     return frozenset(n for sheet in sheets.values() for _, formula, _ in formulas_of(sheet) for n in formula.names)
 
 
-def name_problems(sheet: Sheet, sheets: Mapping[str, Sheet], elsewhere: frozenset[str]) -> list[Problem]:
+def name_problems(
+    sheet: Sheet, sheets: Mapping[str, Sheet], bad: Collection[str], elsewhere: frozenset[str]
+) -> list[Problem]:  # fmt: skip
     """Names in a sheet's formulas that do not exist, and own names that nothing uses.
 
     Args:
-        sheet, sheets: The sheet, and all of its project.
+        sheet, sheets: The sheet, and all of its project that can be read.
+        bad: Names of those that cannot.
         elsewhere: names_used of the project.
     """
     problems: list[Problem] = []
@@ -70,7 +73,12 @@ def name_problems(sheet: Sheet, sheets: Mapping[str, Sheet], elsewhere: frozense
     for key, formula, own_metrics in formulas_of(sheet):
         for name in formula.names:
             used.add(name)
-            message = _unknown(sheet, sheets, name, own_metrics)
+            spoilt = name.partition(".")[0] if "." in name else ""
+            message = (
+                f"it takes {name!r} from a sheet that has problems of its own"
+                if spoilt in bad
+                else _unknown(sheet, sheets, name, own_metrics)
+            )
             if message:
                 problems.append(
                     Problem(sheet.file, sheet.lines.get(f"{key}.formula", sheet.lines.get(key)), key, message)

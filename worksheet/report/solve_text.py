@@ -81,6 +81,11 @@ def shown(key: Key, value: float | None) -> str:
     return f"{value:.4g}" if key.dimension is None else format_quantity(value, key.dimension)
 
 
+def _end(key: Key, value: float | None, side: str) -> str:
+    """An end of what is needed, on the side that meets."""
+    return shown(key, None if value is None else wording.safe(value, side))
+
+
 def _window(window: Window, key: Key, hand: Hand, width: int) -> Iterator[str]:
     kept = f", the {window.keep} kept" if window.keep else ""
     symbol = f" {key.symbol}" if key.symbol and key.symbol not in key.title.split() else ""
@@ -98,8 +103,8 @@ def _window(window: Window, key: Key, hand: Hand, width: int) -> Iterator[str]:
 
 
 def _region(region: Region, key: Key) -> str:
-    low = f"at least {shown(key, region.low)} ({region.low_set_by})" if region.low_set_by else ""
-    high = f"at most {shown(key, region.high)} ({region.high_set_by})" if region.high_set_by else ""
+    low = f"at least {_end(key, region.low, 'low')} ({region.low_set_by})" if region.low_set_by else ""
+    high = f"at most {_end(key, region.high, 'high')} ({region.high_set_by})" if region.high_set_by else ""
     return ", ".join(part for part in (low, high) if part) or "any value"
 
 
@@ -107,7 +112,9 @@ def _bound(window: Window, bound: Bound, key: Key, hand: Hand, width: int) -> It
     sign = "≥" if bound.side == "low" else "≤"
     edge = ", where the metric ends" if bound.edge else ""
     yield from wrapped(
-        f"{bound.target}: {sign} {shown(key, bound.value)} at {wording.condition(bound.at)}{edge}", width, _INDENT
+        f"{bound.target}: {sign} {_end(key, bound.value, bound.side)} at {wording.condition(bound.at)}{edge}",
+        width,
+        _INDENT,
     )
     said = hand(window, bound)
     indent = _INDENT * 2

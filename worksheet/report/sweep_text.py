@@ -99,7 +99,7 @@ def passage(found: Sweep, curve: Curve) -> str:
             first, last = (value(found.axis, float(found.values[place])) for place in (start, k - 1))
             runs.append(first if first == last else f"{first} to {last}")
             start = None
-    return f"met at {', '.join(runs)}"
+    return f"met at the points {', '.join(runs)}"
 
 
 def value(axis: Axis, number: float) -> str:

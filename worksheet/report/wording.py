@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 from functools import lru_cache
 
 from worksheet.model import metrics
@@ -22,6 +23,11 @@ CAUTION = (
 """Said wherever a rating is passed."""
 
 _MORE_DIGITS = (6, 8, 10, 12)
+_TOLERANCE = 1e-9
+"""Of a limit: as far below it, a verdict is met."""
+
+_DUST = 1e-6
+"""Of the last digit shown: nearer to it than this, an end is that number."""
 
 
 def number(value: float | None, unit: str, reason: str | None = None, digits: int = 4) -> str:
@@ -79,6 +85,22 @@ def told_apart(key: str, old: float | None, new: float | None, unit: str) -> tup
     return texts
 
 
+def safe(value: float, side: str, digits: int = 4) -> float:
+    """An end of what is needed, rounded so that what is shown still meets.
+
+    Args:
+        value: The end. [its unit]
+        side: "low" for what must at least be, rounded up; "high" for what may at most be, rounded down.
+        digits: Significant digits.
+    """
+    if value == 0 or not math.isfinite(value):
+        return value
+    unit = 10.0 ** (math.floor(math.log10(abs(value))) - digits + 1)
+    share = value / unit
+    whole = math.ceil(share - _DUST) if side == "low" else math.floor(share + _DUST)
+    return float(f"{whole * unit:.{digits - 1}e}")
+
+
 def limits(target: Target, unit: str) -> str:
     """What a target wants: "≥ 5 MHz", "0.65 to 1 V/V" (the unit once where both ends share it), with its guard band."""
     low = None if target.minimum is None else metric_number(target.name, target.minimum, unit)
@@ -102,7 +124,8 @@ def margin(value: float | None) -> str:
     """A relative margin with its sign."""
     if value is None:
         return "-"
-    value = 0.0 if abs(value) < 5e-4 else value
+    if abs(value) < 5e-4:
+        return "-0.0%" if value < -_TOLERANCE else "+0.0%"
     if abs(value) < 1:
         return f"{value:+.1%}"
     return f"{value:+.0%}" if abs(value) < 10 else f"{value:+.0f}x"

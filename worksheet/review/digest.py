@@ -8,14 +8,16 @@ from typing import Any
 
 import numpy as np
 
+from worksheet.model.project_keys import TEMPERATURE
 from worksheet.model.sheet import Value
-from worksheet.model.sheet_keys import SHEET
+from worksheet.model.sheet_keys import ASSUMPTIONS, BIAS_KEYS, SHEET
 from worksheet.project.case import Case
 from worksheet.project.links import formulas_of
 
 _LENGTH = 12
 _PROPOSED_DIGITS = 6
 _LINKED_DIGITS = 9
+_DEFAULTS = {key.name: key.default for key in (*ASSUMPTIONS, *BIAS_KEYS) if isinstance(key.default, float)}
 _PLAIN = tuple(key.name for key in SHEET.keys if key.moves_results)
 
 
@@ -23,7 +25,8 @@ def basis(case: Case) -> str:
     """Twelve hexadecimal digits over stage, devices and their parameters, bias, assumptions, own names, choices, solve,
     conditions, and values taken from other sheets.
 
-    Numbers count by value: a proposed one to six digits, one from another sheet to nine.
+    Numbers count by value: a proposed one to six digits, one from another sheet to nine. What is written out though it
+    holds without, and a list of temperatures beside the conditions that it makes, count for nothing.
     """
     shared = _shared(case)
     text = _dumps({**_content(case), **dict.fromkeys(shared, _PLACE)})
@@ -69,8 +72,8 @@ def _content(case: Case) -> dict[str, Any]:
     sheet = case.sheet
     return {
         **{key: getattr(sheet, key) for key in _PLAIN},
-        "bias": [sheet.bias.device, {k: _value(v) for k, v in sheet.bias.values.items()}],
-        "assume": {k: _value(v) for k, v in sheet.assume.items()},
+        "bias": [sheet.bias.device, {k: _value(v) for k, v in sheet.bias.values.items() if not _default(k, v)}],
+        "assume": {k: _value(v) for k, v in sheet.assume.items() if k != TEMPERATURE.name and not _default(k, v)},
         "own": {k: _value(v) for k, v in sheet.own.items()},
         "choose": {k: _value(v) for k, v in sheet.choose.items() if not v.propose},
         "proposed": {k: _rounded(v, _PROPOSED_DIGITS) for k, v in case.filled.items()},
@@ -82,6 +85,12 @@ def _content(case: Case) -> dict[str, Any]:
 def _value(value: Value) -> list[Any]:
     formula = None if value.formula is None else repr(value.formula.tree)
     return [value.number, formula, sorted(value.numbers), value.low, value.high]
+
+
+def _default(key: str, value: Value) -> bool:
+    """Whether a value says what holds without it."""
+    plain = value.formula is None and value.low is None and value.high is None
+    return plain and value.number is not None and value.number == _DEFAULTS.get(key)
 
 
 def _links(case: Case) -> dict[str, list[str]]:

@@ -63,5 +63,5 @@ def _off_grid(case: Case) -> Iterator[Note]:
             if chosen is not None and chosen.number is not None:
                 steps = chosen.number / grid
                 if abs(steps - round(steps)) > _ON_GRID * max(1.0, steps):
-                    shown = [format_quantity(x, dim.LENGTH) for x in (chosen.number, grid)]
+                    shown = [format_quantity(x, dim.LENGTH, digits=9) for x in (chosen.number, grid)]
                     yield Note(key, f"{shown[0]} is off the layout grid of {shown[1]}")

@@ -9,6 +9,7 @@ from worksheet.history.outcome import Refused, RefusedError
 from worksheet.history.repository import Repository
 from worksheet.history.revisions import Revision
 from worksheet.model.problem import Problem
+from worksheet.model.text import clean, nearest
 
 
 def refusal(found: Refused, root: Path) -> Problem:
@@ -33,8 +34,15 @@ def history(root: Path, sheet: str | None = None) -> tuple[Revision, ...] | Prob
     found = repository_of(root)
     if isinstance(found, Problem):
         return found
-    listed = revisions.history(found, None if sheet is None else f"sheets/{sheet}.toml")
-    return refusal(listed, root) if isinstance(listed, Refused) else listed
+    file = None if sheet is None else f"sheets/{sheet}.toml"
+    listed = revisions.history(found, file)
+    if isinstance(listed, Refused):
+        return refusal(listed, root)
+    if file is not None and not listed and not (root / file).exists():
+        near = nearest(sheet or "", [path.stem for path in (root / "sheets").glob("*.toml")])
+        hint = f"; did you mean {near}?" if near else ""
+        return Problem(clean(file), None, "", f"there is no such sheet, and no revision had one{hint}")
+    return listed
 
 
 def names(root: Path) -> tuple[str, ...]:

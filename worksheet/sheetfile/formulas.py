@@ -6,6 +6,7 @@ from collections.abc import Iterable, Mapping
 
 from worksheet.model import metrics
 from worksheet.model.formula import Formula
+from worksheet.model.keys import Kind
 from worksheet.model.sheet import Target, Value
 from worksheet.model.text import clean, nearest
 from worksheet.sheetfile.locate import below
@@ -59,7 +60,8 @@ def _check(reader: Reader, keys: Taken, where: str, used: Iterable[str], known: 
     for name in used:
         if "." in name or name in known:
             continue
-        reason = refusal(keys, name, ASSUME)
+        counted = name in keys.design and keys.design[name].kind is Kind.WHOLE
+        reason = "it is a count, which no formula reads" if counted else refusal(keys, name, ASSUME)
         near = None if reason else nearest(name, known)
         hint = f": {reason}." if reason else f"; did you mean {near}?" if near else "; own names stand in [own]."
         reader.report(where, f"Found the unknown name {clean(name)} in the formula{hint}")

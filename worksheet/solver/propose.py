@@ -23,6 +23,9 @@ INVERSION_RANGE = (0.01, 100.0)
 _ROUNDS, _SETTLED = 6, 1e-9
 """A current source whose size is left out is sized anew for each current that a search comes to, until it settles."""
 
+_ROUNDING = 1e-8
+"""Relative: as far beyond a limit a search may end."""
+
 _CURRENT_RANGE = (1e-15, 1.0)
 _CAPACITANCE_RANGE = (1e-18, 1e-6)
 
@@ -171,9 +174,17 @@ class Free:
         return np.asarray(np.min(self.rooms(first, rest), axis=0, initial=np.inf))
 
     def place(self, found: Found) -> dict[str, float]:
-        """Values of the free variables at a place."""
+        """Values of the free variables at a place, inside the process limits to the last digit."""
         moved = self.moves(found.place[:1], found.place[None, 1:])
-        return {name: float(values[0]) for name, values in moved.items()}
+        return {name: self._inside(name, float(values[0])) for name, values in moved.items()}
+
+    def _inside(self, name: str, value: float) -> float:
+        """A value that logarithms left by rounding beyond a limit, at the limit."""
+        variable = self.variables.get(name)
+        if variable is None or not variable.bounded:
+            return value
+        inside = min(max(value, variable.low), variable.high)
+        return inside if abs(inside - value) <= _ROUNDING * inside else value
 
 
 def freedoms(subject: Subject) -> tuple[str, ...]:

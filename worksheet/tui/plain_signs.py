@@ -7,7 +7,11 @@ from textual.color import Color
 from textual.filter import LineFilter
 
 _SIGNS = str.maketrans(
-    dict.fromkeys("─━▔▁▀▄", "-") | dict.fromkeys("│┃▌▐▎▊▏▕", "|") | dict.fromkeys("┌┐└┘├┤┬┴┼╭╮╰╯", "+") | {"…": "~"}
+    dict.fromkeys("─━▔▁▀▄", "-")
+    | dict.fromkeys("│┃▌▐▎▊▏▕", "|")
+    | dict.fromkeys("┌┐└┘├┤┬┴┼╭╮╰╯", "+")
+    | dict.fromkeys("▂▃▅▆▇█░▒▓", "#")
+    | {"…": "~"}
 )
 
 

@@ -30,10 +30,9 @@ def add(subparsers: Any) -> None:
 
 def _count(text: str) -> int:
     """A number of revisions."""
-    number = int(text)
-    if number < 1:
-        raise argparse.ArgumentTypeError("expected 1 or more revisions")
-    return number
+    if not text.isdecimal() or int(text) < 1:
+        raise argparse.ArgumentTypeError(f"found {text!r}, expected 1 or more revisions")
+    return int(text)
 
 
 def run(args: argparse.Namespace, output: Output) -> int:

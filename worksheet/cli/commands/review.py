@@ -31,10 +31,9 @@ def add(subparsers: Any) -> None:
 
 def _count(text: str) -> int:
     """A whole number of samples, at least 1."""
-    number = int(text)
-    if not 1 <= number <= _MOST_SAMPLES:
-        raise argparse.ArgumentTypeError(f"expected 1 to {_MOST_SAMPLES} samples")
-    return number
+    if not text.isdecimal() or not 1 <= int(text) <= _MOST_SAMPLES:
+        raise argparse.ArgumentTypeError(f"found {text!r}, expected 1 to {_MOST_SAMPLES} samples")
+    return int(text)
 
 
 def run(args: argparse.Namespace, output: Output) -> int:

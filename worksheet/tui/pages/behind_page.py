@@ -94,7 +94,7 @@ def _windows(facts: Facts, target: str, asked: Window | None) -> Iterator[Row]:
 def _bound_rows(facts: Facts, window: Window, target: str) -> Iterator[Row]:
     for k, bound in enumerate(_bounds(window, target)):
         sign = "≥" if bound.side == "low" else "≤"
-        value = wording.number(bound.value, window.unit)
+        value = wording.number(wording.safe(bound.value, bound.side), window.unit)
         where = f"at {wording.condition(bound.at)}{', where the metric ends' if bound.edge else ''}"
         shown = facts.text(f"{sign} {value}", PLAIN, 16)
         spans = line(facts.text(window.name, LABEL, _NAME), shown, facts.text(where, QUIET))
@@ -115,7 +115,7 @@ def _window(facts: Facts, name: str) -> Iterator[Row]:
     yield Row("window", (line(facts.text(text)),), copied=(name, present, text))
     for bound in window.bounds:
         sign = "≥" if bound.side == "low" else "≤"
-        value = format_quantity(bound.value, key.dimension, words.DIGITS)
+        value = format_quantity(wording.safe(bound.value, bound.side, words.DIGITS), key.dimension, words.DIGITS)
         spans = line(
             facts.text(bound.target, LABEL, _NAME),
             facts.text(f"{sign} {value}", PLAIN, 16),

@@ -110,7 +110,9 @@ def title_lines(snapshot: Snapshot, review: Review | None, signs: Signs) -> tupl
         return first, line(Span("The project file cannot be read.", rows.MISSED))
     count = len(file.processes) * len(file.temperatures) * len(file.supplies)
     said = f"{count} conditions, nominal {wording.condition(file.nominal)}; process {file.process}"
-    return first, line(Span(signs.text(said), QUIET))
+    wrong = len(snapshot.project.problems)
+    told = [Span("1 problem (!)" if wrong == 1 else f"{wrong} problems (!)", rows.MISSED)] if wrong else []
+    return first, line(*told, Span(signs.text(said), QUIET), gap=2)
 
 
 def _counted(review: Review | None) -> str:
@@ -118,8 +120,8 @@ def _counted(review: Review | None) -> str:
         return "working..."
     every = sum(len(one.targets) for one in review.sheets)
     found = [f"{sum(one.count(v) for one in review.sheets)} {v}" for v in (MISSED, UNKNOWN, WAIVED)]
-    bad = f"; {len(review.bad)} cannot be read" if review.bad else ""
-    return f"{len(review.sheets)} blocks, {every} targets: {', '.join(found)}{bad}"
+    bad = f", {len(review.bad)} of them cannot be read" if review.bad else ""
+    return f"{len(review.sheets) + len(review.bad)} blocks{bad}, {every} targets: {', '.join(found)}"
 
 
 def detail_lines(result: SheetReview | None, problems: tuple[Problem, ...], room: int, signs: Signs) -> list[Line]:

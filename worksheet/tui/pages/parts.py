@@ -190,8 +190,15 @@ def region_text(region: Region | None, key: Key) -> str:
     """A window in words, with what sets its ends."""
     if region is None:
         return "nothing: no value meets all that it can meet"
-    low = f"≥ {_number(region.low, key.dimension)} ({region.low_set_by})" if region.low_set_by else ""
-    high = f"≤ {_number(region.high, key.dimension)} ({region.high_set_by})" if region.high_set_by else ""
+    low, high = (
+        f"{sign} {_number(end if end is None else wording.safe(end, side, words.DIGITS), key.dimension)} ({by})"
+        if by
+        else ""
+        for sign, end, side, by in (
+            ("≥", region.low, "low", region.low_set_by),
+            ("≤", region.high, "high", region.high_set_by),
+        )
+    )
     return ", ".join(part for part in (low, high) if part) or "any value"
 
 

@@ -21,6 +21,8 @@ def page(facts: Facts) -> Page:
     """All rows of a sheet."""
     made: list[Row] = list(_problems(facts))
     sections: list[str] = []
+    if made and not facts.data and facts.snapshot.sides(facts.name) is None:  # no TOML: nothing to show or to change
+        return Page(tuple(made))
     for key, title, part in PARTS:
         found = list(part(facts))
         if found:
@@ -108,7 +110,7 @@ def _bound(facts: Facts, window: Window, bound: Bound, k: int) -> Row:
     ends = (window.region.low, window.region.high) if window.region is not None else ()
     sign = "≥" if bound.side == "low" else "≤"
     assert key.dimension is not None  # variables have one
-    value = format_quantity(bound.value, key.dimension, words.DIGITS)
+    value = format_quantity(wording.safe(bound.value, bound.side, words.DIGITS), key.dimension, words.DIGITS)
     binds = Span("binds", rows.WAIVED) if bound.value in ends else Span("", QUIET)
     name = f"{key.symbol or key.name} {sign} {value}"
     first = line(facts.text(name, LABEL, 20), facts.text(bound.target, PLAIN, 18), binds)

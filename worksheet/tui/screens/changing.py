@@ -59,9 +59,19 @@ class Change:
         return Asked(field.title, stands, wrong, completed, place.key.help, all_marked=text is None)
 
     def place_again(self) -> None:
-        """The page stands differently: the line follows its field, with what is typed in it."""
-        if self._place is not None:
-            self._line.move(self._screen.ledger.field_region(), self._screen.ledger.region)
+        """The page stands differently: the line follows its field, with what is typed in it.
+
+        Where the field is gone, since somebody else took it out or spoilt the file, the line stays and says so.
+        """
+        if self._place is None:
+            return
+        ledger, path = self._screen.ledger, self._place.path
+        for row in ledger.page.rows:
+            for k, field in enumerate(row.fields):
+                if field.path == path and ledger.go(row.key, k):
+                    self._line.move(ledger.field_region(), ledger.region)
+                    return
+        self._line.tell(f"{self._title} is gone from the file just now. Your text is kept.")
 
     def resume(self, dotted: str, text: str) -> None:
         """Go on with a text that was left behind at a key."""

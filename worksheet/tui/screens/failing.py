@@ -7,13 +7,14 @@ from typing import Any
 
 from worksheet.report import wording
 from worksheet.review.failing import Failing
+from worksheet.review.results import MET
 from worksheet.session.alternatives import failing_of, in_book
 from worksheet.tui import commands
 from worksheet.tui.rows import LABEL, MISSED, PLAIN, QUIET, VALUE, Row, Span, line
 from worksheet.tui.screens.place import bindings
 from worksheet.tui.screens.view import View
 
-_TRUST, _INPUT, _NUMBER, _ROOM, _TARGET = 9, 24, 8, 6, 15
+_TRUST, _INPUT, _NUMBER, _ROOM, _TARGET, _THEN = 8, 19, 8, 6, 15, 6
 _NARROW = 86
 """Columns from which on names have more room, and the condition stands there too."""
 
@@ -26,8 +27,7 @@ class FailingScreen(View):
 
     PLACE = commands.FAILING
     BINDINGS = bindings(commands.FAILING)
-    ABOUT = "what would have to be true for this block to fail"
-    """n: at the nominal condition, w: at the worst one."""
+    ABOUT = "where a target would break, or hold where it is missed"
 
     def job(self) -> Callable[[], Any]:
         """The ranking, at the nominal condition and at each target's worst one."""
@@ -46,20 +46,26 @@ class FailingScreen(View):
         return Failing
 
     @property
+    def _missed(self) -> set[str]:
+        """Targets that are not met now, waived ones among them."""
+        result = None if self.book.results is None else self.book.results.sheet(self.name_of_sheet)
+        return set() if result is None else {one.target.name for one in result.targets if one.verdict != MET}
+
+    @property
     def _input(self) -> int:
         """Columns of the input's name: more where there is room."""
         return min(max(self.columns - _NARROW + _INPUT, _INPUT), 36)
 
     @property
     def _wide(self) -> bool:
-        """Whether there is room for the condition in full; its first letter stands there otherwise."""
+        """Whether there is room for the condition."""
         return self.columns >= _NARROW
 
     def picture(self) -> Sequence[str]:
         """The heading of the rows."""
         head = (
-            f" {'trust':{_TRUST}} {'input':{self._input}} {'is':>{_NUMBER}} {'breaks':>{_NUMBER}} "
-            f"{'room':>{_ROOM}} {'target':{_TARGET}}" + (" where" if self._wide else " ")
+            f" {'trust':{_TRUST}} {'input':{self._input}} {'is':>{_NUMBER}} {'turns at':>{_NUMBER}} "
+            f"{'room':>{_ROOM}} {'target':{_TARGET}} {'then':{_THEN}}" + (" where" if self._wide else "")
         )
         return [head]
 
@@ -80,6 +86,7 @@ class FailingScreen(View):
             wording.number(row.break_value, row.unit, digits=3),
             _room(row.room),
             row.target,
+            "holds" if row.target in self._missed else "breaks",
             one.where,
         )
         close = row.room is not None and row.room < _CLOSE
@@ -90,7 +97,8 @@ class FailingScreen(View):
             Span(signs.text(cells[3]), PLAIN, _NUMBER, right=True),
             Span(signs.text(cells[4]), MISSED if close else PLAIN, _ROOM, right=True),
             Span(signs.text(cells[5]), PLAIN, _TARGET),
-            Span(one.where if self._wide else one.where[0], QUIET),
+            Span(cells[6], PLAIN, _THEN),
+            *([Span(cells[7], QUIET)] if self._wide else []),
         )
         return Row(f"{row.name}.{row.target}.{one.where}", (line(*spans),), subject=("input", row.name), copied=cells)
 

@@ -40,6 +40,9 @@ class Place(Screen[None]):
 
     PLACE: ClassVar[str] = commands.BOOK
 
+    _said_of: int | None = None
+    """The state of the book in which something was said last."""
+
     @property
     def book(self) -> BookApp:
         """The app."""
@@ -73,6 +76,8 @@ class Place(Screen[None]):
     def on_screen_resume(self) -> None:
         """What changed while another screen was in front; at the end of the program parts of this one are gone."""
         if self.stands:
+            if self._said_of != self.snapshot.revision:  # what was said is of another state of the book
+                self.say("")
             self.show_book()
 
     def show_book(self) -> None:
@@ -94,6 +99,7 @@ class Place(Screen[None]):
     def say(self, text: str, *, wrong: bool = False) -> None:
         """One line, until the next one."""
         role = rows.MISSED if wrong else PLAIN
+        self._said_of = self.snapshot.revision
         self.query_one("#said", Lines).show([(Span(self.book.signs.text(text), role),)])
 
     def ask_for(self, request: Request, *, quiet: bool = False) -> Outcome:
@@ -102,7 +108,7 @@ class Place(Screen[None]):
         if outcome.accepted and not quiet:
             self.say(outcome.done)
         elif outcome.problems:
-            self.say(str(outcome.problems[0]), wrong=True)
+            self.say(f"not done: {outcome.problems[0]}", wrong=True)
         return outcome
 
     # Commands

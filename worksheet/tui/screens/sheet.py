@@ -14,7 +14,7 @@ from worksheet.session.needs import shown_input
 from worksheet.tui import commands
 from worksheet.tui.pages import parts, sheet_page, stage_part, words
 from worksheet.tui.pages.parts import Facts
-from worksheet.tui.rows import HEAD, LABEL, PLAIN, QUIET, Page, Span, line
+from worksheet.tui.rows import HEAD, LABEL, MISSED, PLAIN, QUIET, Page, Span, line
 from worksheet.tui.screens import adding, changing, stepping
 from worksheet.tui.screens.place import Place, bindings
 from worksheet.tui.widgets.in_place import InPlace
@@ -96,13 +96,13 @@ class SheetScreen(Place):
         result = facts.result
         said = [facts.text(self.name_of_sheet, HEAD), facts.text(str(data.get("title", "")), PLAIN)]
         state = words.typed(data.get("state")) or "draft" if result is None else result.state
-        said.append(facts.text(state, LABEL))
+        said.append(facts.text(state, LABEL) if data else facts.text("cannot be read", MISSED))
         if self.name_of_sheet not in self.snapshot.names:
             said.append(Span("is not there any more", words.VERDICT_ROLES["missed"]))
         elif result is not None:
             counts = ((result.count(v), v) for v in words.VERDICT_ROLES)
             said += [Span(f"{n} {v}", words.VERDICT_ROLES[v]) for n, v in counts if n]
-        kind = f"{data.get('stage', '')}, {words.typed(data.get('device'))}"
+        kind = ", ".join(words.typed(data[key]) for key in ("stage", "device") if key in data)
         stale = self.book.results is None or self.book.results.revision != self.snapshot.revision
         tail = Span("working..." if stale else f"step {self.step_kind}", LABEL)
         read_only = [Span("for reading only", LABEL)] if self.snapshot.read_only else []

@@ -101,6 +101,9 @@ def choose_state(
     if isinstance(listed, Problem):
         screen.say(listed.message, wrong=True)
         return
+    if not listed:
+        screen.say("Nothing has been recorded yet.", wrong=True)
+        return
     states = [State()] if files_too else []
     states += [State(one.revision, one.note) for one in listed]
     states += [State(name, "a branch or tag") for name in revisions.names(root)]

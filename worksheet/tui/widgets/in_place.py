@@ -22,7 +22,7 @@ from worksheet.tui.rows import PLAIN, QUIET, Line, Span
 from worksheet.tui.signs import Signs
 from worksheet.tui.widgets.lines import Lines
 
-_LEAST, _LINES = 44, 4
+_LEAST, _LINES, _SAID = 44, 4, 2
 
 
 @dataclass(frozen=True)
@@ -143,7 +143,10 @@ class InPlace(Vertical):
         from worksheet.report.table import wrapped
 
         room = max(int(self.styles.width.value) if self.styles.width is not None else _LEAST, _LEAST) - 1
-        said: list[Line] = [(Span(one, role),) for one in wrapped(self._signs.text(text), room)[:2]]
+        lines = wrapped(self._signs.text(text), room)
+        if len(lines) > _SAID:  # what has no room is marked as cut
+            lines = [*lines[: _SAID - 1], cut(" ".join(lines[_SAID - 1 :]), room)]
+        said: list[Line] = [(Span(one, role),) for one in lines]
         if self._offered:
             said.append((Span(cut("tab: " + "  ".join(map(self._signs.text, self._offered)), room), QUIET),))
         self.query_one(Lines).show(said)
