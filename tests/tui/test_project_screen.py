@@ -138,7 +138,7 @@ def test_a_sheet_that_cannot_be_read_hides_no_other(root: Path) -> None:
     async def steps(d: Drive) -> None:
         await d.settled()
         assert len(d.rows()) == len(SHEETS)
-        assert "cannot be read" in next(row for row in d.rows() if row.startswith("sun_gate"))
+        assert "has problems" in next(row for row in d.rows() if row.startswith("sun_gate"))
         assert "\x1b" not in "".join(d.rows())
         await d.press("exclamation_mark")
         assert any("sun_gate.toml" in row for row in d.rows())
@@ -274,3 +274,56 @@ def test_a_form_that_was_being_filled_at_the_end_is_offered_again(root: Path) ->
         path.with_name(path.name.replace("-", "-00", 1)).write_bytes(content)
     for steps in (second, third):
         drive(root, steps)
+
+
+def test_a_block_that_another_one_needs_stays_and_says_who_needs_it(root: Path) -> None:
+    async def steps(d: Drive) -> None:
+        await d.settled()
+        needed = next(name for name in d.app.snapshot.names if any(f"{name}." in text for text in texts_of(root, name)))
+        assert d.place.ledger.go(f"sheet.{needed}")
+        await d.press("x")
+        assert d.text("#said").startswith(f"{needed} stays. ")
+        assert "uses it" in d.text("#said")
+        assert (root / "sheets" / f"{needed}.toml").exists()
+
+    drive(root, steps)
+
+
+def texts_of(root: Path, name: str) -> list[str]:
+    """The other sheets of a book."""
+    return [path.read_text("utf-8") for path in (root / "sheets").glob("*.toml") if path.stem != name]
+
+
+def test_an_unreadable_block_is_counted_and_shows_its_trouble_alone(root: Path) -> None:
+    (root / "sheets" / "sun_gate.toml").write_text("garbage[[", "utf-8")
+
+    async def steps(d: Drive) -> None:
+        await d.settled()
+        await d.until(lambda: "with problems" in d.text("#title"))
+        count = len(d.app.snapshot.names)
+        assert f"{count} blocks, " in d.text("#title")
+        assert "problem" in d.text("#title").split("\n")[1]
+        await d.sheet("sun_gate")
+        assert "cannot be read" in d.text("#title")
+        assert all("garbage" in row or "key" in row for row in d.rows())
+
+    drive(root, steps)
+
+
+def test_what_is_typed_outlives_a_file_that_is_spoilt_meanwhile(root: Path) -> None:
+    path = root / "sheets" / "sun_gate.toml"
+    good = path.read_text("utf-8")
+
+    async def steps(d: Drive) -> None:
+        await d.sheet("sun_gate", "choose.bias_current")
+        await d.press("enter")
+        await d.type("7.5 uA")
+        path.write_text("garbage[[", "utf-8")
+        await d.until(lambda: not d.app.snapshot.data("sun_gate"))
+        assert d.app.screen.query_one(Input).value == "7.5 uA"
+        path.write_text(good, "utf-8")
+        await d.until(lambda: bool(d.app.snapshot.data("sun_gate")))
+        await d.press("enter")
+        await d.until(lambda: 'bias_current = "7.5 uA"' in path.read_text("utf-8"))
+
+    drive(root, steps)

@@ -60,12 +60,12 @@ def _row(
 ) -> tuple[Row, str]:
     """A block's row and the text that a search looks in."""
     data = snapshot.data(name)
-    stage = str(data.get("stage", "?"))
-    state = str(data.get("state", "draft")) if result is None else result.state
+    stage = str(data.get("stage", "-"))
+    state = result.state if result is not None else str(data.get("state", "draft")) if data else "-"
     lead = [Span(signs.text(name), VALUE, _NAME), Span(signs.text(stage), LABEL, _STAGE)]
     lead.append(Span(signs.text(state), PLAIN, _STATE))
     if result is None:
-        wrong = "" if pending else "cannot be read"
+        wrong = "" if pending else "has problems" if data else "cannot be read"
         spans = (*lead, Span(wrong or "...", rows.MISSED if wrong else QUIET))
         found = wrong
     else:
@@ -120,7 +120,7 @@ def _counted(review: Review | None) -> str:
         return "working..."
     every = sum(len(one.targets) for one in review.sheets)
     found = [f"{sum(one.count(v) for one in review.sheets)} {v}" for v in (MISSED, UNKNOWN, WAIVED)]
-    bad = f", {len(review.bad)} of them cannot be read" if review.bad else ""
+    bad = f", {len(review.bad)} of them with problems" if review.bad else ""
     return f"{len(review.sheets) + len(review.bad)} blocks{bad}, {every} targets: {', '.join(found)}"
 
 

@@ -211,8 +211,16 @@ class BookScreen(Place):
 
     def action_delete(self) -> None:
         """Take the sheet out; undo brings it back."""
-        if self.present is not None:
-            self.ask_for(DeleteSheet(self.present))
+        name = self.present
+        if name is None:
+            return
+        outcome = self.book.change(DeleteSheet(name))
+        if outcome.accepted:
+            self.say(outcome.done)
+        elif outcome.problems:
+            first = outcome.problems[0]
+            used = f"{first.file} uses it: {first.key}" if first.key else str(first)
+            self.say(f"{name} stays. {used}", wrong=True)
 
     def _form(self, title: str, lines: list[FormLine], made: Made) -> None:
         from worksheet.tui.screens.forming import submit
