@@ -167,6 +167,7 @@ def test_linear_settling_agrees_with_a_matrix_exponential(
         assert error(time * factor) < tolerance, name
 
 
+@pytest.mark.full
 def test_stored_cases_are_what_the_reference_says() -> None:
     """A change of the reference without `python -m tests.precision.make_cases` must not pass unseen."""
     stored = json.loads((Path(__file__).parent / "cases.json").read_text(encoding="utf-8"))

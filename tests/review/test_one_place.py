@@ -84,6 +84,7 @@ def book(folder: Path, text: str) -> Path:
     return sheet
 
 
+@pytest.mark.full
 @pytest.mark.usefixtures("tall")
 def test_a_sixth_stage_is_reviewed_solved_and_listed(tmp_path: Path) -> None:
     sheet = book(tmp_path / "book", SHEET.format(stage=TALL.key, sizes=SIZES))

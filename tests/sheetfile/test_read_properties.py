@@ -139,6 +139,7 @@ def test_the_scan_follows_whatever_the_standard_reader_follows(text: str) -> Non
     ],
     ids=lambda text: text[:12],
 )
+@pytest.mark.full
 def test_large_hostile_texts_end_in_problems(text: str) -> None:
     sheet, problems = parse_sheet(text, "hostile", "hostile.toml")
     assert sheet is None

@@ -129,6 +129,7 @@ def other_states(root: Path, recorded: Path) -> None:
     git(root, "checkout", "-q", "-")
 
 
+@pytest.mark.full
 def test_any_two_states_are_compared_branches_among_them(root: Path, recorded: Path) -> None:
     other_states(root, recorded)
 

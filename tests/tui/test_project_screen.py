@@ -47,6 +47,7 @@ def test_the_first_picture_is_complete_with_results_at_60_columns_and_15_lines_t
     drive(root, steps, size=(60, 15))
 
 
+@pytest.mark.full
 def test_typing_finds_blocks_by_name_stage_state_and_verdict(root: Path) -> None:
     async def steps(d: Drive) -> None:
         await d.settled()
@@ -310,6 +311,7 @@ def test_an_unreadable_block_is_counted_and_shows_its_trouble_alone(root: Path) 
     drive(root, steps)
 
 
+@pytest.mark.full
 def test_what_is_typed_outlives_a_file_that_is_spoilt_meanwhile(root: Path) -> None:
     path = root / "sheets" / "sun_gate.toml"
     good = path.read_text("utf-8")

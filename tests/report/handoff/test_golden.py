@@ -20,6 +20,7 @@ def now(sample: Path, folder: Path) -> dict[str, str]:
     return said(folder)
 
 
+@pytest.mark.full
 @pytest.mark.parametrize("name", ["project.md", "block.txt", "block.csv", "block-sizes.txt"])
 def test_a_hand_off_of_the_sample_is_as_it_was(now: dict[str, str], name: str) -> None:
     kept = (GOLDEN / name).read_text("utf-8").splitlines()
