@@ -63,6 +63,7 @@ def test_parameters_come_back(name: str) -> None:
         ("offset lengths", "length_offset", 0.1),
     ],
 )
+@pytest.mark.full
 def test_what_the_data_carry_comes_back(name: str, parameter: str, allowed: float) -> None:
     device, at = CASES[name]
     result = fitted(device, at)

@@ -116,6 +116,7 @@ def test_a_sixth_stage_refuses_what_it_does_not_take(tmp_path: Path) -> None:
     assert "input_level" in done.err
 
 
+@pytest.mark.full
 @pytest.mark.usefixtures("product")
 def test_a_new_metric_is_a_target_a_name_and_a_row(tmp_path: Path) -> None:
     text = SHEET.format(stage="common-source", sizes="")

@@ -5,6 +5,7 @@ import re
 import tomllib
 from typing import Any
 
+import pytest
 from hypothesis import given
 from hypothesis import strategies as st
 
@@ -46,6 +47,7 @@ def test_a_new_value_changes_no_other_byte(drawn: tuple[str, Drawn], data: st.Da
 
 
 @given(sheets(), st.data())
+@pytest.mark.full
 def test_a_value_set_to_what_it_is_changes_nothing(drawn: tuple[str, Drawn], data: st.DataObject) -> None:
     text = drawn[0]
     plain = tomllib.loads(text.removeprefix("\ufeff"))

@@ -49,6 +49,7 @@ async def _found(d: Drive, kind: type[View]) -> View:
     return screen
 
 
+@pytest.mark.full
 def test_a_variant_is_taken_over_and_comes_back_with_undo(root: Path) -> None:
     _with(root, VARIANT)
     before = (root / "sheets" / "bucket_buffer.toml").read_bytes()

@@ -88,6 +88,7 @@ def test_a_meeting_decides_and_ends_with_minutes_and_a_revision(root: Path) -> N
     assert git(root, "show", "--name-only", "--format=%s").splitlines()[0].startswith("Review meeting of")
 
 
+@pytest.mark.full
 def test_a_remark_is_settled_and_leaves_the_agenda(root: Path) -> None:
     path = root / "sheets" / "sun_gate.toml"
     path.write_text(path.read_text("utf-8") + '\n[[remark]]\nby = "A"\ntext = "Which cell?"\n', "utf-8")
