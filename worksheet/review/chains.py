@@ -47,7 +47,9 @@ def review_chain(evaluator: Evaluator, chain: Chain, bad: Collection[str]) -> Ch
     """
     missing = [name for name in chain.sheets if name in bad or name not in evaluator.project.sheets]
     if missing:
-        return _unknown(chain, f"the sheet {missing[0]} has problems of its own")
+        there = missing[0] in bad
+        said = f"the sheet {missing[0]} has problems of its own" if there else f"there is no sheet {missing[0]}"
+        return _unknown(chain, said)
     try:
         path = _Path(evaluator, chain)
         path.solve()
