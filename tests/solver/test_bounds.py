@@ -56,6 +56,9 @@ def check(seed: int, kind: tuple[str, str, str], folder: Path, keep: str) -> int
                 assert slack[index, 0] >= -JUST_MET, (name, bound)
             else:
                 assert abs(slack[index, 0]) <= JUST_MET, (name, bound, slack[index, 0])
+            room = float(slack[trials.target_count :, 0].min())
+            if abs(room) > JUST_MET:
+                assert bound.valid is (room > 0), (name, bound, room)
             checked += 1
     return checked
 

@@ -62,6 +62,7 @@ def bound(of: Window, found: Bound, hand: Hand) -> Plain:
         "limit": found.limit,
         "value": found.value,
         "kind": "edge" if found.edge else "crossing",
+        "valid": found.valid,
         **hand(of, found),
         "at": condition(found.at),
         "with": dict(found.moves_with),

@@ -110,9 +110,9 @@ def _region(region: Region, key: Key) -> str:
 
 def _bound(window: Window, bound: Bound, key: Key, hand: Hand, width: int) -> Iterator[str]:
     sign = "≥" if bound.side == "low" else "≤"
-    edge = ", where the metric ends" if bound.edge else ""
+    place = wording.bound_place(bound.at, bound.edge, bound.valid)
     yield from wrapped(
-        f"{bound.target}: {sign} {_end(key, bound.value, bound.side)} at {wording.condition(bound.at)}{edge}",
+        f"{bound.target}: {sign} {_end(key, bound.value, bound.side)} at {place}",
         width,
         _INDENT,
     )

@@ -120,6 +120,13 @@ def condition(at: Condition | None) -> str:
     return f"{at.process} {format_quantity(at.temperature, TEMPERATURE)} {format_quantity(at.supply, VOLTAGE)}"
 
 
+def bound_place(at: Condition | None, edge: bool, valid: bool) -> str:
+    """Where a bound binds, and what else is to be known of the place."""
+    ends = ", where the metric ends" if edge else ""
+    beyond = "" if valid else ", beyond what saturation or ratings allow"
+    return f"{condition(at)}{ends}{beyond}"
+
+
 def margin(value: float | None) -> str:
     """A relative margin with its sign."""
     if value is None:

@@ -21,6 +21,8 @@ class Bound:
         point: Index of that condition, the nominal one being 0.
         edge: Whether the metric jumps or stops existing there instead of crossing its limit.
         moves_with: What moves along with the variable, by name ("width" when the inversion is kept). [unit of the key]
+        valid: Whether every device is saturated there and no voltage passes its rating, in every condition that counts;
+            otherwise a review of that value does not judge the target.
     """
 
     target: str
@@ -31,6 +33,7 @@ class Bound:
     point: int
     edge: bool = False
     moves_with: Mapping[str, float] = field(default_factory=dict)
+    valid: bool = True
 
 
 @dataclass(frozen=True, slots=True)

@@ -61,6 +61,7 @@ class Crossing:
     point: int
     met_above: bool
     edge: bool
+    valid: bool
 
 
 def windows(trials: Trials, axes: Sequence[Axis]) -> list[Window | None]:
@@ -206,12 +207,18 @@ def _crossings(
             break
         points |= set(worst[missed].tolist())
         at, gaps = _widened(brackets, at, gaps, missed, gap)
-    edge = np.abs(gap) > _JUMP
+    edge, valid = np.abs(gap) > _JUMP, _valid(trials, line(brackets.owner, np.exp(chosen)))
     for k, axis in enumerate(brackets.owner):
         value = float(np.exp(chosen[k]))
-        item = Crossing(int(brackets.rows[k]), value, int(worst[k]), bool(rising[k]), bool(edge[k]))
+        item = Crossing(int(brackets.rows[k]), value, int(worst[k]), bool(rising[k]), bool(edge[k]), bool(valid[k]))
         found[int(axis)].append(item)
     return found
+
+
+def _valid(trials: Trials, moves: Mapping[str, Array]) -> Mask:
+    """Where every device is saturated and no voltage passes its rating."""
+    slack = trials.clear(moves, range(trials.target_count, len(trials.constraints))).slack
+    return np.asarray((slack >= 0).all(axis=0), dtype=np.bool_)
 
 
 def _widened(brackets: _Brackets, at: Array, gaps: Array, missed: Mask, gap: Array) -> tuple[Array, Array]:
@@ -261,6 +268,7 @@ def _bound(trials: Trials, axis: Axis, crossing: Crossing) -> Bound:
         point=crossing.point % len(trials.subject.conditions),
         edge=crossing.edge,
         moves_with=moves,
+        valid=crossing.valid,
     )
 
 

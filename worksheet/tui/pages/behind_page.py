@@ -95,7 +95,7 @@ def _bound_rows(facts: Facts, window: Window, target: str) -> Iterator[Row]:
     for k, bound in enumerate(_bounds(window, target)):
         sign = "≥" if bound.side == "low" else "≤"
         value = wording.number(wording.safe(bound.value, bound.side), window.unit)
-        where = f"at {wording.condition(bound.at)}{', where the metric ends' if bound.edge else ''}"
+        where = f"at {wording.bound_place(bound.at, bound.edge, bound.valid)}"
         shown = facts.text(f"{sign} {value}", PLAIN, 16)
         spans = line(facts.text(window.name, LABEL, _NAME), shown, facts.text(where, QUIET))
         copied = (window.name, f"{sign} {value}", wording.condition(bound.at))

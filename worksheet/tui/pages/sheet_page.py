@@ -114,7 +114,7 @@ def _bound(facts: Facts, window: Window, bound: Bound, k: int) -> Row:
     binds = Span("binds", rows.WAIVED) if bound.value in ends else Span("", QUIET)
     name = f"{key.symbol or key.name} {sign} {value}"
     first = line(facts.text(name, LABEL, 20), facts.text(bound.target, PLAIN, 18), binds)
-    where = f"{wording.condition(bound.at)}{', where the metric ends' if bound.edge else ''}"
+    where = wording.bound_place(bound.at, bound.edge, bound.valid)
     lines = [first, line(Span("  "), facts.text(f"at {where}", QUIET), gap=0)]
     hand = facts.hands.get((window.name, bound.target, bound.side))
     if hand:
