@@ -123,6 +123,8 @@ def _set(document: Document, data: dict[str, Any], path: KeyPath, value: Stated)
         raise WriteRefusedError("a value needs a key")
     present, holder, above, key = find(data, path), find(data, path[:-1]), path[:-1], path[-1]
     single = not isinstance(value, Mapping)
+    if single and present is not None and _same(present, plain(value)):
+        return "".join(document.lines)  # in whatever writing it stands
     if isinstance(present, dict):
         if single and (_VALUE in present or _FORMULA in present):
             return _set(document, data, (*path, _VALUE), value)
