@@ -22,6 +22,9 @@ CAUTION = (
 )
 """Said wherever a rating is passed."""
 
+NO_VOLTAGE = 1e-13
+"""Differences of voltages below this are rounding. [V]"""
+
 _MORE_DIGITS = (6, 8, 10, 12)
 _TOLERANCE = 1e-9
 """Of a limit: as far below it, a verdict is met."""

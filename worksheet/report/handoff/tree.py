@@ -15,9 +15,6 @@ from worksheet.report import wording
 
 DIGITS = 4
 
-NO_VOLTAGE = 1e-13
-"""Differences of voltages below this are rounding. [V]"""
-
 
 @dataclass(frozen=True, slots=True)
 class Number:
@@ -196,7 +193,7 @@ def number(value: float | None, unit: str, of: str = "", reason: str | None = No
 
 def _seen(value: float, unit: str) -> float:
     """A voltage that rounding alone keeps from 0, as 0."""
-    return 0.0 if unit == "V" and abs(value) < NO_VOLTAGE else value
+    return 0.0 if unit == "V" and abs(value) < wording.NO_VOLTAGE else value
 
 
 def metric(

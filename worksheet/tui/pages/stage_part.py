@@ -8,14 +8,13 @@ from itertools import zip_longest
 from worksheet.model import operating
 from worksheet.model.dimension import VOLTAGE
 from worksheet.model.quantity import format_quantity
+from worksheet.report import wording
 from worksheet.tui import drawing, rows
 from worksheet.tui.pages import words
 from worksheet.tui.pages.parts import Facts
 from worksheet.tui.rows import HEAD, LABEL, PLAIN, Line, Row, Span, line
 
 _DRAWN, _LABEL, _CELL = 36, 9, 11
-_DUST = 1e-12
-"""Below it a voltage is what rounding left of a difference. [V]"""
 _SHORT = {
     "inversion_coefficient",
     "current",
@@ -49,7 +48,10 @@ def in_short(facts: Facts) -> Iterator[Line]:
         if value.key not in _SHORT:
             continue
         cells = [values.get(value.key) for values in devices.values()]
-        cells = [0.0 if isinstance(c, float) and value.dimension == VOLTAGE and abs(c) < _DUST else c for c in cells]
+        cells = [
+            0.0 if isinstance(c, float) and value.dimension == VOLTAGE and abs(c) < wording.NO_VOLTAGE else c
+            for c in cells
+        ]
         texts = [format_quantity(c, value.dimension, words.DIGITS) if isinstance(c, float) else "-" for c in cells]
         short = value.symbol if len(value.symbol) <= _LABEL else value.title.lower()
         yield line(facts.text(short, LABEL, _LABEL), *(facts.text(text, PLAIN, _CELL) for text in texts))
