@@ -87,7 +87,9 @@ def test_every_number_of_every_stage(kind: tuple[str, str, str], bulk: str, step
 
 
 @pytest.mark.parametrize("polarity", ["n", pytest.param("p", marks=pytest.mark.full)])
-@pytest.mark.parametrize("stage", STAGES)
+@pytest.mark.parametrize(
+    "stage", [pytest.param(one, marks=pytest.mark.full) if one == "cascode" else one for one in STAGES]
+)
 def test_no_metric_is_left_out_where_the_engines_are_compared(stage: str, polarity: str, tmp_path: Path) -> None:
     """What test_symbolic compares covers every metric of the stage; a follower's gain never reaches one."""
     found = catalogue.find(stage)
