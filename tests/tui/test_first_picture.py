@@ -13,6 +13,7 @@ from dataclasses import replace
 from pathlib import Path
 
 import pytest
+from textual.geometry import Size
 
 from tests.paths import TOP
 from tests.tui.driving import Drive, drive, terminal
@@ -92,6 +93,12 @@ def test_leaving_keeps_what_the_book_looks_like_after_its_edits(root: Path) -> N
     sheet.write_bytes(sheet.read_bytes() + b"\n")
     first_picture.keep(asked, {}, {})
     assert asked.kept.read_bytes() == before, "other files than those on the disk are no picture of it"
+
+
+def test_the_terminal_and_the_toolkit_mean_the_same_size(root: Path) -> None:
+    one = wanted(root)
+    sizes = (os.terminal_size((80, 24)), Size(80, 24))
+    assert {replace(one, size=size).key() for size in sizes} == {one.key()}
 
 
 def test_the_day_matters_only_where_a_waiver_ends(root: Path, monkeypatch: pytest.MonkeyPatch) -> None:

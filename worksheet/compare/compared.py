@@ -8,6 +8,7 @@ from dataclasses import dataclass, replace
 from worksheet.compare import inputs
 from worksheet.compare.cause import Cause, Causes
 from worksheet.compare.inputs import Moved
+from worksheet.model.sheet import TOLERANCE
 from worksheet.project.case import CaseError
 from worksheet.project.discover import Project
 from worksheet.project.evaluate import Evaluator
@@ -15,7 +16,7 @@ from worksheet.review.results import Review, SheetReview
 from worksheet.solver import goals, needed
 from worksheet.solver.results import Window
 
-_SAME = 1e-9
+_SAME = TOLERANCE
 """Relative: nearer than this two results are one, as for a verdict; what is proposed is searched for."""
 
 MOST_DEEP = 30
@@ -210,16 +211,15 @@ def _there(state: State) -> set[str]:
 def _sheet(old: State, new: State, name: str) -> SheetChange | None:
     before, after = old.project.sheets.get(name), new.project.sheets.get(name)
     results = _results(_reviewed(old, name), _reviewed(new, name))
+    status = "added" if name not in _there(old) else "removed" if name not in _there(new) else "changed"
     if name in old.project.bad or name in new.project.bad:  # there, but not to be read or not to be reviewed
-        status = "added" if name not in _there(old) else "removed" if name not in _there(new) else "changed"
-        return (
-            None if before is None and after is None and status == "changed" else SheetChange(name, status, (), results)
-        )
+        nothing = before is None and after is None and status == "changed"
+        return None if nothing else SheetChange(name, status, (), results)
     stated = inputs.moved(
         {} if before is None else inputs.of_sheet(before), {} if after is None else inputs.of_sheet(after)
     )
-    if before is None or after is None:
-        return SheetChange(name, "added" if before is None else "removed", stated, results)
+    if status != "changed":
+        return SheetChange(name, status, stated, results)
     if not stated and not results:
         return None
     return SheetChange(name, "changed" if stated else "affected", stated, results)

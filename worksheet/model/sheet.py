@@ -54,6 +54,10 @@ class Condition:
     supply: float
 
 
+TOLERANCE = 1e-9
+"""Of a limit: as far beyond it, a verdict is still met."""
+
+
 @dataclass(frozen=True, slots=True)
 class Target:
     """What is wanted of one metric, or of a figure of the user's own (formula).

@@ -135,7 +135,7 @@ def needed(need: Need) -> str:
 def need_ends(need: Need) -> tuple[str, str, str]:
     """What is needed, in words, and the end of it before and after with what sets it."""
     sign = "at least" if need.side == "low" else "at most"
-    numbers = wording.told_apart("", need.old, need.new, need.unit)
+    numbers = wording.told_apart("", need.old, need.new, need.unit, need.side)
     old, new = (
         "no end" if value is None else f"{number} ({by or 'process'})"
         for value, number, by in zip((need.old, need.new), numbers, (need.old_set_by, need.new_set_by), strict=True)

@@ -8,7 +8,7 @@ from functools import lru_cache
 from worksheet.model import metrics
 from worksheet.model.dimension import DIMENSIONS, TEMPERATURE, VOLTAGE, Dimension
 from worksheet.model.quantity import format_quantity
-from worksheet.model.sheet import Condition, Target
+from worksheet.model.sheet import TOLERANCE, Condition, Target
 from worksheet.model.units import UnitError, parse_unit
 
 STANDING = (
@@ -25,10 +25,7 @@ CAUTION = (
 NO_VOLTAGE = 1e-13
 """Differences of voltages below this are rounding. [V]"""
 
-_MORE_DIGITS = (6, 8, 10, 12)
-_TOLERANCE = 1e-9
-"""Of a limit: as far below it, a verdict is met."""
-
+_USUAL_DIGITS, _MORE_DIGITS = 4, (6, 8, 10, 12)
 _DUST = 1e-6
 """Of the last digit shown: nearer to it than this, an end is that number."""
 
@@ -72,20 +69,27 @@ def metric_number(key: str, value: float | None, unit: str, reason: str | None =
     return format_quantity(value, metric.dimension, digits)
 
 
-def told_apart(key: str, old: float | None, new: float | None, unit: str) -> tuple[str, str]:
+def told_apart(key: str, old: float | None, new: float | None, unit: str, side: str = "") -> tuple[str, str]:
     """Two numbers of a metric, or of anything else with a unit, with as many digits as it takes to tell them apart.
 
     Args:
         key: The metric; "" for anything else.
         old, new: In SI base units, None where there is none.
         unit: See number.
+        side: "low" or "high" for ends of what is needed, which are rounded to be safe.
     """
-    texts = metric_number(key, old, unit), metric_number(key, new, unit)
+
+    def texts(digits: int) -> tuple[str, str]:
+        ends = (x if x is None or not side else safe(x, side, digits) for x in (old, new))
+        first, second = (metric_number(key, x, unit, digits=digits) for x in ends)
+        return first, second
+
+    found = texts(_USUAL_DIGITS)
     for digits in _MORE_DIGITS:
-        if old == new or texts[0] != texts[1]:
+        if old == new or found[0] != found[1]:
             break
-        texts = metric_number(key, old, unit, digits=digits), metric_number(key, new, unit, digits=digits)
-    return texts
+        found = texts(digits)
+    return found
 
 
 def safe(value: float, side: str, digits: int = 4) -> float:
@@ -135,7 +139,7 @@ def margin(value: float | None) -> str:
     if value is None:
         return "-"
     if abs(value) < 5e-4:
-        return "-0.0%" if value < -_TOLERANCE else "+0.0%"
+        return "-0.0%" if value < -TOLERANCE else "+0.0%"
     if abs(value) < 1:
         return f"{value:+.1%}"
     return f"{value:+.0%}" if abs(value) < 10 else f"{value:+.0f}x"

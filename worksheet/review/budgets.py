@@ -8,9 +8,9 @@ from typing import NamedTuple
 import numpy as np
 
 from worksheet.model import metrics
+from worksheet.model.sheet import TOLERANCE
 from worksheet.review.results import MET, MISSED, UNKNOWN, BudgetReview
 from worksheet.review.solved import Points
-from worksheet.solver.goals import TOLERANCE
 
 
 class Spent(NamedTuple):

@@ -4,8 +4,12 @@ from __future__ import annotations
 
 from dataclasses import dataclass
 
+import numpy as np
+
 from worksheet.model.keys import TRUST
 from worksheet.review.fragility import Fragile, Fragility
+from worksheet.review.judge import missed_by_value
+from worksheet.review.results import TargetReview
 
 NOMINAL, WORST = "nominal", "worst"
 
@@ -39,6 +43,12 @@ def failing(ranked: Fragility) -> list[Failing]:
             if known is None or row.room < (known.row.room or 0.0):
                 least[row.name, row.target] = Failing(row, where)
     return sorted(least.values(), key=_order)
+
+
+def missed_at(target: TargetReview, where: str) -> bool:
+    """Whether a target is missed at the nominal condition, or at its worst one; no number counts as a miss."""
+    value = target.nominal if where == NOMINAL else target.worst
+    return value is None or bool(missed_by_value(target.target, np.array([value])).any())
 
 
 def _order(one: Failing) -> tuple[int, float, str]:

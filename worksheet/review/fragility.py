@@ -10,7 +10,7 @@ import numpy as np
 
 from worksheet.device.arrays import Array
 from worksheet.engine.measured import Measured
-from worksheet.model.sheet import Condition
+from worksheet.model.sheet import TOLERANCE, Condition
 from worksheet.project.case import Case
 from worksheet.project.conditions import ConditionSet
 from worksheet.project.evaluate import Evaluator
@@ -288,7 +288,7 @@ class _Side:
     def slack(self, measured: Measured, place: Index) -> Array:
         """Slack with the verdict's tolerance added; met where zero or more."""
         limit = self.limit[place]
-        return goals.slack(measured, limit, self.side) + np.where(limit == 0, 0.0, goals.TOLERANCE)
+        return goals.slack(measured, limit, self.side) + np.where(limit == 0, 0.0, TOLERANCE)
 
 
 def _sides(probe: Probe) -> list[_Side]:

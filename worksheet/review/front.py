@@ -15,7 +15,7 @@ import numpy as np
 from worksheet.device.arrays import Array
 from worksheet.project.case import Case
 from worksheet.solver import needed, plane
-from worksheet.solver.propose import NOTHING_FREE, Free, freedoms, gate_area, optimum, point
+from worksheet.solver.propose import NOTHING_FREE, Free, freedoms, gate_area, point, settled_bias
 from worksheet.solver.results import Point
 from worksheet.solver.search import Found, Search
 from worksheet.solver.variables import variables
@@ -69,7 +69,7 @@ def front(case: Case, points: int = POINTS) -> Front:
     missed = plane.missed_at(trials, here)
     if not names:
         return Front((), present, missed, names, NOTHING_FREE)
-    free = Free(case, variables(case), names, optimum(case, trials).free.bias)
+    free = Free(case, variables(case), names, settled_bias(case, trials))
     search = Search(trials, free.space())
     least = search.least()
     if not least.feasible:

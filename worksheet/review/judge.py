@@ -13,9 +13,9 @@ from numpy.typing import NDArray
 from worksheet.device.arrays import Array
 from worksheet.engine.measured import Measured
 from worksheet.model.metrics import Reason
-from worksheet.model.sheet import Target
+from worksheet.model.sheet import TOLERANCE, Target
 from worksheet.review.results import MET, MISSED, UNKNOWN
-from worksheet.solver.goals import TOLERANCE, limits
+from worksheet.solver.goals import limits
 
 Mask = NDArray[np.bool_]
 

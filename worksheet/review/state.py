@@ -6,6 +6,7 @@ from dataclasses import dataclass
 from typing import TYPE_CHECKING
 
 from worksheet.model.sheet import Sheet
+from worksheet.review.evidence import is_stale
 
 if TYPE_CHECKING:
     from worksheet.review.results import SheetReview
@@ -56,7 +57,7 @@ def left_behind(result: SheetReview) -> tuple[Past, ...]:
         found.append(Past(f"accepted by {last.by}", last.basis))
     stale: dict[str, list[str]] = {}
     for one in sheet.evidence:
-        if one.basis and one.basis != result.basis:
+        if one.basis and is_stale(one, result.basis):
             stale.setdefault(one.basis, []).append(one.metric)
     found += [Past(f"evidence on {', '.join(dict.fromkeys(names))}", basis) for basis, names in stale.items()]
     return tuple(found)

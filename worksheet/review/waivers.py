@@ -5,9 +5,8 @@ from __future__ import annotations
 import datetime
 from collections.abc import Sequence
 
-from worksheet.model.sheet import Target, Waiver
+from worksheet.model.sheet import TOLERANCE, Target, Waiver
 from worksheet.review.results import MISSED, UNKNOWN, WAIVED
-from worksheet.solver.goals import TOLERANCE
 
 
 def waived(

@@ -21,7 +21,7 @@ from worksheet.device.arrays import Array
 from worksheet.engine.measured import Measured
 from worksheet.engine.validity import shortfalls
 from worksheet.model import metrics
-from worksheet.model.sheet import Target
+from worksheet.model.sheet import TOLERANCE, Target
 from worksheet.project.case import Case
 from worksheet.project.evaluate import Evaluator
 from worksheet.review.inputs import inputs_of
@@ -256,7 +256,7 @@ def _met(target: Target, measured: Measured, samples: int) -> Mask:
     for side, limit in zip(goals.SIDES, goals.limits(target), strict=True):
         if limit is not None:
             slack = goals.slack(Measured(values, reasons), limit, side)
-            met &= slack >= -(goals.TOLERANCE if limit else 0.0)
+            met &= slack >= -(TOLERANCE if limit else 0.0)
     return met
 
 

@@ -27,6 +27,7 @@ from worksheet.session import needs
 from worksheet.session.edits import ChangeSheet, Put, TakeOut
 from worksheet.session.needs import shown_input
 from worksheet.solver import needed
+from worksheet.solver.propose import following
 from worksheet.solver.results import Point
 from worksheet.solver.snap import snapped
 
@@ -133,7 +134,8 @@ def at_point(evaluator: Evaluator, name: str, found: Front, point: Point) -> Cha
     if isinstance(case, list):
         return case
     keys = {key.name: key for key in case.stage.design_keys(case.sheet.bias.ideal)}
-    values = snapped(needed.trials_of(case), {free: point.values[free] for free in found.free})
+    wanted = {free: point.values[free] for free in found.free}
+    values = snapped(needed.trials_of(case), wanted, following(case, point.values))
     pieces = tuple(Put((CHOOSE, free), shown_input(keys[free], value)) for free, value in values.items())
     return ChangeSheet(name, pieces, "point of the front taken over")
 

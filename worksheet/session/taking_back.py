@@ -35,7 +35,7 @@ def value(snapshot: Snapshot, then: Files, sheet: str, key: str, revision: str) 
         return None
     if path[0] in _ENTRIES:  # the place of an entry means nothing, so a single entry is not taken back by its place
         return None
-    return ChangeSheet(sheet, tuple(_pieces(path, was, now)), f"{key} as in {revision[:10]}")
+    return ChangeSheet(sheet, tuple(_pieces(path, was, now)), f"{key} as in {revision}")
 
 
 def _pieces(path: KeyPath, was: Any, now: Any) -> list[Piece]:
@@ -56,10 +56,10 @@ def _path(key: str) -> KeyPath:
 def sheet(then: Files, name: str, revision: str) -> TakeBack:
     """The edit that makes one sheet what it was; one that was not there yet goes."""
     file = file_of(name)
-    return TakeBack(name, {file: then.get(file)}, f"{name} as in {revision[:10]}")
+    return TakeBack(name, {file: then.get(file)}, f"{name} as in {revision}")
 
 
 def project(snapshot: Snapshot, then: Files, revision: str) -> TakeBack:
     """The edit that makes every sheet, the process file and the project's own file what they were."""
     gone = [file for file in snapshot.contents if file not in then]
-    return TakeBack("", {**dict.fromkeys(gone), **then}, f"the project as in {revision[:10]}")
+    return TakeBack("", {**dict.fromkeys(gone), **then}, f"the project as in {revision}")

@@ -16,9 +16,6 @@ from worksheet.solver.subject import Subject
 FAR = 1e3
 """Slack that stands for a number that does not exist but counts as met; its negative for missed or unknown."""
 
-TOLERANCE = 1e-9
-"""Of the limit: nearer than this counts as met; a limit of 0 is exact."""
-
 SIDES = ("low", "high")
 
 

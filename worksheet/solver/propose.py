@@ -251,6 +251,11 @@ def following(subject: Subject, place: Mapping[str, float]) -> BiasSize | None:
     return None if bias is None else bias.allowed(subject.moved(place))
 
 
+def settled_bias(subject: Subject, trials: Trials) -> BiasSize | None:
+    """As following, where the recommended point is sought; nothing is sought where no size is left out."""
+    return None if bias_size.of(subject) is None else optimum(subject, trials).free.bias
+
+
 def _sized(bias: BiasSize, subject: Subject) -> tuple[BiasSize, bool]:
     """The current source as the ranges allow it at a subject's values, and whether it was that already."""
     sized = bias.allowed(subject)

@@ -19,7 +19,7 @@ from worksheet.engine.solution import NumericSolution
 from worksheet.engine.validity import TOLERANCE as VOLTAGE_TOLERANCE
 from worksheet.engine.validity import shortfalls
 from worksheet.model import metrics
-from worksheet.model.sheet import Condition, Target
+from worksheet.model.sheet import TOLERANCE, Condition, Target
 from worksheet.solver import goals
 from worksheet.solver.subject import Subject
 
@@ -248,4 +248,4 @@ def _tolerance(constraint: Constraint) -> float:
     if constraint.target is None:
         return 0.0
     low, high = goals.limits(constraint.target)
-    return goals.TOLERANCE if (low if constraint.side == "low" else high) else 0.0
+    return TOLERANCE if (low if constraint.side == "low" else high) else 0.0

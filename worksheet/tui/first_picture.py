@@ -67,7 +67,7 @@ class Wanted:
         files = self._files() if contents is None else contents
         waived = any(_END_OF_WAIVER in content for content in files.values())
         day = _today().isoformat() if waived else ""
-        about = (__version__, _program(), self.size, self.read_only, self.terminal.plain_signs, day)
+        about = (__version__, _program(), *self.size, self.read_only, self.terminal.plain_signs, day)
         whole = hashlib.blake2b(repr(about).encode(), digest_size=16)
         for path, content in sorted(files.items()):
             whole.update(f"\0{path}\0{len(content)}\0".encode("utf-8", "surrogateescape"))
@@ -166,11 +166,12 @@ def _write(wanted: Wanted, key: str, picture: Picture) -> None:
     with contextlib.suppress(OSError):
         wanted.kept.parent.mkdir(parents=True, exist_ok=True, mode=0o700)
         beside = wanted.kept.with_suffix(f".{os.getpid()}")
-        beside.write_text(json.dumps({"key": key, "picture": picture}), "utf-8")
-        if wanted.key() == key:
-            beside.replace(wanted.kept)
-        else:
-            beside.unlink()
+        try:
+            beside.write_text(json.dumps({"key": key, "picture": picture}), "utf-8")
+            if wanted.key() == key:
+                beside.replace(wanted.kept)
+        finally:
+            beside.unlink(missing_ok=True)
 
 
 def make(wanted: Wanted) -> Picture:

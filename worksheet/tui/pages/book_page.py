@@ -61,7 +61,8 @@ def _row(
     """A block's row and the text that a search looks in."""
     data = snapshot.data(name)
     stage = str(data.get("stage", "-"))
-    state = result.state if result is not None else str(data.get("state", "draft")) if data else "-"
+    stated = str(data.get("state", "draft")) if data else "-"
+    state = stated if result is None else result.state
     lead = [Span(signs.text(name), VALUE, _NAME), Span(signs.text(stage), LABEL, _STAGE)]
     lead.append(Span(signs.text(state), PLAIN, _STATE))
     if result is None:

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import re
 from collections.abc import Callable, Iterable, Mapping
 from dataclasses import dataclass
 from typing import Any, ClassVar
@@ -21,6 +22,9 @@ from worksheet.tui.screens.place import bindings
 from worksheet.tui.screens.tracing import choose_state, trace
 from worksheet.tui.screens.view import View
 
+_ID = re.compile("[0-9a-f]{40,}")
+"""What a title has no room for in full."""
+
 
 @dataclass(frozen=True, slots=True)
 class State:
@@ -32,12 +36,14 @@ class State:
     @property
     def short(self) -> str:
         """As a title has room for."""
-        return "files" if self.revision == revisions.WORKING else self.revision[:10]
+        if self.revision == revisions.WORKING:
+            return "files"
+        return self.revision[:10] if _ID.fullmatch(self.revision) else self.revision
 
     @property
     def title(self) -> str:
         """In words."""
-        return "as it stands" if self.revision == revisions.WORKING else f"{self.short} {self.note}"
+        return "as it stands" if self.revision == revisions.WORKING else f"{self.short} {self.note}".rstrip()
 
 
 @dataclass(frozen=True, eq=False, slots=True)

@@ -6,8 +6,7 @@ from collections.abc import Callable, Iterable, Sequence
 from typing import Any
 
 from worksheet.report import wording
-from worksheet.review.failing import Failing
-from worksheet.review.results import MET
+from worksheet.review.failing import Failing, missed_at
 from worksheet.session.alternatives import failing_of, in_book
 from worksheet.tui import commands
 from worksheet.tui.rows import LABEL, MISSED, PLAIN, QUIET, VALUE, Row, Span, line
@@ -45,11 +44,11 @@ class FailingScreen(View):
         """Rows of the ranking."""
         return Failing
 
-    @property
-    def _missed(self) -> set[str]:
-        """Targets that are not met now, waived ones among them."""
+    def _misses(self, one: Failing) -> bool:
+        """Whether the target is missed where the row looks at it, so that it would hold beyond."""
         result = None if self.book.results is None else self.book.results.sheet(self.name_of_sheet)
-        return set() if result is None else {one.target.name for one in result.targets if one.verdict != MET}
+        targets = () if result is None else (t for t in result.targets if t.target.name == one.row.target)
+        return any(missed_at(target, one.where) for target in targets)
 
     @property
     def _input(self) -> int:
@@ -86,7 +85,7 @@ class FailingScreen(View):
             wording.number(row.break_value, row.unit, digits=3),
             _room(row.room),
             row.target,
-            "holds" if row.target in self._missed else "breaks",
+            "holds" if self._misses(one) else "breaks",
             one.where,
         )
         close = row.room is not None and row.room < _CLOSE

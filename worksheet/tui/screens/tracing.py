@@ -106,7 +106,7 @@ def choose_state(
         return
     states = [State()] if files_too else []
     states += [State(one.revision, one.note) for one in listed]
-    states += [State(name, "a branch or tag") for name in revisions.names(root)]
+    states += [State(name) for name in revisions.names(root)]
     who = {one.revision: f"{one.dated[:10]}  {one.by}: " for one in listed}
     items = [
         Item(one.revision, f"{who.get(one.revision, '')}{one.note}" if one.note else one.title, one.note, one.short)
