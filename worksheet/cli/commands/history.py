@@ -8,11 +8,15 @@ from importlib import import_module
 from pathlib import Path
 from typing import TYPE_CHECKING, Any
 
+from worksheet.cli.arguments import count
 from worksheet.cli.diagnostics import Status, tell
 from worksheet.model.problem import Problem
 
 if TYPE_CHECKING:
     from worksheet.cli.output import Output
+
+
+_MOST_REVISIONS = 1_000_000
 
 
 def add(subparsers: Any) -> None:
@@ -22,17 +26,16 @@ def add(subparsers: Any) -> None:
     parser.add_argument("sheet", nargs="?", metavar="SHEET", help="only revisions that touched this sheet")
     parser.add_argument("--value", metavar="KEY", help="every change of one value of the sheet, such as choose.width")
     parser.add_argument("--metric", metavar="NAME", help="a metric or target of the sheet over the revisions")
-    parser.add_argument("--most", type=_count, default=60, metavar="N", help="revisions for --metric (default: 60)")
+    parser.add_argument(
+        "--most",
+        type=count(_MOST_REVISIONS, "revisions"),
+        default=60,
+        metavar="N",
+        help="revisions for --metric (default: 60)",
+    )
     parser.add_argument("--csv", action="store_true", help="for --value and --metric: as CSV, SI units")
     parser.add_argument("--json", action="store_true", help="one JSON document on standard output")
     parser.set_defaults(command=run)
-
-
-def _count(text: str) -> int:
-    """A number of revisions."""
-    if not text.isdecimal() or int(text) < 1:
-        raise argparse.ArgumentTypeError(f"found {text!r}, expected 1 or more revisions")
-    return int(text)
 
 
 def run(args: argparse.Namespace, output: Output) -> int:

@@ -6,6 +6,7 @@ import argparse
 from pathlib import Path
 from typing import TYPE_CHECKING, Any
 
+from worksheet.cli.arguments import count
 from worksheet.cli.diagnostics import Status, tell
 
 if TYPE_CHECKING:
@@ -23,17 +24,16 @@ def add(subparsers: Any) -> None:
     parser.add_argument("project", nargs="?", default=".", help="project folder (default: this one)")
     parser.add_argument("--details", action="store_true", help="also choices, operating points and metrics at nominal")
     parser.add_argument("--fragile", action="store_true", help="how far every input can move before a target breaks")
-    parser.add_argument("--samples", type=_count, default=0, metavar="N", help="yield over N samples of mismatch")
+    parser.add_argument(
+        "--samples",
+        type=count(_MOST_SAMPLES, "samples"),
+        default=0,
+        metavar="N",
+        help="yield over N samples of mismatch",
+    )
     parser.add_argument("--seed", type=int, default=0, metavar="S", help="of the samples (default: 0)")
     parser.add_argument("--json", action="store_true", help="one JSON document on standard output")
     parser.set_defaults(command=run)
-
-
-def _count(text: str) -> int:
-    """A whole number of samples, at least 1."""
-    if not text.isdecimal() or not 1 <= int(text) <= _MOST_SAMPLES:
-        raise argparse.ArgumentTypeError(f"found {text!r}, expected 1 to {_MOST_SAMPLES} samples")
-    return int(text)
 
 
 def run(args: argparse.Namespace, output: Output) -> int:
