@@ -4,6 +4,8 @@ import os
 import subprocess
 from pathlib import Path
 
+import pytest
+
 from worksheet.history import outcome, record, repository
 from worksheet.history.own import own_files
 
@@ -24,6 +26,15 @@ def git(folder: Path, *arguments: str, check: bool = True, **environment: str) -
     )
     assert not check or done.returncode == 0, f"git {arguments}: {done.stderr}"
     return done.stdout.rstrip("\n")
+
+
+def signed(monkeypatch: pytest.MonkeyPatch, home: Path, name: str = "M. Roe") -> None:
+    """Work as somebody whom git knows, in a home of one's own."""
+    monkeypatch.setenv("HOME", str(home))
+    monkeypatch.setenv("GIT_CEILING_DIRECTORIES", str(home))
+    for who in ("AUTHOR", "COMMITTER"):
+        monkeypatch.setenv(f"GIT_{who}_NAME", name)
+        monkeypatch.setenv(f"GIT_{who}_EMAIL", f"{name.rsplit(maxsplit=1)[-1].lower()}@example.org")
 
 
 def make_project(folder: Path) -> Path:

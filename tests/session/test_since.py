@@ -9,6 +9,7 @@ from pathlib import Path
 import pytest
 
 from tests.cli import books
+from tests.history.repositories import signed
 from tests.support import run
 from worksheet.compare.inputs import Moved
 from worksheet.model.problem import Problem
@@ -53,11 +54,7 @@ def write(book: Path, *changes: tuple[str, str], entries: str = "") -> None:
 @pytest.fixture
 def book(tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> Path:
     """A block accepted with evidence, recorded, and no revision since."""
-    monkeypatch.setenv("HOME", str(tmp_path))
-    monkeypatch.setenv("GIT_CEILING_DIRECTORIES", str(tmp_path))
-    for who in ("AUTHOR", "COMMITTER"):
-        monkeypatch.setenv(f"GIT_{who}_NAME", "M. Roe")
-        monkeypatch.setenv(f"GIT_{who}_EMAIL", "roe@example.org")
+    signed(monkeypatch, tmp_path)
     made = tmp_path / "book"
     write(made)
     write(made, entries=ENTRIES.format(reviewed(made).basis))

@@ -7,7 +7,7 @@ from pathlib import Path
 
 import pytest
 
-from tests.history.repositories import git
+from tests.history.repositories import git, signed
 from tests.tui.driving import Drive, drive, shown
 from worksheet.model.problem import Problem
 from worksheet.session import revisions
@@ -24,11 +24,7 @@ BLOCK = "sun_gate"
 @pytest.fixture(autouse=True)
 def recorded(root: Path, tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> Path:
     """The book with one revision, and one value moved since."""
-    monkeypatch.setenv("HOME", str(tmp_path))
-    monkeypatch.setenv("GIT_CEILING_DIRECTORIES", str(tmp_path))
-    for who in ("AUTHOR", "COMMITTER"):
-        monkeypatch.setenv(f"GIT_{who}_NAME", "M. Roe")
-        monkeypatch.setenv(f"GIT_{who}_EMAIL", "roe@example.org")
+    signed(monkeypatch, tmp_path)
     assert not isinstance(revisions.record(root, "First", TODAY), Problem)
     path = root / "sheets" / f"{BLOCK}.toml"
     path.write_text(path.read_text("utf-8").replace('bias_current = "2 uA"', 'bias_current = "3 uA"'), "utf-8")

@@ -10,7 +10,7 @@ from typing import Any
 
 import pytest
 
-from tests.history.repositories import git
+from tests.history.repositories import git, signed
 from tests.tui.driving import Drive, drive
 from worksheet.session import revisions
 from worksheet.tui.screens.meeting import MeetingScreen, rounded
@@ -21,11 +21,7 @@ TODAY = datetime.datetime.now().astimezone().date()
 
 @pytest.fixture(autouse=True)
 def identity(tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> None:
-    monkeypatch.setenv("HOME", str(tmp_path))
-    monkeypatch.setenv("GIT_CEILING_DIRECTORIES", str(tmp_path))
-    for who in ("AUTHOR", "COMMITTER"):
-        monkeypatch.setenv(f"GIT_{who}_NAME", "M. Roe")
-        monkeypatch.setenv(f"GIT_{who}_EMAIL", "roe@example.org")
+    signed(monkeypatch, tmp_path)
 
 
 def stated(root: Path, sheet: str) -> dict[str, Any]:

@@ -8,6 +8,7 @@ from pathlib import Path
 
 import pytest
 
+from tests.history.repositories import signed
 from tests.tui.driving import Drive, drive
 from worksheet.model.problem import Problem
 from worksheet.session import revisions
@@ -21,11 +22,7 @@ BLOCK = "bucket_buffer"
 
 @pytest.fixture(autouse=True)
 def identity(tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> None:
-    monkeypatch.setenv("HOME", str(tmp_path))
-    monkeypatch.setenv("GIT_CEILING_DIRECTORIES", str(tmp_path))
-    for who in ("AUTHOR", "COMMITTER"):
-        monkeypatch.setenv(f"GIT_{who}_NAME", "M. Roe")
-        monkeypatch.setenv(f"GIT_{who}_EMAIL", "roe@example.org")
+    signed(monkeypatch, tmp_path)
 
 
 def sheet(root: Path) -> Path:
