@@ -196,6 +196,13 @@ def _seen(value: float, unit: str) -> float:
     return 0.0 if unit == "V" and abs(value) < wording.NO_VOLTAGE else value
 
 
+def end(value: float | None, unit: str, of: str, side: str) -> Cell:
+    """As number, of an end of what is needed: shown on the side that meets."""
+    if value is None:
+        return text("-")
+    return Cell((Number(wording.number(wording.safe(value, side, DIGITS), unit, digits=DIGITS), value, unit, of),))
+
+
 def metric(
     key: str, value: float | None, unit: str, of: str = "", reason: str | None = None, digits: int = DIGITS
 ) -> Cell:

@@ -8,7 +8,7 @@ from worksheet.model.text import clean
 from worksheet.report import wording
 from worksheet.report.handoff import pictures
 from worksheet.report.handoff.material import Block
-from worksheet.report.handoff.tree import Builder, Cell, Points, joined, number, text
+from worksheet.report.handoff.tree import Builder, Cell, Points, end, joined, number, text
 from worksheet.report.solve_text import far_off
 from worksheet.solver.results import Point, Region, Window
 
@@ -59,7 +59,7 @@ def _row(found: Block, window: Window) -> tuple[Cell, ...]:
     beside += [f"also {_region(window, other)}" for other in window.also]
     beside.append(f"cannot help {', '.join(window.cannot_help)}" if window.cannot_help else "")
     low, high = (
-        number(value, window.unit, f"{of}/{side}") if by else text("-")
+        end(value, window.unit, f"{of}/{side}", side) if by else text("-")
         for side, value, by in (("low", region.low, region.low_set_by), ("high", region.high, region.high_set_by))
     )
     return (
@@ -75,8 +75,8 @@ def _row(found: Block, window: Window) -> tuple[Cell, ...]:
 
 def _region(window: Window, region: Region) -> str:
     ends = [
-        f"{sign} {wording.number(value, window.unit)} ({by})"
-        for sign, value, by in (("≥", region.low, region.low_set_by), ("≤", region.high, region.high_set_by))
+        f"{_SIGNS[side]} {wording.number(wording.safe(value, side), window.unit)} ({by})"
+        for side, value, by in (("low", region.low, region.low_set_by), ("high", region.high, region.high_set_by))
         if by and value is not None
     ]
     return " and ".join(ends) or "any value"
